@@ -1,0 +1,1 @@
+"""Thin flat panels from their outline to a judged answer."""

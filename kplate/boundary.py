@@ -1,0 +1,195 @@
+"""Where a support word becomes held unknowns.
+
+At each vertex the supported edges that meet there hold directions in the space of the
+vertex's unknowns ``w, dw/dx, dw/dy``: w itself, the slope along the edge's tangent t, and
+on a clamped edge the slope along its normal n. The unknowns are turned into an
+orthonormal frame whose first directions are the held ones, and those are left out of the
+equations: no penalty numbers.
+
+Between sides held alike, a turn smaller than the plate's `bend_turn` is a bend with ONE
+tangent: two tangents there would hold both slopes and clamp a plate that is free to turn.
+Chords of a circle take the circle's tangent.
+"""
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from kplate.arrays import Bools, Floats, Ints
+from kplate.dofs import Numbering
+from kplate.mesh import Mesh
+from kplate.plate import Plate
+
+# Directions held to less than this share of the strongest are round-off. Two tangents
+# that differ by a turn t hold a second direction to about t.
+RANK_CUT = 1e-9
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Constraints:
+    """Turned and held unknowns at the supported vertices.
+
+    Parameters
+    ----------
+    numbering : Numbering
+        The unknowns.
+    vertices : ndarray, shape (k,)
+        Supported vertices.
+    frames : ndarray, shape (k, p, p)
+        Columns: the orthonormal directions of each vertex's turned unknowns.
+    held : ndarray, shape (k, p)
+        Which of them are held at zero.
+    """
+
+    numbering: Numbering
+    vertices: Ints
+    frames: Floats
+    held: Bools
+
+    @cached_property
+    def free(self) -> Bools:
+        """Which turned unknowns are free, (count,)."""
+        free = np.ones(self.numbering.count, dtype=bool)
+        free[self.numbering.at_vertices(self.vertices)] = ~self.held
+        return free
+
+    def turn(self, values: Floats) -> Floats:
+        """Turn forces or values (count, c) of the unknowns into the frames."""
+        return self._rotate(values, self.frames.swapaxes(-1, -2))
+
+    def turn_back(self, values: Floats) -> Floats:
+        """Turn values (count, c) in the frames back into those of the unknowns."""
+        return self._rotate(values, self.frames)
+
+    def _rotate(self, values: Floats, frames: Floats) -> Floats:
+        result = values.copy()
+        own = self.numbering.at_vertices(self.vertices)
+        result[own] = frames @ values[own]
+        return result
+
+
+def constrain(plate: Plate, numbering: Numbering) -> Constraints:
+    """Hold what the plate's supports hold.
+
+    Parameters
+    ----------
+    plate : Plate
+        The statement.
+    numbering : Numbering
+        Unknowns, three at each vertex, on a mesh of the plate's outline.
+
+    Returns
+    -------
+    Constraints
+    """
+    mesh = numbering.mesh
+    joints = mesh.boundary_joints
+    vertices = mesh.boundary_edges[:, 1]
+    supports = [plate.support(name) for name in mesh.side_names]
+    holds = np.array([s.holds_deflection for s in supports])[mesh.boundary_sides]
+    clamps = np.array([s.holds_slope for s in supports])[mesh.boundary_sides]
+    tangents = np.stack([mesh.tangents(joints[:, k], vertices) for k in (0, 1)], axis=1)
+    alike = (holds[joints[:, 0]] == holds[joints[:, 1]]) & (
+        clamps[joints[:, 0]] == clamps[joints[:, 1]]
+    )
+    bends = alike & (np.abs(turns(tangents)) < plate.bend_turn)
+    mean = tangents.sum(axis=1)
+    mean /= np.maximum(np.hypot(*mean.T), np.finfo(float).tiny)[:, None]
+    tangents = np.where(bends[:, None, None], mean[:, None], tangents)
+    rows = [
+        _rows(tangents[:, k], holds[joints[:, k]], clamps[joints[:, k]]) for k in (0, 1)
+    ]
+    supported = holds[joints].any(axis=1)
+    frames, held = _frames(np.concatenate(rows, axis=1)[supported])
+    return Constraints(
+        numbering=numbering, vertices=vertices[supported], frames=frames, held=held
+    )
+
+
+def turns(tangents: Floats) -> Floats:
+    """Turn to the left in rad from arriving to leaving tangents (k, 2, 2), (k,)."""
+    a, b = tangents[:, 0], tangents[:, 1]
+    return np.arctan2(
+        a[:, 0] * b[:, 1] - a[:, 1] * b[:, 0], np.einsum("kc,kc->k", a, b)
+    )
+
+
+def free_motions(constraints: Constraints) -> list[str]:
+    """Name the rigid motions that the supports leave to the plate.
+
+    Returns
+    -------
+    list of str
+        Such as "tilt about x = 0"; empty where the plate is held.
+    """
+    mesh = constraints.numbering.mesh
+    centre, size = mesh.points.mean(axis=0), float(np.ptp(mesh.points, axis=0).max())
+    motions = _rigid(mesh, constraints.vertices, centre, size)  # (k, 3, motion)
+    turned = constraints.frames.swapaxes(-1, -2) @ motions
+    held = turned[constraints.held]
+    values, vectors = np.linalg.eigh(held.T @ held)
+    loose = vectors[:, values < RANK_CUT * max(1.0, float(values[-1]))]
+    return _name_motions(loose, centre, size)
+
+
+def rigid_motions(mesh: Mesh) -> Floats:
+    """Unknowns of the motions w = 1, x and y at every vertex, (n_points, 3, 3)."""
+    return _rigid(mesh, np.arange(len(mesh.points)), np.zeros(2), 1.0)
+
+
+def _rigid(mesh: Mesh, vertices: Ints, centre: Floats, size: float) -> Floats:
+    """Unknowns at vertices of w = 1, (x - centre)/size, (y - centre)/size, (k, 3, 3)."""
+    motions = np.zeros((len(vertices), 3, 3))
+    motions[:, 0, 0] = 1.0
+    motions[:, 0, 1:] = (mesh.points[vertices] - centre) / size
+    motions[:, 1, 1] = motions[:, 2, 2] = 1.0 / size
+    return motions
+
+
+def _rows(tangent: Floats, holds: Bools, clamps: Bools) -> Floats:
+    """Directions held at k vertices by one edge each, zero where nothing is, (k, 3, 3)."""
+    rows = np.zeros((len(tangent), 3, 3))
+    rows[:, 0, 0] = holds
+    rows[:, 1, 1:] = tangent * holds[:, None]
+    normal = np.column_stack([tangent[:, 1], -tangent[:, 0]])
+    rows[:, 2, 1:] = normal * clamps[:, None]
+    return rows
+
+
+def _frames(rows: Floats) -> tuple[Floats, Bools]:
+    """Orthonormal frames that begin with the row space, and what of them is held."""
+    if not len(rows):
+        return np.zeros((0, 3, 3)), np.zeros((0, 3), dtype=bool)
+    _, strength, right = np.linalg.svd(rows)
+    held = strength > RANK_CUT * strength[:, :1]
+    return right.swapaxes(-1, -2), held
+
+
+def _name_motions(loose: Floats, centre: Floats, size: float) -> list[str]:
+    """Words for rigid motions a + b (x - centre)/size + c (y - centre)/size, (3, m)."""
+    m = loose.shape[1]
+    if m == 0:
+        return []
+    if m == 3:
+        return ["move up and down", "tilt about any line in x", "tilt about any line in y"]
+    if m == 2:
+        a, b, c = np.linalg.svd(loose.T)[2][2]  # w = 0 at one point in all of them
+        x, y = centre + size * np.array([b, c]) / a if abs(a) > 1e-12 else (np.nan,) * 2
+        return [f"tilt about any line through ({x:.6g}, {y:.6g}) m"] * 2
+    a, b, c = loose[:, 0]
+    slope = np.array([b, c])
+    if np.hypot(b, c) < 1e-9:
+        return ["move up and down"]
+    foot = centre - size * a * slope / (slope @ slope)
+    if abs(c) < 1e-9 * abs(b):
+        return [f"tilt about x = {_clean(foot[0], size)} m"]
+    if abs(b) < 1e-9 * abs(c):
+        return [f"tilt about y = {_clean(foot[1], size)} m"]
+    other = foot + size * np.array([-c, b]) / np.hypot(b, c)
+    ends = [f"({p[0]:.4g}, {p[1]:.4g})" for p in (foot, other)]
+    return [f"tilt about the line through {ends[0]} and {ends[1]} m"]
+
+
+def _clean(coordinate: float, size: float) -> str:
+    return f"{0.0 if abs(coordinate) < 1e-9 * size else coordinate:.6g}"

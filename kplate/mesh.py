@@ -1,0 +1,270 @@
+"""Triangles over a plate, and the side and curve of every boundary edge.
+
+Numbers run over points, triangles and edges. Edge k of a triangle lies opposite its
+vertex k. Boundary edges are listed with the plate on their left.
+"""
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from kplate.arrays import Floats, Ints, read_only_floats, read_only_ints
+from kplate.errors import InputError, MeshError
+
+STRAIGHT_EDGE = -1
+# How far outside its triangle, in barycentrics, a point may lie and still be located:
+# round-off on a straight edge, and the sliver between a chord and its circle.
+OUTSIDE = 1e-9
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Mesh:
+    """Triangles over a plate.
+
+    Parameters
+    ----------
+    points : array_like, shape (n_points, 2)
+        Vertex coordinates in m.
+    triangles : array_like, shape (n_triangles, 3)
+        Vertex numbers of each triangle, counter-clockwise.
+    boundary_edges : array_like, shape (n_boundary, 2)
+        Vertex numbers of each boundary edge, the plate on its left.
+    boundary_sides : array_like, shape (n_boundary,)
+        Number in `side_names` of the one side each boundary edge belongs to.
+    side_names : tuple of str
+        Names of the sides.
+    boundary_circles : array_like, shape (n_boundary,), optional
+        Number in `circles` of the circle whose chord an edge is, or -1 on a straight
+        piece; all straight if left out.
+    circles : array_like, shape (n_circles, 3), optional
+        Centre x, centre y and radius in m.
+    zones : array_like, shape (n_triangles,), optional
+        Zone number of each triangle; all 0 if left out.
+
+    Raises
+    ------
+    MeshError
+        If there are no triangles, one is flat or clockwise, a point belongs to none,
+        or the boundary edges are not the edges used once, each on one side.
+    """
+
+    points: Floats
+    triangles: Ints
+    boundary_edges: Ints
+    boundary_sides: Ints
+    side_names: tuple[str, ...]
+    boundary_circles: Ints = None  # type: ignore[assignment]  # filled when built
+    circles: Floats = ()  # type: ignore[assignment]  # filled when built
+    zones: Ints = None  # type: ignore[assignment]  # filled when built
+
+    def __post_init__(self) -> None:
+        """Freeze the arrays and check them."""
+        for name in ("triangles", "boundary_edges", "boundary_sides"):
+            object.__setattr__(self, name, read_only_ints(getattr(self, name)))
+        object.__setattr__(self, "points", read_only_floats(self.points))
+        circles = np.reshape(np.asarray(self.circles, dtype=float), (-1, 3))
+        object.__setattr__(self, "circles", read_only_floats(circles))
+        defaults = {
+            "boundary_circles": (STRAIGHT_EDGE, len(self.boundary_edges)),
+            "zones": (0, len(self.triangles)),
+        }
+        for name, (value, length) in defaults.items():
+            given = getattr(self, name)
+            full = np.full(length, value) if given is None else given
+            object.__setattr__(self, name, read_only_ints(full))
+        self._check_triangles()
+        self._check_boundary()
+
+    @cached_property
+    def areas(self) -> Floats:
+        """Area of each triangle in m2, positive, (n_triangles,)."""
+        a, b, c = np.moveaxis(self.points[self.triangles], 1, 0)
+        u, v = b - a, c - a
+        return 0.5 * (u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0])
+
+    @property
+    def area(self) -> float:
+        """Area of all triangles in m2."""
+        return float(self.areas.sum())
+
+    @cached_property
+    def _edges(self) -> tuple[Ints, Ints]:
+        pairs = self.triangles[:, [[1, 2], [2, 0], [0, 1]]].reshape(-1, 2)
+        pairs = np.sort(pairs, axis=1)
+        key = pairs[:, 0] * len(self.points) + pairs[:, 1]
+        unique, inverse = np.unique(key, return_inverse=True)
+        edges = np.column_stack(np.divmod(unique, len(self.points)))
+        return edges, inverse.reshape(-1, 3)
+
+    @property
+    def edges(self) -> Ints:
+        """Vertices of each edge, smaller number first, in rising order, (n_edges, 2)."""
+        return self._edges[0]
+
+    @property
+    def triangle_edges(self) -> Ints:
+        """Edge number opposite each vertex of each triangle, (n_triangles, 3)."""
+        return self._edges[1]
+
+    @cached_property
+    def boundary_lengths(self) -> Floats:
+        """Length of each boundary edge (of the chord, on a circle) in m."""
+        a, b = np.moveaxis(self.points[self.boundary_edges], 1, 0)
+        return np.hypot(*(b - a).T)
+
+    @cached_property
+    def boundary_joints(self) -> Ints:
+        """Arriving and leaving boundary edge at every boundary vertex, (n_boundary, 2).
+
+        Row i is the vertex at which boundary edge i ends.
+        """
+        start = np.full(len(self.points), -1)
+        start[self.boundary_edges[:, 0]] = np.arange(len(self.boundary_edges))
+        arriving = np.arange(len(self.boundary_edges))
+        return np.column_stack([arriving, start[self.boundary_edges[:, 1]]])
+
+    def tangents(self, edges: Ints, at: Ints) -> Floats:
+        """Unit tangents of boundary edges at one of their vertices.
+
+        Parameters
+        ----------
+        edges : ndarray, shape (k,)
+            Boundary edges.
+        at : ndarray, shape (k,)
+            The vertex of each at which its tangent is wanted.
+
+        Returns
+        -------
+        ndarray, shape (k, 2)
+            Tangent with the plate on the left: of the circle where the edge is a chord
+            of one, of the edge itself elsewhere.
+        """
+        a, b = np.moveaxis(self.points[self.boundary_edges[edges]], 1, 0)
+        tangent = (b - a) / np.hypot(*(b - a).T)[:, None]
+        circle = self.boundary_circles[edges]
+        curved = circle != STRAIGHT_EDGE
+        arm = self.points[at[curved]] - self.circles[circle[curved], :2]
+        turned = np.column_stack([-arm[:, 1], arm[:, 0]])
+        turned /= np.hypot(*turned.T)[:, None]
+        along = np.einsum("kc,kc->k", turned, tangent[curved])
+        tangent[curved] = turned * np.sign(along)[:, None]
+        return tangent
+
+    def locate(self, points: ArrayLike) -> tuple[Ints, Floats]:
+        """Find the triangle that holds each point.
+
+        Parameters
+        ----------
+        points : array_like, shape (k, 2)
+            Points in m; a point on a shared edge goes to one of its triangles, a point
+            between a chord and its circle to the triangle of the chord.
+
+        Returns
+        -------
+        triangles : ndarray, shape (k,)
+            Triangle numbers.
+        barycentrics : ndarray, shape (k, 3)
+            Barycentric coordinates in that triangle.
+
+        Raises
+        ------
+        InputError
+            If a point is not on the plate.
+        """
+        points = np.atleast_2d(np.asarray(points, dtype=float))
+        if points.shape[1:] != (2,) or not np.isfinite(points).all():
+            raise InputError(
+                f"points have shape {points.shape} or are not finite; give pairs (x, y) "
+                "in m."
+            )
+        triangles = self._nearest(points)
+        barycentrics = self.barycentrics(triangles, points)
+        depth = barycentrics.min(axis=1) * np.sqrt(self.areas[triangles])
+        allowed = OUTSIDE * np.sqrt(self.area) + self._sliver
+        for i in np.flatnonzero(-depth > allowed):
+            raise InputError(
+                f"point ({points[i, 0]:.6g}, {points[i, 1]:.6g}) m is not on the plate; "
+                "it lies outside the outline or in a hole."
+            )
+        return triangles, barycentrics
+
+    def barycentrics(self, triangles: Ints, points: Floats) -> Floats:
+        """Barycentric coordinates of points in given triangles, (k, 3)."""
+        a, b, c = np.moveaxis(self.points[self.triangles[triangles]], 1, 0)
+        u, v, d = b - a, c - a, points - a
+        double = 2.0 * self.areas[triangles]
+        second = (d[:, 0] * v[:, 1] - d[:, 1] * v[:, 0]) / double
+        third = (u[:, 0] * d[:, 1] - u[:, 1] * d[:, 0]) / double
+        return np.column_stack([1.0 - second - third, second, third])
+
+    @cached_property
+    def _sliver(self) -> float:
+        """Largest height in m of the sliver between a chord and its circle."""
+        curved = self.boundary_circles != STRAIGHT_EDGE
+        if not curved.any():
+            return 0.0
+        r = self.circles[self.boundary_circles[curved], 2]
+        half = 0.5 * self.boundary_lengths[curved]
+        return float(np.max(r - np.sqrt(np.maximum(r**2 - half**2, 0.0))))
+
+    @cached_property
+    def _tree(self) -> Any:
+        import shapely
+
+        return shapely.STRtree(shapely.polygons(self.points[self.triangles]))
+
+    def _nearest(self, points: Floats) -> Ints:
+        """Triangle at no distance, or the nearest one, of each point."""
+        import shapely
+
+        pairs = self._tree.query_nearest(shapely.points(points), all_matches=False)
+        return np.asarray(pairs[1], dtype=np.int64)
+
+    def _check_triangles(self) -> None:
+        if not len(self.triangles):
+            raise MeshError("the mesh has no triangles.")
+        flat = np.flatnonzero(~(self.areas > 0.0))
+        if flat.size:
+            i = int(flat[0])
+            x, y = self.points[self.triangles[i]].mean(axis=0)
+            raise MeshError(
+                f"triangle {i} near ({x:.6g}, {y:.6g}) m has area {self.areas[i]:.3g} "
+                f"m2 ({flat.size} such of {len(self.triangles)}); list the vertices of "
+                "each triangle counter-clockwise."
+            )
+        used = np.zeros(len(self.points), dtype=bool)
+        used[self.triangles] = True
+        if not used.all():
+            i = int(np.flatnonzero(~used)[0])
+            x, y = self.points[i]
+            raise MeshError(
+                f"point {i} at ({x:.6g}, {y:.6g}) m belongs to no triangle; drop it."
+            )
+
+    def _check_boundary(self) -> None:
+        count = np.bincount(self.triangle_edges.ravel(), minlength=len(self.edges))
+        if count.max() > 2:
+            raise MeshError("an edge belongs to more than two triangles; mesh again.")
+        n = len(self.points)
+        outer = self.edges[count == 1]
+        given = np.sort(self.boundary_edges, axis=1)
+        keys = [np.sort(pair[:, 0] * n + pair[:, 1]) for pair in (outer, given)]
+        if not np.array_equal(*keys):
+            raise MeshError(
+                f"{len(outer)} edges belong to one triangle only but {len(given)} "
+                "edges lie on sides: the mesh is cracked or a side is not named."
+            )
+        ends = np.bincount(self.boundary_edges.ravel(), minlength=n)
+        if ends.max(initial=0) > 2:
+            x, y = self.points[int(ends.argmax())]
+            raise MeshError(
+                f"the plate is pinched to a point at ({x:.6g}, {y:.6g}) m; part it."
+            )
+        sides = self.boundary_sides
+        if len(sides) != len(given) or not (
+            (sides >= 0) & (sides < len(self.side_names))
+        ).all():
+            raise MeshError("a boundary edge belongs to no named side.")

@@ -1,0 +1,375 @@
+"""The fields of a panel file, read into SI units and named in every complaint.
+
+A quantity is text, a number and a unit: ``"10 mm"``, ``"3/8 in"``, ``"5 kN/m^2"``. The
+number is read here and only the unit goes to pint, which would take "1,5 mm" for 15 mm
+and "1 1/2 in" for half an inch. A load adds the word ``up`` or ``down`` and has no sign.
+"""
+
+import difflib
+import math
+import re
+from collections.abc import Collection, Iterator, Mapping, Sequence
+from contextlib import contextmanager
+from dataclasses import dataclass
+from functools import cache, lru_cache
+from typing import Any
+
+from kplate.errors import InputError
+from kplate.units import Unit
+
+# What a file may measure: the SI unit, and how it is written in a file.
+DIMENSIONS = {
+    "length": ("m", '"10 mm"'),
+    "force": ("N", '"1.5 kN"'),
+    "pressure": ("Pa", '"235 MPa"'),
+    "density": ("kg/m**3", '"7850 kg/m^3"'),
+    "acceleration": ("m/s**2", '"9.81 m/s^2"'),
+}
+# No quantity of a panel lies outside, in SI units; squares and cubes stay finite.
+REACH = (1e-12, 1e15)
+# Units that are nearly always a slip of the shift key.
+SLIPS = {"mPa": "MPa", "Mm": "mm"}
+MOST_TEXT = 100  # characters of a name or a quantity: it has to fit a table
+
+_NUMBER = r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?"
+_FRACTION = r"[+-]?(?:[0-9]+ +)?[0-9]+ ?/ ?[1-9][0-9]*"
+_FACTOR = r"[A-Za-zµμ]{1,32}(?:(?:\^|\*\*)?[1-4]|[²³])?"
+_UNIT = rf"{_FACTOR}(?: ?[/*·] ?{_FACTOR}){{0,3}}"
+_QUANTITY = re.compile(rf"({_FRACTION}|{_NUMBER})(?:\s*({_UNIT}))?")
+
+
+def quantity(text: object, dimension: str) -> float:
+    """Read a number with its unit.
+
+    Parameters
+    ----------
+    text : object
+        What stands in the file, such as ``"10 mm"``.
+    dimension : str
+        What it must measure, a key of `DIMENSIONS`.
+
+    Returns
+    -------
+    float
+        The quantity in SI units, with its sign.
+
+    Raises
+    ------
+    InputError
+        If it is not text, has no unit, or measures something else.
+
+    Examples
+    --------
+    >>> quantity("3/8 in", "length")
+    0.009525
+    """
+    number, its_unit = _split(text, dimension)
+    value = number * its_unit.size
+    check_reach(value, dimension)
+    return value
+
+
+def stated_unit(text: object, dimension: str) -> Unit:
+    """Read the unit of a quantity; see `quantity`."""
+    return _split(text, dimension)[1]
+
+
+def positive(text: object, dimension: str) -> float:
+    """Read a quantity that must be larger than zero; see `quantity`."""
+    value = quantity(text, dimension)
+    if value <= 0.0:
+        raise InputError(f"it must be a positive {dimension}.")
+    return value
+
+
+def directed(text: object, dimension: str) -> float:
+    """Read a load such as ``"5 kPa down"``; the SI value is positive up."""
+    example = DIMENSIONS[dimension][1].strip('"')
+    amount, _, word = (
+        text.strip().rpartition(" ") if isinstance(text, str) else [""] * 3
+    )
+    if word not in ("up", "down"):
+        raise InputError(f'a load says up or down in words, such as "{example} down".')
+    if amount.startswith(("-", "+")):
+        raise InputError(f"up or down says it all; take the sign {amount[0]!r} out.")
+    value = positive(amount, dimension)
+    return value if word == "up" else -value
+
+
+def angle(text: object) -> float:
+    """Read an angle such as ``"30 deg"``, in rad."""
+    sizes = {"deg": math.pi / 180.0, "°": math.pi / 180.0, "rad": 1.0}
+    match = (
+        re.fullmatch(rf"({_NUMBER})\s*({'|'.join(sizes)})", text.strip())
+        if isinstance(text, str) and len(text) <= MOST_TEXT
+        else None
+    )
+    if match is None:
+        raise InputError('an angle is a number in deg or rad, such as "30 deg".')
+    value = _number(match[1]) * sizes[match[2]]
+    if abs(value) > 2.0 * math.pi:
+        raise InputError("it turns by more than a full circle.")
+    return value
+
+
+def share(text: object) -> float:
+    """Read a share such as ``"1 %"``, as a number between 0 and 1."""
+    match = (
+        re.fullmatch(rf"({_NUMBER})\s*%", text.strip())
+        if isinstance(text, str) and len(text) <= MOST_TEXT
+        else None
+    )
+    if match is None or not 0.0 < _number(match[1]) < 100.0:
+        raise InputError('it must be a share between 0 and 100 %, such as "1 %".')
+    return _number(match[1]) / 100.0
+
+
+@lru_cache(maxsize=256)
+def unit(text: str, dimension: str) -> Unit:
+    """Read a unit, such as ``"mm"``; its symbol stays as written.
+
+    Parameters
+    ----------
+    text : str
+        The unit.
+    dimension : str
+        What it must measure, a key of `DIMENSIONS`.
+
+    Raises
+    ------
+    InputError
+        If there is no such unit, or it measures something else.
+    """
+    si, example = DIMENSIONS[dimension]
+    if len(text) > MOST_TEXT or not re.fullmatch(_UNIT, text):
+        raise InputError(f"{shown(text)} is no unit; write one such as {si}.")
+    if text in SLIPS:
+        raise InputError(
+            f"unit {text!r} is a slip of the pen; did you mean {SLIPS[text]}?"
+        )
+    ascii_text = text.replace("²", "^2").replace("³", "^3").replace("·", "*")
+    ascii_text = re.sub(r"(?<=[A-Za-zµμ])(?=[1-4])", "^", ascii_text)
+    pint = _registry()
+    try:
+        found = pint.parse_units(ascii_text)
+        fits = found.dimensionality == pint.parse_units(si).dimensionality
+        size = float(pint.Quantity(1.0, found).to(si).magnitude) if fits else 0.0
+    except Exception as error:  # pint parses as Python does and raises what that raises
+        raise InputError(
+            f"there is no unit {shown(text)}; write a {dimension} such as {example}."
+        ) from error
+    if not size > 0.0:
+        raise InputError(
+            f"{shown(text)} is no unit of {dimension}; write it such as {example}."
+        )
+    return Unit(text, size)
+
+
+def check_reach(value: float, dimension: str) -> None:
+    """Refuse a number that no panel can have."""
+    if value != 0.0 and not REACH[0] <= abs(value) <= REACH[1]:
+        size = "large" if abs(value) > 1.0 else "small"
+        raise InputError(f"the {dimension} is too {size} for any panel.")
+
+
+def shown(value: object) -> str:
+    """Show a value of the file in a message, on one short line."""
+    match value:
+        case bool():
+            return str(value).lower()
+        case str():
+            return repr(value if len(value) <= 40 else f"{value[:37]}...")
+        case int() if abs(value) >= 10**15:
+            return "a huge integer"
+        case Mapping():
+            return "a table"
+        case Sequence():
+            return f"a list of {len(value)}" if value else "an empty list"
+    return str(value)
+
+
+def closest(word: str, words: Collection[str]) -> str:
+    """Ask whether the nearest of some words was meant, if one is near."""
+    close = difflib.get_close_matches(word[:MOST_TEXT], list(words), n=1)
+    return f" Did you mean {close[0]!r}?" if close else ""
+
+
+@contextmanager
+def within(where: str) -> Iterator[None]:
+    """Name the place in the file in each complaint raised inside."""
+    try:
+        yield
+    except InputError as error:
+        raise InputError(f"{where}: {error}") from error
+
+
+@dataclass(frozen=True, kw_only=True)
+class Fields:
+    """One table of a panel file.
+
+    Parameters
+    ----------
+    where : str
+        How messages name the table, such as "[panel]".
+    table : mapping
+        What it holds.
+    examples : mapping of str to str
+        The fields it may hold, each with a value as it is written.
+
+    Raises
+    ------
+    InputError
+        If it is not a table, or holds a field that it may not.
+    """
+
+    where: str
+    table: Mapping[str, Any]
+    examples: Mapping[str, str]
+
+    def __post_init__(self) -> None:
+        """Check the names of the fields."""
+        if not isinstance(self.table, Mapping):
+            field, example = next(iter(self.examples.items()))
+            raise InputError(
+                f"{self.where} is {shown(self.table)}; it must be a table such as "
+                f"{{ {field} = {example} }}."
+            )
+        for key in self.table:
+            if key not in self.examples:
+                raise InputError(
+                    f"{self.where}: unknown field {shown(key)}; the fields are "
+                    f"{', '.join(self.examples)}.{closest(key, self.examples)}"
+                )
+
+    def __contains__(self, key: str) -> bool:
+        """Whether the field is stated."""
+        return key in self.table
+
+    def value(self, key: str) -> Any:
+        """What a field holds, which must be there."""
+        if key not in self.table:
+            raise InputError(
+                f"{self.where}: {key} is missing; add {key} = {self.examples[key]}."
+            )
+        return self.table[key]
+
+    def place(self, key: str) -> str:
+        """How a message names a field and its value."""
+        gap = " " if self.where.endswith("]") else ": "
+        return f"{self.where}{gap}{key} = {shown(self.value(key))}"
+
+    def refuse(self, key: str, why: str) -> InputError:
+        """Return the complaint about a field."""
+        return InputError(f"{self.place(key)}: {why}")
+
+    def word(self, key: str, *, default: str | None = None) -> str:
+        """Text on one line, such as a name."""
+        if default is not None and key not in self.table:
+            return default
+        with within(self.place(key)):
+            return one_line(self.value(key))
+
+    def choice(self, key: str, words: Collection[str]) -> str:
+        """One of some words."""
+        value = self.value(key)
+        if isinstance(value, str) and value in words:
+            return value
+        hint = closest(value, words) if isinstance(value, str) else ""
+        raise self.refuse(key, f"it must be one of {', '.join(words)}.{hint}")
+
+    def number(self, key: str) -> float:
+        """Return a number without a unit."""
+        with within(self.place(key)):
+            return bare_number(self.value(key))
+
+    def quantity(self, key: str, dimension: str) -> float:
+        """Return a quantity in SI units, with its sign."""
+        with within(self.place(key)):
+            return quantity(self.value(key), dimension)
+
+    def positive(self, key: str, dimension: str) -> float:
+        """Return a quantity in SI units, larger than zero."""
+        with within(self.place(key)):
+            return positive(self.value(key), dimension)
+
+    def directed(self, key: str, dimension: str) -> float:
+        """Return a load in SI units, positive up."""
+        with within(self.place(key)):
+            return directed(self.value(key), dimension)
+
+    def unit(self, key: str, dimension: str) -> Unit:
+        """Return a unit that the file names."""
+        with within(self.place(key)):
+            return unit(one_line(self.value(key)), dimension)
+
+    def items(self, key: str) -> list[tuple[str, Any]]:
+        """The items of a list that is not empty, each with how messages name it."""
+        value = self.value(key)
+        if not isinstance(value, list) or not value:
+            raise self.refuse(
+                key, f"it must be a list that is not empty, {self.examples[key]}."
+            )
+        start = self.place(key).partition(" = ")[0]
+        return [
+            (f"{start}, item {i} = {shown(item)}", item)
+            for i, item in enumerate(value, 1)
+        ]
+
+
+def one_line(value: object) -> str:
+    """Check text that goes into tables."""
+    if not isinstance(value, str):
+        raise InputError("it must be text in quotes.")
+    if not value or value != value.strip() or not value.isprintable():
+        raise InputError(
+            "it must be text on one line, not empty, with no space around it."
+        )
+    if len(value) > MOST_TEXT:
+        raise InputError(f"it is longer than {MOST_TEXT} characters.")
+    return value
+
+
+def bare_number(value: object) -> float:
+    """Check a number that stands without a unit."""
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        raise InputError("it must be a number, without quotes and unit.")
+    if not abs(value) <= REACH[1]:
+        raise InputError("it must be a finite number of a usual size.")
+    return float(value)
+
+
+def _split(text: object, dimension: str) -> tuple[float, Unit]:
+    """Part a quantity into its number and its unit."""
+    example = DIMENSIONS[dimension][1]
+    if not isinstance(text, str):
+        raise InputError(f"a {dimension} is text with its unit, such as {example}.")
+    if "," in text:
+        raise InputError("write a decimal point and no commas, such as 1.5.")
+    match = _QUANTITY.fullmatch(text.strip()) if len(text) <= MOST_TEXT else None
+    if match is None:
+        raise InputError(f"a {dimension} is a number and its unit, such as {example}.")
+    number, unit_text = match.groups()
+    if unit_text is None:
+        raise InputError(f"a {dimension} needs a unit, such as {example}.")
+    return _number(number), unit(unit_text, dimension)
+
+
+def _number(text: str) -> float:
+    """Value of a number, a fraction, or a whole number and a fraction."""
+    top, slash, bottom = text.partition("/")
+    if not slash:
+        return float(text)
+    whole, _, over = top.strip().rpartition(" ")
+    size = abs(int(whole or 0)) + abs(int(over)) / int(bottom)
+    return -size if text.startswith("-") else size
+
+
+@cache
+def _registry() -> Any:
+    """Pint's units, and two of American practice that it lacks."""
+    import pint
+
+    registry = pint.UnitRegistry()
+    registry.define("pound_per_square_foot = pound_force / foot ** 2 = psf")
+    registry.define("pound_per_cubic_foot = pound / foot ** 3 = pcf")
+    return registry

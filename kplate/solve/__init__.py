@@ -1,0 +1,1 @@
+"""Solvers: a stated plate and a mesh in, unknowns out, nothing judged."""

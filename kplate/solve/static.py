@@ -1,0 +1,184 @@
+"""Static bending: one factorisation, any number of load cases."""
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from kplate import assembly
+from kplate.arrays import Floats
+from kplate.boundary import Constraints, constrain, free_motions
+from kplate.dofs import Numbering
+from kplate.elements import ELEMENTS, Element
+from kplate.errors import InputError, SolveError
+from kplate.linalg import Factor
+from kplate.loads import Case
+from kplate.mesh import Mesh
+from kplate.plate import Plate
+
+Progress = Callable[[str, float], None]
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class StaticState:
+    """The unknowns of a plate in its load cases.
+
+    Parameters
+    ----------
+    plate : Plate
+        The statement.
+    cases : tuple of Case
+        The load cases, in the order of the last axis below.
+    element : Element
+        What the unknowns belong to.
+    constraints : Constraints
+        Their numbering and what the supports hold.
+    unknowns : ndarray, shape (count, c)
+        Deflections in m and slopes.
+    forces : ndarray, shape (count, c)
+        Consistent loads in N and N m.
+    support_forces : ndarray, shape (count, c)
+        What the supports bring: stiffness times unknowns less loads, at the supported
+        vertices; N, positive up, and the couples in N m that work on the slopes.
+    """
+
+    plate: Plate
+    cases: tuple[Case, ...]
+    element: Element
+    constraints: Constraints
+    unknowns: Floats
+    forces: Floats
+    support_forces: Floats
+
+    @property
+    def mesh(self) -> Mesh:
+        """The triangles."""
+        return self.constraints.numbering.mesh
+
+    @cached_property
+    def strain_energy(self) -> Floats:
+        """Strain energy of each case in J, summed over the triangles, (c,)."""
+        numbering, total = self.constraints.numbering, np.zeros(len(self.cases))
+        for block, K in assembly.element_stiffness(self.plate, self.mesh, self.element):
+            u = self.unknowns[numbering.table[block]]
+            total += 0.5 * np.einsum("nic,nic->c", u, K @ u)
+        return total
+
+    @property
+    def load_work(self) -> Floats:
+        """Loads times deflections of each case in J, twice the energy, (c,)."""
+        return np.einsum("ic,ic->c", self.unknowns, self.forces)
+
+
+def solve_static(
+    plate: Plate,
+    mesh: Mesh,
+    cases: Sequence[Case],
+    *,
+    element: str = "dkt",
+    progress: Progress | None = None,
+) -> StaticState:
+    """Solve static bending of a plate on a given mesh.
+
+    Parameters
+    ----------
+    plate : Plate
+        The statement.
+    mesh : Mesh
+        Triangles over its outline.
+    cases : sequence of Case
+        At least one, of different names.
+    element : str
+        Name in the table of elements.
+    progress : callable, optional
+        Called with a stage and the fraction done.
+
+    Returns
+    -------
+    StaticState
+
+    Raises
+    ------
+    InputError
+        If there is no such element, no case, or two cases share a name.
+    SolveError
+        If the plate can still move as a rigid body.
+    """
+    if element not in ELEMENTS:
+        raise InputError(
+            f"there is no element {element!r}; the elements are {', '.join(ELEMENTS)}."
+        )
+    _check_cases(cases)
+    report = progress or _silent
+    chosen = ELEMENTS[element]
+    numbering = Numbering(
+        mesh=mesh, per_vertex=chosen.per_vertex, per_edge=chosen.per_edge
+    )
+    constraints = constrain(plate, numbering)
+    loose = free_motions(constraints)
+    if loose:
+        plural = "s" if len(loose) > 1 else ""
+        raise SolveError(
+            f"the plate can still move as a rigid body ({len(loose)} free "
+            f"motion{plural}: {', '.join(dict.fromkeys(loose))}); add a support."
+        )
+    report("loads", 0.1)
+    forces = np.column_stack(
+        [assembly.load_vector(plate, chosen, numbering, case.loads) for case in cases]
+    )
+    report("stiffness", 0.2)
+    matrix = assembly.stiffness(plate, chosen, constraints)
+    report("factorisation", 0.4)
+    factor = Factor(matrix)
+    free = constraints.free
+    turned = np.zeros_like(forces)
+    turned[free] = factor.solve(constraints.turn(forces)[free])
+    unknowns = constraints.turn_back(turned)
+    if not np.isfinite(unknowns).all():
+        raise SolveError("the solution is not finite; check the loads and the material.")
+    report("support forces", 0.9)
+    return StaticState(
+        plate=plate,
+        cases=tuple(cases),
+        element=chosen,
+        constraints=constraints,
+        unknowns=unknowns,
+        forces=forces,
+        support_forces=_support_forces(plate, chosen, constraints, unknowns, forces),
+    )
+
+
+def _support_forces(
+    plate: Plate,
+    element: Element,
+    constraints: Constraints,
+    unknowns: Floats,
+    forces: Floats,
+) -> Floats:
+    """Residual at the supported vertices, zero elsewhere, (count, c)."""
+    numbering = constraints.numbering
+    supported = np.zeros(len(numbering.mesh.points), dtype=bool)
+    supported[constraints.vertices] = True
+    near = np.flatnonzero(supported[numbering.mesh.triangles].any(axis=1))
+    inner = assembly.internal_forces(plate, element, numbering, unknowns, near)
+    own = numbering.at_vertices(constraints.vertices).ravel()
+    result = np.zeros_like(forces)
+    result[own] = inner[own] - forces[own]
+    return result
+
+
+def _check_cases(cases: Sequence[Case]) -> None:
+    if not cases:
+        raise InputError("there is no load case; give at least one.")
+    names = [case.name for case in cases]
+    for name in names:
+        if names.count(name) > 1:
+            raise InputError(
+                f"{names.count(name)} load cases are called {name!r}; each needs a name "
+                "of its own."
+            )
+
+
+def _silent(stage: str, done: float) -> None:
+    """Report nothing."""
