@@ -1,8 +1,8 @@
 """Sparse stiffness and load vectors from elements.
 
-Triangles go through in blocks, which stay in the processor's cache and bound the memory.
-The pattern of the matrix follows from the vertices and edges of the mesh once; its
-numbers are then summed by one count over a stored index.
+Triangles go through in blocks, which stay in the processor's cache and bound the
+memory. The pattern of the matrix follows from the vertices and edges of the mesh once;
+its numbers are then summed by one count over a stored index.
 """
 
 from collections.abc import Iterator, Sequence
@@ -94,12 +94,18 @@ def internal_forces(
     unknowns: Floats,
     triangles: Ints | None = None,
 ) -> Floats:
-    """Stiffness times unknowns (count, c), summed over some triangles or all."""
+    """Stiffness times unknowns (count, c), summed over some triangles or all.
+
+    Each triangle's rigid motion, which brings no forces, is taken off first: where
+    triangles are small its round-off would be larger than the forces themselves.
+    """
     mesh = numbering.mesh
     result = np.zeros_like(unknowns)
     for block, K in element_stiffness(plate, mesh, element, triangles):
         table = numbering.table[block]
-        _add(result, table, K @ unknowns[table])
+        vertices = mesh.points[mesh.triangles[block]]
+        bent = _without_rigid(unknowns[table], vertices, numbering.per_vertex)
+        _add(result, table, K @ bent)
     return result
 
 
@@ -211,6 +217,16 @@ def _turn(K: Floats, frame_of: Ints, frames: Floats) -> None:
             K[some, :, own] = K[some, :, own] @ Q
 
 
+def _without_rigid(own: Floats, vertices: Floats, p: int) -> Floats:
+    """Take the mean deflection and slope off the vertex unknowns (n, 3 p, c)."""
+    parted = own.reshape(len(own), 3, p, -1).copy()
+    slope = parted[:, :, 1:3].mean(axis=1)  # (n, 2, c)
+    arms = vertices - vertices.mean(axis=1, keepdims=True)
+    parted[:, :, 1:3] -= slope[:, None]
+    parted[:, :, 0] -= parted[:, :, 0].mean(axis=1, keepdims=True) + arms @ slope
+    return parted.reshape(own.shape)
+
+
 def _add(forces: Floats, table: Ints, own: Floats) -> None:
     """Sum forces (n, d, c) of triangles into those of the unknowns (count, c)."""
     for c in range(forces.shape[1]):
@@ -229,7 +245,7 @@ def _add_pressure(
     for start in range(0, len(chosen), BLOCK):
         block = chosen[start : start + BLOCK]
         vertices = mesh.points[mesh.triangles[block]]
-        points = np.einsum("qv,nvc->nqc", rule.points, vertices)
+        points = rule.points @ vertices
         pressure = _pressure(load, plate, points)
         own = element.load(Geometry(vertices=vertices, rule=rule), pressure)
         _add(forces, numbering.table[block], own[..., None])
@@ -244,8 +260,8 @@ def _pressure(load: Load, plate: Plate, points: Floats) -> Floats:
             density = plate.material.density
             if density is None:
                 raise InputError(
-                    f"material {plate.material.name!r} states no density; a self-weight "
-                    "needs one."
+                    f"material {plate.material.name!r} states no density; a "
+                    "self-weight needs one."
                 )
             return np.full(points.shape[:-1], density * plate.thickness * acceleration)
         case Hydrostatic():
@@ -269,8 +285,8 @@ def _field_pressure(value: Floats, points: Floats) -> Floats:
     if bad.any():
         x, y = points[bad][0]
         raise InputError(
-            f"a pressure function returned {result[bad][0]} at ({x:.6g}, {y:.6g}) m; it "
-            "must be finite all over the plate."
+            f"a pressure function returned {result[bad][0]} at ({x:.6g}, {y:.6g}) m; "
+            "it must be finite all over the plate."
         )
     return result
 
@@ -341,7 +357,7 @@ def _add_patch(
 def _pieces(
     mesh: Mesh, element: Element, triangles: Ints | None = None
 ) -> tuple[Floats, Ints]:
-    """Pieces on which w is one polynomial, (m, 3, 2), and the triangle of each, (m,)."""
+    """Pieces on which w is one polynomial, (m, 3, 2), and their triangles, (m,)."""
     chosen = np.arange(len(mesh.triangles)) if triangles is None else triangles
     corners = mesh.points[mesh.triangles[chosen]]
     pieces = np.einsum("skv,nvc->nskc", element.pieces, corners)
@@ -382,6 +398,8 @@ def _add_point(
         triangle, barycentrics = mesh.locate([load.at])
     except InputError as error:
         raise InputError(f"a point force of {load.force:g} N: {error}") from error
-    rows = element.evaluate(mesh.points[mesh.triangles[triangle]], barycentrics[:, None])
+    rows = element.evaluate(
+        mesh.points[mesh.triangles[triangle]], barycentrics[:, None]
+    )
     own = load.force * rows[:, 0, 0]
     _add(forces, numbering.table[triangle], own[..., None])

@@ -1,14 +1,14 @@
 """Where a support word becomes held unknowns.
 
 At each vertex the supported edges that meet there hold directions in the space of the
-vertex's unknowns ``w, dw/dx, dw/dy``: w itself, the slope along the edge's tangent t, and
-on a clamped edge the slope along its normal n. The unknowns are turned into an
-orthonormal frame whose first directions are the held ones, and those are left out of the
-equations: no penalty numbers.
+vertex's unknowns ``w, dw/dx, dw/dy``: w itself, the slope along the edge's tangent t,
+and on a clamped edge the slope along its normal n. The unknowns are turned into an
+orthonormal frame whose first directions are the held ones, and those are left out of
+the equations: no penalty numbers.
 
 Between sides held alike, a turn smaller than the plate's `bend_turn` is a bend with ONE
-tangent: two tangents there would hold both slopes and clamp a plate that is free to turn.
-Chords of a circle take the circle's tangent.
+tangent: two tangents there would hold both slopes and clamp a plate that is free to
+turn. Chords of a circle take the circle's tangent.
 """
 
 from dataclasses import dataclass
@@ -110,9 +110,9 @@ def constrain(plate: Plate, numbering: Numbering) -> Constraints:
 def turns(tangents: Floats) -> Floats:
     """Turn to the left in rad from arriving to leaving tangents (k, 2, 2), (k,)."""
     a, b = tangents[:, 0], tangents[:, 1]
-    return np.arctan2(
-        a[:, 0] * b[:, 1] - a[:, 1] * b[:, 0], np.einsum("kc,kc->k", a, b)
-    )
+    cross = a[:, 0] * b[:, 1] - a[:, 1] * b[:, 0]
+    turn: Floats = np.arctan2(cross, np.einsum("kc,kc->k", a, b))
+    return turn
 
 
 def free_motions(constraints: Constraints) -> list[str]:
@@ -121,15 +121,17 @@ def free_motions(constraints: Constraints) -> list[str]:
     Returns
     -------
     list of str
-        Such as "tilt about x = 0"; empty where the plate is held.
+        Such as "tilt about x = 0 m"; empty where the plate is held.
     """
     mesh = constraints.numbering.mesh
     centre, size = mesh.points.mean(axis=0), float(np.ptp(mesh.points, axis=0).max())
     motions = _rigid(mesh, constraints.vertices, centre, size)  # (k, 3, motion)
-    turned = constraints.frames.swapaxes(-1, -2) @ motions
-    held = turned[constraints.held]
+    frames = constraints.frames * constraints.held[:, None, :]
+    held = frames @ frames.swapaxes(-1, -2) @ motions  # what the supports see of them
+    held[:, 1:] *= size  # slopes count as much as deflections, whatever the size
+    held = held.reshape(-1, 3)
     values, vectors = np.linalg.eigh(held.T @ held)
-    loose = vectors[:, values < RANK_CUT * max(1.0, float(values[-1]))]
+    loose = vectors[:, values <= RANK_CUT * float(values[-1])]
     return _name_motions(loose, centre, size)
 
 
@@ -139,7 +141,7 @@ def rigid_motions(mesh: Mesh) -> Floats:
 
 
 def _rigid(mesh: Mesh, vertices: Ints, centre: Floats, size: float) -> Floats:
-    """Unknowns at vertices of w = 1, (x - centre)/size, (y - centre)/size, (k, 3, 3)."""
+    """Unknowns of w = 1, (x - centre)/size, (y - centre)/size, (k, 3, 3)."""
     motions = np.zeros((len(vertices), 3, 3))
     motions[:, 0, 0] = 1.0
     motions[:, 0, 1:] = (mesh.points[vertices] - centre) / size
@@ -148,7 +150,7 @@ def _rigid(mesh: Mesh, vertices: Ints, centre: Floats, size: float) -> Floats:
 
 
 def _rows(tangent: Floats, holds: Bools, clamps: Bools) -> Floats:
-    """Directions held at k vertices by one edge each, zero where nothing is, (k, 3, 3)."""
+    """Directions one edge each holds at k vertices, zero where none, (k, 3, 3)."""
     rows = np.zeros((len(tangent), 3, 3))
     rows[:, 0, 0] = holds
     rows[:, 1, 1:] = tangent * holds[:, None]
@@ -172,7 +174,11 @@ def _name_motions(loose: Floats, centre: Floats, size: float) -> list[str]:
     if m == 0:
         return []
     if m == 3:
-        return ["move up and down", "tilt about any line in x", "tilt about any line in y"]
+        return [
+            "move up and down",
+            "tilt about any line in x",
+            "tilt about any line in y",
+        ]
     if m == 2:
         a, b, c = np.linalg.svd(loose.T)[2][2]  # w = 0 at one point in all of them
         x, y = centre + size * np.array([b, c]) / a if abs(a) > 1e-12 else (np.nan,) * 2

@@ -1,4 +1,4 @@
-"""Numbers of the unknowns: those of vertex 0 first, vertex by vertex, then the edges."""
+"""Numbers of the unknowns: vertex by vertex, then edge by edge."""
 
 from dataclasses import dataclass
 from functools import cached_property

@@ -161,9 +161,7 @@ class Verdict:
         if not self.judgements:
             return "no limit stated: nothing judged"
         if self.outcome is Outcome.FAILS:
-            failed = [
-                j.quantity for j in self.judgements if j.outcome is Outcome.FAILS
-            ]
+            failed = [j.quantity for j in self.judgements if j.outcome is Outcome.FAILS]
             return f"fails: {', '.join(dict.fromkeys(failed))}"
         if self.outcome is Outcome.NOT_PROVEN:
             return "not proven: a band straddles its limit"

@@ -2,9 +2,11 @@
 
 CHOLMOD (through cvxopt) where it is installed; otherwise SuperLU told that the matrix
 is symmetric and needs no pivoting. The matrix is scaled to a unit diagonal first, since
-deflections and slopes have different units, and each solution is refined once.
+deflections and slopes have different units.
 """
 
+from contextlib import suppress
+from functools import cache
 from typing import Any
 
 import numpy as np
@@ -12,6 +14,9 @@ import scipy.sparse as sp
 
 from kplate.arrays import Floats
 from kplate.errors import SolveError
+
+# Pivots of a matrix scaled to a unit diagonal are at most one; below this, round-off.
+ROUND_OFF = 1e-14
 
 
 class Factor:
@@ -37,22 +42,15 @@ class Factor:
         self._scale = 1.0 / np.sqrt(diagonal)
         columns = np.repeat(np.arange(lower.shape[1]), np.diff(lower.indptr))
         data = lower.data * self._scale[lower.indices] * self._scale[columns]
-        self._lower = sp.csc_array((data, lower.indices, lower.indptr), lower.shape)
+        scaled = sp.csc_array((data, lower.indices, lower.indptr), lower.shape)
         with _one_thread():
-            self._back = _cholmod(self._lower, columns) or _superlu(self._lower)
+            self._back = _cholmod(scaled, columns) or _superlu(scaled)
 
     def solve(self, right: Floats) -> Floats:
         """Solve for right sides (n,) or (n, k)."""
         scale = self._scale if right.ndim == 1 else self._scale[:, None]
-        b = scale * right
         with _one_thread():
-            x = self._back(b)
-            x += self._back(b - self._product(x))
-        return scale * x
-
-    def _product(self, x: Floats) -> Floats:
-        """Scaled matrix, whose diagonal is one, times x."""
-        return self._lower @ x + self._lower.T @ x - x
+            return scale * self._back(scale * right)
 
 
 def _cholmod(lower: sp.csc_array, columns: Any) -> Any:
@@ -62,15 +60,16 @@ def _cholmod(lower: sp.csc_array, columns: Any) -> Any:
     except ImportError:
         return None
     rows = matrix(lower.indices.astype(np.int64))
-    A = spmatrix(matrix(lower.data), rows, matrix(columns.astype(np.int64)), lower.shape)
+    A = spmatrix(
+        matrix(lower.data), rows, matrix(columns.astype(np.int64)), lower.shape
+    )
+    cholmod.options["supernodal"] = 2  # L L', which has no room for negative pivots
     factor = cholmod.symbolic(A, uplo="L")
     try:
         cholmod.numeric(A, factor)
     except ArithmeticError as error:
-        raise SolveError(
-            "the stiffness is not positive definite: the plate, or a part of it, can "
-            "still move, or a triangle is almost flat."
-        ) from error
+        raise _loose() from error
+    _check_pivots(np.array(cholmod.diag(factor)) ** 2)
 
     def back(right: Floats) -> Floats:
         x = matrix(np.asfortranarray(right))
@@ -93,14 +92,33 @@ def _superlu(lower: sp.csc_array) -> Any:
             options={"SymmetricMode": True},
         )
     except RuntimeError as error:
-        raise SolveError(
-            "the stiffness is singular: the plate, or a part of it, can still move."
-        ) from error
+        raise _loose() from error
+    _check_pivots(factor.U.diagonal())
     return factor.solve
+
+
+def _check_pivots(pivots: Floats) -> None:
+    if not (pivots > ROUND_OFF).all():
+        raise _loose()
+
+
+def _loose() -> SolveError:
+    return SolveError(
+        "the stiffness is not positive definite: the plate, or a part of it, can still "
+        "move, or a triangle is almost flat."
+    )
 
 
 def _one_thread() -> Any:
     """BLAS threads on a busy machine cost more than they bring."""
-    from threadpoolctl import threadpool_limits
+    return _libraries().limit(limits=1)
 
-    return threadpool_limits(limits=1)
+
+@cache
+def _libraries() -> Any:
+    """The BLAS libraries that come with the solver; finding them takes time."""
+    from threadpoolctl import ThreadpoolController
+
+    with suppress(ImportError):
+        import cvxopt  # noqa: F401  # brings a BLAS of its own
+    return ThreadpoolController()

@@ -58,7 +58,9 @@ class Hydrostatic:
         _check_finite("specific weight of a liquid", self.specific_weight)
         _check_finite("up direction of a liquid", *self.up)
         if math.hypot(*self.up) == 0.0:
-            raise InputError("the up direction of a liquid is (0, 0); give a direction.")
+            raise InputError(
+                "the up direction of a liquid is (0, 0); give a direction."
+            )
 
 
 @dataclass(frozen=True)

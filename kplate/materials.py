@@ -3,7 +3,8 @@
 The rigidity turns the curvature ``(w,xx, w,yy, 2 w,xy)`` into the moments
 ``(m_xx, m_yy, m_xy)``. For an isotropic plate of thickness h
 
-    D = E h^3 / (12 (1 - nu^2)),   rigidity = D [[1, nu, 0], [nu, 1, 0], [0, 0, (1 - nu)/2]].
+    rigidity = D [[1, nu, 0], [nu, 1, 0], [0, 0, (1 - nu)/2]],
+    D = E h^3 / (12 (1 - nu^2)).
 
 Source: S. Timoshenko and S. Woinowsky-Krieger, "Theory of Plates and Shells", 2nd ed.,
 McGraw-Hill, 1959, ch. 2 (from memory).
@@ -90,9 +91,7 @@ class Isotropic:
 
 
 _EN_10025 = "EN 10025-2 grades; elastic constants of EN 1993-1-1, 3.2.6 (from memory)"
-STEEL = Isotropic(
-    name="steel S235", E=210e9, nu=0.3, density=7850.0, source=_EN_10025
-)
+STEEL = Isotropic(name="steel S235", E=210e9, nu=0.3, density=7850.0, source=_EN_10025)
 STAINLESS_STEEL = Isotropic(
     name="stainless 1.4301",
     E=200e9,

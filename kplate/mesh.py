@@ -4,6 +4,7 @@ Numbers run over points, triangles and edges. Edge k of a triangle lies opposite
 vertex k. Boundary edges are listed with the plate on their left.
 """
 
+import reprlib
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -11,12 +12,12 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike
 
-from kplate.arrays import Floats, Ints, read_only_floats, read_only_ints
+from kplate.arrays import Bools, Floats, Ints, read_only_floats, read_only_ints
 from kplate.errors import InputError, MeshError
 
 STRAIGHT_EDGE = -1
-# How far outside its triangle, in barycentrics, a point may lie and still be located:
-# round-off on a straight edge, and the sliver between a chord and its circle.
+# How far off the plate a point may lie and still be located, as a share of the plate's
+# size: round-off.
 OUTSIDE = 1e-9
 
 
@@ -47,8 +48,9 @@ class Mesh:
     Raises
     ------
     MeshError
-        If there are no triangles, one is flat or clockwise, a point belongs to none,
-        or the boundary edges are not the edges used once, each on one side.
+        If an array has the wrong shape or holds a number out of range, there are no
+        triangles, one is flat or clockwise, two overlap, a point belongs to none, or
+        the boundary edges are not the edges used once, the plate on their left.
     """
 
     points: Floats
@@ -75,6 +77,9 @@ class Mesh:
             given = getattr(self, name)
             full = np.full(length, value) if given is None else given
             object.__setattr__(self, name, read_only_ints(full))
+        if not len(self.triangles):
+            raise MeshError("the mesh has no triangles.")
+        self._check_arrays()
         self._check_triangles()
         self._check_boundary()
 
@@ -83,7 +88,8 @@ class Mesh:
         """Area of each triangle in m2, positive, (n_triangles,)."""
         a, b, c = np.moveaxis(self.points[self.triangles], 1, 0)
         u, v = b - a, c - a
-        return 0.5 * (u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0])
+        areas: Floats = 0.5 * (u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0])
+        return areas
 
     @property
     def area(self) -> float:
@@ -101,7 +107,7 @@ class Mesh:
 
     @property
     def edges(self) -> Ints:
-        """Vertices of each edge, smaller number first, in rising order, (n_edges, 2)."""
+        """Vertices of each edge, the smaller first, in rising order, (n_edges, 2)."""
         return self._edges[0]
 
     @property
@@ -113,7 +119,8 @@ class Mesh:
     def boundary_lengths(self) -> Floats:
         """Length of each boundary edge (of the chord, on a circle) in m."""
         a, b = np.moveaxis(self.points[self.boundary_edges], 1, 0)
-        return np.hypot(*(b - a).T)
+        lengths: Floats = np.hypot(*(b - a).T)
+        return lengths
 
     @cached_property
     def boundary_joints(self) -> Ints:
@@ -143,7 +150,7 @@ class Mesh:
             of one, of the edge itself elsewhere.
         """
         a, b = np.moveaxis(self.points[self.boundary_edges[edges]], 1, 0)
-        tangent = (b - a) / np.hypot(*(b - a).T)[:, None]
+        tangent: Floats = (b - a) / np.hypot(*(b - a).T)[:, None]
         circle = self.boundary_circles[edges]
         curved = circle != STRAIGHT_EDGE
         arm = self.points[at[curved]] - self.circles[circle[curved], :2]
@@ -160,7 +167,7 @@ class Mesh:
         ----------
         points : array_like, shape (k, 2)
             Points in m; a point on a shared edge goes to one of its triangles, a point
-            between a chord and its circle to the triangle of the chord.
+            between a chord of a round rim and its circle to the triangle of the chord.
 
         Returns
         -------
@@ -174,22 +181,18 @@ class Mesh:
         InputError
             If a point is not on the plate.
         """
-        points = np.atleast_2d(np.asarray(points, dtype=float))
-        if points.shape[1:] != (2,) or not np.isfinite(points).all():
+        points = _as_points(points)
+        triangles, barycentrics, on = self._find(points)
+        for i in np.flatnonzero(~on):
             raise InputError(
-                f"points have shape {points.shape} or are not finite; give pairs (x, y) "
-                "in m."
-            )
-        triangles = self._nearest(points)
-        barycentrics = self.barycentrics(triangles, points)
-        depth = barycentrics.min(axis=1) * np.sqrt(self.areas[triangles])
-        allowed = OUTSIDE * np.sqrt(self.area) + self._sliver
-        for i in np.flatnonzero(-depth > allowed):
-            raise InputError(
-                f"point ({points[i, 0]:.6g}, {points[i, 1]:.6g}) m is not on the plate; "
-                "it lies outside the outline or in a hole."
+                f"point ({points[i, 0]:.6g}, {points[i, 1]:.6g}) m is not on the "
+                "plate; it lies outside the outline or in a hole."
             )
         return triangles, barycentrics
+
+    def covers(self, points: ArrayLike) -> Bools:
+        """Tell which points (k, 2) in m are on the plate, (k,)."""
+        return self._find(_as_points(points))[2]
 
     def barycentrics(self, triangles: Ints, points: Floats) -> Floats:
         """Barycentric coordinates of points in given triangles, (k, 3)."""
@@ -201,31 +204,71 @@ class Mesh:
         return np.column_stack([1.0 - second - third, second, third])
 
     @cached_property
-    def _sliver(self) -> float:
-        """Largest height in m of the sliver between a chord and its circle."""
+    def _bulges(self) -> tuple[Floats, Floats]:
+        """Chords (m, 2, 2) with a circle of the plate beyond them, and it (m, 3)."""
         curved = self.boundary_circles != STRAIGHT_EDGE
-        if not curved.any():
-            return 0.0
-        r = self.circles[self.boundary_circles[curved], 2]
-        half = 0.5 * self.boundary_lengths[curved]
-        return float(np.max(r - np.sqrt(np.maximum(r**2 - half**2, 0.0))))
+        chords = self.points[self.boundary_edges[curved]]
+        circles = self.circles[self.boundary_circles[curved]]
+        round_rim = _left_of(chords, circles[:, :2]) > 0.0
+        return chords[round_rim], circles[round_rim]
 
     @cached_property
     def _tree(self) -> Any:
         import shapely
 
-        return shapely.STRtree(shapely.polygons(self.points[self.triangles]))
+        polygons: Any = shapely.polygons(self.points[self.triangles])
+        return shapely.STRtree(polygons)
 
-    def _nearest(self, points: Floats) -> Ints:
-        """Triangle at no distance, or the nearest one, of each point."""
+    def _find(self, points: Floats) -> tuple[Ints, Floats, Bools]:
+        """Nearest triangle, barycentrics in it, and whether that is on the plate."""
         import shapely
 
-        pairs = self._tree.query_nearest(shapely.points(points), all_matches=False)
-        return np.asarray(pairs[1], dtype=np.int64)
+        found, distance = self._tree.query_nearest(
+            shapely.points(points), all_matches=False, return_distance=True
+        )
+        triangles = np.asarray(found[1], dtype=np.int64)
+        on = distance <= OUTSIDE * np.sqrt(self.area)
+        on[~on] = self._in_slivers(points[~on])
+        return triangles, self.barycentrics(triangles, points), on
+
+    def _in_slivers(self, points: Floats) -> Bools:
+        """Which points (k, 2) lie between a chord of a round rim and the rim, (k,)."""
+        import shapely
+
+        chords, circles = self._bulges
+        if not (len(chords) and len(points)):
+            return np.zeros(len(points), dtype=bool)
+        lines: Any = shapely.linestrings(chords)
+        nearest = np.asarray(shapely.STRtree(lines).nearest(shapely.points(points)))
+        x, y, radius = circles[nearest].T
+        reach = np.hypot(points[:, 0] - x, points[:, 1] - y)
+        inside: Bools = reach <= radius + OUTSIDE * np.sqrt(self.area)
+        return inside & (_left_of(chords[nearest], points) <= 0.0)
+
+    def _check_arrays(self) -> None:
+        n, m = len(self.points), len(self.triangles)
+        k = len(self.boundary_edges)
+        for name, shape, least, most in (
+            ("points", (n, 2), -np.inf, np.inf),
+            ("triangles", (m, 3), 0, n),
+            ("boundary_edges", (k, 2), 0, n),
+            ("boundary_sides", (k,), 0, len(self.side_names)),
+            ("boundary_circles", (k,), STRAIGHT_EDGE, len(self.circles)),
+            ("zones", (m,), 0, np.inf),
+        ):
+            values = getattr(self, name)
+            if values.shape != shape:
+                raise MeshError(
+                    f"{name} has shape {values.shape}; it must have {shape}."
+                )
+            bad = values[~((values >= least) & (values < most))]
+            if bad.size:
+                raise MeshError(
+                    f"{name} holds {bad[0]}; it takes numbers from {least} to below "
+                    f"{most}."
+                )
 
     def _check_triangles(self) -> None:
-        if not len(self.triangles):
-            raise MeshError("the mesh has no triangles.")
         flat = np.flatnonzero(~(self.areas > 0.0))
         if flat.size:
             i = int(flat[0])
@@ -245,14 +288,16 @@ class Mesh:
             )
 
     def _check_boundary(self) -> None:
-        count = np.bincount(self.triangle_edges.ravel(), minlength=len(self.edges))
-        if count.max() > 2:
-            raise MeshError("an edge belongs to more than two triangles; mesh again.")
         n = len(self.points)
-        outer = self.edges[count == 1]
-        given = np.sort(self.boundary_edges, axis=1)
-        keys = [np.sort(pair[:, 0] * n + pair[:, 1]) for pair in (outer, given)]
-        if not np.array_equal(*keys):
+        outer = self._outer_edges() @ [n, 1]
+        given, turned = (self.boundary_edges @ key for key in ([n, 1], [1, n]))
+        wrong = np.flatnonzero(np.isin(turned, outer) & ~np.isin(given, outer))
+        if wrong.size:
+            raise MeshError(
+                f"boundary edge {wrong[0]} runs with the plate on its right "
+                f"({wrong.size} such of {len(given)}); turn it round."
+            )
+        if not np.array_equal(np.sort(outer), np.sort(given)):
             raise MeshError(
                 f"{len(outer)} edges belong to one triangle only but {len(given)} "
                 "edges lie on sides: the mesh is cracked or a side is not named."
@@ -263,8 +308,43 @@ class Mesh:
             raise MeshError(
                 f"the plate is pinched to a point at ({x:.6g}, {y:.6g}) m; part it."
             )
-        sides = self.boundary_sides
-        if len(sides) != len(given) or not (
-            (sides >= 0) & (sides < len(self.side_names))
-        ).all():
-            raise MeshError("a boundary edge belongs to no named side.")
+
+    def _outer_edges(self) -> Ints:
+        """Edges of one triangle only, the plate on their left, (k, 2)."""
+        around = self.triangles[:, [[1, 2], [2, 0], [0, 1]]].reshape(-1, 2)
+        rising = np.where(around[:, 0] < around[:, 1], 1, -1)
+        number = self.triangle_edges.ravel()
+        count, sense = np.bincount(number), np.bincount(number, weights=rising)
+        overlap = np.flatnonzero((count > 2) | (np.abs(sense) > 1))
+        if overlap.size:
+            x, y = self.points[self.edges[overlap[0]]].mean(axis=0)
+            raise MeshError(
+                f"two triangles lie on the same side of their edge at ({x:.6g}, "
+                f"{y:.6g}) m: they overlap; mesh again."
+            )
+        once = count == 1
+        edges: Ints = self.edges[once]
+        falling = sense[once] < 0
+        edges[falling] = edges[falling, ::-1]
+        return edges
+
+
+def _left_of(edges: Floats, points: Floats) -> Floats:
+    """Twice the area of edge (k, 2, 2) and point (k, 2), positive on the left, (k,)."""
+    step, arm = edges[:, 1] - edges[:, 0], points - edges[:, 0]
+    return step[:, 0] * arm[:, 1] - step[:, 1] * arm[:, 0]
+
+
+def _as_points(points: ArrayLike) -> Floats:
+    try:
+        array = np.atleast_2d(np.asarray(points, dtype=float))
+    except (TypeError, ValueError) as error:
+        raise InputError(
+            f"points are {reprlib.repr(points)}; give pairs (x, y) in m."
+        ) from error
+    if array.shape[1:] != (2,) or not np.isfinite(array).all():
+        raise InputError(
+            f"points have shape {array.shape} or are not finite; give pairs (x, y) "
+            "in m."
+        )
+    return array

@@ -8,7 +8,7 @@ does not survive.
 
 import math
 import threading
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from typing import Any
 
@@ -23,6 +23,7 @@ from kplate.outline import Circle, ClosedLine, Outline
 EDGES_ON_CIRCLE = 48
 # Frontal-Delaunay: the best smallest angle at the speed of the fastest.
 FRONTAL = 6
+GROWTH = 0.35  # of the edges with the distance from a refined place
 LARGEST = 5_000_000  # triangles; beyond, 24 GiB of memory do not hold the factor
 
 _OPTIONS = {
@@ -30,11 +31,17 @@ _OPTIONS = {
     "General.Verbosity": 0.0,
     "Mesh.Algorithm": float(FRONTAL),
     "Mesh.ElementOrder": 1.0,
+    "Mesh.MaxNumThreads1D": 1.0,  # with more the points come in another order
+    "Mesh.MaxNumThreads2D": 1.0,
     "Mesh.MeshSizeExtendFromBoundary": 1.0,
     "Mesh.MeshSizeFromPoints": 1.0,
     "Mesh.MeshSizeFromCurvature": 0.0,
+    "Mesh.MeshSizeFactor": 1.0,
     "Mesh.MeshSizeMin": 0.0,
+    "Mesh.MinimumCircleNodes": 7.0,
     "Mesh.RecombineAll": 0.0,
+    "Mesh.Smoothing": 1.0,
+    "Mesh.SubdivisionAlgorithm": 0.0,
 }
 _LOCK = threading.Lock()
 
@@ -54,8 +61,13 @@ def size_for(outline: Outline, triangles: int) -> float:
     return math.sqrt(4.0 / math.sqrt(3.0) * outline.area / triangles)
 
 
-def mesh_outline(outline: Outline, *, size: float) -> Mesh:
-    """Mesh an outline with triangles of one size.
+def mesh_outline(
+    outline: Outline,
+    *,
+    size: float,
+    fine: Sequence[tuple[tuple[float, float], float]] = (),
+) -> Mesh:
+    """Mesh an outline with triangles of one size, finer around some places.
 
     Parameters
     ----------
@@ -63,6 +75,8 @@ def mesh_outline(outline: Outline, *, size: float) -> Mesh:
         What to mesh.
     size : float
         Length of the edges in m; shorter on circles, which get 48 edges at least.
+    fine : sequence of (place, size)
+        Places in m and the length of the edges there; it grows with the distance.
 
     Returns
     -------
@@ -73,16 +87,17 @@ def mesh_outline(outline: Outline, *, size: float) -> Mesh:
     ------
     InputError
         If the size is not positive, or so small that the mesh would pass 5 million
-        triangles.
+        triangles, or a place or its size is no place or size.
     MeshError
         If Gmsh fails or its mesh does not fit the outline.
     """
     least = size_for(outline, LARGEST)
     if not (math.isfinite(size) and size >= least):
         raise InputError(
-            f"the mesh size is {size:g} m; it must be at least {least:.3g} m for this "
-            "outline."
+            f"the mesh size is {size:g} m; it must be finite and at least {least:.3g} "
+            "m for this outline."
         )
+    _check_fine(fine)
     with _LOCK, _gmsh_model(size) as gmsh:
         curves = [_add_line(gmsh, line, size) for line in outline.lines]
         loops = [gmsh.model.occ.addCurveLoop(tags) for tags in curves]
@@ -90,9 +105,10 @@ def mesh_outline(outline: Outline, *, size: float) -> Mesh:
         gmsh.model.occ.synchronize()
         for line, tags in zip(outline.lines, curves, strict=True):
             if isinstance(line, Circle):
-                fine = min(size, line.perimeter / EDGES_ON_CIRCLE)
+                edge = min(size, line.perimeter / EDGES_ON_CIRCLE)
                 ends = gmsh.model.getBoundary([(1, tags[0])], combined=False)
-                gmsh.model.mesh.setSize(ends, fine)
+                gmsh.model.mesh.setSize(ends, edge)
+        _refine(gmsh, size, fine)
         try:
             gmsh.model.mesh.generate(2)
         except Exception as error:
@@ -148,6 +164,15 @@ def _import_gmsh() -> Any:
     return gmsh
 
 
+def _check_fine(fine: Sequence[tuple[tuple[float, float], float]]) -> None:
+    for (x, y), least in fine:
+        if not (all(map(math.isfinite, (x, y, least))) and least > 0.0):
+            raise InputError(
+                f"the mesh size is {least:g} m at ({x:.6g}, {y:.6g}) m; it must be a "
+                "positive number, at a place with finite coordinates."
+            )
+
+
 def _add_line(gmsh: Any, line: ClosedLine, size: float) -> list[int]:
     """Add a closed line; return the tag of the curve of each side piece, in order."""
     occ = gmsh.model.occ
@@ -158,10 +183,37 @@ def _add_line(gmsh: Any, line: ClosedLine, size: float) -> list[int]:
     return [occ.addLine(a, b) for a, b in zip(points, ends, strict=True)]
 
 
+def _refine(
+    gmsh: Any, size: float, fine: Sequence[tuple[tuple[float, float], float]]
+) -> None:
+    """Ask for smaller edges around some places, by the smallest of a field for each."""
+    field = gmsh.model.mesh.field
+    balls = []
+    for (x, y), least in fine:
+        if least < size:
+            ball = field.add("Ball")
+            for key, value in {
+                "XCenter": x,
+                "YCenter": y,
+                "Radius": least,
+                "VIn": least,
+                "VOut": size,
+                "Thickness": (size - least) / GROWTH,
+            }.items():
+                field.setNumber(ball, key, value)
+            balls.append(ball)
+    if balls:
+        smallest = field.add("Min")
+        field.setNumbers(smallest, "FieldsList", balls)
+        field.setAsBackgroundMesh(smallest)
+
+
 def _read(gmsh: Any, outline: Outline, curves: list[list[int]]) -> Mesh:
     """Take the mesh out of Gmsh, without the points that no triangle uses."""
     tags, coordinates, _ = gmsh.model.mesh.getNodes()
     corners = gmsh.model.mesh.getElementsByType(2)[1].astype(np.int64)
+    if not corners.size:
+        raise MeshError("the outline could not be meshed: no triangles came out.")
     used = np.unique(corners)
     number = np.full(int(tags.max()) + 1, -1)
     number[used] = np.arange(len(used))
@@ -213,7 +265,7 @@ def _check_area(mesh: Mesh, outline: Outline) -> None:
 
 
 def _circle_signs(outline: Outline) -> Floats:
-    """+1 where chords of a circle cut plate off (the rim), -1 where they add (holes)."""
+    """+1 where the chords of a circle cut plate off (a rim), -1 on a hole."""
     return np.array(
         [
             1.0 if line is outline.rim else -1.0

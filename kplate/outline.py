@@ -5,8 +5,10 @@ sides of a polygon run from each point to the next. Turns at the vertices are re
 here; whether a turn is a corner or a bend of a curve is decided where supports meet it.
 """
 
+import contextlib
 import math
-from collections.abc import Iterator, Sequence
+import reprlib
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
 from itertools import combinations
@@ -23,6 +25,8 @@ from kplate.errors import InputError
 SNAP = 1e-6
 # A vertex that is off the line by no more than this share is on it, but for round-off.
 STRAIGHT = 1e-12
+# Nobody draws a plate farther from its origin; beyond, products of lengths overflow.
+FARTHEST = 1e9  # m
 # Between sides held alike, a smaller turn is a bend of a curve, not a corner (a simply
 # supported square with mid-side vertices 0.1 mm out would otherwise lose a third of w).
 BEND_TURN = math.radians(10.0)
@@ -52,19 +56,19 @@ class Polygon:
 
     def __post_init__(self) -> None:
         """Check the line."""
-        points = read_only_floats(self.points)
+        points = _as_points(self.points)
         object.__setattr__(self, "points", points)
-        object.__setattr__(self, "sides", tuple(self.sides))
+        object.__setattr__(self, "sides", _as_names(self.sides))
         if points.ndim != 2 or points.shape[1:] != (2,) or len(points) < 3:
             raise InputError(
                 f"{self._label} has points of shape {points.shape}; it takes at least "
                 "three pairs (x, y)."
             )
-        if not np.isfinite(points).all():
-            bad = int(np.flatnonzero(~np.isfinite(points).all(axis=1))[0])
+        far = ~(np.abs(points) <= FARTHEST).all(axis=1)
+        for i in np.flatnonzero(far):
             raise InputError(
-                f"{self._label}: point {bad + 1} is {_at(points[bad])}; coordinates "
-                "must be finite numbers in m."
+                f"{self._label}: point {i + 1} is {_at(points[i])}; coordinates must "
+                f"be numbers in m, no larger than {FARTHEST:g}."
             )
         if len(self.sides) != len(points):
             raise InputError(
@@ -82,13 +86,15 @@ class Polygon:
     @property
     def area(self) -> float:
         """Enclosed area in m2."""
-        x, y = self.points.T
+        x, y = (self.points - self.points[0]).T  # coordinates may be a site's
         return 0.5 * float(np.sum(x * np.roll(y, -1) - np.roll(x, -1) * y))
 
     @property
     def perimeter(self) -> float:
         """Length in m."""
-        return float(np.hypot(*(np.roll(self.points, -1, axis=0) - self.points).T).sum())
+        return float(
+            np.hypot(*(np.roll(self.points, -1, axis=0) - self.points).T).sum()
+        )
 
     @cached_property
     def turns(self) -> Floats:
@@ -96,7 +102,8 @@ class Polygon:
         ahead = np.roll(self.points, -1, axis=0) - self.points
         behind = np.roll(ahead, 1, axis=0)
         cross = behind[:, 0] * ahead[:, 1] - behind[:, 1] * ahead[:, 0]
-        return np.arctan2(cross, np.einsum("ij,ij->i", behind, ahead))
+        turn: Floats = np.arctan2(cross, np.einsum("ij,ij->i", behind, ahead))
+        return turn
 
     @cached_property
     def straight(self) -> Bools:
@@ -116,7 +123,10 @@ class Polygon:
 
     def _offset(self) -> Floats:
         """Distance of each vertex from the line through its neighbours in m."""
-        before, after = np.roll(self.points, 1, axis=0), np.roll(self.points, -1, axis=0)
+        before, after = (
+            np.roll(self.points, 1, axis=0),
+            np.roll(self.points, -1, axis=0),
+        )
         chord = after - before
         arm = self.points - before
         cross = chord[:, 0] * arm[:, 1] - chord[:, 1] * arm[:, 0]
@@ -126,7 +136,7 @@ class Polygon:
     def _check_points(self) -> None:
         n = len(self.points)
         ahead = np.roll(self.points, -1, axis=0) - self.points
-        for i in np.flatnonzero(np.hypot(*ahead.T) < SNAP * self.size):
+        for i in np.flatnonzero(np.hypot(*ahead.T) <= SNAP * self.size):
             j = (i + 1) % n
             raise InputError(
                 f"{self._label}: points {i + 1} and {j + 1} coincide near "
@@ -147,6 +157,7 @@ class Polygon:
             )
 
     def _check_crossing(self) -> None:
+        import shapely
         from shapely.validation import explain_validity
 
         if not self.region.is_valid:
@@ -160,6 +171,12 @@ class Polygon:
             raise InputError(
                 f"{self._label} runs clockwise from {_at(self.points[0])}; list its "
                 "points counter-clockwise, with their side names."
+            )
+        neck = shapely.minimum_clearance_line(self.region)
+        if neck.length <= SNAP * self.size:
+            raise InputError(
+                f"{self._label} comes within {neck.length:.2g} m of itself at "
+                f"{_at(neck.coords[0])}; part it there, or leave a gap."
             )
 
 
@@ -179,7 +196,7 @@ class Circle:
     Raises
     ------
     InputError
-        If a number is not finite or the radius not positive.
+        If a number is no number, not finite, or the radius not positive.
     """
 
     centre: tuple[float, float]
@@ -188,15 +205,26 @@ class Circle:
 
     def __post_init__(self) -> None:
         """Check the numbers."""
-        object.__setattr__(self, "centre", tuple(float(c) for c in self.centre))
-        if not all(math.isfinite(c) for c in (*self.centre, self.radius)):
+        try:
+            # Adding 0.0 keeps text from being read as a number.
+            x, y, radius = (float(c + 0.0) for c in (*self.centre, self.radius))
+        except (TypeError, ValueError) as error:
+            raise InputError(
+                f"circle {self.name!r} has centre {self.centre!r} and radius "
+                f"{self.radius!r}; give a pair (x, y) and a number in m."
+            ) from error
+        object.__setattr__(self, "centre", (x, y))
+        object.__setattr__(self, "radius", radius)
+        if not all(abs(c) <= FARTHEST for c in (x, y, radius)):
             raise InputError(
                 f"circle {self.name!r} has centre {_at(self.centre)} and radius "
-                f"{self.radius:g}; its numbers must be finite."
+                f"{self.radius:g} m; its numbers must be finite, no larger than "
+                f"{FARTHEST:g}."
             )
         if self.radius <= 0.0:
             raise InputError(
-                f"circle {self.name!r} has radius {self.radius:g} m; it must be positive."
+                f"circle {self.name!r} has radius {self.radius:g} m; it must be "
+                "positive."
             )
 
     @property
@@ -248,6 +276,13 @@ class Outline:
 
     def __post_init__(self) -> None:
         """Check names, and that the holes lie inside and apart."""
+        object.__setattr__(self, "holes", tuple(self.holes))
+        for line in self.lines:
+            if not isinstance(line, Polygon | Circle):
+                raise InputError(
+                    f"{line!r} is no closed line; a rim or a hole is a Polygon or a "
+                    "Circle."
+                )
         self._check_names()
         for number, hole in enumerate(self.holes, start=1):
             _check_inside(self.rim, hole, number)
@@ -272,9 +307,10 @@ class Outline:
         -------
         Outline
         """
-        n = len(np.atleast_1d(np.asarray(points, dtype=float)))
-        names = [f"side-{i + 1}" for i in range(n)] if sides is None else sides
-        return cls(rim=Polygon(points=read_only_floats(points), sides=tuple(names)))
+        array = _as_points(points)
+        if sides is None:
+            sides = [f"side-{i + 1}" for i in range(len(np.atleast_1d(array)))]
+        return cls(rim=Polygon(points=array, sides=_as_names(sides)))
 
     @classmethod
     def circle(
@@ -354,10 +390,10 @@ class Outline:
         seen: dict[str, int] = {}
         for number, line in enumerate(self.lines):
             for name in line.sides:
-                if not name or name != name.strip():
+                if not isinstance(name, str) or not name or name != name.strip():
                     raise InputError(
-                        f"a side is called {name!r}; a name has at least one character "
-                        "and no space around it."
+                        f"a side is called {name!r}; a name is text of at least one "
+                        "character, with no space around it."
                     )
                 if seen.setdefault(name, number) != number:
                     raise InputError(
@@ -373,9 +409,9 @@ def _check_inside(rim: ClosedLine, hole: ClosedLine, number: int) -> None:
         return
     how = "touches" if abs(gap) <= SNAP * rim.size else "crosses or lies outside"
     raise InputError(
-        f"hole {number} ({hole.sides[0]!r}) {how} the outline near {_at(place)}; a hole "
-        "must lie strictly inside the plate. Move or shrink it, or cut the notch into "
-        "the outline."
+        f"hole {number} ({hole.sides[0]!r}) {how} the outline near {_at(place)}; a "
+        "hole must lie strictly inside the plate. Move or shrink it, or cut the notch "
+        "into the outline."
     )
 
 
@@ -394,11 +430,10 @@ def _gap_inside(rim: ClosedLine, hole: ClosedLine) -> tuple[float, Any]:
         sign = 1.0 if rim.region.contains(centre) else -1.0
         return sign * line.length - hole.radius, line.coords[0]
     line = shapely.shortest_line(rim.region.exterior, hole.region.exterior)
-    if line.length > 0.0 and not rim.region.contains(hole.region):
-        return -line.length, line.coords[0]
-    if line.length == 0.0 and not rim.region.covers(hole.region):
-        return -rim.size, line.coords[0]
-    return line.length, line.coords[0]
+    if rim.region.contains(hole.region):
+        return line.length, line.coords[0]
+    touches = rim.region.contains(hole.region.buffer(-SNAP * rim.size))
+    return 0.0 if touches else -rim.size, line.coords[0]
 
 
 def _support_points(line: ClosedLine, away_from: tuple[float, float]) -> Floats:
@@ -425,38 +460,35 @@ def _check_apart(
     line = shapely.shortest_line(*shapes)
     if line.length - sum(radii) > least:
         return
-    x, y = np.mean(line.coords, axis=0)
+    # In the middle of what both cover of the line between them.
+    share = 0.5 * (line.length + radii[0] - radii[1])
+    place = line.interpolate(min(max(share, 0.0), line.length)).coords[0]
     raise InputError(
-        f"holes {numbers[0]} ({a.sides[0]!r}) and {numbers[1]} ({b.sides[0]!r}) overlap "
-        f"or touch near {_at((x, y))}; move them apart, or draw them as one hole."
+        f"holes {numbers[0]} ({a.sides[0]!r}) and {numbers[1]} ({b.sides[0]!r}) "
+        f"overlap or touch near {_at(place)}; move them apart, or draw them as one "
+        "hole."
     )
 
 
-def bend_runs(line: Polygon, alike: Sequence[object], limit: float) -> Iterator[int]:
-    """Vertices at which a run of three or more bends begins.
-
-    Parameters
-    ----------
-    line : Polygon
-        The closed line.
-    alike : sequence, length n
-        How each side is held; ``None`` where it is free.
-    limit : float
-        The turn in rad below which a vertex is a bend.
-
-    Yields
-    ------
-    int
-        Number of the first vertex of each run.
-    """
-    n = len(line.points)
-    held = np.array(
-        [alike[i] is not None and alike[i] == alike[i - 1] for i in range(n)]
+def _as_points(points: ArrayLike) -> Floats:
+    """Copy what a user gives for points."""
+    with contextlib.suppress(TypeError, ValueError):
+        if np.asarray(points).dtype.kind in "iufO":  # no text, no complex numbers
+            return read_only_floats(points)
+    raise InputError(
+        f"the points of a polygon are {reprlib.repr(points)}; give pairs (x, y) of "
+        "numbers in m."
     )
-    bend = held & ~line.straight & (np.abs(line.turns) < limit)
-    for i in range(n):
-        if bend[[i, (i + 1) % n, (i + 2) % n]].all() and (not bend[i - 1] or bend.all()):
-            yield i
+
+
+def _as_names(names: Sequence[str]) -> tuple[str, ...]:
+    """Copy what a user gives for the names of the sides."""
+    if isinstance(names, str) or not isinstance(names, Iterable):
+        raise InputError(
+            f"the side names of a polygon are {names!r}; give a list with a name for "
+            "each piece."
+        )
+    return tuple(names)
 
 
 def _at(point: Any) -> str:

@@ -1,16 +1,12 @@
-"""The fields of a panel file, read into SI units and named in every complaint.
+"""Numbers and quantities as they stand in a panel file, read into SI units.
 
 A quantity is text, a number and a unit: ``"10 mm"``, ``"3/8 in"``, ``"5 kN/m^2"``. The
 number is read here and only the unit goes to pint, which would take "1,5 mm" for 15 mm
-and "1 1/2 in" for half an inch. A load adds the word ``up`` or ``down`` and has no sign.
+and "1 1/2 in" for half an inch. A load adds the word up or down and has no sign.
 """
 
-import difflib
 import math
 import re
-from collections.abc import Collection, Iterator, Mapping, Sequence
-from contextlib import contextmanager
-from dataclasses import dataclass
 from functools import cache, lru_cache
 from typing import Any
 
@@ -21,7 +17,8 @@ from kplate.units import Unit
 DIMENSIONS = {
     "length": ("m", '"10 mm"'),
     "force": ("N", '"1.5 kN"'),
-    "pressure": ("Pa", '"235 MPa"'),
+    "pressure": ("Pa", '"5 kPa"'),
+    "stress": ("Pa", '"235 MPa"'),
     "density": ("kg/m**3", '"7850 kg/m^3"'),
     "acceleration": ("m/s**2", '"9.81 m/s^2"'),
 }
@@ -60,8 +57,8 @@ def quantity(text: object, dimension: str) -> float:
 
     Examples
     --------
-    >>> quantity("3/8 in", "length")
-    0.009525
+    >>> quantity("10 mm", "length")
+    0.01
     """
     number, its_unit = _split(text, dimension)
     value = number * its_unit.size
@@ -142,7 +139,7 @@ def unit(text: str, dimension: str) -> Unit:
     """
     si, example = DIMENSIONS[dimension]
     if len(text) > MOST_TEXT or not re.fullmatch(_UNIT, text):
-        raise InputError(f"{shown(text)} is no unit; write one such as {si}.")
+        raise InputError(f"{text!r} is no unit; write one such as {si}.")
     if text in SLIPS:
         raise InputError(
             f"unit {text!r} is a slip of the pen; did you mean {SLIPS[text]}?"
@@ -156,11 +153,11 @@ def unit(text: str, dimension: str) -> Unit:
         size = float(pint.Quantity(1.0, found).to(si).magnitude) if fits else 0.0
     except Exception as error:  # pint parses as Python does and raises what that raises
         raise InputError(
-            f"there is no unit {shown(text)}; write a {dimension} such as {example}."
+            f"there is no unit {text!r}; write {dimension} such as {example}."
         ) from error
     if not size > 0.0:
         raise InputError(
-            f"{shown(text)} is no unit of {dimension}; write it such as {example}."
+            f"{text!r} is no unit of {dimension}; write it such as {example}."
         )
     return Unit(text, size)
 
@@ -170,163 +167,6 @@ def check_reach(value: float, dimension: str) -> None:
     if value != 0.0 and not REACH[0] <= abs(value) <= REACH[1]:
         size = "large" if abs(value) > 1.0 else "small"
         raise InputError(f"the {dimension} is too {size} for any panel.")
-
-
-def shown(value: object) -> str:
-    """Show a value of the file in a message, on one short line."""
-    match value:
-        case bool():
-            return str(value).lower()
-        case str():
-            return repr(value if len(value) <= 40 else f"{value[:37]}...")
-        case int() if abs(value) >= 10**15:
-            return "a huge integer"
-        case Mapping():
-            return "a table"
-        case Sequence():
-            return f"a list of {len(value)}" if value else "an empty list"
-    return str(value)
-
-
-def closest(word: str, words: Collection[str]) -> str:
-    """Ask whether the nearest of some words was meant, if one is near."""
-    close = difflib.get_close_matches(word[:MOST_TEXT], list(words), n=1)
-    return f" Did you mean {close[0]!r}?" if close else ""
-
-
-@contextmanager
-def within(where: str) -> Iterator[None]:
-    """Name the place in the file in each complaint raised inside."""
-    try:
-        yield
-    except InputError as error:
-        raise InputError(f"{where}: {error}") from error
-
-
-@dataclass(frozen=True, kw_only=True)
-class Fields:
-    """One table of a panel file.
-
-    Parameters
-    ----------
-    where : str
-        How messages name the table, such as "[panel]".
-    table : mapping
-        What it holds.
-    examples : mapping of str to str
-        The fields it may hold, each with a value as it is written.
-
-    Raises
-    ------
-    InputError
-        If it is not a table, or holds a field that it may not.
-    """
-
-    where: str
-    table: Mapping[str, Any]
-    examples: Mapping[str, str]
-
-    def __post_init__(self) -> None:
-        """Check the names of the fields."""
-        if not isinstance(self.table, Mapping):
-            field, example = next(iter(self.examples.items()))
-            raise InputError(
-                f"{self.where} is {shown(self.table)}; it must be a table such as "
-                f"{{ {field} = {example} }}."
-            )
-        for key in self.table:
-            if key not in self.examples:
-                raise InputError(
-                    f"{self.where}: unknown field {shown(key)}; the fields are "
-                    f"{', '.join(self.examples)}.{closest(key, self.examples)}"
-                )
-
-    def __contains__(self, key: str) -> bool:
-        """Whether the field is stated."""
-        return key in self.table
-
-    def value(self, key: str) -> Any:
-        """What a field holds, which must be there."""
-        if key not in self.table:
-            raise InputError(
-                f"{self.where}: {key} is missing; add {key} = {self.examples[key]}."
-            )
-        return self.table[key]
-
-    def place(self, key: str) -> str:
-        """How a message names a field and its value."""
-        gap = " " if self.where.endswith("]") else ": "
-        return f"{self.where}{gap}{key} = {shown(self.value(key))}"
-
-    def refuse(self, key: str, why: str) -> InputError:
-        """Return the complaint about a field."""
-        return InputError(f"{self.place(key)}: {why}")
-
-    def word(self, key: str, *, default: str | None = None) -> str:
-        """Text on one line, such as a name."""
-        if default is not None and key not in self.table:
-            return default
-        with within(self.place(key)):
-            return one_line(self.value(key))
-
-    def choice(self, key: str, words: Collection[str]) -> str:
-        """One of some words."""
-        value = self.value(key)
-        if isinstance(value, str) and value in words:
-            return value
-        hint = closest(value, words) if isinstance(value, str) else ""
-        raise self.refuse(key, f"it must be one of {', '.join(words)}.{hint}")
-
-    def number(self, key: str) -> float:
-        """Return a number without a unit."""
-        with within(self.place(key)):
-            return bare_number(self.value(key))
-
-    def quantity(self, key: str, dimension: str) -> float:
-        """Return a quantity in SI units, with its sign."""
-        with within(self.place(key)):
-            return quantity(self.value(key), dimension)
-
-    def positive(self, key: str, dimension: str) -> float:
-        """Return a quantity in SI units, larger than zero."""
-        with within(self.place(key)):
-            return positive(self.value(key), dimension)
-
-    def directed(self, key: str, dimension: str) -> float:
-        """Return a load in SI units, positive up."""
-        with within(self.place(key)):
-            return directed(self.value(key), dimension)
-
-    def unit(self, key: str, dimension: str) -> Unit:
-        """Return a unit that the file names."""
-        with within(self.place(key)):
-            return unit(one_line(self.value(key)), dimension)
-
-    def items(self, key: str) -> list[tuple[str, Any]]:
-        """The items of a list that is not empty, each with how messages name it."""
-        value = self.value(key)
-        if not isinstance(value, list) or not value:
-            raise self.refuse(
-                key, f"it must be a list that is not empty, {self.examples[key]}."
-            )
-        start = self.place(key).partition(" = ")[0]
-        return [
-            (f"{start}, item {i} = {shown(item)}", item)
-            for i, item in enumerate(value, 1)
-        ]
-
-
-def one_line(value: object) -> str:
-    """Check text that goes into tables."""
-    if not isinstance(value, str):
-        raise InputError("it must be text in quotes.")
-    if not value or value != value.strip() or not value.isprintable():
-        raise InputError(
-            "it must be text on one line, not empty, with no space around it."
-        )
-    if len(value) > MOST_TEXT:
-        raise InputError(f"it is longer than {MOST_TEXT} characters.")
-    return value
 
 
 def bare_number(value: object) -> float:
@@ -341,16 +181,17 @@ def bare_number(value: object) -> float:
 def _split(text: object, dimension: str) -> tuple[float, Unit]:
     """Part a quantity into its number and its unit."""
     example = DIMENSIONS[dimension][1]
+    name = f"an {dimension}" if dimension[0] in "aeiou" else f"a {dimension}"
     if not isinstance(text, str):
-        raise InputError(f"a {dimension} is text with its unit, such as {example}.")
+        raise InputError(f"{name} is text with its unit, such as {example}.")
     if "," in text:
         raise InputError("write a decimal point and no commas, such as 1.5.")
     match = _QUANTITY.fullmatch(text.strip()) if len(text) <= MOST_TEXT else None
     if match is None:
-        raise InputError(f"a {dimension} is a number and its unit, such as {example}.")
+        raise InputError(f"{name} is a number and its unit, such as {example}.")
     number, unit_text = match.groups()
     if unit_text is None:
-        raise InputError(f"a {dimension} needs a unit, such as {example}.")
+        raise InputError(f"{name} needs a unit, such as {example}.")
     return _number(number), unit(unit_text, dimension)
 
 
@@ -369,7 +210,7 @@ def _registry() -> Any:
     """Pint's units, and two of American practice that it lacks."""
     import pint
 
-    registry = pint.UnitRegistry()
+    registry: Any = pint.UnitRegistry()
     registry.define("pound_per_square_foot = pound_force / foot ** 2 = psf")
     registry.define("pound_per_cubic_foot = pound / foot ** 3 = pcf")
     return registry

@@ -1,17 +1,23 @@
 """Moments, shears and stresses from unknowns.
 
-The curvature of an element of low degree jumps from triangle to triangle. At each vertex
-a quadratic is fitted, by weighted least squares, to the moments of the triangles in two
-layers around it; its value there is the *smoothed* moment and its gradient gives the
-transverse shear. Between vertices both are interpolated linearly.
+The curvature of an element of low degree jumps from triangle to triangle. At each
+vertex a quadratic is fitted, by weighted least squares, to the moments of the triangles
+in two layers around it; its value there is the *smoothed* moment. A second fit, linear,
+to the smoothed moments of the vertices in three layers gives their gradient and with it
+the transverse shear; it leaves the boundary's own vertices out, whose moments are a
+little off to one side and would spoil a difference. Shears are of first order on the
+boundary (on a simply supported square 8 % low at 10,000 triangles, 4 % at 30,000;
+inside 0.2 % of the largest): support reactions do not come from them. Between vertices
+both are interpolated linearly.
 
-    q_x = -(m_xx,x + m_xy,y),   q_y = -(m_xy,x + m_yy,y)
-    stress on a face = -+ 6 m / h^2, minus on top;   shear stress at mid-depth = 3 q / 2h
+    q_x = -(m_xx,x + m_xy,y),   q_y = -(m_xy,x + m_yy,y),
+    stress on a face = -+ 6 m / h^2, minus on top,
+    shear stress at mid-depth = 3 q / 2h.
 
 Source of the fit: O. C. Zienkiewicz and J. Z. Zhu, "The superconvergent patch recovery
-and a posteriori error estimates. Part 1", Int. J. Numer. Meth. Engng 33 (1992) 1331-1364
-(from memory); with two layers and a weight in place of one layer and superconvergent
-points.
+and a posteriori error estimates. Part 1", Int. J. Numer. Meth. Engng 33 (1992)
+1331-1364 (from memory); with two layers and a weight in place of one layer and
+superconvergent points.
 """
 
 from dataclasses import dataclass
@@ -20,7 +26,7 @@ import numpy as np
 import scipy.sparse as sp
 from numpy.typing import ArrayLike
 
-from kplate.arrays import Floats, Ints
+from kplate.arrays import Bools, Floats
 from kplate.errors import InputError
 from kplate.mesh import Mesh
 from kplate.quadrature import triangle_rule
@@ -32,6 +38,7 @@ LAYERS = 2
 # reach a layer further for them.
 ENOUGH = 12
 _SAMPLES = triangle_rule(2).points
+_LINEAR, _QUADRATIC = 3, 6  # terms of a polynomial
 _BLOCK = 2048  # vertices
 
 
@@ -54,23 +61,20 @@ class SmoothedMoments:
 def smoothed_moments(state: StaticState) -> SmoothedMoments:
     """Fit moments and shears at every vertex."""
     mesh, cases = state.mesh, len(state.cases)
-    samples = element_moments(state, _SAMPLES)
+    samples = element_moments(state, _SAMPLES).reshape(
+        len(mesh.triangles), -1, 3 * cases
+    )
     places = np.einsum("qv,nvc->nqc", _SAMPLES, mesh.points[mesh.triangles])
-    patches, radius = _patches(mesh)
-    fitted = np.empty((len(mesh.points), 3, 3, cases))  # value and gradient
-    for start in range(0, len(mesh.points), _BLOCK):
-        stop = min(start + _BLOCK, len(mesh.points))
-        first, last = patches.indptr[start], patches.indptr[stop]
-        triangles = patches.indices[first:last]
-        pointers = patches.indptr[start:stop] - first
-        owner = np.repeat(np.arange(start, stop), np.diff(patches.indptr[start : stop + 1]))
-        arms = (places[triangles] - mesh.points[owner, None]) / radius[owner, None, None]
-        coefficients = _fit(arms, samples[triangles], pointers)
-        coefficients[:, 1:] /= radius[start:stop, None, None, None]
-        fitted[start:stop] = coefficients
-    by_x, by_y = fitted[:, 1], fitted[:, 2]
+    near = _neighbours(mesh)
+    fitted = _fit(mesh, _triangle_patches(mesh, near), places, samples, _QUADRATIC)
+    moments = fitted[:, 0].reshape(-1, 3, cases)
+    inner = np.ones(len(mesh.points))
+    inner[mesh.boundary_edges] = 0.0
+    patches = _vertex_patches(near, inner)
+    by = _fit(mesh, patches, mesh.points[:, None], fitted[:, :1], _LINEAR)[:, 1:]
+    by_x, by_y = by.reshape(-1, 2, 3, cases).swapaxes(0, 1)
     shears = -np.stack([by_x[:, 0] + by_y[:, 2], by_x[:, 2] + by_y[:, 1]], axis=1)
-    return SmoothedMoments(moments=fitted[:, 0], shears=shears)
+    return SmoothedMoments(moments=moments, shears=shears)
 
 
 def element_moments(state: StaticState, barycentrics: Floats) -> Floats:
@@ -153,44 +157,82 @@ def von_mises(stress: Floats) -> Floats:
     return np.sqrt(xx**2 - xx * yy + yy**2 + 3.0 * xy**2)
 
 
-def _patches(mesh: Mesh) -> tuple[sp.csr_array, Floats]:
-    """Triangles around each vertex, and the radius in m their weight fades over."""
+def _neighbours(mesh: Mesh) -> sp.csr_array:
+    """Which vertices share a triangle, each with itself too, (n_points, n_points)."""
+    n = len(mesh.points)
+    rows = np.concatenate([mesh.edges[:, 0], mesh.edges[:, 1], np.arange(n)])
+    columns = np.concatenate([mesh.edges[:, 1], mesh.edges[:, 0], np.arange(n)])
+    return sp.csr_array((np.ones(len(rows)), (rows, columns)), shape=(n, n))
+
+
+def _triangle_patches(mesh: Mesh, near: sp.csr_array) -> sp.csr_array:
+    """Triangles in two layers around each vertex, three where those are few."""
     n, m = len(mesh.points), len(mesh.triangles)
-    ones = np.ones(3 * m)
-    vertices, owner = mesh.triangles.ravel(), np.repeat(np.arange(m), 3)
-    touch = sp.csr_array((ones, (vertices, owner)), shape=(n, m))
-    near = touch @ touch.T
+    owner = np.repeat(np.arange(m), 3)
+    touch = sp.csr_array(
+        (np.ones(3 * m), (mesh.triangles.ravel(), owner)), shape=(n, m)
+    )
     patches = (near @ touch).tocsr()
-    few = np.diff(patches.indptr) < ENOUGH
-    if few.any():
-        rows = np.flatnonzero(few)
-        wider = near[rows] @ near @ touch
-        select = sp.csr_array(
-            (np.ones(rows.size), (rows, np.arange(rows.size))), shape=(n, rows.size)
-        )
-        patches = (patches + select @ wider).tocsr()
-    patches.sort_indices()
+    return _widen(patches, np.diff(patches.indptr) < ENOUGH, near)
+
+
+def _vertex_patches(near: sp.csr_array, inner: Floats) -> sp.csr_array:
+    """Vertices in three layers around each; the boundary's own where others are few."""
+    patches = (near @ near @ near).tocsr()
+    inside = (patches @ sp.diags_array(inner)).tocsr()
+    inside.eliminate_zeros()
+    few = (np.diff(inside.indptr) < ENOUGH).astype(float)
+    patches = (inside + sp.diags_array(few) @ patches).tocsr()
+    patches.eliminate_zeros()
+    return patches
+
+
+def _widen(patches: sp.csr_array, rows: Bools, near: sp.csr_array) -> sp.csr_array:
+    """Take a further layer into some rows."""
+    if not rows.any():
+        return patches
+    further = sp.diags_array(rows.astype(float)) @ near @ patches
+    further.eliminate_zeros()
+    return (patches + further).tocsr()
+
+
+def _radii(mesh: Mesh) -> Floats:
+    """Distance in m over which the weight of a sample fades, (n_points,)."""
     a, b = np.moveaxis(mesh.points[mesh.edges], 1, 0)
-    lengths = np.hypot(*(b - a).T)
+    lengths = np.repeat(np.hypot(*(b - a).T), 2)
     ends = mesh.edges.ravel()
-    mean = np.bincount(ends, np.repeat(lengths, 2), n) / np.bincount(ends, minlength=n)
-    return patches, LAYERS * mean
+    return LAYERS * np.bincount(ends, lengths) / np.bincount(ends)
 
 
-def _fit(arms: Floats, samples: Floats, pointers: Ints) -> Floats:
-    """Weighted quadratics at some vertices; value and gradient, (k, 3, 3, c).
+def _fit(
+    mesh: Mesh, patches: sp.csr_array, places: Floats, samples: Floats, degree: int
+) -> Floats:
+    """Value and gradient at the vertices of weighted polynomial fits, (n, 3, k).
 
-    arms (pairs, q, 2) lead from the vertex to the samples (pairs, q, 3, c) of the pairs of
-    a vertex and a triangle; those of vertex i begin at pointers[i].
+    Row i of `patches` lists the groups of samples around vertex i; group j has its
+    samples (q, k) at the places (q, 2).
     """
-    x, y = arms[..., 0], arms[..., 1]
-    p = np.stack([np.ones_like(x), x, y, x * x, x * y, y * y], axis=-1)
-    weighted = p * np.exp(-0.5 * (x * x + y * y))[..., None]
-    pairs, q, _, c = samples.shape
-    normal = weighted.swapaxes(1, 2) @ p
-    right = weighted.swapaxes(1, 2) @ samples.reshape(pairs, q, 3 * c)
-    normal = np.add.reduceat(normal, pointers, axis=0)
-    right = np.add.reduceat(right, pointers, axis=0)
-    # A mesh of a few triangles may not determine a quadratic: take the smallest fit.
-    inverse = np.linalg.pinv(normal, rcond=1e-10, hermitian=True)
-    return (inverse @ right)[:, :3].reshape(len(pointers), 3, 3, c)
+    n, k = len(mesh.points), samples.shape[-1]
+    radius = _radii(mesh)
+    fitted = np.empty((n, 3, k))
+    for start in range(0, n, _BLOCK):
+        stop = min(start + _BLOCK, n)
+        pointers = patches.indptr[start : stop + 1]
+        groups = patches.indices[pointers[0] : pointers[-1]]
+        owner = np.repeat(np.arange(start, stop), np.diff(pointers))
+        x, y = np.moveaxis(
+            (places[groups] - mesh.points[owner, None]) / radius[owner, None, None],
+            -1,
+            0,
+        )
+        terms = [np.ones_like(x), x, y, x * x, x * y, y * y][:degree]
+        p = np.stack(terms, axis=-1)
+        weighted = (p * np.exp(-0.5 * (x * x + y * y))[..., None]).swapaxes(1, 2)
+        first = pointers[:-1] - pointers[0]
+        normal = np.add.reduceat(weighted @ p, first, axis=0)
+        right = np.add.reduceat(weighted @ samples[groups], first, axis=0)
+        # A mesh of a few triangles may not determine the fit: take the smallest one.
+        inverse = np.linalg.pinv(normal, rcond=1e-10, hermitian=True)
+        fitted[start:stop] = (inverse @ right)[:, :3]
+    fitted[:, 1:] /= radius[:, None, None]
+    return fitted

@@ -4,12 +4,14 @@ Coordinates of the outline and its holes are plain numbers in the outline's unit
 other quantity is text with its unit. A field of a later version is refused by its name.
 """
 
+import math
 import re
 from collections.abc import Collection, Mapping, Sequence
 from typing import Any, cast
 
 from kplate.arrays import read_only_floats
 from kplate.errors import InputError
+from kplate.fields import Fields, closest, one_line, shown, within
 from kplate.limits import CRITERIA, Criterion, DeflectionLimit, Limits, StressLimit
 from kplate.loads import (
     STANDARD_GRAVITY,
@@ -25,17 +27,12 @@ from kplate.loads import (
 from kplate.materials import STOCK, Isotropic
 from kplate.outline import Circle, ClosedLine, Outline, Polygon
 from kplate.quantities import (
-    Fields,
     angle,
     bare_number,
     check_reach,
-    closest,
-    one_line,
     positive,
     quantity,
-    shown,
     stated_unit,
-    within,
 )
 from kplate.supports import SUPPORTS, Support
 from kplate.units import Unit
@@ -95,6 +92,8 @@ LATER_SIDES = ("points", "lines", "bedding")
 LATER_SUPPORTS = ("guided", "springs")
 LATER_LIMITS = ("frequency",)
 
+_SHARE = re.compile(r"span ?/ ?([0-9]{1,6}(?:\.[0-9]{1,6})?)")
+
 
 def read_material(head: Fields) -> Isotropic:
     """Material of a [panel]: one from stock by its name, or a table of its own."""
@@ -104,7 +103,7 @@ def read_material(head: Fields) -> Isotropic:
     fields = Fields(where="[panel] material", table=stated, examples=MATERIAL)
     density = fields.positive("density", "density") if "density" in fields else None
     name, nu = fields.word("name"), fields.number("nu")
-    E = fields.positive("E", "pressure")
+    E = fields.positive("E", "stress")
     source = fields.word("source", default="")
     with within("[panel]"):
         return Isotropic(name=name, E=E, nu=nu, density=density, source=source)
@@ -143,8 +142,8 @@ def read_supports(table: Mapping[str, Any], outline: Outline) -> dict[str, Suppo
             )
         if isinstance(word, Mapping) or word in LATER_SUPPORTS:
             raise InputError(
-                f"{place}: this kind of support is not read by this version; it must be "
-                f"one of {', '.join(SUPPORTS)}."
+                f"{place}: such a support is not read by this version; use one "
+                f"of {', '.join(SUPPORTS)}."
             )
         if not isinstance(word, str) or word not in SUPPORTS:
             hint = closest(word, SUPPORTS) if isinstance(word, str) else ""
@@ -248,6 +247,8 @@ def _polygon(fields: Fields, length: Unit, *, name: str | None) -> Polygon:
             points.append(_pair(item, length))
     if len(points) < 3:
         raise fields.refuse("points", "it takes at least three points [x, y].")
+    with within(fields.place("points")):
+        check_reach(max(map(math.dist, points, points[1:])), "length")
     if "sides" in fields:
         sides = []
         for place, item in fields.items("sides"):
@@ -264,8 +265,7 @@ def _pair(value: Any, length: Unit) -> tuple[float, float]:
     if not isinstance(value, list) or len(value) != 2:
         raise InputError("a place is two numbers [x, y] in the outline's unit.")
     x, y = (bare_number(item) * length.size for item in value)
-    for number in (x, y):
-        check_reach(number, "length")
+    check_reach(max(abs(x), abs(y), 1.0), "length")  # a tiny one is 0 but for round-off
     return x, y
 
 
@@ -275,10 +275,10 @@ def _load(where: str, table: Any, material: Isotropic) -> Load:
     if len(kinds) > 1:
         raise InputError(f"{where}: {' and '.join(kinds)} are two loads; part them.")
     if not kinds:
-        stated = ", ".join(map(shown, table)) if isinstance(table, Mapping) else None
+        stated = _some(table) if isinstance(table, Mapping) else shown(table)
         raise InputError(
-            f"{where} states {stated or shown(table)}; a load states one of "
-            f"{', '.join(LOADS)}, such as {{ pressure = {LOADS['pressure']['pressure']} }}."
+            f"{where} states {stated or 'nothing'}; a load states one of "
+            f"{', '.join(LOADS)}, such as {CASE['loads'][1:-1]}."
         )
     kind = kinds[0]
     fields = Fields(where=where, table=table, examples=LOADS[kind])
@@ -336,7 +336,7 @@ def _patch(fields: Fields) -> list[float]:
     """Read the two lengths of a rectangle, or the diameter of a disc, in m."""
     text = fields.word("over")
     disc, is_disc, diameter = text.partition("disc ")
-    parts = [diameter] if is_disc and not disc else re.split(r"[x×]", text)
+    parts = [diameter] if is_disc and not disc else re.split("[x\u00d7]", text)
     with within(fields.place("over")):
         if not (is_disc or len(parts) == 2):
             raise InputError(
@@ -347,7 +347,7 @@ def _patch(fields: Fields) -> list[float]:
 
 
 def _deflection(limits: Fields) -> DeflectionLimit:
-    """Read a share of a span, a length, or a list of both, of which the least counts."""
+    """Read a share of a span, a length, or a list of them: the least counts."""
     where = "[limits] deflection"
     fields = Fields(where=where, table=limits.value("deflection"), examples=DEFLECTION)
     stated = fields.value("at_most")
@@ -373,12 +373,12 @@ def _deflection(limits: Fields) -> DeflectionLimit:
 
 
 def _part_of_span(text: Any) -> float | None:
-    """Read "span/200" as 1/200; ``None`` for what does not speak of a span."""
-    if not isinstance(text, str) or not text.startswith("span"):
+    """Read "span/200" as 1/200; ``None`` for what starts like a length."""
+    if isinstance(text, str) and text[:1] in set("+-.0123456789"):
         return None
-    match = re.fullmatch(r"span ?/ ?([0-9]{1,6}(?:\.[0-9]{1,6})?)", text)
+    match = _SHARE.fullmatch(text) if isinstance(text, str) else None
     if match is None or float(match[1]) < 1.0:
-        raise InputError('a share of the span is written such as "span/200".')
+        raise InputError('it must be "span/200", say, or a length such as "3 mm".')
     return 1.0 / float(match[1])
 
 
@@ -387,8 +387,8 @@ def _stress(limits: Fields) -> tuple[StressLimit, Unit]:
     where = "[limits] stress"
     fields = Fields(where=where, table=limits.value("stress"), examples=STRESS)
     criterion = cast(Criterion, fields.choice("criterion", CRITERIA))
-    strength, factor = fields.positive("strength", "pressure"), fields.number("factor")
-    shown_in = stated_unit(fields.value("strength"), "pressure")
+    strength, factor = fields.positive("strength", "stress"), fields.number("factor")
+    shown_in = stated_unit(fields.value("strength"), "stress")
     with within(where):
         limit = StressLimit(criterion=criterion, strength=strength, factor=factor)
     return limit, shown_in

@@ -27,11 +27,19 @@ class Unit:
         return f"{self.number(value, digits)} {self.symbol}"
 
     def number(self, value: float, digits: int = 4) -> str:
-        """Write an SI value in this unit, without the symbol."""
-        shown = f"{value / self.size:#.{digits}g}"
-        if "e" in shown:
-            return shown
-        return shown.rstrip(".")
+        """Write an SI value in this unit, without the symbol.
+
+        Examples
+        --------
+        >>> N = Unit("N", 1.0)
+        >>> [N.number(value) for value in (-0.0, 0.03456, 1500.0, 12345.6, 1e-9)]
+        ['0.000', '0.03456', '1500', '12350', '1.000e-09']
+        """
+        shown = value / self.size + 0.0  # which makes -0.0 a plain 0.0
+        text = f"{shown:#.{digits}g}"
+        if "e+" in text and abs(shown) < 1e7:
+            return f"{float(text):.0f}"
+        return text.rstrip(".")
 
 
 @dataclass(frozen=True, kw_only=True)

@@ -39,7 +39,9 @@ def values(degree: int, barycentrics: Floats) -> Floats:
     powers = [_powers(barycentrics[..., v], degree) for v in range(3)]
     columns = []
     for a in indices(degree):
-        scale = factorial(degree) / (factorial(a[0]) * factorial(a[1]) * factorial(a[2]))
+        scale = factorial(degree) / (
+            factorial(a[0]) * factorial(a[1]) * factorial(a[2])
+        )
         columns.append(scale * powers[0][a[0]] * powers[1][a[1]] * powers[2][a[2]])
     return np.stack(columns, axis=-1)
 

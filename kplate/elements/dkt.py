@@ -1,12 +1,12 @@
 """The discrete Kirchhoff triangle (DKT): nine unknowns, not C1.
 
-Unknowns, vertex by vertex: ``w``, ``dw/dx``, ``dw/dy``.
-The slope is quadratic over the triangle, and its part square to an edge linear along
-that edge; w is cubic along the edges and not defined inside. Both agree at the vertices
-and, along the edge, at mid-edges, which fixes the slope from nine unknowns. Inside, w is
-taken from the reduced Hsieh-Clough-Tocher triangle of the same unknowns, which is the
-same on the edges: for loads, masses and values between the vertices.
-Exact for quadratic w on any mesh; deflection converges as h**2.
+Unknowns, vertex by vertex: ``w``, ``dw/dx``, ``dw/dy``. The slope is quadratic over the
+triangle, and its part square to an edge linear along that edge; w is cubic along the
+edges and not defined inside. Both agree at the vertices and, along the edge, at
+mid-edges, which fixes the slope from nine unknowns. Inside, w is taken from the reduced
+Hsieh-Clough-Tocher triangle of the same unknowns, which is the same on the edges: for
+loads, masses and values between the vertices. Exact for quadratic w on any mesh;
+deflection converges as h**2.
 
 Source: J.-L. Batoz, K.-J. Bathe, L.-W. Ho, "A study of three-node triangular plate
 bending elements", Int. J. Numer. Meth. Engng 15 (1980) 1771-1812 (from memory).
@@ -41,13 +41,15 @@ def curvature(vertices: Floats, barycentrics: Floats) -> Floats:
     Barycentrics (q, 3), the same in every triangle, or (n, q, 3); returns (n, q, 3, 9).
     """
     G = _slopes(vertices)
-    by_coordinate = _shape_gradients(barycentrics) @ barycentric_gradients(vertices)[
-        :, None
-    ]  # (n, q, 6, 2)
+    by_coordinate = (
+        _shape_gradients(barycentrics) @ barycentric_gradients(vertices)[:, None]
+    )  # (n, q, 6, 2)
     n, q = by_coordinate.shape[:2]
     H = by_coordinate.swapaxes(-1, -2).reshape(n, 2 * q, 6) @ G.reshape(n, 6, 18)
     H = H.reshape(n, q, 2, 2, 9)  # derivative, slope
-    return np.stack([H[:, :, 0, 0], H[:, :, 1, 1], H[:, :, 0, 1] + H[:, :, 1, 0]], axis=2)
+    return np.stack(
+        [H[:, :, 0, 0], H[:, :, 1, 1], H[:, :, 0, 1] + H[:, :, 1, 0]], axis=2
+    )
 
 
 def _slopes(vertices: Floats) -> Floats:

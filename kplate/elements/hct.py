@@ -10,10 +10,10 @@ The ordinates next to a vertex follow from w and its slopes, the one in the midd
 piece from the linear slope on its outer edge, and the others from the conditions for a
 continuous slope inside: each is the mean of the three around it.
 
-Source: R. W. Clough and J. L. Tocher, "Finite element stiffness matrices for analysis of
-plate bending", Proc. Conf. on Matrix Methods in Structural Mechanics, Wright-Patterson
-AFB, 1965; P. G. Ciarlet, "The Finite Element Method for Elliptic Problems",
-North-Holland, 1978, ch. 6 (both from memory).
+Source: R. W. Clough and J. L. Tocher, "Finite element stiffness matrices for analysis
+of plate bending", Proc. Conf. on Matrix Methods in Structural Mechanics,
+Wright-Patterson AFB, 1965; P. G. Ciarlet, "The Finite Element Method for Elliptic
+Problems", North-Holland, 1978, ch. 6 (both from memory).
 """
 
 import numpy as np
@@ -81,7 +81,9 @@ def ordinates(vertices: Floats) -> Floats:
         middle.append(
             _middle(corners, (value[i], *outer[k], value[j]), (inward[i], inward[j]))
         )
-    around = [(inward[v] + middle[(v + 1) % 3] + middle[(v + 2) % 3]) / 3 for v in range(3)]
+    around = [
+        (inward[v] + middle[(v + 1) % 3] + middle[(v + 2) % 3]) / 3 for v in range(3)
+    ]
     centre = (around[0] + around[1] + around[2]) / 3
     C = np.empty((n, 3, 10, 9))
     place = bernstein.position(DEGREE)

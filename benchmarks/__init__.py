@@ -1,0 +1,1 @@
+"""Handbook cases and timings: ``python -m benchmarks``."""

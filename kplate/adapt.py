@@ -1,0 +1,113 @@
+"""From a stated plate and its loads to a solution: mesh, solve, keep.
+
+The mesh has one size, given as a number of triangles or a length, and is finer around
+the places that have no finite moment; bands are not estimated.
+"""
+
+from collections.abc import Sequence
+
+from kplate.errors import InputError
+from kplate.loads import Case, Load
+from kplate.meshing import mesh_outline, size_for
+from kplate.plate import Plate
+from kplate.singular import excluded_places
+from kplate.solution import Solution
+from kplate.solve.static import Progress, solve_static
+
+TRIANGLES = 20_000
+# Edges at a place without a finite moment, as a share of the disc that is left out, so
+# that the rim of the disc, which is judged, lies several triangles from its centre.
+RIM_SHARE = 0.25
+
+
+def solve(
+    plate: Plate,
+    loads: Sequence[Load | Case],
+    *,
+    triangles: int | None = None,
+    size: float | None = None,
+    excluded_radius: float | None = None,
+    progress: Progress | None = None,
+) -> Solution:
+    """Solve the bending of a plate under its loads.
+
+    Parameters
+    ----------
+    plate : Plate
+        The statement.
+    loads : sequence of loads or of Case
+        Loads that act together, or cases of them, each solved for itself.
+    triangles : int, optional
+        About how many triangles to use; 20,000 if neither this nor `size` is given.
+    size : float, optional
+        Length of the triangles' edges in m, instead.
+    excluded_radius : float, optional
+        Radius in m of the discs left out of the peaks around places without a finite
+        moment; the plate's thickness if left out.
+    progress : callable, optional
+        Called with a stage and the fraction done.
+
+    Returns
+    -------
+    Solution
+
+    Raises
+    ------
+    InputError
+        If loads and cases are mixed, there are none, both `triangles` and `size` are
+        given, or a load does not fit the plate.
+    MeshError
+        If the outline cannot be meshed.
+    SolveError
+        If the plate can still move as a rigid body.
+
+    Examples
+    --------
+    A clamped disc deflects p a^4 / 64 D at its centre (Timoshenko and
+    Woinowsky-Krieger, 1959, eq. 62, from memory):
+
+    >>> from kplate.materials import STEEL
+    >>> from kplate.outline import Outline
+    >>> from kplate.supports import CLAMPED
+    >>> from kplate.loads import Pressure
+    >>> disc = Plate(
+    ...     outline=Outline.circle((0.0, 0.0), radius=0.5),
+    ...     thickness=0.01,
+    ...     material=STEEL,
+    ...     supports={"rim": CLAMPED},
+    ... )
+    >>> solution = solve(disc, [Pressure(-10e3)], triangles=4000)
+    >>> exact = -10e3 * 0.5**4 / (64 * STEEL.bending_stiffness(0.01))
+    >>> bool(abs(solution.peak("deflection").value / exact - 1) < 0.005)
+    True
+    """
+    if triangles is not None and size is not None:
+        raise InputError("give the number of triangles or their size, not both.")
+    if excluded_radius is not None and not excluded_radius > 0.0:
+        raise InputError(
+            f"excluded_radius is {excluded_radius:g} m; it must be positive."
+        )
+    cases = _as_cases(loads)
+    if size is None:
+        size = size_for(plate.outline, TRIANGLES if triangles is None else triangles)
+    if progress is not None:
+        progress("mesh", 0.0)
+    places = excluded_places(plate, cases, excluded_radius)
+    fine = [(place.place, RIM_SHARE * place.radius) for place in places]
+    mesh = mesh_outline(plate.outline, size=size, fine=fine)
+    state = solve_static(plate, mesh, cases, progress=progress)
+    return Solution(state=state, excluded_radius=excluded_radius)
+
+
+def _as_cases(loads: Sequence[Load | Case]) -> tuple[Case, ...]:
+    """Cases as given, or all loads as one case."""
+    cases = [item for item in loads if isinstance(item, Case)]
+    if not cases:
+        alone = [item for item in loads if not isinstance(item, Case)]
+        return (Case(name="load", loads=alone),)
+    if len(cases) != len(loads):
+        raise InputError(
+            f"{len(cases)} of {len(loads)} loads are cases; give loads that act "
+            "together, or cases, not both."
+        )
+    return tuple(cases)

@@ -1,0 +1,386 @@
+"""One public function for each command: solve, judge, write."""
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from importlib import metadata, resources
+from pathlib import Path
+
+import numpy as np
+
+from kplate.adapt import TRIANGLES, solve
+from kplate.errors import InputError
+from kplate.files import replacing
+from kplate.limits import Outcome, Verdict, governing
+from kplate.outline import Polygon
+from kplate.output.picture import write_picture
+from kplate.output.record import solution_record, write_json, write_reactions
+from kplate.output.tables import Line, legend, values_table
+from kplate.output.vtk import write_vtk
+from kplate.panel import Panel, read_panel
+from kplate.reactions import CornerForce
+from kplate.solution import Solution
+from kplate.solve.static import Progress
+from kplate.validity import Validity, validity
+from kplate.values import Value
+
+CAUTION = (
+    "Results are for a qualified engineer's judgement; local codes and licensed "
+    "practice decide."
+)
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Checked:
+    """A panel file, solved and judged.
+
+    Parameters
+    ----------
+    panel : Panel
+        What was read.
+    solution : Solution
+        What was solved.
+    lines : tuple of Line
+        The numbers of the table.
+    verdict : Verdict
+        The judgement.
+    validity : Validity
+        Whether the theory holds.
+    files : tuple of Path
+        What was written.
+    """
+
+    panel: Panel
+    solution: Solution
+    lines: tuple[Line, ...]
+    verdict: Verdict
+    validity: Validity
+    files: tuple[Path, ...] = ()
+
+    @property
+    def status(self) -> int:
+        """Exit status: 0 for every form of pass, 1 for fails and not proven."""
+        return 0 if self.verdict.outcome is Outcome.PASSES else 1
+
+    @property
+    def text(self) -> str:
+        """What the command prints."""
+        parts = [
+            "\n".join(_heading(self.panel)),
+            values_table(self.lines),
+            "\n".join(_closing(self)),
+        ]
+        return "\n\n".join(part for part in parts if part)
+
+
+def check(
+    path: Path, *, out: Path | None = None, progress: Progress | None = None
+) -> Checked:
+    """Solve a panel file, judge it and write the results.
+
+    Parameters
+    ----------
+    path : Path
+        The panel file.
+    out : Path, optional
+        Directory for the results, made where it is missing: fields (.vtu), record
+        (.json), reactions (.csv) and a picture (.png) under the panel file's name;
+        nothing is written if left out.
+    progress : callable, optional
+        Called with a stage and the fraction done.
+
+    Returns
+    -------
+    Checked
+
+    Raises
+    ------
+    InputError
+        If the file cannot be read or states something wrong, or a result cannot be
+        written.
+    MeshError, SolveError
+        If the panel cannot be meshed or solved.
+    """
+    panel = read_panel(path)
+    solution = solve(
+        panel.plate, panel.cases, triangles=panel.triangles, progress=progress
+    )
+    lines = tuple(_lines(panel, solution))
+    judgements = tuple(j for line in lines if (j := line.judgement) is not None)
+    places = {excluded.place for excluded in solution.excluded}
+    verdict = Verdict(
+        judgements=judgements,
+        to_judge=len(places) if panel.limits.stress is not None else 0,
+    )
+    checked = Checked(
+        panel=panel,
+        solution=solution,
+        lines=lines,
+        verdict=verdict,
+        validity=validity(solution, held_in_plane=panel.held_in_plane),
+    )
+    if out is None:
+        return checked
+    files = _write(checked, out)
+    return Checked(
+        panel=panel,
+        solution=solution,
+        lines=lines,
+        verdict=verdict,
+        validity=checked.validity,
+        files=files,
+    )
+
+
+def new_panel(path: Path) -> Path:
+    """Write a starter panel file with every section and a comment on each line.
+
+    Raises
+    ------
+    InputError
+        If the file exists already or cannot be written.
+    """
+    if path.exists():
+        raise InputError(
+            f"{path} exists already; choose another name, or remove it first."
+        )
+    text = resources.files("kplate").joinpath("starter.toml").read_text("utf-8")
+    with replacing(path) as temporary:
+        temporary.write_text(text, encoding="utf-8")
+    return path
+
+
+def version() -> str:
+    """Version of the installed package."""
+    return metadata.version("kplate")
+
+
+def _heading(panel: Panel) -> list[str]:
+    """Identity, and the panel as it was understood."""
+    plate, length = panel.plate, panel.units.length
+    title = f"{panel.name}, {_thickness(panel)} {plate.material.name}"
+    if panel.revision:
+        title += f", revision {panel.revision}"
+    x0, y0, x1, y1 = plate.outline.box
+    size = f"{_short(x1 - x0, length.size)} x {_short(y1 - y0, length.size)}"
+    holes = len(plate.outline.holes)
+    panel_is = f"your panel is {size} {length.symbol}, {holes} hole{'s' * (holes != 1)}"
+    panel_is += f", area {plate.outline.area:.4g} m2"
+    if plate.mass is not None:
+        panel_is += f", mass {plate.mass:.4g} kg"
+    lines = [f"{title}   input {panel.digest}, kplate {version()}", panel_is]
+    by_support: dict[str, list[str]] = {}
+    for side in plate.outline.side_names:
+        by_support.setdefault(plate.support(side).words, []).append(side)
+    for side in plate.outline.side_names:
+        support = plate.support(side)
+        if support.words in by_support:
+            sides = by_support.pop(support.words)
+            lines.append(f"{support.name} ({support.words}): {', '.join(sides)}")
+    bends = _bends(panel)
+    if bends:
+        degrees = np.degrees(plate.bend_turn)
+        lines.append(
+            f"bends, turning less than {degrees:.3g} degrees, taken with one tangent: "
+            f"{', '.join(bends)} {length.symbol}"
+        )
+    if panel.tolerance is not None:
+        lines.append(
+            f"tolerance {100.0 * panel.tolerance:.3g} %: not used: bands not estimated"
+        )
+    return lines
+
+
+def _bends(panel: Panel) -> list[str]:
+    """Vertices between sides held alike that count as bends."""
+    plate, size = panel.plate, panel.units.length.size
+    places = []
+    for line in plate.outline.lines:
+        if not isinstance(line, Polygon):
+            continue
+        for i, (x, y) in enumerate(line.points):
+            before, after = (
+                plate.support(line.sides[i - 1]),
+                plate.support(line.sides[i]),
+            )
+            if (
+                before == after
+                and before.holds_deflection
+                and not line.straight[i]
+                and abs(line.turns[i]) < plate.bend_turn
+            ):
+                places.append(_place((float(x), float(y)), size))
+    return places
+
+
+def _lines(panel: Panel, solution: Solution) -> Iterator[Line]:
+    """Numbers of the table, case by case."""
+    for case in solution.cases:
+        yield from _case_lines(panel, solution, case)
+
+
+def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
+    units, limits = panel.units, panel.limits
+    size = units.length.size
+    deflection = solution.peak("deflection", case=case)
+    limit = limits.deflection.at_most if limits.deflection is not None else None
+    way = "up" if deflection.value > 0.0 else "down"
+    yield Line(
+        case=case,
+        quantity="peak deflection",
+        value=deflection,
+        unit=units.deflection,
+        limit=limit,
+        where=f"{_at(deflection, panel)}, {way}",
+    )
+    criterion = limits.stress.criterion if limits.stress is not None else "von Mises"
+    stress = solution.peak(criterion, case=case)
+    yield Line(
+        case=case,
+        quantity=f"peak {criterion}",
+        value=stress,
+        unit=units.stress,
+        limit=limits.stress.at_most if limits.stress is not None else None,
+        where=f"{_at(stress, panel)}, {stress.face}",
+    )
+    total = solution.reactions(case=case).total.force
+    yield Line(
+        case=case,
+        quantity="total reaction",
+        value=Value(value=total, case=case),
+        unit=units.force,
+        where="supports push " + ("up" if total > 0.0 else "down"),
+    )
+    pull, forces = solution.hold_down(case=case)
+    if forces or limits.hold_down is not None:
+        yield Line(
+            case=case,
+            quantity="corner hold-down",
+            value=pull,
+            unit=units.force,
+            limit=limits.hold_down,
+            where=_corner_words(solution, forces, case, size)
+            if forces
+            else "none needed",
+        )
+
+
+def _corner_words(
+    solution: Solution, forces: list[CornerForce], case: str, size: float
+) -> str:
+    """Which corners need the largest pull."""
+    known = [
+        f for f in solution.reactions(case=case).corners if not np.isnan(f.force.value)
+    ]
+    if len(forces) > 2 and len(forces) == len(known):
+        counts = {3: "three", 4: "four"}
+        return f"all {counts.get(len(forces), len(forces))} corners"
+    return ", ".join(_place(f.corner.place, size) for f in forces)
+
+
+def _closing(checked: Checked) -> list[str]:
+    """Verdict, remarks, what was left out, balance and caution."""
+    panel, solution = checked.panel, checked.solution
+    length = panel.units.length
+    lines = [f"{checked.verdict.words}.   {'   '.join(checked.validity.words[:2])}"]
+    lines += checked.validity.words[2:]
+    worst = governing(checked.verdict.judgements)
+    if worst is not None:
+        lines.append(
+            f"governs: {worst.quantity}, case {worst.value.case}, used {worst.used:.2f}"
+        )
+    for excluded in solution.excluded:
+        only = f", case {excluded.case}" if excluded.case else ""
+        lines.append(
+            f"left out of peak stress: {_place(excluded.place, length.size)} "
+            f"{length.symbol}{only}, radius {_short(excluded.radius, length.size)} "
+            f"{length.symbol}: {excluded.reason}"
+        )
+    for case in solution.cases:
+        reactions = solution.reactions(case=case)
+        lines.append(
+            f"balance of {case}: loads {_signed(reactions.load.force, panel)}, "
+            f"supports {_signed(reactions.total.force, panel)}, force and moments to "
+            f"{max(reactions.imbalance, 1e-16):.0e}"
+        )
+    mark = legend(checked.lines)
+    triangles = len(solution.mesh.triangles)
+    asked = TRIANGLES if panel.triangles is None else panel.triangles
+    lines.append(
+        f"{triangles} triangles ({asked} asked for).{'   ' * bool(mark)}{mark}"
+    )
+    return [*lines, CAUTION]
+
+
+def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
+    """Write fields, record, reactions and picture."""
+    try:
+        out.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        raise InputError(
+            f"the directory {out} cannot be made ({error.strerror}); choose another "
+            "with --out."
+        ) from error
+    panel, solution = checked.panel, checked.solution
+    stem = out / panel.path.stem
+    record = solution_record(solution, version())
+    record["panel"] = {
+        "name": panel.name,
+        "revision": panel.revision,
+        "author": panel.author,
+        "input": panel.digest,
+        "tolerance": panel.tolerance,
+        "held in plane": panel.held_in_plane,
+    }
+    record["verdict"] = {
+        "words": checked.verdict.words,
+        "validity": checked.validity.words,
+        "judgements": [
+            {
+                "case": j.value.case,
+                "quantity": j.quantity,
+                "value": j.value.value,
+                "limit": j.limit,
+                "used": j.used,
+                "outcome": j.outcome.name.lower().replace("_", " "),
+            }
+            for j in checked.verdict.judgements
+        ],
+    }
+    worst = solution.peak("deflection").case
+    picture = write_picture(
+        solution,
+        stem.with_suffix(".png"),
+        case=worst,
+        units=panel.units,
+        title=f"{panel.name}, {_thickness(panel)} {panel.plate.material.name}",
+    )
+    return (
+        write_vtk(solution, stem.with_suffix(".vtu")),
+        write_json(record, stem.with_suffix(".json")),
+        write_reactions(solution, stem.with_name(f"{stem.name}-reactions.csv")),
+        picture,
+    )
+
+
+def _thickness(panel: Panel) -> str:
+    unit = panel.units.deflection
+    return f"{_short(panel.plate.thickness, unit.size)} {unit.symbol}"
+
+
+def _at(value: Value, panel: Panel) -> str:
+    assert value.place is not None
+    return f"{_place(value.place, panel.units.length.size)} {panel.units.length.symbol}"
+
+
+def _place(place: tuple[float, float], size: float) -> str:
+    """A place to four digits of the unit of length."""
+    return f"({_short(place[0], size, 4)}, {_short(place[1], size, 4)})"
+
+
+def _short(value: float, size: float, digits: int = 6) -> str:
+    shown = value / size
+    return f"{0.0 if abs(shown) < 1e-6 else shown:.{digits}g}"
+
+
+def _signed(force: float, panel: Panel) -> str:
+    return f"{force / panel.units.force.size:+.6g} {panel.units.force.symbol}"

@@ -1,0 +1,1 @@
+"""What a solution leaves behind: tables, files, pictures. It computes nothing."""

@@ -1,0 +1,185 @@
+"""The plan of a plate: its sides by how they are held, and where their names may stand.
+
+A clamped side is hatched outside, a simply supported one has a dashed line beside it, a
+side whose slope alone is held a dotted one, a free side nothing. Lengths of symbols are
+pixels; what is drawn stands in the data coordinates of its axes, `per_pixel` of them a
+pixel.
+"""
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from kplate.arrays import Floats
+from kplate.outline import Circle, ClosedLine, Outline
+from kplate.output.lettering import Hand, Names, Spot, halo, upright
+from kplate.supports import Support
+
+INK, FAINT = "#1a1a1a", "#6b6b6b"
+# All in pixels: how far beside a side its dashes run, hatches reach, names stand.
+BESIDE, REACH, NAME_GAP = 5.0, 9.0, 11.0
+HATCH_STEP = 8.0
+END = 16.0  # that a shortened name stays off the ends of its side
+MOST_NAMES = 60  # more sides than that cannot be told apart on a picture
+SIDE_NAME = Hand(size=9.5, style="italic")
+_CIRCLE_PIECES = 180
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Piece:
+    """A straight piece of a side, or a whole circle.
+
+    Parameters
+    ----------
+    side : str
+        Name of the side.
+    points : ndarray, shape (k, 2)
+        Its line.
+    away : ndarray, shape (k - 1, 2)
+        Unit normals of its steps, out of the plate.
+    """
+
+    side: str
+    points: Floats
+    away: Floats
+
+    @property
+    def length(self) -> float:
+        """Length of the line."""
+        return float(np.hypot(*np.diff(self.points, axis=0).T).sum())
+
+    def at(self, shares: Floats) -> tuple[Floats, Floats]:
+        """Points and normals at shares of the length, (k, 2) each."""
+        lengths = np.hypot(*np.diff(self.points, axis=0).T)
+        distance = np.concatenate([[0.0], np.cumsum(lengths)])
+        at = shares * distance[-1]
+        points = np.column_stack([np.interp(at, distance, c) for c in self.points.T])
+        step = np.searchsorted(distance, at, side="right") - 1
+        return points, self.away[np.clip(step, 0, len(lengths) - 1)]
+
+
+def pieces(outline: Outline, size: float) -> list[Piece]:
+    """Pieces of all sides, lengths in units of `size` m."""
+    return [
+        piece
+        for line in outline.lines
+        for piece in _line_pieces(line, size, hole=line is not outline.rim)
+    ]
+
+
+def _line_pieces(line: ClosedLine, size: float, *, hole: bool) -> Iterator[Piece]:
+    if isinstance(line, Circle):
+        angle = np.linspace(0.0, 2.0 * np.pi, _CIRCLE_PIECES + 1)
+        rim = line.radius * np.column_stack([np.cos(angle), np.sin(angle)])
+        yield _piece(line.name, (line.centre + rim) / size, hole=hole)
+        return
+    ends = np.roll(line.points, -1, axis=0)
+    for side, start, end in zip(line.sides, line.points, ends, strict=True):
+        yield _piece(side, np.array([start, end]) / size, hole=hole)
+
+
+def _piece(side: str, points: Floats, *, hole: bool) -> Piece:
+    step = np.diff(points, axis=0)
+    normal = np.column_stack([step[:, 1], -step[:, 0]]) * (-1.0 if hole else 1.0)
+    return Piece(side=side, points=points, away=normal / np.hypot(*step.T)[:, None])
+
+
+def draw_piece(axes: Any, piece: Piece, support: Support, per_pixel: float) -> None:
+    """Draw a piece of a side with the symbol of its support."""
+    held = support.holds_deflection or support.holds_slope
+    width = 1.8 if held else 1.1
+    axes.plot(*piece.points.T, color=INK, linewidth=width, solid_capstyle="round")
+    if support.holds_deflection and support.holds_slope:
+        _hatch(axes, piece, per_pixel)
+    elif held:
+        style = (0, (5.0, 3.0)) if support.holds_deflection else (0, (1.0, 2.0))
+        line = _beside(piece, BESIDE * per_pixel)
+        axes.plot(*line.T, color=INK, linewidth=1.3, linestyle=style)
+
+
+def _hatch(axes: Any, piece: Piece, per_pixel: float) -> None:
+    """Oblique strokes outside a piece."""
+    from matplotlib.collections import LineCollection
+
+    count = max(int(piece.length / (HATCH_STEP * per_pixel)), 1)
+    foot, away = piece.at((np.arange(count) + 0.5) / count)
+    back = np.column_stack([away[:, 1], -away[:, 0]])
+    tip = foot + REACH * per_pixel * np.sqrt(0.5) * (away + back)
+    strokes = np.stack([foot, tip], axis=1)
+    axes.add_collection(LineCollection(list(strokes), colors=INK, linewidths=0.9))
+
+
+def _beside(piece: Piece, gap: float) -> Floats:
+    """A line beside a piece, not quite to its ends."""
+    is_round = len(piece.points) > 2
+    cut = 0.0 if is_round else min(gap / piece.length, 0.25)
+    points, away = piece.at(np.linspace(cut, 1.0 - cut, len(piece.points)))
+    return points + gap * away
+
+
+def block_sides(names: Names, lines: list[Piece], per_pixel: float) -> None:
+    """Keep names off the sides."""
+    for piece in lines:
+        count = int(piece.length / (6.0 * per_pixel)) + 2
+        names.block(piece.at(np.linspace(0.0, 1.0, count))[0], 3.0)
+
+
+def write_side_names(names: Names, lines: list[Piece], per_pixel: float) -> int:
+    """Write each side's name at its longest piece.
+
+    Returns
+    -------
+    int
+        How many names found no room.
+    """
+    longest: dict[str, Piece] = {}
+    for piece in lines:
+        if piece.side not in longest or piece.length > longest[piece.side].length:
+            longest[piece.side] = piece
+    missing = max(len(longest) - MOST_NAMES, 0)
+    for piece in sorted(longest.values(), key=lambda p: -p.length)[:MOST_NAMES]:
+        spots = _round_spots(piece, per_pixel)
+        if len(piece.points) == 2:
+            spots = _straight_spots(piece, per_pixel)
+        found = names.place(
+            piece.side, spots, SIDE_NAME, gap=NAME_GAP, path_effects=halo()
+        )
+        missing += not found
+    return missing
+
+
+def _straight_spots(piece: Piece, per_pixel: float) -> list[Spot]:
+    """Along a side: outside it, else beside it on the plate."""
+    step = piece.points[1] - piece.points[0]
+    angle = upright(float(np.arctan2(step[1], step[0])))
+    spots = []
+    for way in (1.0, -1.0):
+        for share in (0.5, 0.3, 0.7):
+            foot, away = (array[0] for array in piece.at(np.array([share])))
+            room = piece.length / per_pixel - 2.0 * END if share == 0.5 else 0.0
+            spots.append(
+                Spot(
+                    at=(float(foot[0]), float(foot[1])),
+                    away=(way * float(away[0]), way * float(away[1])),
+                    angle=angle,
+                    room=room,
+                )
+            )
+    return spots
+
+
+def _round_spots(piece: Piece, per_pixel: float) -> list[Spot]:
+    """In a round hole, or around a circle."""
+    centre = 0.5 * (piece.points.min(axis=0) + piece.points.max(axis=0))
+    radius = float(np.ptp(piece.points[:, 0])) / 2.0
+    spots = []
+    if float(piece.away[0] @ (piece.points[0] - centre)) < 0.0:  # a hole
+        room = 2.0 * radius / per_pixel - 2.0 * NAME_GAP
+        spots.append(Spot(at=(float(centre[0]), float(centre[1])), room=room))
+    for degrees in (45, 135, 315, 225, 90, 270, 0, 180):
+        away = (float(np.cos(np.radians(degrees))), float(np.sin(np.radians(degrees))))
+        at = centre + radius * np.array(away)
+        spots.append(Spot(at=(float(at[0]), float(at[1])), away=away))
+    return spots

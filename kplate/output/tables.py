@@ -1,0 +1,104 @@
+"""What a command prints: tables that fit a screen and an e-mail."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from io import StringIO
+
+from kplate.limits import Judgement
+from kplate.units import Unit
+from kplate.values import Value
+
+MARKS = {"bound": "", "estimate": " ~", "indicator": " ?", "none": ""}
+_WIDTH = 240  # columns; lines are never folded
+
+
+@dataclass(frozen=True, kw_only=True)
+class Line:
+    """One number of a table.
+
+    Parameters
+    ----------
+    case, quantity : str
+        What it is.
+    value : Value
+        The number, SI.
+    unit : Unit
+        What it is shown in.
+    limit : float, optional
+        The largest magnitude allowed, SI.
+    where : str
+        Place and face in words.
+    """
+
+    case: str
+    quantity: str
+    value: Value
+    unit: Unit
+    limit: float | None = None
+    where: str = ""
+
+    @property
+    def judgement(self) -> Judgement | None:
+        """The number against its limit, where there is one."""
+        if self.limit is None:
+            return None
+        return Judgement(quantity=self.quantity, value=self.value, limit=self.limit)
+
+
+def values_table(lines: Sequence[Line]) -> str:
+    """Table of values, bands, limits and where.
+
+    Magnitudes are shown; a sign that matters is in the quantity or in the place.
+    """
+    rows = []
+    for line in lines:
+        judgement = line.judgement
+        limit, used = "-", "-"
+        if judgement is not None:
+            limit, used = line.unit.show(judgement.limit), f"{judgement.used:.2f}"
+        shown = line.unit.show(abs(line.value.value))
+        rows.append(
+            (line.case, line.quantity, shown, band(line.value), limit, used, line.where)
+        )
+    header = ("case", "quantity", "value", "band", "limit", "used", "where")
+    return _columns(header, rows, right=())
+
+
+def band(value: Value) -> str:
+    """Write half the width of a band, with the mark of its kind."""
+    if value.lower is None or value.upper is None:
+        return "not estimated"
+    half = max(value.upper - value.value, value.value - value.lower)
+    if value.value == 0.0:
+        return f"+-{half:.2g}{MARKS[value.kind]}"
+    return f"{100.0 * half / abs(value.value):.2g} %{MARKS[value.kind]}"
+
+
+def legend(lines: Sequence[Line]) -> str:
+    """Explain the marks, where some number has a band."""
+    if all(line.value.kind == "none" for line in lines):
+        return ""
+    return "no mark: bound   ~ estimate   ? indicator"
+
+
+def _columns(
+    header: Sequence[str], rows: Sequence[Sequence[str]], right: Sequence[int]
+) -> str:
+    """Lay out columns without rules."""
+    from rich.console import Console
+    from rich.table import Table
+
+    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="")
+    for k, name in enumerate(header):
+        justify = "right" if k in right else "left"
+        table.add_column(name, justify=justify, no_wrap=True)
+    for row in rows:
+        table.add_row(*[_plain(cell) for cell in row])
+    out = StringIO()
+    Console(file=out, width=_WIDTH, color_system=None, highlight=False).print(table)
+    return "\n".join(text.rstrip() for text in out.getvalue().splitlines())
+
+
+def _plain(cell: str) -> str:
+    """Keep brackets of the user's names from being read as markup."""
+    return cell.replace("[", r"\[")

@@ -1,0 +1,76 @@
+"""A solution as a VTU file, for `kplate view` and any program that reads VTK.
+
+Point data are the fields of `Solution.point_fields`; with several load cases each name
+starts with its case, "CASE: NAME". The cells are the triangles, then the boundary edges
+as lines. Cell data are "zone", the zone of a triangle (-1 on lines), and "side", the
+number of a line's side (-1 on triangles). The names of the sides, and all else that a
+VTU file cannot hold, stand in the record (`kplate.output.record`).
+"""
+
+from pathlib import Path
+
+import numpy as np
+
+from kplate.arrays import Floats
+from kplate.errors import InputError
+from kplate.meshfiles import write_vtu
+from kplate.solution import Solution
+
+NOTHING = -1  # zone of a line, side of a triangle
+
+
+def write_vtk(solution: Solution, path: Path) -> Path:
+    """Write all fields of a solution, in all its cases, as a VTU file.
+
+    Parameters
+    ----------
+    solution : Solution
+        What to write.
+    path : Path
+        The file, ending in ``.vtu``; one that exists is replaced.
+
+    Returns
+    -------
+    Path
+        The file.
+
+    Raises
+    ------
+    InputError
+        If the name does not end in ``.vtu``, a case has a name that XML cannot hold,
+        or the file cannot be written.
+    """
+    path = Path(path)
+    if path.suffix != ".vtu":
+        raise InputError(
+            f"{str(path)!r} does not end in .vtu, which tells programs its format; "
+            "name it so."
+        )
+    mesh = solution.mesh
+    height = np.zeros(len(mesh.points))
+    write_vtu(
+        path,
+        np.column_stack([mesh.points, height]),
+        mesh.triangles,
+        lines=mesh.boundary_edges,
+        point_data=_fields(solution),
+        cell_data={
+            "zone": (mesh.zones, np.full(len(mesh.boundary_edges), NOTHING)),
+            "side": (np.full(len(mesh.triangles), NOTHING), mesh.boundary_sides),
+        },
+    )
+    return path
+
+
+def array_name(solution: Solution, case: str, field: str) -> str:
+    """Name in the file of a field of a load case."""
+    return field if len(solution.cases) == 1 else f"{case}: {field}"
+
+
+def _fields(solution: Solution) -> dict[str, Floats]:
+    """Fields of all cases under their names in the file."""
+    return {
+        array_name(solution, case, field): values
+        for case in solution.cases
+        for field, values in solution.point_fields(case=case).items()
+    }

@@ -1,0 +1,274 @@
+"""The panel file: one TOML text that states a panel, its load cases and its limits.
+
+What a file says and this version does not read is refused, never skipped.
+"""
+
+import hashlib
+import math
+import re
+import tomllib
+from collections.abc import Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from kplate.errors import InputError
+from kplate.fields import Fields, closest, shown, within
+from kplate.limits import Limits
+from kplate.loads import Case
+from kplate.plate import Plate
+from kplate.quantities import share, unit
+from kplate.statements import (
+    read_cases,
+    read_limits,
+    read_material,
+    read_outline,
+    read_supports,
+)
+from kplate.units import DisplayUnits, Unit
+
+MOST_TRIANGLES = 10_000_000  # beyond, the memory of a large machine is gone
+MOST_BYTES = 50_000_000  # a longer file is no text that somebody wrote
+
+SECTIONS = {
+    "panel": "[panel]",
+    "outline": "[outline]",
+    "hole": "[[hole]]",
+    "supports": "[supports]",
+    "case": "[[case]]",
+    "limits": "[limits]",
+}
+NEEDED = ("panel", "outline", "case")
+# What a panel file is to hold one day.
+LATER = {
+    "zone": "[[zone]]",
+    "combination": "[[combination]]",
+    "ask": "[[ask]]",
+}
+# The fields of [panel], each with a value as it is written.
+PANEL = {
+    "name": '"pit cover"',
+    "revision": '"A"',
+    "author": '"J. Bloggs"',
+    "thickness": '"10 mm"',
+    "material": '"steel S235"',
+    "tolerance": '"1 %"',
+    "held in plane": '"no"',
+    "triangles": "20000",
+}
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Panel:
+    """A panel file as it was understood.
+
+    Parameters
+    ----------
+    name, revision, author : str
+        Who the panel is; the last two may be empty.
+    plate : Plate
+        Outline, thickness, material and supports.
+    cases : tuple of Case
+        The load cases, at least one, each name once.
+    limits : Limits
+        What the panel is judged by.
+    tolerance : float, optional
+        Width of the bands asked for, as a share.
+    held_in_plane : bool, optional
+        Whether the edges are held in the plane of the plate.
+    triangles : int, optional
+        How many triangles to mesh with, instead of meshing to the tolerance.
+    stock : tuple of float
+        Thicknesses to choose from in m, as listed; empty where none are stated.
+    units : DisplayUnits
+        The units to show it in, from those of the file.
+    path : Path
+        The file.
+    digest : str
+        First 8 hexadecimal digits of the SHA-256 of its bytes.
+    """
+
+    name: str
+    revision: str
+    author: str
+    plate: Plate
+    cases: tuple[Case, ...]
+    limits: Limits
+    tolerance: float | None
+    held_in_plane: bool | None
+    triangles: int | None
+    stock: tuple[float, ...]
+    units: DisplayUnits
+    path: Path
+    digest: str
+
+
+def read_panel(path: Path) -> Panel:
+    """Read a panel file.
+
+    Parameters
+    ----------
+    path : Path
+        A TOML file in UTF-8; ``kplate/starter.toml`` shows every section.
+
+    Returns
+    -------
+    Panel
+        What it states, in SI units.
+
+    Raises
+    ------
+    InputError
+        If the file cannot be read, or anything in it is missing, unknown, wrong or
+        not read by this version; the message names the field.
+
+    Warns
+    -----
+    KplateWarning
+        If a number stands but is unusual, such as a Young's modulus below 0.1 GPa.
+    """
+    path = Path(path)
+    content = _content(path)
+    sections = _sections(_table(content, path))
+    head = Fields(where="[panel]", table=sections["panel"], examples=PANEL)
+    plate, length = _plate(head, sections)
+    limits, stock, stress = read_limits(sections.get("limits", {}))
+    return Panel(
+        name=head.word("name"),
+        revision=head.word("revision", default=""),
+        author=head.word("author", default=""),
+        plate=plate,
+        cases=read_cases(sections["case"], plate.material),
+        limits=limits,
+        tolerance=_tolerance(head),
+        held_in_plane=_held_in_plane(head),
+        triangles=_triangles(head),
+        stock=stock,
+        units=_display_units(length, stress),
+        path=path,
+        digest=hashlib.sha256(content).hexdigest()[:8],
+    )
+
+
+def _plate(head: Fields, sections: dict[str, Any]) -> tuple[Plate, Unit]:
+    """Plate of a panel file, and the unit of its coordinates."""
+    thickness, material = head.positive("thickness", "length"), read_material(head)
+    outline, length = read_outline(sections["outline"], sections.get("hole", []))
+    supports = read_supports(sections.get("supports", {}), outline)
+    with within("[supports]"):
+        plate = Plate(
+            outline=outline, thickness=thickness, material=material, supports=supports
+        )
+    return plate, length
+
+
+def _content(path: Path) -> bytes:
+    """Read the bytes of the file."""
+    shown_path = repr(str(path))
+    try:
+        if path.is_dir():
+            raise InputError(f"{shown_path} is a folder; name a panel file (TOML).")
+        with path.open("rb") as file:
+            content = file.read(MOST_BYTES + 1)
+    except (OSError, ValueError) as error:
+        if isinstance(error, InputError):
+            raise
+        why = getattr(error, "strerror", None) or error
+        raise InputError(f"cannot read panel file {shown_path}: {why}.") from error
+    if len(content) > MOST_BYTES:
+        raise InputError(
+            f"{shown_path} is longer than {MOST_BYTES // 10**6} MB; name a panel file."
+        )
+    return content
+
+
+def _table(content: bytes, path: Path) -> dict[str, Any]:
+    """Read the bytes as TOML."""
+    shown_path = repr(str(path))
+    try:
+        text = content.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        line = content.count(b"\n", 0, error.start) + 1
+        raise InputError(
+            f"{shown_path} is not UTF-8 text (byte {content[error.start]:#04x} in line "
+            f"{line}); save it as UTF-8."
+        ) from error
+    try:
+        return tomllib.loads(text)
+    except RecursionError as error:
+        raise InputError(f"{shown_path} nests its values too deeply.") from error
+    except ValueError as error:  # bad TOML, or a number of thousands of digits
+        why = " ".join(str(error).split())
+        if len(why) > 120:
+            why = f"{why[:60]} ... {why[-50:]}"
+        hint = ""
+        if re.search(r"^\s*held in plane", text, re.MULTILINE):
+            hint = '; a name with spaces stands in quotes, "held in plane" = "no"'
+        raise InputError(f"{shown_path} is not valid TOML: {why}{hint}.") from error
+
+
+def _sections(table: dict[str, Any]) -> dict[str, Any]:
+    """Check that the file holds the sections it may and must, as tables or lists."""
+    for key, value in table.items():
+        if key in LATER:
+            raise InputError(f"{LATER[key]} is not read by this version; take it out.")
+        if key not in SECTIONS:
+            raise InputError(
+                f"unknown section {shown(key)}; the sections are "
+                f"{', '.join(SECTIONS.values())}.{closest(key, SECTIONS)}"
+            )
+        header = SECTIONS[key]
+        is_list = isinstance(value, list) and value and header.startswith("[[")
+        if not (is_list or (isinstance(value, Mapping) and header[1] != "[")):
+            raise InputError(
+                f"section {key!r} is {shown(value)}; start it with the line {header}."
+            )
+    for key in NEEDED:
+        if key not in table:
+            raise InputError(f"section {SECTIONS[key]} is missing; add it.")
+    return table
+
+
+def _tolerance(head: Fields) -> float | None:
+    """Width of the bands asked for."""
+    if "tolerance" not in head:
+        return None
+    with within(head.place("tolerance")):
+        return share(head.value("tolerance"))
+
+
+def _held_in_plane(head: Fields) -> bool | None:
+    """Whether the edges are held in the plane, if the file says so."""
+    if "held in plane" not in head:
+        return None
+    return head.choice("held in plane", ("yes", "no")) == "yes"
+
+
+def _triangles(head: Fields) -> int | None:
+    """Read the number of triangles, if the file states one."""
+    if "triangles" not in head:
+        return None
+    count = head.value("triangles")
+    if isinstance(count, bool) or not isinstance(count, int):
+        raise head.refuse("triangles", "it must be a whole number, without quotes.")
+    if not 1 <= count <= MOST_TRIANGLES:
+        raise head.refuse("triangles", f"it must lie between 1 and {MOST_TRIANGLES}.")
+    return count
+
+
+def _display_units(length: Unit, stress: Unit | None) -> DisplayUnits:
+    """Units to show the panel in: American ones if the outline is in feet or inches."""
+    decades = math.log10(length.size)
+    if abs(decades - round(decades)) < 1e-9:
+        return DisplayUnits(length=length, stress=stress or DisplayUnits.stress)
+    return DisplayUnits(
+        length=length,
+        deflection=unit("in", "length"),
+        force=unit("lbf", "force"),
+        line_force=Unit(
+            "lbf/in", unit("lbf", "force").size / unit("in", "length").size
+        ),
+        moment=unit("lbf", "force"),
+        pressure=unit("psi", "pressure"),
+        stress=stress or unit("psi", "pressure"),
+    )

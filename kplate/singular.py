@@ -1,0 +1,157 @@
+"""Corners of a plate, and the places where plate theory gives no finite answer.
+
+They follow from the statement alone, before anything is meshed: corners by Williams's
+exponent for their angle and the way their sides are held, changes of support along a
+straight side, and point forces. Moments there have no value to report.
+"""
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from kplate import corners
+from kplate.loads import Case, PointForce
+from kplate.outline import Polygon
+from kplate.plate import Plate
+from kplate.supports import Support
+
+
+@dataclass(frozen=True, kw_only=True)
+class Corner:
+    """A vertex of the outline that is a corner, or where the support changes.
+
+    Parameters
+    ----------
+    place : tuple of float
+        Where, in m.
+    angle : float
+        Angle in rad inside the plate.
+    sides : tuple of str
+        The side that arrives and the one that leaves, the plate on the left.
+    supports : tuple of Support
+        How those are held.
+    exponent : complex
+        Williams's exponent lambda: moments go with r^(lambda - 1).
+    unbounded : bool
+        Whether moments grow without bound towards it.
+    """
+
+    place: tuple[float, float]
+    angle: float
+    sides: tuple[str, str]
+    supports: tuple[Support, Support]
+    exponent: complex
+    unbounded: bool
+
+    @property
+    def carries_force(self) -> bool:
+        """Whether a corner force can arise: a held corner with no clamped side."""
+        return any(s.holds_deflection for s in self.supports) and not any(
+            s.holds_slope for s in self.supports
+        )
+
+    @property
+    def words(self) -> str:
+        """What is special here, for a checker."""
+        first, second = (s.name for s in self.supports)
+        degrees = math.degrees(self.angle)
+        if abs(degrees - 180.0) < 1e-6:
+            what = f"support changes from {first} to {second}"
+        else:
+            what = f"corner of {degrees:.4g} degrees, {first} to {second}"
+        if self.unbounded:
+            what += f": moments go with r^{self.exponent.real - 1.0:.3f}"
+        return what
+
+
+@dataclass(frozen=True, kw_only=True)
+class Excluded:
+    """A disc left out of the peaks; its rim is included.
+
+    Parameters
+    ----------
+    place : tuple of float
+        Its centre in m.
+    radius : float
+        Its radius in m.
+    reason : str
+        Why.
+    case : str
+        The one load case it holds for, or "" for all.
+    """
+
+    place: tuple[float, float]
+    radius: float
+    reason: str
+    case: str = ""
+
+
+def plate_corners(plate: Plate) -> tuple[Corner, ...]:
+    """Corners and changes of support, rim first."""
+    found: list[Corner] = []
+    for line in plate.outline.lines:
+        if isinstance(line, Polygon):
+            found += _line_corners(plate, line, hole=line is not plate.outline.rim)
+    return tuple(found)
+
+
+def excluded_places(
+    plate: Plate, cases: Sequence[Case], radius: float | None = None
+) -> tuple[Excluded, ...]:
+    """Discs where moments have no finite value, left out of the peaks.
+
+    Parameters
+    ----------
+    plate : Plate
+        The statement.
+    cases : sequence of Case
+        Their point forces count.
+    radius : float, optional
+        Radius of the discs in m; the plate's thickness if left out.
+
+    Returns
+    -------
+    tuple of Excluded
+    """
+    r = plate.thickness if radius is None else radius
+    found = [
+        Excluded(place=corner.place, radius=r, reason=corner.words)
+        for corner in plate_corners(plate)
+        if corner.unbounded
+    ]
+    for case in cases:
+        found += [
+            Excluded(place=load.at, radius=r, reason="point force", case=case.name)
+            for load in case.loads
+            if isinstance(load, PointForce)
+        ]
+    return tuple(found)
+
+
+def _line_corners(plate: Plate, line: Polygon, *, hole: bool) -> list[Corner]:
+    found = []
+    for i, (x, y) in enumerate(line.points):
+        turn = 0.0 if line.straight[i] else float(line.turns[i])
+        sides = (line.sides[i - 1], line.sides[i])
+        if hole:  # the plate lies outside: on the left when run the other way
+            sides, turn = (sides[1], sides[0]), -turn
+        held = (plate.support(sides[0]), plate.support(sides[1]))
+        bend = turn == 0.0 or abs(turn) < plate.bend_turn
+        if held[0] == held[1] and bend:
+            continue
+        angle = math.pi - turn
+        names, nu = (held[0].name, held[1].name), plate.material.nu
+        exponent = corners.exponent(angle, names, nu)
+        found.append(
+            Corner(
+                place=(float(x), float(y)),
+                angle=angle,
+                sides=sides,
+                supports=held,
+                exponent=exponent,
+                unbounded=bool(1.0 - np.real(exponent) > corners.UNBOUNDED),
+            )
+        )
+    return found

@@ -1,0 +1,412 @@
+"""What a user asks of a solved plate: values at points, peaks, reactions, fields.
+
+Everything is in SI units and in the signs of the package: deflections, pressures and
+forces positive up, moments positive where they compress the top face, stresses positive
+in tension. Methods that take a `case` want its name where there are several.
+"""
+
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from kplate import reactions as support_reactions
+from kplate.arrays import Floats, Ints
+from kplate.errors import InputError
+from kplate.mesh import Mesh
+from kplate.plate import Plate
+from kplate.reactions import CornerForce, Reactions
+from kplate.recovery import (
+    SmoothedMoments,
+    principal_moments,
+    smoothed_moments,
+    surface_stress,
+    von_mises,
+)
+from kplate.singular import Excluded, excluded_places
+from kplate.solve.static import StaticState
+from kplate.values import Face, Value
+
+RIM_SAMPLES = 64  # points on the rim of an excluded disc
+# Steps along each edge of the triangles around the highest vertex of a deflection.
+_STEPS = 4
+_FACES: tuple[Face, Face] = ("top", "bottom")
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Solution:
+    """A solved plate in all its load cases.
+
+    Parameters
+    ----------
+    state : StaticState
+        Plate, mesh, cases and unknowns.
+    excluded_radius : float, optional
+        Radius in m of the discs left out of the peaks of moments and stresses; the
+        plate's thickness if left out.
+    """
+
+    state: StaticState
+    excluded_radius: float | None = None
+
+    @property
+    def plate(self) -> Plate:
+        """The plate as stated."""
+        return self.state.plate
+
+    @property
+    def mesh(self) -> Mesh:
+        """Its triangles."""
+        return self.state.mesh
+
+    @property
+    def cases(self) -> tuple[str, ...]:
+        """Names of the load cases."""
+        return tuple(case.name for case in self.state.cases)
+
+    @cached_property
+    def excluded(self) -> tuple[Excluded, ...]:
+        """Places without a finite moment, left out of the peaks."""
+        return excluded_places(self.plate, self.state.cases, self.excluded_radius)
+
+    def deflection(self, points: ArrayLike, *, case: str | None = None) -> Floats:
+        """Deflection w in m at points (k, 2) in m, (k,)."""
+        return self._bent(points, case)[:, 0]
+
+    def slopes(self, points: ArrayLike, *, case: str | None = None) -> Floats:
+        """Slopes dw/dx, dw/dy at points (k, 2) in m, (k, 2)."""
+        return self._bent(points, case)[:, 1:]
+
+    def moments(self, points: ArrayLike, *, case: str | None = None) -> Floats:
+        """Smoothed moments m_xx, m_yy, m_xy in N at points (k, 2) in m, (k, 3)."""
+        return self._interpolate(self._smoothed.moments, points, case)
+
+    def principal_moments(
+        self, points: ArrayLike, *, case: str | None = None
+    ) -> tuple[Floats, Floats]:
+        """Principal moments (k, 2) in N, larger first, and the angle of the larger."""
+        return principal_moments(self.moments(points, case=case))
+
+    def shears(self, points: ArrayLike, *, case: str | None = None) -> Floats:
+        """Transverse shears q_x, q_y in N/m at points (k, 2) in m, (k, 2)."""
+        return self._interpolate(self._smoothed.shears, points, case)
+
+    def shear_stress(self, points: ArrayLike, *, case: str | None = None) -> Floats:
+        """Largest transverse shear stress 3 q / 2h in Pa, at mid-depth, (k,)."""
+        q = self.shears(points, case=case)
+        return 1.5 * np.hypot(*q.T) / self.plate.thickness
+
+    def stresses(
+        self, points: ArrayLike, *, face: Face, case: str | None = None
+    ) -> Floats:
+        """Stresses xx, yy, xy in Pa on a face at points (k, 2) in m, (k, 3)."""
+        moments = self.moments(points, case=case)
+        return surface_stress(moments, self.plate.thickness, face)
+
+    def von_mises(
+        self, points: ArrayLike, *, face: Face, case: str | None = None
+    ) -> Floats:
+        """Von Mises stress in Pa on a face at points (k, 2) in m, (k,)."""
+        return von_mises(self.stresses(points, face=face, case=case))
+
+    def strain_energy(self, *, case: str | None = None) -> float:
+        """Strain energy in J."""
+        return float(self.state.strain_energy[self._index(case)])
+
+    def load_work(self, *, case: str | None = None) -> float:
+        """Work of the loads on their deflections in J: twice the strain energy."""
+        return float(self.state.load_work[self._index(case)])
+
+    def reactions(self, *, case: str | None = None) -> Reactions:
+        """Support forces by side and corner, and their balance with the loads."""
+        return self._reactions(self._index(case))
+
+    def hold_down(self, *, case: str | None = None) -> tuple[Value, list[CornerForce]]:
+        """Largest pull in N that a corner needs, and the corners that need it.
+
+        The value is 0 where no corner has to be held down.
+        """
+        names = self.cases if case is None else (self.cases[self._index(case)],)
+        pulls = []
+        for name in names:
+            most, forces = support_reactions.hold_down(
+                self.reactions(case=name).corners
+            )
+            place = forces[0].corner.place if forces else None
+            pulls.append((Value(value=most, case=name, place=place), forces))
+        return max(pulls, key=lambda pull: pull[0].value)
+
+    def peak(self, quantity: str, *, case: str | None = None) -> Value:
+        """Extreme value of a quantity over the plate, and where.
+
+        Parameters
+        ----------
+        quantity : str
+            "deflection" (largest magnitude, with its sign), "von Mises", "largest
+            principal" (largest tension of the two faces), "smallest principal" (largest
+            compression), "shear stress", "m_xx", "m_yy" or "m_xy" (largest magnitude,
+            with its sign).
+        case : str, optional
+            A load case; the worst of all if left out.
+
+        Returns
+        -------
+        Value
+            Kind "none". Moments and stresses leave the discs in `excluded` out, but not
+            their rims.
+
+        Raises
+        ------
+        InputError
+            If there is no such quantity or case.
+        """
+        if quantity not in _PEAKS:
+            raise InputError(
+                f"there is no quantity {quantity!r}; the quantities are "
+                f"{', '.join(_PEAKS)}."
+            )
+        indices = range(len(self.cases)) if case is None else [self._index(case)]
+        values = [_PEAKS[quantity](self, index) for index in indices]
+        key = _largest if quantity in _BY_VALUE else _magnitude
+        return max(values, key=key)
+
+    def point_fields(self, *, case: str | None = None) -> dict[str, Floats]:
+        """Fields at the vertices of the mesh, for files and pictures.
+
+        Returns
+        -------
+        dict of str to ndarray
+            Keys carry the SI unit, such as "deflection [m]"; shapes (n_points,) or
+            (n_points, k). Components are listed xx, yy, xy.
+        """
+        index = self._index(case)
+        moments = self._smoothed.moments[:, :, index]
+        shears = self._smoothed.shears[:, :, index]
+        bent = self.state.constraints.numbering.by_vertex(self.state.unknowns)
+        h = self.plate.thickness
+        fields = {
+            "deflection [m]": bent[:, 0, index],
+            "slopes [rad]": bent[:, 1:3, index],
+            "moments [N]": moments,
+            "principal moments [N]": principal_moments(moments)[0],
+            "shears [N per m]": shears,
+            "shear stress [Pa]": 1.5 * np.hypot(*shears.T) / h,
+        }
+        for face in _FACES:
+            stress = surface_stress(moments, h, face)
+            fields[f"stress {face} [Pa]"] = stress
+            fields[f"largest principal {face} [Pa]"] = principal_moments(stress)[0][
+                :, 0
+            ]
+        fields["von Mises [Pa]"] = von_mises(surface_stress(moments, h, "bottom"))
+        return fields
+
+    @cached_property
+    def _smoothed(self) -> SmoothedMoments:
+        return smoothed_moments(self.state)
+
+    @cached_property
+    def _known_reactions(self) -> dict[int, Reactions]:
+        return {}
+
+    def _reactions(self, index: int) -> Reactions:
+        known = self._known_reactions
+        if index not in known:
+            known[index] = support_reactions.reactions(
+                self.state, self._smoothed, index
+            )
+        return known[index]
+
+    def _index(self, case: str | None) -> int:
+        if case is None:
+            if len(self.cases) > 1:
+                raise InputError(
+                    f"there are {len(self.cases)} load cases; name one of "
+                    f"{', '.join(self.cases)}."
+                )
+            return 0
+        if case not in self.cases:
+            raise InputError(
+                f"there is no load case {case!r}; the cases are "
+                f"{', '.join(self.cases)}."
+            )
+        return self.cases.index(case)
+
+    def _bent(self, points: ArrayLike, case: str | None) -> Floats:
+        """Deflection and slopes at points, (k, 3)."""
+        triangles, barycentrics = self.mesh.locate(points)
+        return self._bent_at(triangles, barycentrics, self._index(case))
+
+    def _bent_at(self, triangles: Ints, barycentrics: Floats, index: int) -> Floats:
+        rows = self.state.element.evaluate(
+            self.mesh.points[self.mesh.triangles[triangles]], barycentrics[:, None]
+        )[:, 0]
+        table = self.state.constraints.numbering.table[triangles]
+        return np.einsum("krd,kd->kr", rows, self.state.unknowns[table, index])
+
+    def _interpolate(
+        self, at_vertices: Floats, points: ArrayLike, case: str | None
+    ) -> Floats:
+        triangles, barycentrics = self.mesh.locate(points)
+        own = at_vertices[self.mesh.triangles[triangles], :, self._index(case)]
+        return np.einsum("kv,kvc->kc", barycentrics, own)
+
+    def _candidates(self, index: int) -> tuple[Floats, Floats, Floats]:
+        """Places at which moments may peak, (k, 2), with moments and shears there.
+
+        They are linear in each triangle and what is asked of them is convex, so that it
+        peaks at a vertex; where a disc is left out, on its rim.
+        """
+        case = self.cases[index]
+        moments = self._smoothed.moments[:, :, index]
+        shears = self._smoothed.shears[:, :, index]
+        discs = [e for e in self.excluded if e.case in ("", case)]
+        if not discs:
+            return self.mesh.points, moments, shears
+        kept = _outside(self.mesh.points, discs, 1.0)
+        rims = np.concatenate([_rim(self.mesh, disc) for disc in discs])
+        rims = rims[_outside(rims, discs, 1.0 - 1e-9)]
+        triangles, barycentrics = self.mesh.locate(rims)
+        own = self.mesh.triangles[triangles]
+        return (
+            np.concatenate([self.mesh.points[kept], rims]),
+            np.concatenate(
+                [moments[kept], np.einsum("kv,kvc->kc", barycentrics, moments[own])]
+            ),
+            np.concatenate(
+                [shears[kept], np.einsum("kv,kvc->kc", barycentrics, shears[own])]
+            ),
+        )
+
+    def _value(self, value: float, place: ArrayLike, index: int) -> Value:
+        x, y = np.asarray(place, dtype=float)
+        return Value(
+            value=float(value), place=(float(x), float(y)), case=self.cases[index]
+        )
+
+
+def _peak_deflection(solution: Solution, index: int) -> Value:
+    """Search the triangles around the vertex that deflects most."""
+    mesh = solution.mesh
+    numbering = solution.state.constraints.numbering
+    w = numbering.by_vertex(solution.state.unknowns)[:, 0, index]
+    vertex = int(np.argmax(np.abs(w)))
+    around = np.flatnonzero((mesh.triangles == vertex).any(axis=1))
+    lattice = np.array(
+        [
+            (i, j, _STEPS - i - j)
+            for i in range(_STEPS + 1)
+            for j in range(_STEPS + 1 - i)
+        ]
+    ) / float(_STEPS)
+    triangles = np.repeat(around, len(lattice))
+    barycentrics = np.tile(lattice, (len(around), 1))
+    deflection = solution._bent_at(triangles, barycentrics, index)[:, 0]
+    corners = mesh.points[mesh.triangles[triangles]]
+    places = np.einsum("kv,kvc->kc", barycentrics, corners)
+    best = int(np.argmax(np.abs(deflection)))
+    place, value = places[best], deflection[best]
+    summit = _stationary(places, deflection)
+    if summit is not None and mesh.covers(summit[None])[0]:
+        there = float(solution.deflection(summit[None], case=solution.cases[index])[0])
+        # The parabola says where the top is; it may not lower what was found.
+        if abs(there) >= abs(value) * (1.0 - 1e-4):
+            place, value = summit, max(there, value, key=abs)
+    return solution._value(value, place, index)
+
+
+def _stationary(places: Floats, values: Floats) -> Floats | None:
+    """Top of the parabola through some values, if it lies among their places."""
+    centre, size = places.mean(axis=0), float(np.ptp(places, axis=0).max())
+    x, y = ((places - centre) / size).T
+    terms = np.column_stack([np.ones_like(x), x, y, x * x, x * y, y * y])
+    _, gx, gy, xx, xy, yy = np.linalg.lstsq(terms, values, rcond=None)[0]
+    curvature = np.array([[2 * xx, xy], [xy, 2 * yy]])
+    if np.linalg.det(curvature) <= 1e-6 * np.abs(curvature).max() ** 2:
+        return None
+    step = np.linalg.solve(curvature, [-gx, -gy])
+    return centre + size * step if np.abs(step).max() < 0.5 else None
+
+
+def _peak_von_mises(solution: Solution, index: int) -> Value:
+    places, moments, _ = solution._candidates(index)
+    stress = von_mises(surface_stress(moments, solution.plate.thickness, "bottom"))
+    best = int(np.argmax(stress))
+    principal = principal_moments(moments[best])[0]
+    # The same on both faces; name the one in tension.
+    face: Face = "bottom" if principal.sum() >= 0.0 else "top"
+    return replace(solution._value(stress[best], places[best], index), face=face)
+
+
+def _peak_principal(solution: Solution, index: int, sign: float) -> Value:
+    places, moments, _ = solution._candidates(index)
+    values = []
+    for face in _FACES:
+        stress = surface_stress(moments, solution.plate.thickness, face)
+        first = principal_moments(sign * stress)[0][:, 0]
+        best = int(np.argmax(first))
+        value = solution._value(sign * first[best], places[best], index)
+        values.append(replace(value, face=face))
+    return max(values, key=lambda value: sign * value.value)
+
+
+def _peak_moment(solution: Solution, index: int, component: int) -> Value:
+    places, moments, _ = solution._candidates(index)
+    best = int(np.argmax(np.abs(moments[:, component])))
+    return solution._value(moments[best, component], places[best], index)
+
+
+def _peak_shear_stress(solution: Solution, index: int) -> Value:
+    places, _, shears = solution._candidates(index)
+    stress = 1.5 * np.hypot(*shears.T) / solution.plate.thickness
+    best = int(np.argmax(stress))
+    return solution._value(stress[best], places[best], index)
+
+
+_PEAKS: dict[str, Callable[[Solution, int], Value]] = {
+    "deflection": _peak_deflection,
+    "von Mises": _peak_von_mises,
+    "largest principal": lambda s, i: _peak_principal(s, i, 1.0),
+    "smallest principal": lambda s, i: _peak_principal(s, i, -1.0),
+    "shear stress": _peak_shear_stress,
+    "m_xx": lambda s, i: _peak_moment(s, i, 0),
+    "m_yy": lambda s, i: _peak_moment(s, i, 1),
+    "m_xy": lambda s, i: _peak_moment(s, i, 2),
+}
+_BY_VALUE = ("largest principal",)
+
+
+def _largest(value: Value) -> float:
+    return value.value
+
+
+def _magnitude(value: Value) -> float:
+    return abs(value.value)
+
+
+def _outside(points: Floats, discs: list[Excluded], share: float) -> Floats:
+    """Points outside all discs shrunk to a share of their radius."""
+    out = np.ones(len(points), dtype=bool)
+    for disc in discs:
+        out &= np.hypot(*(points - disc.place).T) >= share * disc.radius
+    return out
+
+
+def _rim(mesh: Mesh, disc: Excluded) -> Floats:
+    """Points of a disc's rim on the plate, its ends on boundary edges included."""
+    angle = np.linspace(0.0, 2.0 * np.pi, RIM_SAMPLES, endpoint=False)
+    rim = disc.place + disc.radius * np.column_stack([np.cos(angle), np.sin(angle)])
+    start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
+    arm, step = start - disc.place, end - start
+    a = np.einsum("kc,kc->k", step, step)
+    b = np.einsum("kc,kc->k", arm, step)
+    c = np.einsum("kc,kc->k", arm, arm) - disc.radius**2
+    root = np.sqrt(np.maximum(b * b - a * c, 0.0))
+    ends = []
+    for t in ((-b - root) / a, (-b + root) / a):
+        hit = (b * b > a * c) & (t >= 0.0) & (t <= 1.0)
+        ends.append(start[hit] + t[hit, None] * step[hit])
+    points = np.concatenate([rim, *ends])
+    return points[mesh.covers(points)]
