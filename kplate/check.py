@@ -20,7 +20,7 @@ from kplate.panel import Panel, read_panel
 from kplate.reactions import CornerForce
 from kplate.solution import Solution
 from kplate.solve.static import Progress
-from kplate.validity import Validity, validity
+from kplate.validity import FLAG, Validity, validity
 from kplate.values import Value
 
 CAUTION = (
@@ -281,8 +281,9 @@ def _closing(checked: Checked) -> list[str]:
     """Verdict, remarks, what was left out, balance and caution."""
     panel, solution = checked.panel, checked.solution
     length = panel.units.length
-    lines = [f"{checked.verdict.words}.   {'   '.join(checked.validity.words[:2])}"]
-    lines += checked.validity.words[2:]
+    flags = [word for word in checked.validity.words if word.startswith(FLAG)]
+    plain = [word for word in checked.validity.words if word not in flags]
+    lines = ["   ".join([f"{checked.verdict.words}.", *plain]), *flags]
     worst = governing(checked.verdict.judgements)
     if worst is not None:
         lines.append(

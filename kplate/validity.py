@@ -9,6 +9,7 @@ from kplate.solution import Solution
 THIN = 1.0 / 20.0  # h/L
 # Beyond, the plate also carries as a membrane: common practice for "small".
 SMALL = 0.5  # w/h
+FLAG = "FLAG: "
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -58,13 +59,13 @@ class Validity:
         words = [f"thin: h/L 1/{ratio:.0f}."]
         if not self.thin:
             words = [
-                f"FLAG: not thin, h/L 1/{ratio:.3g} (1/20 is): shear deformation, left "
+                f"{FLAG}not thin, h/L 1/{ratio:.3g} (1/20 is): shear deformation, left "
                 "out here, adds to the deflection."
             ]
         words.append(self._deflection_words)
         if self.smallest_hole is not None and self._hole_is_small:
             words.append(
-                f"FLAG: smallest hole radius/h {self.smallest_hole:.2g}, less than 1: "
+                f"{FLAG}smallest hole radius/h {self.smallest_hole:.2g}, less than 1: "
                 "stress at its rim is not that of a thin plate."
             )
         elif self.smallest_hole is not None:
@@ -80,7 +81,7 @@ class Validity:
         ratio = f"w/h {self.largest_deflection:.2f}"
         if self.small:
             return f"small deflection: {ratio}."
-        flag = f"FLAG: beyond small deflection, {ratio} (0.5 is): "
+        flag = f"{FLAG}beyond small deflection, {ratio} (0.5 is): "
         if not self.supported_all_round:
             return flag + "membrane action is left out; judge it by hand."
         held = {

@@ -160,6 +160,7 @@ def _solve(
     triangles meet a large deflection; the elements' own, free of rigid motion, is not.
     It takes loads and support forces into balance to round-off.
     """
+
     def back(right: Floats) -> Floats:
         turned = np.zeros_like(right)
         turned[constraints.free] = factor.solve(

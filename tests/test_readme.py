@@ -1,0 +1,71 @@
+"""What README says is what happens."""
+
+import re
+from pathlib import Path
+
+import pytest
+
+from kplate.check import check, version
+from kplate.cli import main
+
+ROOT = Path(__file__).parents[1]
+README = (ROOT / "README.md").read_text("utf-8")
+
+
+def block_after(marker):
+    """Code block that follows a marker."""
+    return README.split(marker, 1)[1].split("```")[1].split("\n", 1)[1]
+
+
+def test_the_example_in_python_runs(tmp_path, monkeypatch, capsys):
+    monkeypatch.chdir(tmp_path)
+    code = block_after("## In Python")
+    exec(compile(code, "README.md", "exec"), {})
+    out = capsys.readouterr().out
+    assert "36." in out.split(" mm")[0]
+    assert (tmp_path / "cover.vtu").exists()
+
+
+def test_the_panel_file_shown_is_read_and_passes(tmp_path):
+    panel = tmp_path / "shown.toml"
+    panel.write_text(block_after("## The panel file"), "utf-8")
+    checked = check(panel)
+    assert checked.status == 0
+
+
+def test_the_output_shown_is_what_is_printed():
+    """Numbers may move with the mesh in their last digits; words and units may not."""
+    shown = block_after("<!-- pit-cover -->").splitlines()
+    printed = check(ROOT / "meshes" / "pit-cover.toml").text.splitlines()
+    assert shown[0] == printed[0].replace(version(), "0.1.0")
+
+    def words(line):
+        return re.sub(r"[-+]?\d[\d.,e+-]*", "#", " ".join(line.split()))
+
+    kept = [words(line) for line in printed]
+    for line in shown:
+        if not line.startswith("written:"):
+            assert words(line) in kept, line
+
+
+def test_every_command_is_in_the_table():
+    with pytest.raises(SystemExit):
+        main(["--help"])
+    for command in ("check", "new", "view"):
+        assert f"`kplate {command} " in README
+
+
+def test_the_top_level_is_as_agreed():
+    allowed = {
+        "README.md",
+        "DEVELOPERS.md",
+        "pyproject.toml",
+        "kplate",
+        "meshes",
+        "tests",
+        "benchmarks",
+        "results",
+        "build",
+    }
+    names = {p.name for p in ROOT.iterdir() if not p.name.startswith(".")}
+    assert {n for n in names if not n.endswith(".egg-info")} <= allowed
