@@ -1,6 +1,25 @@
-"""Thin flat panels from their outline to a judged answer."""
+"""Thin flat panels from their outline to a judged answer.
+
+State a panel, ask a question, get a number you can sign::
+
+    import kplate as kp
+
+    cover = kp.Plate(
+        outline=kp.Outline.polygon([(0, 0), (0.8, 0), (0.8, 0.6), (0, 0.6)]),
+        thickness=0.006,
+        material=kp.STEEL,
+        supports={f"side-{i}": kp.SIMPLY_SUPPORTED for i in (1, 2, 3, 4)},
+    )
+    solution = kp.solve(cover, [kp.Pressure(-5e3)])
+    solution.peak("deflection")
+
+SI units; z, deflections, pressures and forces positive up; moments positive where they
+compress the top face. Results are for a qualified engineer's judgement; local codes and
+licensed practice decide.
+"""
 
 from kplate.adapt import solve
+from kplate.check import Checked, check
 from kplate.errors import InputError, KplateError, KplateWarning, MeshError, SolveError
 from kplate.limits import DeflectionLimit, Judgement, Limits, StressLimit, Verdict
 from kplate.loads import (
@@ -23,6 +42,10 @@ from kplate.materials import (
 )
 from kplate.mesh import Mesh
 from kplate.outline import Circle, Outline, Polygon
+from kplate.output.picture import write_picture
+from kplate.output.record import solution_record, write_json, write_reactions
+from kplate.output.view import view
+from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
 from kplate.plate import Plate
 from kplate.recovery import principal_moments
@@ -30,3 +53,55 @@ from kplate.solution import Solution
 from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED, Support
 from kplate.validity import Validity, validity
 from kplate.values import Value
+
+__all__ = [
+    "ALUMINIUM",
+    "CLAMPED",
+    "FREE",
+    "GLASS",
+    "SIMPLY_SUPPORTED",
+    "STAINLESS_STEEL",
+    "STEEL",
+    "STOCK",
+    "Case",
+    "Checked",
+    "Circle",
+    "DeflectionLimit",
+    "DiscPatch",
+    "Hydrostatic",
+    "InputError",
+    "Isotropic",
+    "Judgement",
+    "KplateError",
+    "KplateWarning",
+    "Limits",
+    "Mesh",
+    "MeshError",
+    "Outline",
+    "Panel",
+    "Plate",
+    "PointForce",
+    "Polygon",
+    "Pressure",
+    "PressureField",
+    "RectanglePatch",
+    "SelfWeight",
+    "Solution",
+    "SolveError",
+    "StressLimit",
+    "Support",
+    "Validity",
+    "Value",
+    "Verdict",
+    "check",
+    "principal_moments",
+    "read_panel",
+    "solution_record",
+    "solve",
+    "validity",
+    "view",
+    "write_json",
+    "write_picture",
+    "write_reactions",
+    "write_vtk",
+]

@@ -1,8 +1,8 @@
 """Mesh files: triangles and their fields, for VTK and what reads it.
 
 The arrays of a .vtu file stand uncompressed (base64): zlib makes a plate with all its
-fields a third smaller and takes some twenty times as long, and the bytes it makes of the
-same numbers depend on its version.
+fields a third smaller and takes some twenty times as long, and the bytes it makes of
+the same numbers depend on its version.
 """
 
 import contextlib
@@ -130,7 +130,8 @@ def read_vtu(path: Path) -> Fields:
         return _parse(path)
     except Exception as error:  # meshio lets pass what its parts raise
         raise InputError(
-            f"{shown} is damaged, or not of triangles and lines; run kplate check again."
+            f"{shown} is damaged, or not of triangles and lines; run kplate check "
+            "again."
         ) from error
 
 
@@ -145,7 +146,7 @@ def _parse(path: Path) -> Fields:
         raise ValueError(f"cells are {kinds}")
     blocks = [block.data.astype(np.int64) for block in mesh.cells]
     for block in blocks:
-        if not (block.size and 0 <= block.min() and block.max() < len(mesh.points)):
+        if not (block.size and block.min() >= 0 and block.max() < len(mesh.points)):
             raise ValueError("cells name points that are not there")
     if len(blocks) == 1:
         blocks.append(np.empty((0, 2), dtype=np.int64))

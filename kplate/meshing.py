@@ -226,6 +226,10 @@ def _read(gmsh: Any, outline: Outline, curves: list[list[int]]) -> Mesh:
         circle = round_lines.index(line) if line in round_lines else STRAIGHT_EDGE
         for side, curve in zip(line.sides, line_curves, strict=True):
             pairs = gmsh.model.mesh.getElementsByType(1, curve)[1].astype(np.int64)
+            if not np.isin(pairs, used).all():
+                raise MeshError(
+                    f"the triangles leave side {side!r} out; try another size."
+                )
             edges.append(number[pairs].reshape(-1, 2))
             sides.append(np.full(len(edges[-1]), names.index(side)))
             circles.append(np.full(len(edges[-1]), circle))

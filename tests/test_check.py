@@ -214,8 +214,11 @@ def test_new_writes_a_panel_that_checks_and_keeps_what_is_there(tmp_path, capsys
     assert "exists already" in capsys.readouterr().err
     assert path.read_text("utf-8") == "precious"
     starter = new_panel(tmp_path / "starter.toml")
-    lines = [s for s in starter.read_text("utf-8").splitlines() if s.strip()]
-    assert all("#" in line for line in lines if "=" in line and line[0] != "#")
+    lines = [s.strip() for s in starter.read_text("utf-8").splitlines()]
+    for before, line in zip(lines, lines[1:], strict=False):
+        if "=" in line and not line.startswith("#"):
+            assert "#" in line or before.startswith("#"), line
+
 
 
 def test_results_land_below_the_current_directory(tmp_path):

@@ -129,7 +129,7 @@ INDEFINITE = {
     "full": 1.5 * np.eye(40) - np.full((40, 40), 0.05),
     "two by two": np.array([[1.0, 2.0], [2.0, 1.0]]),
 }
-# Short chains: in a large plate that is free to move, round-off leaves pivots up to 1e-11,
+# Short chains: in a large plate free to move, round-off leaves pivots up to 1e-11,
 # which a fine mesh may have as well. Rigid motions are counted before, in boundary.
 SINGULAR = {
     "two by two": np.ones((2, 2)),

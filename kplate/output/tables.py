@@ -61,7 +61,7 @@ def values_table(lines: Sequence[Line]) -> str:
             (line.case, line.quantity, shown, band(line.value), limit, used, line.where)
         )
     header = ("case", "quantity", "value", "band", "limit", "used", "where")
-    return _columns(header, rows, right=())
+    return _columns(header, rows)
 
 
 def band(value: Value) -> str:
@@ -81,17 +81,14 @@ def legend(lines: Sequence[Line]) -> str:
     return "no mark: bound   ~ estimate   ? indicator"
 
 
-def _columns(
-    header: Sequence[str], rows: Sequence[Sequence[str]], right: Sequence[int]
-) -> str:
+def _columns(header: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
     """Lay out columns without rules."""
     from rich.console import Console
     from rich.table import Table
 
     table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="")
-    for k, name in enumerate(header):
-        justify = "right" if k in right else "left"
-        table.add_column(name, justify=justify, no_wrap=True)
+    for name in header:
+        table.add_column(name, no_wrap=True)
     for row in rows:
         table.add_row(*[_plain(cell) for cell in row])
     out = StringIO()

@@ -278,6 +278,23 @@ def test_slopes_are_the_derivatives_of_the_deflection(element, X):
 
 @every_element
 @given(triangles())
+def test_conforming_elements_bend_as_their_slopes_do(element, X):
+    """Those alone: the energy of the others is not that of any deflection."""
+    points = composite(element.pieces, triangle_rule(4)).points
+    step = 1e-5 * size_of(X)
+    moves = barycentric_gradients(X[None])[0].T * step
+    S = scales(element, X)
+    by = []
+    for move in moves:
+        ahead, behind = (rows(element, X, points + s * move)[:, 1:] for s in (1, -1))
+        by.append((ahead - behind) / (2.0 * step) / S)
+    expected = np.stack([by[0][:, 0], by[1][:, 1], by[0][:, 1] + by[1][:, 0]], axis=1)
+    error = np.abs(element.curvature(X[None], points)[0] / S - expected).max()
+    assert element.conforming == (error < 1e-6 * np.abs(expected).max())
+
+
+@every_element
+@given(triangles())
 def test_curvature_sums_to_the_slopes_around_the_edge(element, X):
     """Gauss's theorem, whether the element is C1 or takes w on its edges only."""
     rule = composite(element.pieces, triangle_rule(FINE))

@@ -1,0 +1,468 @@
+"""Meshes by Gmsh: properties of what comes out, and Gmsh left as it was found."""
+
+import math
+import signal
+from concurrent.futures import ThreadPoolExecutor
+
+import gmsh
+import numpy as np
+import pytest
+import shapely
+from hypothesis import assume, given, settings
+from hypothesis import strategies as st
+
+from kplate.errors import InputError, MeshError
+from kplate.mesh import STRAIGHT_EDGE
+from kplate.meshing import EDGES_ON_CIRCLE, LARGEST, mesh_outline, size_for
+from kplate.outline import Circle, Outline, Polygon
+
+SQUARE = np.array([(0.0, 0.0), (1.0, 0.0), (1.0, 1.0), (0.0, 1.0)])
+SIDES = ("south", "east", "north", "west")
+PLATE = Outline.polygon(SQUARE, sides=SIDES)
+HOLED = PLATE.cut(Circle(centre=(0.4, 0.5), radius=0.1, name="shaft"))
+
+
+@pytest.fixture
+def running_gmsh():
+    """Gmsh as started by somebody else, with a model of theirs and a mesh in it."""
+    gmsh.initialize(["theirs", "-v", "0"], readConfigFiles=False, interruptible=False)
+    gmsh.model.add("theirs")
+    gmsh.model.occ.addRectangle(0, 0, 0, 2, 1)
+    gmsh.model.occ.synchronize()
+    gmsh.model.mesh.generate(2)
+    yield gmsh
+    gmsh.finalize()
+
+
+def corner_angles(mesh):
+    """Angles of the triangles in degrees, (n, 3)."""
+    corners = mesh.points[mesh.triangles]
+    angles = []
+    for k in range(3):
+        u, v = (corners[:, (k + j) % 3] - corners[:, k] for j in (1, 2))
+        cross = u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0]
+        angles.append(np.arctan2(cross, np.einsum("kc,kc->k", u, v)))
+    return np.degrees(np.column_stack(angles))
+
+
+def edge_lengths(mesh):
+    a, b = np.moveaxis(mesh.points[mesh.edges], 1, 0)
+    return np.hypot(*(b - a).T)
+
+
+def same(a, b):
+    """Whether two meshes agree to the last bit."""
+    names = ("points", "triangles", "boundary_edges", "boundary_sides", "circles")
+    return all(np.array_equal(getattr(a, n), getattr(b, n)) for n in names)
+
+
+def exact_area(mesh, outline):
+    """Area of the outline with every circle replaced by its chords, in m2."""
+    areas = []
+    for line in outline.lines:
+        if isinstance(line, Polygon):
+            areas.append(shapely.Polygon(line.points).area)
+            continue
+        own = mesh.boundary_sides == outline.side_names.index(line.name)
+        angles = 2.0 * np.arcsin(0.5 * mesh.boundary_lengths[own] / line.radius)
+        areas.append(0.5 * line.radius**2 * np.sin(angles).sum())
+    return areas[0] - sum(areas[1:])
+
+
+def assert_fits(mesh, outline):
+    """What holds for every mesh of an outline."""
+    assert mesh.area == pytest.approx(exact_area(mesh, outline), abs=1e-12)
+    assert mesh.side_names == outline.side_names
+    assert sorted(set(mesh.triangles.ravel())) == list(range(len(mesh.points)))
+    assert len({tuple(e) for e in mesh.boundary_edges}) == len(mesh.boundary_edges)
+    for number, name in enumerate(outline.side_names):
+        own = mesh.boundary_sides == number
+        line = next(line for line in outline.lines if name in line.sides)
+        ends = mesh.points[mesh.boundary_edges[own]]
+        circle = mesh.boundary_circles[own]
+        if isinstance(line, Circle):
+            reach = np.hypot(*np.moveaxis(ends - line.centre, -1, 0))
+            np.testing.assert_allclose(reach, line.radius, rtol=1e-12, atol=1e-15)
+            expected = (*line.centre, line.radius)
+            np.testing.assert_array_equal(mesh.circles[circle], [expected] * own.sum())
+            assert own.sum() >= EDGES_ON_CIRCLE
+            continue
+        assert (circle == STRAIGHT_EDGE).all()
+        length = mesh.boundary_lengths[own].sum()
+        assert length == pytest.approx(outline.side_length(name), rel=1e-12)
+        pieces = np.stack([line.points, np.roll(line.points, -1, axis=0)], axis=1)
+        side = shapely.MultiLineString(
+            [piece for piece, s in zip(pieces, line.sides, strict=True) if s == name]
+        )
+        assert shapely.distance(shapely.points(ends), side).max() < 1e-12
+    for line in outline.lines:
+        if isinstance(line, Polygon):  # its corners are points of the mesh
+            apart = line.points[:, None] - mesh.points
+            assert np.hypot(*np.moveaxis(apart, -1, 0)).min(axis=1).max() < 1e-12
+
+
+@st.composite
+def stars(draw):
+    """A star of five to nine corners with up to two holes, a circle and a square."""
+    n = draw(st.integers(5, 9))
+    shift = draw(st.lists(st.floats(-0.25, 0.25), min_size=n, max_size=n))
+    radii = draw(st.lists(st.floats(0.4, 1.0), min_size=n, max_size=n))
+    angles = 2.0 * np.pi * (np.arange(n) + shift) / n
+    outline = Outline.polygon(
+        np.array(radii)[:, None] * np.c_[np.cos(angles), np.sin(angles)]
+    )
+    holes = (
+        Circle(centre=(-0.06, 0.0), radius=0.03, name="shaft"),
+        Polygon(points=(0.03, -0.03) + 0.06 * SQUARE, sides=["a", "b", "a", "d"]),
+    )
+    return outline.cut(*holes[: draw(st.integers(0, 2))])
+
+
+@settings(max_examples=15)
+@given(stars())
+def test_any_outline_is_covered_and_its_sides_kept(outline):
+    mesh = mesh_outline(outline, size=0.05)  # less than the gaps between its lines
+    assert_fits(mesh, outline)
+    inner = np.pi - np.abs(outline.rim.turns)
+    assume(np.degrees(inner.min()) > 35.0)
+    assert corner_angles(mesh).min() > 15.0
+
+
+@pytest.mark.parametrize("holes", [0, 1, 2])
+@pytest.mark.parametrize("radius", [0.02, 0.5, 40.0])
+def test_a_round_plate_is_covered(radius, holes):
+    cut = (
+        Circle(centre=(3.0 + 0.3 * radius, 5.0), radius=0.2 * radius, name="shaft"),
+        Polygon(
+            points=(3.0 - 0.6 * radius, 5.0) + 0.4 * radius * (SQUARE - (0, 0.5)),
+            sides=SIDES,
+        ),
+    )
+    outline = Outline.circle((3.0, 5.0), radius=radius).cut(*cut[:holes])
+    mesh = mesh_outline(outline, size=0.15 * radius)
+    assert_fits(mesh, outline)
+    assert corner_angles(mesh).min() > 20.0
+
+
+def test_a_circle_has_more_edges_where_the_size_asks_for_them():
+    mesh = mesh_outline(Outline.circle((0, 0), radius=1.0), size=0.05)
+    assert len(mesh.boundary_edges) == pytest.approx(2 * np.pi / 0.05, abs=2)
+
+
+def test_the_edges_around_a_circle_are_alike():
+    mesh = mesh_outline(HOLED, size=0.3)
+    round_edges = mesh.boundary_lengths[mesh.boundary_sides == 4]
+    np.testing.assert_allclose(round_edges, round_edges[0], rtol=1e-9)
+
+
+# Size and number
+
+
+@pytest.mark.parametrize("triangles", [1000, 5000])
+@pytest.mark.parametrize(
+    "outline",
+    [PLATE, Outline.circle((0, 0), radius=2.0), Outline.polygon(SQUARE * (3.0, 0.5))],
+)
+def test_a_mesh_has_about_as_many_triangles_as_asked_for(outline, triangles):
+    size = size_for(outline, triangles)
+    mesh = mesh_outline(outline, size=size)
+    assert 0.8 * triangles < len(mesh.triangles) < 1.35 * triangles
+    assert np.median(edge_lengths(mesh)) == pytest.approx(size, rel=0.15)
+    assert edge_lengths(mesh).max() < 1.7 * size
+
+
+def test_size_for_is_that_of_equal_triangles():
+    """An equilateral triangle of edge a has the area sqrt(3)/4 a^2."""
+    size = size_for(PLATE, 1000)
+    assert 1000 * math.sqrt(3.0) / 4.0 * size**2 == pytest.approx(1.0, rel=1e-14)
+
+
+def test_edges_are_short_at_fine_places_and_grow_away_from_them():
+    places = [((0.0, 0.0), 0.002), ((0.7, 0.6), 0.005), ((1.0, 0.4), 0.01)]
+    mesh = mesh_outline(PLATE, size=0.1, fine=places)
+    assert_fits(mesh, PLATE)
+    middles, lengths = mesh.points[mesh.edges].mean(axis=1), edge_lengths(mesh)
+    for place, size in places:
+        away = np.hypot(*(middles - place).T)
+        near = lengths[away < 2.0 * size]
+        assert near.size > 3
+        assert 0.4 * size < near.min()
+        assert near.max() < 2.0 * size
+    away = np.min([np.hypot(*(middles - p).T) for p, _ in places], axis=0)
+    assert np.median(lengths[away > 0.35]) == pytest.approx(0.1, rel=0.2)
+    assert corner_angles(mesh).min() > 25.0
+
+
+def test_a_place_coarser_than_the_mesh_changes_nothing():
+    fine = [((0.5, 0.5), 0.1), ((0.2, 0.2), 7.0)]
+    assert same(mesh_outline(PLATE, size=0.1, fine=fine), mesh_outline(PLATE, size=0.1))
+
+
+# Extremes
+
+
+def test_a_sliver_of_a_plate_is_meshed():
+    sliver = Outline.polygon(SQUARE * (1.0, 1e-3), sides=SIDES)
+    mesh = mesh_outline(sliver, size=1e-3)
+    assert_fits(mesh, sliver)
+    assert corner_angles(mesh).min() > 30.0
+
+
+@pytest.mark.parametrize(
+    "hole",
+    [
+        Circle(centre=(0.5, 0.5), radius=0.5e-4, name="hole"),
+        Polygon(points=0.5 + 1e-4 * SQUARE, sides=["hole"] * 4),
+    ],
+)
+def test_a_tiny_hole_is_kept(hole):
+    outline = PLATE.cut(hole)
+    mesh = mesh_outline(outline, size=0.03)
+    assert_fits(mesh, outline)
+    assert corner_angles(mesh).min() > 15.0
+
+
+NEAR = 1e-3 * math.sqrt(2.0)
+
+
+@pytest.mark.parametrize(
+    "outline",
+    [
+        PLATE.cut(Circle(centre=(0.2 + NEAR, 0.5), radius=0.2, name="hole")),
+        PLATE.cut(Polygon(points=(NEAR, 0.3) + 0.4 * SQUARE, sides=["hole"] * 4)),
+        PLATE.cut(
+            Circle(centre=(0.3, 0.5), radius=0.1, name="a"),
+            Circle(centre=(0.5 + NEAR, 0.5), radius=0.1, name="b"),
+        ),
+        Outline.circle((0, 0), radius=0.5).cut(
+            Circle(centre=(0.25 - NEAR, 0), radius=0.25, name="hole")
+        ),
+        Outline.circle((0, 0), radius=0.5).cut(
+            Polygon(points=[(0, 0), (0.5 - NEAR, 0), (0, 0.3)], sides=["hole"] * 3)
+        ),
+    ],
+)
+def test_a_hole_that_nearly_touches_is_kept(outline):
+    assert_fits(mesh_outline(outline, size=0.05), outline)
+
+
+@pytest.mark.parametrize("x", [1e3, 1e5])
+def test_a_plate_in_coordinates_of_its_site_is_meshed(x):
+    here = np.array([x + 0.123, x / 3])
+    circle = Circle(centre=tuple(here + 0.5), radius=0.2, name="shaft")
+    outline = Outline.polygon(here + SQUARE, sides=SIDES).cut(circle)
+    mesh = mesh_outline(outline, size=0.1)
+    chords = 0.2 * np.sin(np.pi / np.sum(mesh.boundary_sides == 4))
+    assert mesh.area == pytest.approx(outline.area, abs=2 * math.pi * 0.2 * chords)
+    assert corner_angles(mesh).min() > 20.0
+
+
+@pytest.mark.parametrize("scale", [1e-3, 1e3])
+def test_scaling_a_plate_scales_its_mesh(scale):
+    hole = Circle(centre=(0.4 * scale, 0.5 * scale), radius=0.1 * scale, name="shaft")
+    outline = Outline.polygon(scale * SQUARE, sides=SIDES).cut(hole)
+    mesh = mesh_outline(outline, size=0.1 * scale)
+    assert mesh.area / scale**2 == pytest.approx(mesh_outline(HOLED, size=0.1).area)
+    assert corner_angles(mesh).min() > 20.0
+
+
+# Refusals
+
+
+@pytest.mark.parametrize("triangles", [3, 0, -5, LARGEST + 1, math.nan])
+def test_a_number_of_triangles_out_of_range_is_refused(triangles):
+    with pytest.raises(InputError) as caught:
+        size_for(PLATE, triangles)
+    assert str(caught.value) == (
+        f"triangles = {triangles}; ask for a number between 4 and 5000000."
+    )
+
+
+@pytest.mark.parametrize("size", [0.0, -0.1, 1e-4, math.nan, math.inf])
+def test_a_size_that_cannot_be_is_refused(size):
+    with pytest.raises(InputError) as caught:
+        mesh_outline(PLATE, size=size)
+    assert str(caught.value) == (
+        f"the mesh size is {size:g} m; it must be finite and at least 0.00068 m for "
+        "this outline."
+    )
+
+
+@pytest.mark.parametrize("least", [0.0, -1.0, math.nan, math.inf])
+def test_a_fine_place_needs_a_positive_size(least):
+    with pytest.raises(InputError) as caught:
+        mesh_outline(PLATE, size=0.1, fine=[((0.5, 0.5), least)])
+    assert str(caught.value) == (
+        f"the mesh size is {least:g} m at (0.5, 0.5) m; it must be a positive number, "
+        "at a place with finite coordinates."
+    )
+
+
+def test_a_fine_place_is_a_place():
+    with pytest.raises(InputError, match=r"0\.01 m at \(nan, 0\) m"):
+        mesh_outline(PLATE, size=0.1, fine=[((math.nan, 0.0), 0.01)])
+
+
+def test_what_gmsh_cannot_mesh_is_said_so(monkeypatch):
+    def fail(dim):
+        raise Exception("no luck")  # as Gmsh does
+
+    monkeypatch.setattr(gmsh.model.mesh, "generate", fail)
+    with pytest.raises(MeshError) as caught:
+        mesh_outline(PLATE, size=0.1)
+    assert str(caught.value) == (
+        "the outline could not be meshed at size 0.1 m (no luck); try another size."
+    )
+    assert not gmsh.isInitialized()
+
+
+def test_no_triangles_are_no_mesh(monkeypatch):
+    monkeypatch.setattr(gmsh.model.mesh, "generate", lambda dim: None)
+    with pytest.raises(MeshError) as caught:
+        mesh_outline(PLATE, size=0.1)
+    assert str(caught.value) == (
+        "the outline could not be meshed: no triangles came out."
+    )
+
+
+def test_a_mesh_without_its_hole_is_noticed(monkeypatch):
+    add = gmsh.model.occ.addPlaneSurface
+    monkeypatch.setattr(gmsh.model.occ, "addPlaneSurface", lambda loops: add(loops[:1]))
+    with pytest.raises(
+        MeshError, match="the triangles leave side 'shaft' out; try another"
+    ):
+        mesh_outline(HOLED, size=0.1)
+
+
+def test_a_mesh_of_another_area_is_noticed(monkeypatch):
+    """By 1e-7 of a circle's radius: less than the chords take, so they are allowed."""
+    add = gmsh.model.occ.addCircle
+    monkeypatch.setattr(
+        gmsh.model.occ, "addCircle", lambda x, y, z, r: add(x, y, z, r * (1 + 1e-7))
+    )
+    with pytest.raises(MeshError, match=r"the mesh covers .* please report the outl"):
+        mesh_outline(HOLED, size=0.1)
+
+
+def test_missing_system_libraries_are_named(monkeypatch):
+    def load(name, *rest, real=__import__):
+        if name == "gmsh":
+            raise OSError("libGLU.so.1: cannot open shared object file")
+        return real(name, *rest)
+
+    monkeypatch.setattr("builtins.__import__", load)
+    with pytest.raises(MeshError) as caught:
+        mesh_outline(PLATE, size=0.1)
+    assert str(caught.value) == (
+        "Gmsh cannot start: libGLU.so.1: cannot open shared object file. Install the "
+        "system libraries that the README lists (on Debian: libglu1-mesa libgl1 "
+        "libxcursor1 libxft2 libxinerama1 libgomp1)."
+    )
+
+
+# Gmsh as it was found
+
+
+def test_the_same_outline_gives_the_same_mesh_to_the_last_bit():
+    fine = [((0.0, 0.0), 0.01)]
+    first = mesh_outline(HOLED, size=0.07, fine=fine)
+    mesh_outline(PLATE, size=0.2)
+    assert same(mesh_outline(HOLED, size=0.07, fine=fine), first)
+
+
+def test_gmsh_is_not_left_running():
+    assert not gmsh.isInitialized()
+    mesh_outline(PLATE, size=0.2)
+    assert not gmsh.isInitialized()
+
+
+def test_interrupts_stay_with_whoever_handles_them():
+    def own(number, frame):
+        raise AssertionError
+
+    before = signal.signal(signal.SIGINT, own)
+    try:
+        mesh_outline(PLATE, size=0.2)
+        assert signal.getsignal(signal.SIGINT) is own
+    finally:
+        signal.signal(signal.SIGINT, before)
+
+
+def test_a_model_of_somebody_else_is_kept_and_stays_current(running_gmsh):
+    nodes = running_gmsh.model.mesh.getNodes()[1]
+    entities = running_gmsh.model.getEntities()
+    models = running_gmsh.model.list()
+    mesh_outline(HOLED, size=0.1, fine=[((0.0, 0.0), 0.01)])
+    assert running_gmsh.isInitialized()
+    assert running_gmsh.model.list() == models
+    assert running_gmsh.model.getCurrent() == "theirs"
+    assert running_gmsh.model.getEntities() == entities
+    np.testing.assert_array_equal(running_gmsh.model.mesh.getNodes()[1], nodes)
+    assert len(running_gmsh.model.mesh.field.list()) == 0
+
+
+def test_models_of_our_own_name_are_kept(running_gmsh):
+    for name in ("kplate", "kplate_"):
+        running_gmsh.model.add(name)
+        running_gmsh.model.occ.addPoint(0, 0, 0)
+        running_gmsh.model.occ.synchronize()
+    mesh_outline(PLATE, size=0.2)
+    assert running_gmsh.model.getCurrent() == "kplate_"
+    assert running_gmsh.model.list() == ["", "theirs", "kplate", "kplate_"]
+    for name in ("kplate", "kplate_"):
+        running_gmsh.model.setCurrent(name)
+        assert running_gmsh.model.getEntities() == [(0, 1)]
+
+
+def test_everything_is_put_back_after_a_failure(running_gmsh, monkeypatch):
+    running_gmsh.option.setNumber("Mesh.Algorithm", 8)
+
+    def fail(dim):
+        raise Exception("no luck")  # as Gmsh does
+
+    monkeypatch.setattr(gmsh.model.mesh, "generate", fail)
+    with pytest.raises(MeshError):
+        mesh_outline(PLATE, size=0.2)
+    assert running_gmsh.model.list() == ["", "theirs"]
+    assert running_gmsh.model.getCurrent() == "theirs"
+    assert running_gmsh.option.getNumber("Mesh.Algorithm") == 8
+
+
+OPTIONS = {
+    "General.Terminal": 1,
+    "General.Verbosity": 3,
+    "Mesh.Algorithm": 8,
+    "Mesh.ElementOrder": 2,
+    "Mesh.MaxNumThreads1D": 2,
+    "Mesh.MaxNumThreads2D": 2,
+    "Mesh.MeshSizeExtendFromBoundary": 0,
+    "Mesh.MeshSizeFactor": 0.5,
+    "Mesh.MeshSizeFromCurvature": 200,
+    "Mesh.MeshSizeFromPoints": 0,
+    "Mesh.MeshSizeMax": 0.01,
+    "Mesh.MeshSizeMin": 0.3,
+    "Mesh.MinimumCircleNodes": 200,
+    "Mesh.RecombineAll": 1,
+    "Mesh.Smoothing": 10,
+    "Mesh.SubdivisionAlgorithm": 1,
+}
+
+
+@pytest.mark.parametrize("option", OPTIONS)
+def test_options_of_somebody_else_change_no_mesh_and_are_kept(option, running_gmsh):
+    running_gmsh.option.setNumber(option, OPTIONS[option])
+    inside = mesh_outline(HOLED, size=0.15)
+    assert running_gmsh.option.getNumber(option) == OPTIONS[option]
+    running_gmsh.finalize()
+    alone = mesh_outline(HOLED, size=0.15)
+    running_gmsh.initialize(interruptible=False)
+    assert same(inside, alone)
+
+
+def test_two_threads_at_once_make_the_right_meshes():
+    sizes = [0.1, 0.13, 0.08, 0.11] * 2
+    expected = [mesh_outline(HOLED, size=size) for size in sizes]
+    with ThreadPoolExecutor(2) as threads:
+        found = list(threads.map(lambda size: mesh_outline(HOLED, size=size), sizes))
+    assert all(same(a, b) for a, b in zip(found, expected, strict=True))
+    assert not gmsh.isInitialized()
