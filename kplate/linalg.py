@@ -63,7 +63,6 @@ def _cholmod(lower: sp.csc_array, columns: Any) -> Any:
     A = spmatrix(
         matrix(lower.data), rows, matrix(columns.astype(np.int64)), lower.shape
     )
-    cholmod.options["supernodal"] = 2  # L L', which has no room for negative pivots
     factor = cholmod.symbolic(A, uplo="L")
     try:
         cholmod.numeric(A, factor)

@@ -85,7 +85,7 @@ def assert_moments(groups, centre, area, second, size):
 
 
 def assert_disc(groups, centre, r):
-    """Area and moments to the fourth degree of a whole disc."""
+    """Area and moments to the fifth degree of a whole disc."""
     area = math.pi * r**2
     assert_moments(groups, centre, area, np.eye(2) * area * r**2 / 4, r)
     _, points, weights = flat(groups)
@@ -93,6 +93,8 @@ def assert_disc(groups, centre, r):
     fourth = np.array([x**4, x**2 * y**2, y**4, x**3 * y, x * y**3]) @ weights
     exact = [1 / 8, 1 / 24, 1 / 8, 0.0, 0.0]
     np.testing.assert_allclose(fourth / area, exact, rtol=0.0, atol=1e-12)
+    fifth = np.array([x**a * y ** (5 - a) for a in range(6)]) @ weights
+    np.testing.assert_allclose(fifth / area, 0.0, rtol=0.0, atol=1e-12)
 
 
 def disc_area(triangle, centre, r):
@@ -130,6 +132,7 @@ def test_rectangles_have_their_area_and_moments(seed):
     found = by_triangle(groups, len(triangles))
     np.testing.assert_allclose(found, each, rtol=0.0, atol=1e-12 * np.prod(size))
     assert_inside(groups, triangles, size.max())
+    assert all((group.weights.sum(axis=1) > 0.0).all() for group in groups)
 
 
 @pytest.mark.parametrize("seed", SEEDS)
@@ -210,13 +213,26 @@ def test_small_discs_around_the_vertices_of_a_large_panel():
         off = np.abs(vertex - triangles.reshape(-1, 2).mean(axis=0)).max()
         if off > 0.3 * side:
             continue
-        for r in (1e-2, 1e-4, 1e-6):
-            centre = vertex + 0.3 * r * side * random.uniform(-1.0, 1.0, 2)
-            groups = cutting.inside_disc(triangles, tuple(centre), r * side)
-            _, _, weights = flat(groups)
-            assert weights.sum() == pytest.approx(
-                math.pi * (r * side) ** 2, rel=1e-15 / r
-            )
+        for r in side * np.array([1e-2, 1e-4, 1e-6]):
+            centre = vertex + 0.3 * r * random.uniform(-1.0, 1.0, 2)
+            groups = cutting.inside_disc(triangles, tuple(centre), r)
+            found = by_triangle(groups, len(triangles))
+            round_off = 1e-15 * side * r
+            assert found.sum() == pytest.approx(math.pi * r**2, abs=round_off)
+            for k in np.flatnonzero(found):
+                own = disc_area(triangles[k], centre, r)
+                assert found[k] == pytest.approx(own, abs=round_off)
+
+
+@pytest.mark.parametrize("turned", [np.eye(2), TURN], ids=["straight", "turned"])
+def test_circles_that_all_but_touch_edges_from_inside(turned):
+    """The chord they lose is as short as double precision has it, or missing."""
+    triangle = np.array([[-0.7, 0.0], [0.9, 0.0], [0.1, 1.1]]) @ turned.T
+    centre, r = turned @ [0.1, 0.3], 0.3
+    for step in range(-20, 21):
+        near = r * (1.0 + step * np.finfo(float).eps)
+        groups = cutting.inside_disc(triangle[None], tuple(centre), near)
+        assert_disc(groups, centre, near)
 
 
 def test_circles_through_vertices():

@@ -21,6 +21,17 @@ def test_a_new_file_is_written_and_nothing_else(tmp_path):
     assert path.read_text() == "new"
 
 
+@pytest.mark.skipif(os.name == "nt", reason="open files cannot be replaced there")
+def test_who_reads_the_old_file_reads_it_to_its_end(tmp_path):
+    path = tmp_path / "a.txt"
+    path.write_text("old")
+    with path.open() as reader:
+        with replacing(path) as temporary:
+            temporary.write_text("new")
+        assert reader.read() == "old"
+    assert path.read_text() == "new"
+
+
 @pytest.mark.parametrize("error", [RuntimeError, KeyboardInterrupt, ValueError])
 def test_a_failing_writer_leaves_the_old_file_and_no_other(tmp_path, error):
     path = tmp_path / "a.txt"

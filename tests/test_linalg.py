@@ -133,6 +133,7 @@ INDEFINITE = {
 # which a fine mesh may have as well. Rigid motions are counted before, in boundary.
 SINGULAR = {
     "two by two": np.ones((2, 2)),
+    "two by two, to round-off": np.array([[1.0, 1.0 - 2e-15], [1.0 - 2e-15, 1.0]]),
     "springs without a support": chain(30, 0.0),
     "two chains, one without a support": np.block(
         [[chain(9, 0.1), np.zeros((9, 9))], [np.zeros((9, 9)), chain(9, 0.0)]]

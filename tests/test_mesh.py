@@ -401,10 +401,11 @@ def test_a_round_hole_does_not_widen_the_straight_sides():
     assert not mesh.covers(off).any()
 
 
-def test_round_off_beside_the_plate_is_forgiven():
-    mesh = grid(3)
-    assert mesh.covers([(-1e-12, 0.5), (0.5, 1 + 1e-12)]).all()
-    assert not mesh.covers([(-1e-7, 0.5), (0.5, 1 + 1e-7)]).any()
+@pytest.mark.parametrize("scale", [1e-4, 1.0, 1e4])
+def test_round_off_beside_the_plate_is_forgiven(scale):
+    mesh = grid(3, a=scale, b=scale)
+    assert mesh.covers(scale * np.array([(-1e-12, 0.5), (0.5, 1 + 1e-12)])).all()
+    assert not mesh.covers(scale * np.array([(-1e-7, 0.5), (0.5, 1 + 1e-7)])).any()
 
 
 def test_a_point_off_the_plate_is_refused_by_its_coordinates():

@@ -11,7 +11,7 @@ from hypothesis import assume, given
 from hypothesis import strategies as st
 
 from kplate.errors import InputError
-from kplate.outline import SNAP, Circle, Outline, Polygon
+from kplate.outline import Circle, Outline, Polygon
 
 SQUARE = np.array([(0.0, 0.0), (1.0, 0.0), (1.0, 1.0), (0.0, 1.0)])
 L_SHAPE = np.array([(0, 0), (4, 0), (4, 1), (2, 1), (2, 2), (0, 2)])
@@ -211,6 +211,11 @@ def test_an_outline_survives_a_copy_to_another_process():
             "its neighbours; drop it or move it onto the line.",
         ),
         (
+            [(0, 0), (0.5, -2e-10), (1, 0), (1, 1), (0, 1)],
+            ": point 2, (0.5, -2e-10) m, is nearly straight, 2e-10 m off the line "
+            "between its neighbours; drop it or move it onto the line.",
+        ),
+        (
             [(0, 0), (1, 0), (2, 0), (1, 0.0), (1, 1), (0, 1)],
             ": the line turns back on itself at point 3, (2, 0) m; take the spike out.",
         ),
@@ -292,7 +297,7 @@ def test_a_polygon_without_points_is_refused():
 def test_lengths_below_the_snap_share_of_the_size_are_none(build, gap):
     """At any scale: what is refused at half the snap length stands at twice it."""
     for scale in (1e-3, 1.0, 1e3):
-        points = scale * np.array(build(gap * SNAP * math.sqrt(2)))
+        points = scale * np.array(build(gap * 1e-6 * math.sqrt(2)))
         if gap < 1.0:
             refusal(lambda points=points: Outline.polygon(points))
         else:
@@ -302,6 +307,14 @@ def test_lengths_below_the_snap_share_of_the_size_are_none(build, gap):
 def test_a_bend_of_a_curve_is_no_mistake():
     points = [(0, 0), (0.5, -1e-4), (1, 0), (1, 1), (0, 1)]
     assert not Outline.polygon(points).rim.straight[1]
+
+
+def test_a_tiny_chamfer_is_no_mistake():
+    """Its vertices are next to the line between their neighbours but turn clearly."""
+    cut = 1.2e-6
+    points = [(0, 0), (1 - cut, 0), (1, cut), (1, 1), (0, 1)]
+    turns = np.degrees(Outline.polygon(points).rim.turns)
+    np.testing.assert_allclose(turns, [90, 45, 45, 90, 90])
 
 
 # Names
