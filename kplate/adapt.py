@@ -4,11 +4,12 @@ The mesh has one size, given as a number of triangles or a length, and is finer 
 the places that have no finite moment; bands are not estimated.
 """
 
+import math
 from collections.abc import Sequence
 
 from kplate.errors import InputError
 from kplate.loads import Case, Load
-from kplate.meshing import mesh_outline, size_for
+from kplate.meshing import mesh_outline, refined_triangles, size_for
 from kplate.plate import Plate
 from kplate.singular import excluded_places
 from kplate.solution import Solution
@@ -93,10 +94,25 @@ def solve(
     if progress is not None:
         progress("mesh", 0.0)
     places = excluded_places(plate, cases, excluded_radius)
-    fine = [(place.place, RIM_SHARE * place.radius) for place in places]
+    fine = [
+        (place.place, _rim_size(place.radius, size, plate.outline.area / len(places)))
+        for place in places
+    ]
     mesh = mesh_outline(plate.outline, size=size, fine=fine)
     state = solve_static(plate, mesh, cases, progress=progress)
     return Solution(state=state, excluded_radius=excluded_radius)
+
+
+def _rim_size(radius: float, size: float, area: float) -> float:
+    """Length of the edges in m at a place without a finite moment.
+
+    Each place may take as many triangles more as its share of the plate's area has.
+    """
+    most = 4.0 / math.sqrt(3.0) * area / size**2
+    least = RIM_SHARE * radius
+    while least < size and refined_triangles(size / least) > most:
+        least *= 1.25
+    return least
 
 
 def _as_cases(loads: Sequence[Load | Case]) -> tuple[Case, ...]:

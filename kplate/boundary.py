@@ -161,8 +161,6 @@ def _rows(tangent: Floats, holds: Bools, clamps: Bools) -> Floats:
 
 def _frames(rows: Floats) -> tuple[Floats, Bools]:
     """Orthonormal frames that begin with the row space, and what of them is held."""
-    if not len(rows):
-        return np.zeros((0, 3, 3)), np.zeros((0, 3), dtype=bool)
     _, strength, right = np.linalg.svd(rows)
     held = strength > RANK_CUT * strength[:, :1]
     return right.swapaxes(-1, -2), held

@@ -322,7 +322,7 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
             "with --out."
         ) from error
     panel, solution = checked.panel, checked.solution
-    stem = out / panel.path.stem
+    name = panel.path.stem
     record = solution_record(solution, version())
     record["panel"] = {
         "name": panel.name,
@@ -350,15 +350,15 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
     worst = solution.peak("deflection").case
     picture = write_picture(
         solution,
-        stem.with_suffix(".png"),
+        out / f"{name}.png",
         case=worst,
         units=panel.units,
         title=f"{panel.name}, {_thickness(panel)} {panel.plate.material.name}",
     )
     return (
-        write_vtk(solution, stem.with_suffix(".vtu")),
-        write_json(record, stem.with_suffix(".json")),
-        write_reactions(solution, stem.with_name(f"{stem.name}-reactions.csv")),
+        write_vtk(solution, out / f"{name}.vtu"),
+        write_json(record, out / f"{name}.json"),
+        write_reactions(solution, out / f"{name}-reactions.csv"),
         picture,
     )
 

@@ -27,13 +27,11 @@ GROWTH = 0.35  # of the edges with the distance from a refined place
 LARGEST = 5_000_000  # triangles; beyond, 24 GiB of memory do not hold the factor
 
 _OPTIONS = {
-    "General.Terminal": 0.0,
     "General.Verbosity": 0.0,
     "Mesh.Algorithm": float(FRONTAL),
     "Mesh.ElementOrder": 1.0,
     "Mesh.MaxNumThreads1D": 1.0,  # with more the points come in another order
-    "Mesh.MaxNumThreads2D": 1.0,
-    "Mesh.MeshSizeExtendFromBoundary": 1.0,
+    "Mesh.MeshSizeExtendFromBoundary": 0.0,
     "Mesh.MeshSizeFromPoints": 1.0,
     "Mesh.MeshSizeFromCurvature": 0.0,
     "Mesh.MeshSizeFactor": 1.0,
@@ -61,6 +59,18 @@ def size_for(outline: Outline, triangles: int) -> float:
     return math.sqrt(4.0 / math.sqrt(3.0) * outline.area / triangles)
 
 
+def refined_triangles(ratio: float) -> float:
+    """About how many triangles a place takes whose edges are finer by this ratio.
+
+    The integral of triangles per area, ``4 / (sqrt(3) s^2)``, over the whole disc on
+    which the size s grows from the least to the mesh's own.
+    """
+    if ratio <= 1.0:
+        return 0.0
+    whole = 8.0 * math.pi / math.sqrt(3.0) / GROWTH**2
+    return whole * (math.log(ratio) + 1.0 / ratio - 1.0)
+
+
 def mesh_outline(
     outline: Outline,
     *,
@@ -86,8 +96,8 @@ def mesh_outline(
     Raises
     ------
     InputError
-        If the size is not positive, or so small that the mesh would pass 5 million
-        triangles, or a place or its size is no place or size.
+        If the size is not positive or so small that the mesh would pass 5 million
+        triangles, or a fine place lacks finite coordinates or a positive size.
     MeshError
         If Gmsh fails or its mesh does not fit the outline.
     """
@@ -105,9 +115,8 @@ def mesh_outline(
         gmsh.model.occ.synchronize()
         for line, tags in zip(outline.lines, curves, strict=True):
             if isinstance(line, Circle):
-                edge = min(size, line.perimeter / EDGES_ON_CIRCLE)
                 ends = gmsh.model.getBoundary([(1, tags[0])], combined=False)
-                gmsh.model.mesh.setSize(ends, edge)
+                gmsh.model.mesh.setSize(ends, line.perimeter / EDGES_ON_CIRCLE)
         _refine(gmsh, size, fine)
         try:
             gmsh.model.mesh.generate(2)

@@ -488,7 +488,8 @@ def _as_names(names: Sequence[str]) -> tuple[str, ...]:
             f"the side names of a polygon are {names!r}; give a list with a name for "
             "each piece."
         )
-    return tuple(names)
+    # Names from a numpy array are made plain: messages show them.
+    return tuple(str(name) if isinstance(name, str) else name for name in names)
 
 
 def _at(point: Any) -> str:

@@ -13,7 +13,13 @@ from hypothesis import strategies as st
 
 from kplate.errors import InputError, MeshError
 from kplate.mesh import STRAIGHT_EDGE
-from kplate.meshing import EDGES_ON_CIRCLE, LARGEST, mesh_outline, size_for
+from kplate.meshing import (
+    GROWTH,
+    LARGEST,
+    mesh_outline,
+    refined_triangles,
+    size_for,
+)
 from kplate.outline import Circle, Outline, Polygon
 
 SQUARE = np.array([(0.0, 0.0), (1.0, 0.0), (1.0, 1.0), (0.0, 1.0)])
@@ -85,7 +91,7 @@ def assert_fits(mesh, outline):
             np.testing.assert_allclose(reach, line.radius, rtol=1e-12, atol=1e-15)
             expected = (*line.centre, line.radius)
             np.testing.assert_array_equal(mesh.circles[circle], [expected] * own.sum())
-            assert own.sum() >= EDGES_ON_CIRCLE
+            assert own.sum() >= 48
             continue
         assert (circle == STRAIGHT_EDGE).all()
         length = mesh.boundary_lengths[own].sum()
@@ -188,6 +194,7 @@ def test_edges_are_short_at_fine_places_and_grow_away_from_them():
         assert near.size > 3
         assert 0.4 * size < near.min()
         assert near.max() < 2.0 * size
+    assert len(mesh.triangles) < 4000
     away = np.min([np.hypot(*(middles - p).T) for p, _ in places], axis=0)
     assert np.median(lengths[away > 0.35]) == pytest.approx(0.1, rel=0.2)
     assert corner_angles(mesh).min() > 25.0
@@ -388,7 +395,17 @@ def test_interrupts_stay_with_whoever_handles_them():
         signal.signal(signal.SIGINT, before)
 
 
+def test_gmsh_says_nothing(running_gmsh, capfd):
+    running_gmsh.option.setNumber("General.Terminal", 1)
+    running_gmsh.option.setNumber("General.Verbosity", 5)
+    capfd.readouterr()
+    mesh_outline(PLATE, size=0.2)
+    assert capfd.readouterr() == ("", "")
+
+
 def test_a_model_of_somebody_else_is_kept_and_stays_current(running_gmsh):
+    running_gmsh.model.add("another")
+    running_gmsh.model.setCurrent("theirs")
     nodes = running_gmsh.model.mesh.getNodes()[1]
     entities = running_gmsh.model.getEntities()
     models = running_gmsh.model.list()
@@ -429,12 +446,10 @@ def test_everything_is_put_back_after_a_failure(running_gmsh, monkeypatch):
 
 
 OPTIONS = {
-    "General.Terminal": 1,
     "General.Verbosity": 3,
     "Mesh.Algorithm": 8,
     "Mesh.ElementOrder": 2,
     "Mesh.MaxNumThreads1D": 2,
-    "Mesh.MaxNumThreads2D": 2,
     "Mesh.MeshSizeExtendFromBoundary": 0,
     "Mesh.MeshSizeFactor": 0.5,
     "Mesh.MeshSizeFromCurvature": 200,
@@ -451,10 +466,10 @@ OPTIONS = {
 @pytest.mark.parametrize("option", OPTIONS)
 def test_options_of_somebody_else_change_no_mesh_and_are_kept(option, running_gmsh):
     running_gmsh.option.setNumber(option, OPTIONS[option])
-    inside = mesh_outline(HOLED, size=0.15)
+    inside = mesh_outline(HOLED, size=0.1)
     assert running_gmsh.option.getNumber(option) == OPTIONS[option]
     running_gmsh.finalize()
-    alone = mesh_outline(HOLED, size=0.15)
+    alone = mesh_outline(HOLED, size=0.1)
     running_gmsh.initialize(interruptible=False)
     assert same(inside, alone)
 
@@ -466,3 +481,30 @@ def test_two_threads_at_once_make_the_right_meshes():
         found = list(threads.map(lambda size: mesh_outline(HOLED, size=size), sizes))
     assert all(same(a, b) for a, b in zip(found, expected, strict=True))
     assert not gmsh.isInitialized()
+
+
+# Triangles of a graded place
+
+
+@pytest.mark.parametrize("ratio", [1.5, 10.0, 1e4])
+def test_refined_triangles_are_the_integral_over_the_graded_disc(ratio):
+    """Equilateral triangles of edge s = 1 + GROWTH r: 4 / (sqrt(3) s^2) per area."""
+    r, step = np.linspace(0.0, (ratio - 1.0) / GROWTH, 2_000_001, retstep=True)
+    density = 2.0 * np.pi * r * 4.0 / (math.sqrt(3.0) * (1.0 + GROWTH * r) ** 2)
+    integral = step * (density.sum() - 0.5 * (density[0] + density[-1]))
+    assert refined_triangles(ratio) == pytest.approx(integral, rel=1e-4)
+
+
+@pytest.mark.parametrize("ratio", [1.0, 0.3, 0.0])
+def test_a_place_no_finer_than_the_mesh_takes_no_triangles(ratio):
+    assert refined_triangles(ratio) == 0.0
+
+
+@pytest.mark.parametrize("ratio", [10.0, 100.0])
+def test_a_graded_place_takes_up_to_twice_the_triangles_foreseen(ratio):
+    plain = mesh_outline(PLATE, size=0.04)
+    graded = mesh_outline(PLATE, size=0.04, fine=[((0.5, 0.5), 0.04 / ratio)])
+    reach = 0.04 * (1.0 - 1.0 / ratio) / GROWTH
+    before = math.pi * reach**2 * len(plain.triangles)
+    found = before + len(graded.triangles) - len(plain.triangles)
+    assert 1.0 < found / refined_triangles(ratio) < 2.0

@@ -159,6 +159,15 @@ def test_points_cannot_be_changed_from_outside():
         outline.rim.points[0] = 99.0
 
 
+def test_holes_and_names_are_kept_as_plain_tuples():
+    holes = [circle(0.5, 0.5, 0.1)]
+    outline = Outline(rim=square(0.5, 0.5, 0.5, "rim"), holes=holes)
+    holes.clear()
+    assert len(outline.holes) == 1
+    named = Outline.polygon(SQUARE, sides=np.array(["s", "e", "n", "w"]))
+    assert repr(named.side_names) == "('s', 'e', 'n', 'w')"
+
+
 def test_an_outline_survives_a_copy_to_another_process():
     outline = Outline.polygon(L_SHAPE).cut(circle(1, 1, 0.5))
     assert outline.span > 0.0  # fills what is cached
@@ -464,6 +473,7 @@ def test_a_hole_that_is_outside_or_around_or_across_is_refused(rim, hole, x, hal
         ("polygon", circle(0.5, 0.2, 0.5), "(1, 0.2)"),
         ("polygon", square(0, 0, 1), "(-1, -1)"),
         ("polygon", square(0.5, 0.2, 0.5 - 1e-6), None),
+        ("polygon", square(0.5, 0.2, 0.5 + 1e-6), None),
         ("polygon", circle(0.5, 0.2, 0.5 - 1e-6), "(1, 0.2)"),
         ("polygon", circle(1.5, 0.2, 0.5), "(1, 0.2)"),
         ("circle", square(0, 0, math.sqrt(0.5)), "(-0.707107, -0.707107)"),
@@ -542,6 +552,7 @@ def test_two_holes_are_cut_where_shapely_finds_them_apart(first, second, data):
         (circle(0, 0, 0.2, "a"), circle(0.5, 0, 0.3, "b"), "(0.2, 0)"),
         (circle(0, 0, 0.9, "a"), circle(0.9, 0, 0.01, "b"), "(0.895, 0)"),
         (circle(0, 0, 0.2, "a"), circle(0, 0, 0.1, "b"), "(0, 0)"),
+        (circle(0, 0, 0.1, "a"), circle(0.3, 0, 0.9, "b"), "(0, 0)"),
         (square(0, 0, 0.2, "a"), circle(0.5, 0, 0.3 - 5e-7, "b"), "(0.2, 0)"),
         (circle(0.5, 0, 0.3, "a"), square(0, 0, 0.2, "b"), "(0.2, 0)"),
         (circle(0, 0, 0.5, "a"), square(0.2, 0.2, 0.1, "b"), "(0.1, 0.1)"),

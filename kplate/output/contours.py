@@ -55,6 +55,14 @@ class Bands:
         above = self.values.max() > self.levels[-1]
         return bool(above) and self.quantity != "deflection"
 
+    @property
+    def within(self) -> Floats:
+        """Values moved inside the levels, where they do not go beyond on purpose."""
+        # Just inside: what equals the last level belongs to no band.
+        hair = 1e-9 * (self.levels[-1] - self.levels[0])
+        top = np.inf if self.go_beyond else self.levels[-1] - hair
+        return np.clip(self.values, self.levels[0] + hair, top)
+
     def colours(self) -> tuple[Any, Any]:
         """Colour map, and the limits it spans."""
         import matplotlib
@@ -78,7 +86,7 @@ class Bands:
         if not len(self.levels):
             return np.tile(to_rgba(PLAIN), (len(mesh.triangles), 1))
         colours, limits = self.colours()
-        means = self.values[mesh.triangles].mean(axis=1)
+        means = self.within[mesh.triangles].mean(axis=1)
         return np.asarray(colours(limits(means)), dtype=np.float64)
 
 
@@ -123,31 +131,29 @@ def draw_bands(axes: Any, points: Floats, mesh: Mesh, drawn: Bands) -> Any:
         axes.tripcolor(grid, drawn.values, cmap=ListedColormap([PLAIN]))
         return None
     colours, limits = drawn.colours()
-    beyond = drawn.go_beyond
+    extend = "max" if drawn.go_beyond else "neither"
     return axes.tricontourf(
-        grid,
-        np.clip(drawn.values, levels[0], None if beyond else levels[-1]),
-        levels,
-        cmap=colours,
-        norm=limits,
-        extend="max" if beyond else "neither",
+        grid, drawn.within, levels, cmap=colours, norm=limits, extend=extend
     )
 
 
 def draw_levels(
     axes: Any, names: Names, points: Floats, mesh: Mesh, drawn: Bands
 ) -> None:
-    """Draw the contours, and write each level on its longest line."""
+    """Draw the contours, and write each level on its longest line.
+
+    None at the ends of the range: zero is where the supports are, and round-off.
+    """
     from matplotlib.tri import Triangulation
 
-    if not len(drawn.levels):
+    levels = drawn.levels[1:] if len(drawn.levels) else drawn.levels
+    levels = levels if len(levels) and drawn.go_beyond else levels[:-1]
+    if not len(levels):
         return
     grid: Any = Triangulation(points[:, 0], points[:, 1], mesh.triangles)
     style = {"colors": "#1a1a1a", "linewidths": 0.5, "linestyles": "solid"}
-    contours: Any = axes.tricontour(
-        grid, drawn.values, drawn.levels, **style, alpha=0.6
-    )
-    for level, lines in zip(drawn.levels, contours.allsegs, strict=True):
+    contours: Any = axes.tricontour(grid, drawn.within, levels, **style, alpha=0.6)
+    for level, lines in zip(levels, contours.allsegs, strict=True):
         on_page = [axes.transData.transform(line) for line in lines if len(line) > 2]
         lengths = [np.hypot(*np.diff(line, axis=0).T).sum() for line in on_page]
         if max(lengths, default=0.0) >= SHORTEST_LINE:

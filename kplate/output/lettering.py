@@ -185,7 +185,6 @@ class Names:
             rotation=np.degrees(spot.angle),
             rotation_mode="anchor",
             fontproperties=hand.font,
-            parse_math=False,
             **style,
         )
         return True

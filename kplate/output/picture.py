@@ -44,6 +44,7 @@ SIDE_BY_SIDE: tuple[Box, Box] = ((LEFT, 125, 700, 535), (850, 135, 600, 525))
 STACKED: tuple[Box, Box] = ((90, 425, 1330, 230), (90, 135, 1330, 215))
 WIDE = 2.4  # from this width over depth on, the two stand above each other
 MARGIN = 46  # pixels around the plan, for supports and names
+DIRECTIONS = 70  # pixels to the left of the shape, for the directions x, y and z
 LEAST = 260  # pixels that the plan takes across, for the value of the peak
 TITLE, CAPTION = Hand(size=16.0, weight="bold"), Hand(size=11.5, weight="bold")
 TEXT, SMALL = Hand(size=10.5), Hand(size=9.5)
@@ -69,6 +70,7 @@ _RING = {
     "markeredgecolor": "#c1272d",
     "markeredgewidth": 1.6,
     "linestyle": "none",
+    "zorder": 4,
 }
 _DASHED = {"color": FAINT, "linewidth": 1.0, "linestyle": "--"}
 
@@ -309,7 +311,9 @@ def _draw_shape(drawn: "Figure", shown: Shown, box: Box) -> None:
     reach = np.concatenate([project(bent), *flat])
     gap = 0.02 * np.ptp(reach, axis=0).max()
     low, high = reach.min(axis=0) - gap, reach.max(axis=0) + gap
-    axes = _axes(drawn, box, low, high)
+    axes = _axes(
+        drawn, (box[0] + DIRECTIONS, box[1], box[2] - DIRECTIONS, box[3]), low, high
+    )
     axes.set_axis_off()
     axes.add_collection(surface(mesh, bent, shown.bands.on_triangles(mesh)))
     axes.add_collection(
@@ -342,7 +346,8 @@ def _draw_plan(drawn: "Figure", renderer: Any, shown: Shown, box: Box) -> None:
     """Draw contours, sides, names, the peak and what is left out."""
     plate, length = shown.solution.plate, shown.units.length
     lines = pieces(plate.outline, length.size)
-    low, high = shown.points.min(axis=0), shown.points.max(axis=0)
+    # Not the mesh: its chords do not quite reach round a circle.
+    low, high = np.reshape(plate.outline.box, (2, 2)) / length.size
     per_pixel = float(np.max((high - low) / (np.array(box[2:]) - 2.0 * MARGIN)))
     gap = np.full(2, MARGIN * per_pixel)
     gap[0] = max(gap[0], 0.5 * (LEAST * per_pixel - (high - low)[0]))

@@ -216,19 +216,17 @@ class Stage:
             )
 
     def _add_left_out(self) -> None:
-        """Mark places without a finite moment, each at the point nearest to it."""
+        """Mark places without a finite moment, as high as the point nearest to each."""
         self.plotter.remove_actor(["left out", "left out words"], render=False)
         points = self.result.fields.points
+        places = [(x, y, 0.0) for x, y, _ in self.result.left_out(self.case)]
         self.marked = np.array(
-            [
-                np.hypot(points[:, 0] - x, points[:, 1] - y).argmin()
-                for x, y, _ in self.result.left_out(self.case)
-            ],
+            [np.hypot(*(points[:, :2] - place[:2]).T).argmin() for place in places],
             dtype=int,
         )
-        if not len(self.marked):
+        if not places:
             return
-        self.marks = _points(points[self.marked])
+        self.marks = _points(np.array(places))
         self.plotter.add_points(
             self.marks,
             name="left out",

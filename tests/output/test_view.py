@@ -49,6 +49,7 @@ def stage(files):
         plotter = pyvista.Plotter(off_screen=True, window_size=[700, 450])
         found = Stage(plotter, read_result(files))
         found.build()
+        plotter.screenshot(None, return_img=True)  # starts it, as showing a window does
         yield found
         plotter.close()
 
@@ -153,7 +154,7 @@ def test_n_shows_the_next_case_with_its_own_deflection_and_marks(stage, cover):
     under = stage.marks.points[np.argmax(stage.marks.points[:, 0])]
     np.testing.assert_allclose(under[:2], (1.35, 0.4), atol=1e-9)  # on the plate
     assert under[2] == pytest.approx(
-        stage.scale * cover.deflection([(1.35, 0.4)], case="jack")[0]
+        stage.scale * cover.deflection([(1.35, 0.4)], case="jack")[0], rel=0.01
     )
     press(stage.plotter, "n")
     assert stage.case == "crowd"
@@ -199,6 +200,7 @@ def test_side_names_stand_on_their_sides(stage):
 def test_the_slider_bends_the_picture(stage):
     before = stage.plotter.screenshot(None, return_img=True)
     stage.set_scale(2.0 * stage.scale)
+    stage.plotter.render()  # as the slider does
     after = stage.plotter.screenshot(None, return_img=True)
     assert (before != after).mean() > 0.01
 
@@ -234,12 +236,17 @@ def test_a_record_names_the_one_case(lid, tmp_path):
         "[" * 100_000,
         '{"mesh": {"triangles": 1, "points": 1}}',
         "the record of another panel",
+        "the record of other cases",
     ],
 )
 def test_a_record_of_something_else_is_left_alone(cover, lid, tmp_path, text):
     path = write_vtk(lid, tmp_path / "a.vtu")
-    if text.startswith("the record"):
+    if text.endswith("panel"):
         text = json.dumps(solution_record(cover, "0"))
+    if text.endswith("cases"):
+        record = solution_record(lid, "0")
+        del record["field_names"]["moments [N]"]
+        text = json.dumps(record)
     path.with_suffix(".json").write_text(text)
     found = read_result(path)
     assert found.title == ""
@@ -363,8 +370,8 @@ def test_missing_libraries_are_named_before_anything_is_drawn(
         scene(files, off_screen=True)
     assert str(caught.value) == (
         f"nothing can be drawn in 3-D: {why}; install the system packages libgl1 "
-        "libegl1 libxrender1 (their names on Debian and Ubuntu), or look at the picture "
-        "that kplate check wrote."
+        "libegl1 libxrender1 (their names on Debian and Ubuntu), or look at the "
+        "picture that kplate check wrote."
     )
 
 

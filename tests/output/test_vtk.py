@@ -105,6 +105,7 @@ def test_a_file_by_another_name_is_refused(lid, tmp_path):
 
 def test_the_same_solution_gives_the_same_bytes(lid, tmp_path):
     first = write_vtk(lid, tmp_path / "a.vtu").read_bytes()
+    assert b"compressor" not in first  # whose bytes would depend on its version
     assert write_vtk(lid, tmp_path / "b.vtu").read_bytes() == first
 
 

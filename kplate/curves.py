@@ -1,0 +1,211 @@
+"""Straight pieces and circular arcs between two points.
+
+A piece runs from a start to an end. Its *bulge* is the tangent of a quarter of the angle
+it turns through: 0 is straight, positive turns to the left, 1 is a half circle. The
+bulge is how drawings store arcs, has no special case on the way to a straight line, and
+a part of an arc has the tangent of that part of the angle.
+
+Arrays: n pieces, starts and ends (n, 2) in m, bulges (n,).
+"""
+
+import math
+
+import numpy as np
+
+from kplate.arrays import Floats
+
+# Chords that stand for arcs in checks of crossing and distance stay this close, as a
+# share of the radius.
+FLAT = 1e-6
+
+
+def sweeps(bulges: Floats) -> Floats:
+    """Angle each piece turns through in rad, positive to the left."""
+    return 4.0 * np.arctan(bulges)
+
+
+def chords(starts: Floats, ends: Floats) -> Floats:
+    """Distance from start to end in m."""
+    return np.hypot(*(ends - starts).T)
+
+
+def lengths(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
+    """Length along each piece in m."""
+    half = 0.5 * np.abs(sweeps(bulges))
+    return chords(starts, ends) / np.sinc(half / np.pi)
+
+
+def circles(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
+    """Centre x, centre y and radius in m of each piece, nan on straight ones, (n, 3)."""
+    bent = np.where(bulges == 0.0, np.nan, bulges)
+    step = ends - starts
+    left = np.column_stack([-step[:, 1], step[:, 0]])
+    to_centre = (1.0 - bent**2) / (4.0 * bent)
+    centre = 0.5 * (starts + ends) + to_centre[:, None] * left
+    radius = chords(starts, ends) * (1.0 + bent**2) / (4.0 * np.abs(bent))
+    return np.column_stack([centre, radius])
+
+
+def tangents(starts: Floats, ends: Floats, bulges: Floats) -> tuple[Floats, Floats]:
+    """Unit tangents at the start and at the end of each piece, both (n, 2)."""
+    half = 0.5 * sweeps(bulges)
+    return _turned(ends - starts, -half), _turned(ends - starts, half)
+
+
+def points_at(starts: Floats, ends: Floats, bulges: Floats, share: Floats) -> Floats:
+    """Points after a share (n,) of the length of each piece, (n, 2)."""
+    half = 0.5 * sweeps(bulges)
+    # The chord to the point is to the whole chord as the sines of half their angles.
+    ratio = share * np.sinc(half * share / np.pi) / np.sinc(half / np.pi)
+    direction = _turned(ends - starts, half * (share - 1.0))
+    return starts + (ratio * chords(starts, ends))[:, None] * direction
+
+
+def part(bulge: float, share: float) -> float:
+    """Bulge of a share of a piece."""
+    return math.tan(math.atan(bulge) * share)
+
+
+def slivers(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
+    """Area in m2 between each piece and its chord, positive on the chord's right."""
+    angle = sweeps(bulges)
+    radius = np.nan_to_num(circles(starts, ends, bulges)[:, 2])
+    return 0.5 * radius**2 * (angle - np.sin(angle))
+
+
+def flattened(
+    starts: Floats, ends: Floats, bulges: Floats
+) -> tuple[Floats, np.ndarray]:
+    """Points along a run of pieces, chords for arcs, without the last end.
+
+    Returns
+    -------
+    points : ndarray, shape (k, 2)
+        The start of each piece and points between.
+    owners : ndarray, shape (k,)
+        The piece each point begins or lies on.
+    """
+    step = 2.0 * math.acos(1.0 - FLAT)
+    counts = np.maximum(1, np.ceil(np.abs(sweeps(bulges)) / step).astype(int))
+    owners = np.repeat(np.arange(len(bulges)), counts)
+    first = np.repeat(np.cumsum(counts) - counts, counts)
+    share = (np.arange(len(owners)) - first) / counts[owners]
+    points = points_at(starts[owners], ends[owners], bulges[owners], share)
+    return points, owners
+
+
+def distances(points: Floats, starts: Floats, ends: Floats, bulges: Floats) -> Floats:
+    """Distance in m from points (k, 2) to each piece, (k, n)."""
+    result = np.empty((len(points), len(bulges)))
+    for i, bulge in enumerate(bulges):
+        a, b = starts[i], ends[i]
+        if bulge == 0.0:
+            step = b - a
+            share = np.clip((points - a) @ step / (step @ step), 0.0, 1.0)
+            near = a + share[:, None] * step
+            result[:, i] = np.hypot(*(points - near).T)
+        else:
+            result[:, i] = _arc_distance(points, a, b, float(bulge))
+    return result
+
+
+def through(start: Floats, middle: Floats, end: Floats) -> float:
+    """Bulge of the arc from start through a point to the end.
+
+    Returns
+    -------
+    float
+        0 where the three lie on a line.
+    """
+    u, v = np.subtract(middle, start), np.subtract(end, middle)
+    turn = math.atan2(u[0] * v[1] - u[1] * v[0], float(np.dot(u, v)))
+    # The angle between the two chords is half the sweep.
+    return math.tan(0.5 * turn)
+
+
+def biarc(
+    start: Floats, end: Floats, out: Floats, into: Floats
+) -> list[tuple[Floats, float]]:
+    """Two arcs with given unit tangents at start and end, one tangent where they meet.
+
+    Returns
+    -------
+    list of (ndarray, float)
+        Start and bulge of both.
+
+    Notes
+    -----
+    The arcs have equal tangent lengths. Source: K. M. Bolton, "Biarc curves",
+    Computer-Aided Design 7 (1975) 89-92 (from memory).
+    """
+    v, t = end - start, out + into
+    a, b, c = 2.0 * (1.0 - float(out @ into)), 2.0 * float(v @ t), -float(v @ v)
+    if a < 1e-14:
+        d = -c / b
+    else:
+        d = (-b + math.sqrt(b * b - 4.0 * a * c)) / (2.0 * a)
+    joint = 0.5 * (start + end + d * (out - into))
+    return [
+        (start, _bulge_from(out, joint - start)),
+        (joint, -_bulge_from(-into, joint - end)),
+    ]
+
+
+def ellipse(axes: tuple[float, float]) -> tuple[Floats, Floats]:
+    """Ellipse about the origin as arcs with one tangent where they meet.
+
+    Parameters
+    ----------
+    axes : tuple of float
+        Half axes along x and y in m.
+
+    Returns
+    -------
+    points : ndarray, shape (n, 2)
+        Starts of the arcs, counter-clockwise from the end of the x axis.
+    bulges : ndarray, shape (n,)
+        Their bulges. No point of an arc is off the ellipse by more than 1e-5 of the
+        larger half axis.
+    """
+    a, b = axes
+    angle = np.linspace(0.0, 2.0 * np.pi, 4 * ELLIPSE_PARTS + 1)[:-1]
+    points = np.column_stack([a * np.cos(angle), b * np.sin(angle)])
+    out = np.column_stack([-a * np.sin(angle), b * np.cos(angle)])
+    out /= np.hypot(*out.T)[:, None]
+    arcs = []
+    for i in range(len(points)):
+        j = (i + 1) % len(points)
+        arcs += biarc(points[i], points[j], out[i], out[j])
+    return np.array([p for p, _ in arcs]), np.array([bulge for _, bulge in arcs])
+
+
+# Biarcs in each quarter of an ellipse; enough for the closeness stated above up to an
+# aspect ratio of ten.
+ELLIPSE_PARTS = 24
+
+
+def _turned(vectors: Floats, angles: Floats) -> Floats:
+    """Unit vectors along (n, 2), turned to the left by angles (n,)."""
+    unit = vectors / np.hypot(*vectors.T)[:, None]
+    c, s = np.cos(angles), np.sin(angles)
+    return np.column_stack(
+        [c * unit[:, 0] - s * unit[:, 1], s * unit[:, 0] + c * unit[:, 1]]
+    )
+
+
+def _bulge_from(out: Floats, chord: Floats) -> float:
+    """Bulge of an arc that leaves along `out` and ends at a chord."""
+    angle = math.atan2(out[0] * chord[1] - out[1] * chord[0], float(out @ chord))
+    return math.tan(0.5 * angle)
+
+
+def _arc_distance(points: Floats, start: Floats, end: Floats, bulge: float) -> Floats:
+    """Distance from points (k, 2) to one arc."""
+    x, y, radius = circles(start[None], end[None], np.array([bulge]))[0]
+    arms = points - (x, y)
+    first = math.atan2(start[1] - y, start[0] - x)
+    sense = math.copysign(1.0, bulge)
+    angle = sense * (np.arctan2(arms[:, 1], arms[:, 0]) - first) % (2.0 * np.pi)
+    sweep = abs(float(sweeps(np.array([bulge]))[0]))
+    to_ends = np.minimum(np.hypot(*(points - start).T), np.hypot(*(points - end).T))
+    return np.where(angle <= sweep, np.abs(np.hypot(*arms.T) - radius), to_ends)

@@ -1,0 +1,474 @@
+"""Closed lines of straight pieces and arcs, checked and tidied when they are built.
+
+A polygon runs counter-clockwise as stated; its pieces run from each point to the next.
+What a drawing leaves to be tidied (vertices hardly off a line, chords that stand for an
+arc) is tidied and noted. Turns at the vertices are recorded here; whether a turn is a
+corner or a bend of a curve is decided where supports meet it.
+"""
+
+import contextlib
+import math
+import reprlib
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass, field, replace
+from functools import cached_property
+from typing import Any, Literal
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from kplate import chords, curves
+from kplate.arrays import Bools, Floats, read_only_floats
+from kplate.errors import InputError
+
+# Lengths below this share of the size are no lengths: points coincide, a hole touches, a
+# vertex is not meant to be off the straight line between its neighbours.
+SNAP = 1e-6
+# A vertex that is off the line by no more than this share is on it, but for round-off.
+STRAIGHT = 1e-12
+# Pieces that meet an arc with less than this turn (rad) have one tangent with it.
+SMOOTH = 1e-6
+# Nobody draws a plate farther from its origin; beyond, products of lengths overflow.
+FARTHEST = 1e9  # m
+
+# An arc of 352 degrees; more has ends that nearly meet.
+MOST_BULGE = 30.0
+
+Chords = Literal["ask", "arc", "polygon"]
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Polygon:
+    """A closed line of straight pieces and arcs.
+
+    Parameters
+    ----------
+    points : array_like, shape (n, 2)
+        Vertices in m, counter-clockwise, the first not repeated at the end.
+    sides : sequence of str
+        Names of the pieces, the first from point 0 to point 1; several pieces may
+        share a name and make one side.
+    bulges : array_like, shape (n,), optional
+        Tangent of a quarter of the angle each piece turns through: 0 is straight,
+        positive turns to the left, 1 is a half circle; all straight if left out.
+    chords : {"ask", "arc", "polygon"}
+        What runs of straight pieces on a circle are. Eight or more vertices that turn
+        evenly by less than 10 degrees are an arc, unless "polygon" says that they are
+        not; up to 30 degrees they are one if "arc" says so, and a supported run with
+        "ask" is refused.
+    snap : float, optional
+        A vertex closer than this, in m, to the straight line between its neighbours is
+        merged into it; 1e-6 of the size if left out.
+
+    Attributes
+    ----------
+    notes : tuple of str
+        What was merged or taken for an arc, in words.
+
+    Raises
+    ------
+    InputError
+        If it has too few points, points that coincide, turns back on itself, crosses or
+        touches itself, or runs clockwise.
+    """
+
+    points: Floats
+    sides: tuple[str, ...]
+    bulges: Floats = ()  # type: ignore[assignment]  # filled when built
+    chords: Chords = "ask"
+    snap: float | None = None
+    notes: tuple[str, ...] = field(init=False, default=())
+
+    def __post_init__(self) -> None:
+        """Check the line and tidy it."""
+        object.__setattr__(self, "points", as_points(self.points))
+        object.__setattr__(self, "sides", as_names(self.sides))
+        bulges = np.zeros(len(self.sides)) if len(self.bulges) == 0 else self.bulges
+        object.__setattr__(self, "bulges", read_only_floats(bulges))
+        self._check_numbers()
+        self._check_points()
+        self._merge_straight()
+        self._take_arcs()
+        self._check_crossing()
+
+    @property
+    def line(self) -> "Polygon":
+        """Itself."""
+        return self
+
+    @property
+    def ends(self) -> Floats:
+        """End of each piece, (n, 2)."""
+        return np.roll(self.points, -1, axis=0)
+
+    @cached_property
+    def box(self) -> tuple[float, float, float, float]:
+        """Smallest x, smallest y, largest x, largest y in m."""
+        outer = curves.flattened(self.points, self.ends, self.bulges)[0]
+        (x0, y0), (x1, y1) = outer.min(axis=0), outer.max(axis=0)
+        return float(x0), float(y0), float(x1), float(y1)
+
+    @property
+    def size(self) -> float:
+        """Diagonal of the box around it in m."""
+        x0, y0, x1, y1 = self.box
+        return math.hypot(x1 - x0, y1 - y0)
+
+    @property
+    def area(self) -> float:
+        """Enclosed area in m2."""
+        x, y = (self.points - self.points[0]).T  # coordinates may be a site's
+        flat = 0.5 * float(np.sum(x * np.roll(y, -1) - np.roll(x, -1) * y))
+        return flat + float(curves.slivers(self.points, self.ends, self.bulges).sum())
+
+    @property
+    def lengths(self) -> Floats:
+        """Length of each piece in m, (n,)."""
+        return curves.lengths(self.points, self.ends, self.bulges)
+
+    @property
+    def perimeter(self) -> float:
+        """Length in m."""
+        return float(self.lengths.sum())
+
+    @property
+    def circles(self) -> Floats:
+        """Centre x, centre y, radius in m of each piece, nan where straight, (n, 3)."""
+        return curves.circles(self.points, self.ends, self.bulges)
+
+    @cached_property
+    def turns(self) -> Floats:
+        """Turn to the left at each vertex in rad, in (-pi, pi), (n,)."""
+        out, into = curves.tangents(self.points, self.ends, self.bulges)
+        into = np.roll(into, 1, axis=0)
+        cross = into[:, 0] * out[:, 1] - into[:, 1] * out[:, 0]
+        turn: Floats = np.arctan2(cross, np.einsum("ij,ij->i", into, out))
+        return turn
+
+    @cached_property
+    def straight(self) -> Bools:
+        """Vertices without a turn, but for round-off, (n,)."""
+        flat = (self.bulges == 0.0) & (np.roll(self.bulges, 1) == 0.0)
+        on_line = self._offset() <= STRAIGHT * self.size
+        return np.where(flat, on_line, np.abs(self.turns) < SMOOTH)
+
+    @cached_property
+    def region(self) -> Any:
+        """The enclosed area as a shapely polygon, chords for arcs."""
+        import shapely
+
+        return shapely.Polygon(curves.flattened(self.points, self.ends, self.bulges)[0])
+
+    def split(self, piece: int, share: float, names: tuple[str, str]) -> "Polygon":
+        """Part a piece in two.
+
+        Parameters
+        ----------
+        piece : int
+            Its number.
+        share : float
+            Share of its length at which it is parted, between 0 and 1.
+        names : tuple of str
+            Names of both parts.
+
+        Returns
+        -------
+        Polygon
+        """
+        one = slice(piece, piece + 1)
+        bulge = float(self.bulges[piece])
+        place = curves.points_at(
+            self.points[one], self.ends[one], self.bulges[one], np.array([share])
+        )
+        points = np.insert(self.points, piece + 1, place, axis=0)
+        parts = [curves.part(bulge, share), curves.part(bulge, 1.0 - share)]
+        bulges = np.concatenate([self.bulges[:piece], parts, self.bulges[piece + 1 :]])
+        sides = (*self.sides[:piece], *names, *self.sides[piece + 1 :])
+        return replace(self, points=points, sides=sides, bulges=bulges)
+
+    def corner(self, sides: tuple[str, str]) -> int:
+        """Find the vertex at which two sides meet, in either order.
+
+        Raises
+        ------
+        InputError
+            If they meet nowhere, or more than once.
+        """
+        wanted = set(sides)
+        n = len(self.sides)
+        found = [
+            i
+            for i in range(n)
+            if {self.sides[i - 1], self.sides[i]} == wanted and not self.straight[i]
+        ]
+        if len(found) != 1:
+            how = "do not meet at a corner" if not found else "meet more than once"
+            raise InputError(
+                f"sides {sides[0]!r} and {sides[1]!r} {how}; the corners are "
+                f"{', '.join(self._corner_words())}."
+            )
+        return found[0]
+
+    def fillet(
+        self, sides: tuple[str, str], radius: float, name: str | None = None
+    ) -> "Polygon":
+        """Round the corner between two sides by an arc that touches both.
+
+        Parameters
+        ----------
+        sides : tuple of str
+            The two sides, straight where they meet.
+        radius : float
+            Radius of the arc in m.
+        name : str, optional
+            Name of the arc's side; "fillet of A and B" if left out.
+
+        Returns
+        -------
+        Polygon
+
+        Raises
+        ------
+        InputError
+            If they do not meet once, or the arc is longer than a side allows.
+        """
+        i = self.corner(sides)
+        turn = float(self.turns[i])
+        cut = radius * math.tan(0.5 * abs(turn))
+        label = name or f"fillet of {self.sides[i - 1]} and {self.sides[i]}"
+        return self._round(i, cut, math.tan(0.25 * turn), label, "fillet")
+
+    def relieve(
+        self, sides: tuple[str, str], radius: float, name: str | None = None
+    ) -> "Polygon":
+        """Cut a relief of this radius around the corner between two sides.
+
+        The material within the radius of the corner is taken off, so that a re-entrant
+        corner becomes the rim of a hole.
+
+        Parameters and errors are those of `fillet`.
+        """
+        i = self.corner(sides)
+        inside = math.pi - float(self.turns[i])
+        label = name or f"relief of {self.sides[i - 1]} and {self.sides[i]}"
+        return self._round(i, radius, -math.tan(0.25 * inside), label, "relief")
+
+    def _round(
+        self, i: int, cut: float, bulge: float, label: str, what: str
+    ) -> "Polygon":
+        """Replace vertex i by a piece between the points a cut away on both sides."""
+        before = i - 1
+        both = [before % len(self.sides), i]
+        x, y = self.points[i]
+        if not math.isfinite(cut) or cut <= 0.0:
+            raise InputError(
+                f"the radius of the {what} at {at((x, y))} must be positive and finite."
+            )
+        if (self.bulges[both] != 0.0).any():
+            raise InputError(
+                f"the corner at {at((x, y))} is not between straight pieces; a {what} "
+                "needs two."
+            )
+        if cut >= self.lengths[both].min():
+            raise InputError(
+                f"the {what} at {at((x, y))} takes {cut:.6g} m of both sides but the "
+                f"shorter has {self.lengths[both].min():.6g} m; take a smaller radius."
+            )
+        into, out = (
+            (self.points[i] - self.points[before]),
+            self.ends[i] - self.points[i],
+        )
+        first = self.points[i] - cut * into / np.hypot(*into)
+        second = self.points[i] + cut * out / np.hypot(*out)
+        points = np.insert(self.points, i + 1, second, axis=0)
+        points[i] = first
+        return replace(
+            self,
+            points=points,
+            sides=(*self.sides[:i], label, *self.sides[i:]),
+            bulges=np.insert(self.bulges, i, bulge),
+        )
+
+    def _corner_words(self) -> list[str]:
+        return [
+            f"{self.sides[i - 1]}/{self.sides[i]}"
+            for i in range(len(self.sides))
+            if not self.straight[i]
+        ]
+
+    @property
+    def _label(self) -> str:
+        return f"the polygon with side {self.sides[0]!r}" if self.sides else "a polygon"
+
+    def _offset(self) -> Floats:
+        """Distance of each vertex from the line through its neighbours in m."""
+        before, after = np.roll(self.points, 1, axis=0), self.ends
+        chord, arm = after - before, self.points - before
+        cross = chord[:, 0] * arm[:, 1] - chord[:, 1] * arm[:, 0]
+        length = np.hypot(*chord.T)
+        return np.abs(cross) / np.where(length > 0.0, length, np.inf)
+
+    def _check_numbers(self) -> None:
+        points, n = self.points, len(self.points)
+        arcs = bool(np.any(self.bulges != 0.0))
+        if points.ndim != 2 or points.shape[1:] != (2,) or n < (2 if arcs else 3):
+            raise InputError(
+                f"{self._label} has points of shape {points.shape}; it takes at least "
+                "three pairs (x, y), two where a piece is an arc."
+            )
+        far = ~(np.abs(points) <= FARTHEST).all(axis=1)
+        for i in np.flatnonzero(far):
+            raise InputError(
+                f"{self._label}: point {i + 1} is {at(points[i])}; coordinates must "
+                f"be numbers in m, no larger than {FARTHEST:g}."
+            )
+        for what, given in (("side names", self.sides), ("bulges", self.bulges)):
+            if len(given) != n:
+                raise InputError(
+                    f"{self._label} has {n} points and {len(given)} {what}; give one "
+                    "for each piece, from each point to the next."
+                )
+        wild = ~(np.abs(self.bulges) <= MOST_BULGE)
+        for i in np.flatnonzero(wild):
+            raise InputError(
+                f"{self._label}: piece {i + 1} has bulge {self.bulges[i]:g}; it must "
+                f"lie between -{MOST_BULGE:g} and {MOST_BULGE:g}."
+            )
+        if self.chords not in ("ask", "arc", "polygon"):
+            raise InputError(
+                f"{self._label}: chords is {self.chords!r}; it must be ask, arc or "
+                "polygon."
+            )
+        if self.snap is not None and not 0.0 <= self.snap < self.size:
+            raise InputError(
+                f"{self._label}: snap is {self.snap:g} m; it must be at least 0 and "
+                "less than the size."
+            )
+
+    def _check_points(self) -> None:
+        n = len(self.points)
+        lengths = curves.chords(self.points, self.ends)
+        for i in np.flatnonzero(lengths <= SNAP * self.size):
+            j = (i + 1) % n
+            raise InputError(
+                f"{self._label}: points {i + 1} and {j + 1} coincide near "
+                f"{at(self.points[i])}; drop one of them."
+            )
+        for i in np.flatnonzero(np.abs(self.turns) > math.pi - SNAP):
+            raise InputError(
+                f"{self._label}: the line turns back on itself at point {i + 1}, "
+                f"{at(self.points[i])}; take the spike out."
+            )
+
+    def _merge_straight(self) -> None:
+        """Take vertices that are hardly off a straight line into it."""
+        snap = SNAP * self.size if self.snap is None else self.snap
+        merged = []
+        while True:
+            flat = (self.bulges == 0.0) & (np.roll(self.bulges, 1) == 0.0)
+            off = self._offset()
+            near = flat & (off > STRAIGHT * self.size) & (off < snap)
+            near &= np.abs(self.turns) < chords.ARC_TURN
+            if not near.any() or len(self.points) == 3:
+                break
+            i = int(np.argmin(np.where(near, off, np.inf)))
+            merged.append(f"{at(self.points[i])} by {off[i]:.2g} m")
+            self._flatten(i)
+        if merged:
+            note = f"merged into the straight line: {', '.join(merged)}"
+            object.__setattr__(self, "notes", (*self.notes, note))
+
+    def _flatten(self, i: int) -> None:
+        """Drop vertex i, or move it onto the line where its sides differ."""
+        if self.sides[i] == self.sides[i - 1]:
+            points = np.delete(self.points, i, axis=0)
+            sides = (*self.sides[:i], *self.sides[i + 1 :])
+            bulges = np.delete(self.bulges, i)
+        else:
+            a, b = self.points[i - 1], self.ends[i]
+            points, sides, bulges = self.points.copy(), self.sides, self.bulges
+            share = (points[i] - a) @ (b - a) / ((b - a) @ (b - a))
+            points[i] = a + share * (b - a)
+        self._replace(points, sides, bulges)
+
+    def _take_arcs(self) -> None:
+        """Take runs of chords for the arcs they stand for."""
+        if self.chords == "polygon":
+            return
+        limit = chords.ASK_TURN if self.chords == "arc" else chords.ARC_TURN - 1e-9
+        found = [
+            run
+            for run in chords.runs(self.points, self.sides, self.bulges, self.turns)
+            if abs(run.turn) < limit
+        ]
+        if not found:
+            return
+        notes = [
+            f"{run.pieces} chords of {self.sides[run.first]!r} from "
+            f"{at(self.points[run.first])} taken for an arc of radius "
+            f"{run.radius:.6g} m"
+            for run in found
+        ]
+        self._replace(*chords.as_arcs(self.points, self.sides, self.bulges, found))
+        object.__setattr__(self, "notes", (*self.notes, *notes))
+
+    def _replace(self, points: Floats, sides: tuple[str, ...], bulges: Floats) -> None:
+        """Put tidied pieces in place and forget what was derived from the old ones."""
+        object.__setattr__(self, "points", read_only_floats(points))
+        object.__setattr__(self, "sides", sides)
+        object.__setattr__(self, "bulges", read_only_floats(bulges))
+        for name in ("turns", "straight", "region", "box"):
+            self.__dict__.pop(name, None)
+
+    def _check_crossing(self) -> None:
+        import shapely
+        from shapely.validation import explain_validity
+
+        if not self.region.is_valid:
+            where = explain_validity(self.region).partition("[")[2].rstrip("]")
+            x, y, *_ = (float(word) for word in where.split())
+            raise InputError(
+                f"{self._label} crosses or touches itself at {at((x, y))}; list its "
+                "points in the order in which a pencil would draw it."
+            )
+        if self.area < 0.0:
+            raise InputError(
+                f"{self._label} runs clockwise from {at(self.points[0])}; list its "
+                "points counter-clockwise, with their side names."
+            )
+        if (self.bulges == 0.0).all():
+            neck = shapely.minimum_clearance_line(self.region)
+            if neck.length <= SNAP * self.size:
+                raise InputError(
+                    f"{self._label} comes within {neck.length:.2g} m of itself at "
+                    f"{at(neck.coords[0])}; part it there, or leave a gap."
+                )
+
+
+def as_points(points: ArrayLike) -> Floats:
+    """Array of the user's points, or an error in words."""
+    try:
+        return read_only_floats(points)
+    except (TypeError, ValueError, OverflowError) as error:
+        raise InputError(
+            f"points are {reprlib.repr(points)}; give pairs (x, y) of numbers in m."
+        ) from error
+
+
+def as_names(names: Sequence[str]) -> tuple[str, ...]:
+    """Tuple of the user's side names, or an error in words."""
+    listed: Iterable[Any] = ()
+    with contextlib.suppress(TypeError):
+        listed = tuple(names)
+    if isinstance(names, str) or not listed:
+        raise InputError(
+            f"the side names of a polygon are {names!r}; give a list with a name for "
+            "each piece."
+        )
+    # Names from a numpy array are made plain: messages show them.
+    return tuple(str(name) if isinstance(name, str) else name for name in listed)
+
+
+def at(point: Any) -> str:
+    """Write a place in m."""
+    return f"({point[0]:.6g}, {point[1]:.6g}) m"
