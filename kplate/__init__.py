@@ -41,14 +41,16 @@ from kplate.materials import (
     Isotropic,
 )
 from kplate.mesh import Mesh
-from kplate.outline import Circle, Outline, Polygon
+from kplate.outline import Outline
 from kplate.output.picture import write_picture
 from kplate.output.record import solution_record, write_json, write_reactions
 from kplate.output.view import view
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
 from kplate.plate import Plate
+from kplate.polygon import Polygon
 from kplate.recovery import principal_moments
+from kplate.shapes import Circle, Ellipse, Rectangle, Slot
 from kplate.solution import Solution
 from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED, Support
 from kplate.validity import Validity, validity
@@ -68,6 +70,7 @@ __all__ = [
     "Circle",
     "DeflectionLimit",
     "DiscPatch",
+    "Ellipse",
     "Hydrostatic",
     "InputError",
     "Isotropic",
@@ -84,8 +87,10 @@ __all__ = [
     "Polygon",
     "Pressure",
     "PressureField",
+    "Rectangle",
     "RectanglePatch",
     "SelfWeight",
+    "Slot",
     "Solution",
     "SolveError",
     "StressLimit",

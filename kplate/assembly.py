@@ -20,9 +20,12 @@ from kplate.elements.triangle import Geometry
 from kplate.errors import InputError
 from kplate.loads import (
     DiscPatch,
+    EdgeMoment,
     Hydrostatic,
+    LineForce,
     Load,
     PointForce,
+    PointMoment,
     Pressure,
     PressureField,
     RectanglePatch,
@@ -30,6 +33,7 @@ from kplate.loads import (
 )
 from kplate.mesh import Mesh
 from kplate.plate import Plate
+from kplate.quadrature import gauss
 
 BLOCK = 1024  # triangles; 512 to 2048 are about equally fast
 # Share of a patch that may be missing, as round-off, before it is off the plate.
@@ -83,7 +87,8 @@ def element_stiffness(
         geometry = Geometry(
             vertices=mesh.points[mesh.triangles[block]], rule=element.rule
         )
-        rigidity = np.broadcast_to(plate.rigidity, (len(block), q, 3, 3))
+        own = plate.rigidities[mesh.zones[block]]
+        rigidity = np.broadcast_to(own[:, None], (len(block), q, 3, 3))
         yield block, element.stiffness(geometry, rigidity)
 
 
@@ -125,8 +130,10 @@ def load_vector(
         match load:
             case RectanglePatch() | DiscPatch():
                 _add_patch(forces, element, numbering, load)
-            case PointForce():
+            case PointForce() | PointMoment():
                 _add_point(forces, element, numbering, load)
+            case LineForce() | EdgeMoment():
+                _add_line(forces, element, numbering, load)
             case _:
                 _add_pressure(forces, element, numbering, plate, load)
     return forces[:, 0]
@@ -240,36 +247,54 @@ def _add_pressure(
     mesh = numbering.mesh
     rule = element.load_rule
     chosen = np.arange(len(mesh.triangles))
+    if isinstance(load, Pressure) and load.zone is not None:
+        chosen = _zone_triangles(mesh, load.zone)
     if isinstance(load, Hydrostatic):
         chosen = _add_waterline(forces, element, numbering, load)
     for start in range(0, len(chosen), BLOCK):
         block = chosen[start : start + BLOCK]
         vertices = mesh.points[mesh.triangles[block]]
         points = rule.points @ vertices
-        pressure = _pressure(load, plate, points)
+        pressure = _pressure(load, plate, points, mesh.zones[block])
         own = element.load(Geometry(vertices=vertices, rule=rule), pressure)
         _add(forces, numbering.table[block], own[..., None])
 
 
-def _pressure(load: Load, plate: Plate, points: Floats) -> Floats:
-    """Pressure in Pa at points (..., 2)."""
+def _pressure(load: Load, plate: Plate, points: Floats, zones: Ints) -> Floats:
+    """Pressure in Pa at points (n, q, 2) of triangles in these zones (n,)."""
     match load:
         case Pressure(value=value):
             return np.full(points.shape[:-1], value)
         case SelfWeight(acceleration=acceleration):
-            density = plate.material.density
-            if density is None:
-                raise InputError(
-                    f"material {plate.material.name!r} states no density; a "
-                    "self-weight needs one."
-                )
-            return np.full(points.shape[:-1], density * plate.thickness * acceleration)
+            weights = np.array([_mass_per_area(plate, k) for k in np.unique(zones)])
+            own = weights[np.searchsorted(np.unique(zones), zones)] * acceleration
+            return np.broadcast_to(own[:, None], points.shape[:-1])
         case Hydrostatic():
             depth = _depth(load, points)
             return np.where(depth > 0.0, load.specific_weight * depth, 0.0)
         case PressureField(function=function):
             return _field_pressure(function(points[..., 0], points[..., 1]), points)
     raise AssertionError(load)
+
+
+def _mass_per_area(plate: Plate, section: int) -> float:
+    """Mass per area in kg/m2 of a section."""
+    h, material = plate.sections[section]
+    if material.density is None:
+        raise InputError(
+            f"material {material.name!r} states no density; a self-weight needs one."
+        )
+    return material.density * h
+
+
+def _zone_triangles(mesh: Mesh, zone: str) -> Ints:
+    """Triangles of a zone that a load names."""
+    if zone not in mesh.zone_names:
+        raise InputError(
+            f"a pressure acts on zone {zone!r}; the zones are "
+            f"{', '.join(mesh.zone_names[1:]) or 'none'}."
+        )
+    return np.flatnonzero(mesh.zones == mesh.zone_names.index(zone))
 
 
 def _field_pressure(value: Floats, points: Floats) -> Floats:
@@ -391,15 +416,68 @@ def _add_parts(
 
 
 def _add_point(
-    forces: Floats, element: Element, numbering: Numbering, load: PointForce
+    forces: Floats,
+    element: Element,
+    numbering: Numbering,
+    load: PointForce | PointMoment,
 ) -> None:
     mesh = numbering.mesh
+    what = (
+        f"a point force of {load.force:g} N"
+        if isinstance(load, PointForce)
+        else f"a couple of ({load.moment[0]:g}, {load.moment[1]:g}) N m"
+    )
     try:
         triangle, barycentrics = mesh.locate([load.at])
     except InputError as error:
-        raise InputError(f"a point force of {load.force:g} N: {error}") from error
+        raise InputError(f"{what}: {error}") from error
     rows = element.evaluate(
         mesh.points[mesh.triangles[triangle]], barycentrics[:, None]
     )
-    own = load.force * rows[:, 0, 0]
+    if isinstance(load, PointForce):
+        own = load.force * rows[:, 0, 0]
+    else:
+        # A couple about x turns the plate by dw/dy, one about y by -dw/dx.
+        own = load.moment[0] * rows[:, 0, 2] - load.moment[1] * rows[:, 0, 1]
     _add(forces, numbering.table[triangle], own[..., None])
+
+
+def _add_line(
+    forces: Floats,
+    element: Element,
+    numbering: Numbering,
+    load: LineForce | EdgeMoment,
+) -> None:
+    """Add a force or a moment along the edges of a side or a seam."""
+    mesh = numbering.mesh
+    seam = isinstance(load, LineForce) and load.along in mesh.seam_names
+    if seam:
+        edges = mesh.seam_edges[mesh.seam_numbers == mesh.seam_names.index(load.along)]
+        stretch = np.ones(len(edges))
+    elif load.along in mesh.side_names:
+        own = np.flatnonzero(mesh.boundary_sides == mesh.side_names.index(load.along))
+        edges, stretch = mesh.boundary_edges[own], mesh.boundary_stretch[own]
+    else:
+        names = [*mesh.side_names, *(mesh.seam_names if not seam else ())]
+        raise InputError(
+            f"a load acts along {load.along!r}; the sides and seams are "
+            f"{', '.join(names)}."
+        )
+    share, weights = gauss(3)
+    start, end = np.moveaxis(mesh.points[edges], 1, 0)
+    step = end - start
+    lengths = np.hypot(*step.T)
+    triangles = mesh.triangles_at(edges)
+    points = start[:, None] + share[:, None] * step[:, None]
+    flat = mesh.barycentrics(
+        np.repeat(triangles, len(share)), points.reshape(-1, 2)
+    ).reshape(len(edges), len(share), 3)
+    rows = element.evaluate(mesh.points[mesh.triangles[triangles]], flat)
+    amount = (lengths * stretch)[:, None] * weights
+    if isinstance(load, LineForce):
+        own_forces = load.force * np.einsum("eq,eqd->ed", amount, rows[:, :, 0])
+    else:
+        normal = np.column_stack([step[:, 1], -step[:, 0]]) / lengths[:, None]
+        turning = np.einsum("ec,eqcd->eqd", normal, rows[:, :, 1:])
+        own_forces = load.moment * np.einsum("eq,eqd->ed", amount, turning)
+    _add(forces, numbering.table[triangles], own_forces[..., None])

@@ -84,27 +84,16 @@ def constrain(plate: Plate, numbering: Numbering) -> Constraints:
     Constraints
     """
     mesh = numbering.mesh
-    joints = mesh.boundary_joints
-    vertices = mesh.boundary_edges[:, 1]
-    supports = [plate.support(name) for name in mesh.side_names]
-    holds = np.array([s.holds_deflection for s in supports])[mesh.boundary_sides]
-    clamps = np.array([s.holds_slope for s in supports])[mesh.boundary_sides]
-    tangents = np.stack([mesh.tangents(joints[:, k], vertices) for k in (0, 1)], axis=1)
-    alike = (holds[joints[:, 0]] == holds[joints[:, 1]]) & (
-        clamps[joints[:, 0]] == clamps[joints[:, 1]]
-    )
-    bends = alike & (np.abs(turns(tangents)) < plate.bend_turn)
-    mean = tangents.sum(axis=1)
-    mean /= np.maximum(np.hypot(*mean.T), np.finfo(float).tiny)[:, None]
-    tangents = np.where(bends[:, None, None], mean[:, None], tangents)
-    rows = [
-        _rows(tangents[:, k], holds[joints[:, k]], clamps[joints[:, k]]) for k in (0, 1)
+    found = [
+        *_side_rows(plate, mesh),
+        *_seam_rows(plate, mesh),
+        _mark_rows(plate, mesh),
     ]
-    supported = holds[joints].any(axis=1)
-    frames, held = _frames(np.concatenate(rows, axis=1)[supported])
-    return Constraints(
-        numbering=numbering, vertices=vertices[supported], frames=frames, held=held
-    )
+    vertices = np.concatenate([own for own, _ in found])
+    rows = np.concatenate([own for _, own in found])
+    at, stacked = _stacked(vertices, rows)
+    frames, held = _frames(stacked)
+    return Constraints(numbering=numbering, vertices=at, frames=frames, held=held)
 
 
 def turns(tangents: Floats) -> Floats:
@@ -149,6 +138,69 @@ def _rigid(mesh: Mesh, vertices: Ints, centre: Floats, size: float) -> Floats:
     return motions
 
 
+def _side_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
+    """Vertices of the boundary and what the sides that meet there hold."""
+    joints = mesh.boundary_joints
+    vertices = mesh.boundary_edges[:, 1]
+    supports = [plate.support(name) for name in mesh.side_names]
+    holds = np.array([s.holds_deflection for s in supports])[mesh.boundary_sides]
+    clamps = np.array([s.holds_slope for s in supports])[mesh.boundary_sides]
+    tangents = np.stack([mesh.tangents(joints[:, k], vertices) for k in (0, 1)], axis=1)
+    alike = (holds[joints[:, 0]] == holds[joints[:, 1]]) & (
+        clamps[joints[:, 0]] == clamps[joints[:, 1]]
+    )
+    tangents = _one_tangent(tangents, alike, plate.bend_turn)
+    return [
+        (vertices, _rows(tangents[:, k], holds[joints[:, k]], clamps[joints[:, k]]))
+        for k in (0, 1)
+    ]
+
+
+def _seam_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
+    """Vertices of held seams and what they hold there."""
+    found = []
+    for number, name in enumerate(mesh.seam_names):
+        support = plate.support(name)
+        edges = mesh.seam_edges[mesh.seam_numbers == number]
+        if not (support.holds_deflection or support.holds_slope) or not len(edges):
+            continue
+        # Both ends of each edge, as steps away from the vertex.
+        vertices = np.concatenate([edges[:, 0], edges[:, 1]])
+        others = np.concatenate([edges[:, 1], edges[:, 0]])
+        order = np.argsort(vertices, kind="stable")
+        vertices, others = vertices[order], others[order]
+        away = mesh.points[others] - mesh.points[vertices]
+        away /= np.hypot(*away.T)[:, None]
+        twice = np.flatnonzero(
+            (vertices[1:] == vertices[:-1]) & (np.bincount(vertices)[vertices[1:]] == 2)
+        )
+        pairs = np.stack([-away[twice], away[twice + 1]], axis=1)
+        pairs = _one_tangent(pairs, np.ones(len(twice), dtype=bool), plate.bend_turn)
+        away[twice], away[twice + 1] = pairs[:, 0], pairs[:, 1]
+        holds = np.full(len(vertices), support.holds_deflection)
+        clamps = np.full(len(vertices), support.holds_slope)
+        found.append((vertices, _rows(away, holds, clamps)))
+    return found
+
+
+def _mark_rows(plate: Plate, mesh: Mesh) -> tuple[Ints, Floats]:
+    """Marked vertices and what is held there: w, or both slopes, or all."""
+    rows = np.zeros((len(mesh.mark_names), 3, 3))
+    for number, name in enumerate(mesh.mark_names):
+        support = plate.support(name)
+        rows[number, 0, 0] = support.holds_deflection
+        rows[number, 1, 1] = rows[number, 2, 2] = support.holds_slope
+    return mesh.mark_vertices, rows
+
+
+def _one_tangent(tangents: Floats, alike: Bools, limit: float) -> Floats:
+    """Give pairs of tangents (k, 2, 2) that turn by less than a limit their mean."""
+    bends = alike & (np.abs(turns(tangents)) < limit)
+    mean = tangents.sum(axis=1)
+    mean /= np.maximum(np.hypot(*mean.T), np.finfo(float).tiny)[:, None]
+    return np.where(bends[:, None, None], mean[:, None], tangents)
+
+
 def _rows(tangent: Floats, holds: Bools, clamps: Bools) -> Floats:
     """Directions one edge each holds at k vertices, zero where none, (k, 3, 3)."""
     rows = np.zeros((len(tangent), 3, 3))
@@ -157,6 +209,20 @@ def _rows(tangent: Floats, holds: Bools, clamps: Bools) -> Floats:
     normal = np.column_stack([tangent[:, 1], -tangent[:, 0]])
     rows[:, 2, 1:] = normal * clamps[:, None]
     return rows
+
+
+def _stacked(vertices: Ints, rows: Floats) -> tuple[Ints, Floats]:
+    """Held vertices, each once, and all that is held there, (k, most rows, 3)."""
+    owners, flat = np.repeat(vertices, rows.shape[1]), rows.reshape(-1, 3)
+    some = (flat != 0.0).any(axis=1)
+    owners, flat = owners[some], flat[some]
+    order = np.argsort(owners, kind="stable")
+    owners, flat = owners[order], flat[order]
+    at, first, counts = np.unique(owners, return_index=True, return_counts=True)
+    stacked = np.zeros((len(at), max(3, int(counts.max(initial=3))), 3))
+    within = np.arange(len(owners)) - np.repeat(first, counts)
+    stacked[np.repeat(np.arange(len(at)), counts), within] = flat
+    return at, stacked
 
 
 def _frames(rows: Floats) -> tuple[Floats, Bools]:

@@ -11,7 +11,6 @@ from kplate.adapt import TRIANGLES, solve
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.limits import Outcome, Verdict, governing
-from kplate.outline import Polygon
 from kplate.output.picture import write_picture
 from kplate.output.record import solution_record, write_json, write_reactions
 from kplate.output.tables import Line, legend, values_table
@@ -194,9 +193,7 @@ def _bends(panel: Panel) -> list[str]:
     """Vertices between sides held alike that count as bends."""
     plate, size = panel.plate, panel.units.length.size
     places = []
-    for line in plate.outline.lines:
-        if not isinstance(line, Polygon):
-            continue
+    for line in plate.outline.boundaries:
         for i, (x, y) in enumerate(line.points):
             before, after = (
                 plate.support(line.sides[i - 1]),

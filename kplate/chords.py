@@ -14,6 +14,7 @@ import numpy as np
 
 from kplate import curves
 from kplate.arrays import Floats
+import itertools
 
 # Fewer vertices on a circle than these are no curve.
 FEWEST = 8
@@ -108,7 +109,7 @@ def as_arcs(
     for run in found:
         parts = 2 if run.pieces == n else 1
         cuts = [run.first + round(k * run.pieces / parts) for k in range(parts + 1)]
-        for start, stop in zip(cuts, cuts[1:], strict=False):
+        for start, stop in itertools.pairwise(cuts):
             inside = [(start + k) % n for k in range(1, stop - start)]
             drop[inside] = True
             bent[start % n] = math.tan(0.25 * run.turn * (stop - start))

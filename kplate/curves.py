@@ -1,9 +1,9 @@
 """Straight pieces and circular arcs between two points.
 
-A piece runs from a start to an end. Its *bulge* is the tangent of a quarter of the angle
-it turns through: 0 is straight, positive turns to the left, 1 is a half circle. The
-bulge is how drawings store arcs, has no special case on the way to a straight line, and
-a part of an arc has the tangent of that part of the angle.
+A piece runs from a start to an end. Its *bulge* is the tangent of a quarter of the
+angle it turns through: 0 is straight, positive turns to the left, 1 is a half circle.
+The bulge is how drawings store arcs, has no special case on the way to a straight line,
+and a part of an arc has the tangent of that part of the angle.
 
 Arrays: n pieces, starts and ends (n, 2) in m, bulges (n,).
 """
@@ -12,11 +12,13 @@ import math
 
 import numpy as np
 
-from kplate.arrays import Floats
+from kplate.arrays import Floats, Ints
 
-# Chords that stand for arcs in checks of crossing and distance stay this close, as a
-# share of the radius.
-FLAT = 1e-6
+# Chords that stand for arcs in checks of crossing and distance turn by this (rad): they
+# stay within 1e-6 of the radius.
+FLAT_STEP = 2.0 * math.acos(1.0 - 1e-6)
+# Pairs of arcs in each quarter of an ellipse.
+ELLIPSE_PARTS = 12
 
 
 def sweeps(bulges: Floats) -> Floats:
@@ -36,7 +38,7 @@ def lengths(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
 
 
 def circles(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
-    """Centre x, centre y and radius in m of each piece, nan on straight ones, (n, 3)."""
+    """Centre x, centre y and radius in m of each piece, nan where straight, (n, 3)."""
     bent = np.where(bulges == 0.0, np.nan, bulges)
     step = ends - starts
     left = np.column_stack([-step[:, 1], step[:, 0]])
@@ -74,9 +76,16 @@ def slivers(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
 
 
 def flattened(
-    starts: Floats, ends: Floats, bulges: Floats
-) -> tuple[Floats, np.ndarray]:
+    starts: Floats, ends: Floats, bulges: Floats, step: float = FLAT_STEP
+) -> tuple[Floats, Ints]:
     """Points along a run of pieces, chords for arcs, without the last end.
+
+    Parameters
+    ----------
+    starts, ends, bulges : ndarray
+        The pieces.
+    step : float
+        Largest turn in rad from chord to chord.
 
     Returns
     -------
@@ -85,7 +94,6 @@ def flattened(
     owners : ndarray, shape (k,)
         The piece each point begins or lies on.
     """
-    step = 2.0 * math.acos(1.0 - FLAT)
     counts = np.maximum(1, np.ceil(np.abs(sweeps(bulges)) / step).astype(int))
     owners = np.repeat(np.arange(len(bulges)), counts)
     first = np.repeat(np.cumsum(counts) - counts, counts)
@@ -107,6 +115,19 @@ def distances(points: Floats, starts: Floats, ends: Floats, bulges: Floats) -> F
         else:
             result[:, i] = _arc_distance(points, a, b, float(bulge))
     return result
+
+
+def nearest_share(point: Floats, start: Floats, end: Floats, bulge: float) -> float:
+    """Share of a piece's length at its point nearest to a given one."""
+    if bulge == 0.0:
+        step = end - start
+        return float(np.clip((point - start) @ step / (step @ step), 0.0, 1.0))
+    angle, sweep = _angle_along(point[None], start, end, bulge)
+    # Beyond both ends the nearer one is nearest.
+    over = angle[0] - sweep
+    if over <= 0.0:
+        return float(angle[0] / sweep)
+    return 1.0 if over < 2.0 * math.pi - angle[0] else 0.0
 
 
 def through(start: Floats, middle: Floats, end: Floats) -> float:
@@ -140,10 +161,8 @@ def biarc(
     """
     v, t = end - start, out + into
     a, b, c = 2.0 * (1.0 - float(out @ into)), 2.0 * float(v @ t), -float(v @ v)
-    if a < 1e-14:
-        d = -c / b
-    else:
-        d = (-b + math.sqrt(b * b - 4.0 * a * c)) / (2.0 * a)
+    # The root that stays finite as the tangents turn parallel (a to 0).
+    d = -2.0 * c / (b + math.sqrt(b * b - 4.0 * a * c))
     joint = 0.5 * (start + end + d * (out - into))
     return [
         (start, _bulge_from(out, joint - start)),
@@ -164,8 +183,8 @@ def ellipse(axes: tuple[float, float]) -> tuple[Floats, Floats]:
     points : ndarray, shape (n, 2)
         Starts of the arcs, counter-clockwise from the end of the x axis.
     bulges : ndarray, shape (n,)
-        Their bulges. No point of an arc is off the ellipse by more than 1e-5 of the
-        larger half axis.
+        Their bulges. No point of an arc is off the ellipse by more than 1e-4 of the
+        larger half axis, up to an aspect ratio of five.
     """
     a, b = axes
     angle = np.linspace(0.0, 2.0 * np.pi, 4 * ELLIPSE_PARTS + 1)[:-1]
@@ -177,11 +196,6 @@ def ellipse(axes: tuple[float, float]) -> tuple[Floats, Floats]:
         j = (i + 1) % len(points)
         arcs += biarc(points[i], points[j], out[i], out[j])
     return np.array([p for p, _ in arcs]), np.array([bulge for _, bulge in arcs])
-
-
-# Biarcs in each quarter of an ellipse; enough for the closeness stated above up to an
-# aspect ratio of ten.
-ELLIPSE_PARTS = 24
 
 
 def _turned(vectors: Floats, angles: Floats) -> Floats:
@@ -202,10 +216,18 @@ def _bulge_from(out: Floats, chord: Floats) -> float:
 def _arc_distance(points: Floats, start: Floats, end: Floats, bulge: float) -> Floats:
     """Distance from points (k, 2) to one arc."""
     x, y, radius = circles(start[None], end[None], np.array([bulge]))[0]
-    arms = points - (x, y)
+    angle, sweep = _angle_along(points, start, end, bulge)
+    to_ends = np.minimum(np.hypot(*(points - start).T), np.hypot(*(points - end).T))
+    to_circle = np.abs(np.hypot(*(points - (x, y)).T) - radius)
+    return np.where(angle <= sweep, to_circle, to_ends)
+
+
+def _angle_along(
+    points: Floats, start: Floats, end: Floats, bulge: float
+) -> tuple[Floats, float]:
+    """Angle of points about the centre, from the start along an arc, and its sweep."""
+    x, y, _ = circles(start[None], end[None], np.array([bulge]))[0]
     first = math.atan2(start[1] - y, start[0] - x)
     sense = math.copysign(1.0, bulge)
-    angle = sense * (np.arctan2(arms[:, 1], arms[:, 0]) - first) % (2.0 * np.pi)
-    sweep = abs(float(sweeps(np.array([bulge]))[0]))
-    to_ends = np.minimum(np.hypot(*(points - start).T), np.hypot(*(points - end).T))
-    return np.where(angle <= sweep, np.abs(np.hypot(*arms.T) - radius), to_ends)
+    angle = np.arctan2(points[:, 1] - y, points[:, 0] - x) - first
+    return (sense * angle) % (2.0 * np.pi), abs(4.0 * math.atan(bulge))

@@ -16,15 +16,18 @@ STANDARD_GRAVITY = 9.80665  # m/s2, ISO 80000-3 (from memory)
 
 @dataclass(frozen=True)
 class Pressure:
-    """The same pressure all over the plate.
+    """The same pressure all over the plate or one of its zones.
 
     Parameters
     ----------
     value : float
         Pressure in Pa, positive up.
+    zone : str, optional
+        The zone it acts on; the whole plate if left out.
     """
 
     value: float
+    zone: str | None = None
 
     def __post_init__(self) -> None:
         """Check the number."""
@@ -185,6 +188,69 @@ class SelfWeight:
         _check_finite("acceleration of gravity", self.acceleration)
 
 
+@dataclass(frozen=True, kw_only=True)
+class PointMoment:
+    """A couple at one point.
+
+    Moments at it have no finite value: the surroundings are left out of peaks.
+
+    Parameters
+    ----------
+    moment : tuple of float
+        Its components about the x and y axes in N m, right-handed.
+    at : tuple of float
+        Where, in m.
+    """
+
+    moment: tuple[float, float]
+    at: tuple[float, float]
+
+    def __post_init__(self) -> None:
+        """Check the numbers."""
+        _check_finite("couple", *self.moment)
+        _check_finite("place of a couple", *self.at)
+
+
+@dataclass(frozen=True, kw_only=True)
+class LineForce:
+    """A force spread evenly along a side or a seam.
+
+    Parameters
+    ----------
+    force : float
+        Force per length in N/m, positive up.
+    along : str
+        Name of the side or seam.
+    """
+
+    force: float
+    along: str
+
+    def __post_init__(self) -> None:
+        """Check the number."""
+        _check_finite("line force", self.force)
+
+
+@dataclass(frozen=True, kw_only=True)
+class EdgeMoment:
+    """A moment applied evenly along a side.
+
+    Parameters
+    ----------
+    moment : float
+        m_nn per unit length in N, positive where it compresses the top face.
+    along : str
+        Name of the side.
+    """
+
+    moment: float
+    along: str
+
+    def __post_init__(self) -> None:
+        """Check the number."""
+        _check_finite("edge moment", self.moment)
+
+
 Load = (
     Pressure
     | Hydrostatic
@@ -192,6 +258,9 @@ Load = (
     | RectanglePatch
     | DiscPatch
     | PointForce
+    | PointMoment
+    | LineForce
+    | EdgeMoment
     | SelfWeight
 )
 
@@ -228,7 +297,7 @@ class Case:
                 raise InputError(
                     f"case {self.name!r} holds {load!r}, which is not a load; use "
                     "Pressure, Hydrostatic, PressureField, RectanglePatch, DiscPatch, "
-                    "PointForce or SelfWeight."
+                    "PointForce, PointMoment, LineForce, EdgeMoment or SelfWeight."
                 )
 
 

@@ -43,7 +43,19 @@ class Mesh:
     circles : array_like, shape (n_circles, 3), optional
         Centre x, centre y and radius in m.
     zones : array_like, shape (n_triangles,), optional
-        Zone number of each triangle; all 0 if left out.
+        Zone number of each triangle, in `zone_names`; all 0 if left out.
+    zone_names : tuple of str
+        Names of the zones; number 0 is the plate around them.
+    seam_edges : array_like, shape (n_seam, 2), optional
+        Vertex numbers of the edges that lie on seams.
+    seam_numbers : array_like, shape (n_seam,), optional
+        Number in `seam_names` of the seam each lies on.
+    seam_names : tuple of str
+        Names of the seams.
+    mark_vertices : array_like, shape (n_marks,), optional
+        Vertex of each mark.
+    mark_names : tuple of str
+        Names of the marks.
 
     Raises
     ------
@@ -61,11 +73,21 @@ class Mesh:
     boundary_circles: Ints = None  # type: ignore[assignment]  # filled when built
     circles: Floats = ()  # type: ignore[assignment]  # filled when built
     zones: Ints = None  # type: ignore[assignment]  # filled when built
+    zone_names: tuple[str, ...] = ("plate",)
+    seam_edges: Ints = ()  # type: ignore[assignment]  # filled when built
+    seam_numbers: Ints = ()  # type: ignore[assignment]  # filled when built
+    seam_names: tuple[str, ...] = ()
+    mark_vertices: Ints = ()  # type: ignore[assignment]  # filled when built
+    mark_names: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
         """Freeze the arrays and check them."""
         for name in ("triangles", "boundary_edges", "boundary_sides"):
             object.__setattr__(self, name, read_only_ints(getattr(self, name)))
+        for name in ("seam_numbers", "mark_vertices"):
+            object.__setattr__(self, name, read_only_ints(getattr(self, name)))
+        seams = np.reshape(np.asarray(self.seam_edges, dtype=np.int64), (-1, 2))
+        object.__setattr__(self, "seam_edges", read_only_ints(seams))
         object.__setattr__(self, "points", read_only_floats(self.points))
         circles = np.reshape(np.asarray(self.circles, dtype=float), (-1, 3))
         object.__setattr__(self, "circles", read_only_floats(circles))
@@ -82,6 +104,7 @@ class Mesh:
         self._check_arrays()
         self._check_triangles()
         self._check_boundary()
+        self._check_inside()
 
     @cached_property
     def areas(self) -> Floats:
@@ -121,6 +144,28 @@ class Mesh:
         a, b = np.moveaxis(self.points[self.boundary_edges], 1, 0)
         lengths: Floats = np.hypot(*(b - a).T)
         return lengths
+
+    @cached_property
+    def boundary_stretch(self) -> Floats:
+        """Length of the side behind each boundary edge over the edge's own."""
+        stretch = np.ones(len(self.boundary_edges))
+        curved = self.boundary_circles != STRAIGHT_EDGE
+        radius = self.circles[self.boundary_circles[curved], 2]
+        half = np.arcsin(np.minimum(0.5 * self.boundary_lengths[curved] / radius, 1.0))
+        stretch[curved] = half / np.sin(half)
+        return stretch
+
+    def triangles_at(self, edges: Ints) -> Ints:
+        """One triangle at each edge (k, 2) given by its vertices, (k,)."""
+        n = len(self.points)
+        given = np.sort(edges, axis=1)
+        key = self.edges[:, 0] * n + self.edges[:, 1]
+        number = np.searchsorted(key, given[:, 0] * n + given[:, 1])
+        owner = np.empty(len(self.edges), dtype=np.int64)
+        owner[self.triangle_edges.ravel()] = np.repeat(
+            np.arange(len(self.triangles)), 3
+        )
+        return owner[number]
 
     @cached_property
     def boundary_joints(self) -> Ints:
@@ -286,6 +331,26 @@ class Mesh:
             raise MeshError(
                 f"point {i} at ({x:.6g}, {y:.6g}) m belongs to no triangle; drop it."
             )
+
+    def _check_inside(self) -> None:
+        """Check that zones, seams and marks are parts of the mesh."""
+        n = len(self.points)
+        edges = self.edges[:, 0] * n + self.edges[:, 1]
+        given = np.sort(self.seam_edges, axis=1)
+        if not np.isin(given[:, 0] * n + given[:, 1], edges).all():
+            raise MeshError("a seam is not made of edges of triangles; mesh again.")
+        if len(self.seam_numbers) != len(self.seam_edges):
+            raise MeshError("each seam edge needs the number of its seam.")
+        if (
+            len(self.mark_vertices) != len(self.mark_names)
+            or not ((self.mark_vertices >= 0) & (self.mark_vertices < n)).all()
+        ):
+            raise MeshError("a mark is not a vertex of the mesh; mesh again.")
+        if (
+            len(self.zones) != len(self.triangles)
+            or not ((self.zones >= 0) & (self.zones < len(self.zone_names))).all()
+        ):
+            raise MeshError("a triangle belongs to no named zone.")
 
     def _check_boundary(self) -> None:
         n = len(self.points)

@@ -3,21 +3,26 @@
 Gmsh is started without its signal handler, works in a model of its own that is removed
 again, and gets its options back; what it returns is checked, since it reports neither
 cracks nor holes it lost. Two meshes are never made at once in one process, which Gmsh
-does not survive.
+does not survive. The plate, its zones, seams and marks are fragmented into one
+conforming model; which side a boundary curve belongs to is read off its middle point.
 """
 
 import math
 import threading
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 
+from kplate import curves
 from kplate.arrays import Floats, Ints
 from kplate.errors import InputError, MeshError
 from kplate.mesh import STRAIGHT_EDGE, Mesh
-from kplate.outline import Circle, ClosedLine, Outline
+from kplate.outline import Outline
+from kplate.polygon import SNAP, Polygon
+import itertools
 
 # A coarser circle has chords that turn by more than 7.5 degrees and lose 0.3 % of w.
 EDGES_ON_CIRCLE = 48
@@ -25,14 +30,18 @@ EDGES_ON_CIRCLE = 48
 FRONTAL = 6
 GROWTH = 0.35  # of the edges with the distance from a refined place
 LARGEST = 5_000_000  # triangles; beyond, 24 GiB of memory do not hold the factor
+# An arc of more is parted, since a circle is given by its centre and two points.
+MOST_SWEEP = 0.9 * math.pi
 
 _OPTIONS = {
     "General.Verbosity": 0.0,
     "Mesh.Algorithm": float(FRONTAL),
     "Mesh.ElementOrder": 1.0,
     "Mesh.MaxNumThreads1D": 1.0,  # with more the points come in another order
+    # Sizes come from one field alone: taken on from the boundary as well, they fill
+    # the inside of an outline of many refined corners with the smallest.
     "Mesh.MeshSizeExtendFromBoundary": 0.0,
-    "Mesh.MeshSizeFromPoints": 1.0,
+    "Mesh.MeshSizeFromPoints": 0.0,
     "Mesh.MeshSizeFromCurvature": 0.0,
     "Mesh.MeshSizeFactor": 1.0,
     "Mesh.MeshSizeMin": 0.0,
@@ -42,6 +51,8 @@ _OPTIONS = {
     "Mesh.SubdivisionAlgorithm": 0.0,
 }
 _LOCK = threading.Lock()
+
+Place = tuple[float, float]
 
 
 def size_for(outline: Outline, triangles: int) -> float:
@@ -72,10 +83,7 @@ def refined_triangles(ratio: float) -> float:
 
 
 def mesh_outline(
-    outline: Outline,
-    *,
-    size: float,
-    fine: Sequence[tuple[tuple[float, float], float]] = (),
+    outline: Outline, *, size: float, fine: Sequence[tuple[Place, float]] = ()
 ) -> Mesh:
     """Mesh an outline with triangles of one size, finer around some places.
 
@@ -84,14 +92,16 @@ def mesh_outline(
     outline : Outline
         What to mesh.
     size : float
-        Length of the edges in m; shorter on circles, which get 48 edges at least.
+        Length of the edges in m; shorter on arcs, of which a full circle gets 48 edges
+        at least.
     fine : sequence of (place, size)
         Places in m and the length of the edges there; it grows with the distance.
 
     Returns
     -------
     Mesh
-        Rim points lie on the true circle, every boundary edge on one side.
+        Points of arcs lie on the true circle, every boundary edge on one side; zones,
+        seams and marks are parts of it.
 
     Raises
     ------
@@ -104,34 +114,27 @@ def mesh_outline(
     least = size_for(outline, LARGEST)
     if not (math.isfinite(size) and size >= least):
         raise InputError(
-            f"the mesh size is {size:g} m; it must be finite and at least {least:.3g} "
-            "m for this outline."
+            f"the mesh size is {size:g} m; it must be at least {least:.3g} m for this "
+            "outline."
         )
     _check_fine(fine)
-    with _LOCK, _gmsh_model(size) as gmsh:
-        curves = [_add_line(gmsh, line, size) for line in outline.lines]
-        loops = [gmsh.model.occ.addCurveLoop(tags) for tags in curves]
-        gmsh.model.occ.addPlaneSurface(loops)
-        gmsh.model.occ.synchronize()
-        for line, tags in zip(outline.lines, curves, strict=True):
-            if isinstance(line, Circle):
-                ends = gmsh.model.getBoundary([(1, tags[0])], combined=False)
-                gmsh.model.mesh.setSize(ends, line.perimeter / EDGES_ON_CIRCLE)
-        _refine(gmsh, size, fine)
+    with _LOCK, gmsh_model(size) as gmsh:
         try:
+            model = _build(gmsh, outline)
+            _grade(gmsh, size, fine)
             gmsh.model.mesh.generate(2)
         except Exception as error:
             raise MeshError(
                 f"the outline could not be meshed at size {size:g} m ({error}); try "
                 "another size."
             ) from error
-        mesh = _read(gmsh, outline, curves)
+        mesh = _read(gmsh, outline, model)
     _check_area(mesh, outline)
     return mesh
 
 
 @contextmanager
-def _gmsh_model(size: float) -> Iterator[Any]:
+def gmsh_model(size: float) -> Iterator[Any]:
     """A model of our own inside Gmsh; everything is put back afterwards."""
     gmsh = _import_gmsh()
     started = not gmsh.isInitialized()
@@ -173,7 +176,7 @@ def _import_gmsh() -> Any:
     return gmsh
 
 
-def _check_fine(fine: Sequence[tuple[tuple[float, float], float]]) -> None:
+def _check_fine(fine: Sequence[tuple[Place, float]]) -> None:
     for (x, y), least in fine:
         if not (all(map(math.isfinite, (x, y, least))) and least > 0.0):
             raise InputError(
@@ -182,22 +185,107 @@ def _check_fine(fine: Sequence[tuple[tuple[float, float], float]]) -> None:
             )
 
 
-def _add_line(gmsh: Any, line: ClosedLine, size: float) -> list[int]:
-    """Add a closed line; return the tag of the curve of each side piece, in order."""
+@dataclass(frozen=True, kw_only=True)
+class _Model:
+    """Tags of what was fragmented: surfaces by zone, curves by seam, points by mark."""
+
+    surfaces: list[list[int]]
+    seams: list[list[int]]
+    marks: list[list[int]]
+
+
+def _build(gmsh: Any, outline: Outline) -> _Model:
+    """Make the geometry; number 0 of the surfaces is the plate outside all zones."""
     occ = gmsh.model.occ
-    if isinstance(line, Circle):
-        return [occ.addCircle(*line.centre, 0.0, line.radius)]
-    points = [occ.addPoint(x, y, 0.0, size) for x, y in line.points]
-    ends = points[1:] + points[:1]
-    return [occ.addLine(a, b) for a, b in zip(points, ends, strict=True)]
+    loops = [_add_loop(occ, line) for line in outline.boundaries]
+    plate = [(2, occ.addPlaneSurface(loops))]
+    zones = [
+        [(2, occ.addPlaneSurface([_add_loop(occ, zone.shape.line)]))]
+        for zone in outline.zones
+    ]
+    seams = [
+        [(1, tag) for tag in _add_pieces(occ, seam.points, seam.bulges, closed=False)]
+        for seam in outline.seams
+    ]
+    marks = [[(0, occ.addPoint(*mark.at, 0.0))] for mark in outline.marks]
+    tools = [*zones, *seams, *marks]
+    flat = [entity for group in tools for entity in group]
+    if not flat:
+        occ.synchronize()
+        return _Model(surfaces=[[plate[0][1]]], seams=[], marks=[])
+    _, images = occ.fragment(plate, flat)
+    occ.synchronize()
+    inside = {tag for _, tag in images[0]}
+    groups, at = [], 1
+    for group in tools:
+        tags = [t for image in images[at : at + len(group)] for _, t in image]
+        groups.append(tags)
+        at += len(group)
+    n, m = len(zones), len(zones) + len(seams)
+    own = [[tag for tag in group if tag in inside] for group in groups[:n]]
+    rest = sorted(inside - {tag for group in own for tag in group})
+    _drop_outside(gmsh, inside)
+    return _Model(surfaces=[rest, *own], seams=groups[n:m], marks=groups[m:])
 
 
-def _refine(
-    gmsh: Any, size: float, fine: Sequence[tuple[tuple[float, float], float]]
-) -> None:
-    """Ask for smaller edges around some places, by the smallest of a field for each."""
+def _drop_outside(gmsh: Any, inside: set[int]) -> None:
+    """Remove surfaces of zones that lie in holes."""
+    extra = [(2, tag) for _, tag in gmsh.model.getEntities(2) if tag not in inside]
+    if extra:
+        gmsh.model.occ.remove(extra, recursive=True)
+        gmsh.model.occ.synchronize()
+
+
+def _add_loop(occ: Any, line: Polygon) -> int:
+    return int(
+        occ.addCurveLoop(_add_pieces(occ, line.points, line.bulges, closed=True))
+    )
+
+
+def _add_pieces(occ: Any, points: Floats, bulges: Floats, *, closed: bool) -> list[int]:
+    """Add lines and arcs through points; return their tags in order."""
+    tags = [occ.addPoint(x, y, 0.0) for x, y in points]
+    starts = points if closed else points[:-1]
+    ends = np.roll(points, -1, axis=0) if closed else points[1:]
+    circles = curves.circles(starts, ends, bulges)
+    made: list[int] = []
+    for i in range(len(starts)):
+        first, last = tags[i], tags[(i + 1) % len(tags)]
+        if bulges[i] == 0.0:
+            made.append(occ.addLine(first, last))
+            continue
+        parts = math.ceil(4.0 * abs(math.atan(bulges[i])) / MOST_SWEEP)
+        share = np.arange(1, parts) / parts
+        one = slice(i, i + 1)
+        between = [
+            curves.points_at(starts[one], ends[one], bulges[one], np.array([s]))[0]
+            for s in share
+        ]
+        middle = [occ.addPoint(x, y, 0.0) for x, y in between]
+        centre = occ.addPoint(*circles[i, :2], 0.0)
+        stops = [first, *middle, last]
+        made += [occ.addCircleArc(a, centre, b) for a, b in itertools.pairwise(stops)]
+    return made
+
+
+def _grade(gmsh: Any, size: float, fine: Sequence[tuple[Place, float]]) -> None:
+    """Let edges grow from arcs, short curves and refined places by one field.
+
+    Curves go in groups by halvings of the size, since each group costs a search.
+    """
     field = gmsh.model.mesh.field
-    balls = []
+    curve_groups: dict[int, list[int]] = {}
+    for _, curve in gmsh.model.getEntities(1):
+        edge = _curve_edge(gmsh, curve)
+        if edge < size:
+            halvings = math.ceil(4.0 * math.log2(size / edge))
+            curve_groups.setdefault(halvings, []).append(curve)
+    tags = []
+    for halvings, group in curve_groups.items():
+        distance = field.add("Distance")
+        field.setNumbers(distance, "CurvesList", group)
+        field.setNumber(distance, "Sampling", EDGES_ON_CIRCLE)
+        tags.append(_growing(field, distance, size * 2.0 ** (-0.25 * halvings), size))
     for (x, y), least in fine:
         if least < size:
             ball = field.add("Ball")
@@ -210,48 +298,128 @@ def _refine(
                 "Thickness": (size - least) / GROWTH,
             }.items():
                 field.setNumber(ball, key, value)
-            balls.append(ball)
-    if balls:
+            tags.append(ball)
+    if tags:
         smallest = field.add("Min")
-        field.setNumbers(smallest, "FieldsList", balls)
+        field.setNumbers(smallest, "FieldsList", tags)
         field.setAsBackgroundMesh(smallest)
 
 
-def _read(gmsh: Any, outline: Outline, curves: list[list[int]]) -> Mesh:
+def _curve_edge(gmsh: Any, curve: int) -> float:
+    """Length of the edges in m that a curve needs: its own, or a part of its circle."""
+    length = float(gmsh.model.occ.getMass(1, curve))
+    low, high = gmsh.model.getParametrizationBounds(1, curve)
+    bent = gmsh.model.getCurvature(1, curve, [0.5 * (low[0] + high[0])])[0]
+    if bent <= 0.0:
+        return length
+    return min(length, 2.0 * math.pi / (EDGES_ON_CIRCLE * float(bent)))
+
+
+def _growing(field: Any, distance: int, least: float, size: float) -> int:
+    """Field that grows from the least size with a distance."""
+    threshold = field.add("Threshold")
+    for key, value in {
+        "InField": float(distance),
+        "SizeMin": least,
+        "SizeMax": size,
+        "DistMin": 0.0,
+        "DistMax": (size - least) / GROWTH,
+    }.items():
+        field.setNumber(threshold, key, value)
+    return int(threshold)
+
+
+def _read(gmsh: Any, outline: Outline, model: _Model) -> Mesh:
     """Take the mesh out of Gmsh, without the points that no triangle uses."""
     tags, coordinates, _ = gmsh.model.mesh.getNodes()
-    corners = gmsh.model.mesh.getElementsByType(2)[1].astype(np.int64)
-    if not corners.size:
-        raise MeshError("the outline could not be meshed: no triangles came out.")
+    groups = [
+        np.concatenate([_triangles(gmsh, tag) for tag in surfaces] or [_NONE])
+        for surfaces in model.surfaces
+    ]
+    corners = np.concatenate(groups)
+    if not len(corners):
+        raise MeshError("the mesh has no triangles; try another size.")
+    zones = np.repeat(np.arange(len(groups)), [len(group) for group in groups])
     used = np.unique(corners)
     number = np.full(int(tags.max()) + 1, -1)
     number[used] = np.arange(len(used))
     place = np.zeros((len(number), 2))
     place[tags.astype(np.int64)] = coordinates.reshape(-1, 3)[:, :2]
-    names = outline.side_names
-    edges, sides, circles = [], [], []
-    round_lines = [line for line in outline.lines if isinstance(line, Circle)]
-    for line, line_curves in zip(outline.lines, curves, strict=True):
-        circle = round_lines.index(line) if line in round_lines else STRAIGHT_EDGE
-        for side, curve in zip(line.sides, line_curves, strict=True):
-            pairs = gmsh.model.mesh.getElementsByType(1, curve)[1].astype(np.int64)
-            if not np.isin(pairs, used).all():
-                raise MeshError(
-                    f"the triangles leave side {side!r} out; try another size."
-                )
-            edges.append(number[pairs].reshape(-1, 2))
-            sides.append(np.full(len(edges[-1]), names.index(side)))
-            circles.append(np.full(len(edges[-1]), circle))
-    triangles = number[corners].reshape(-1, 3)
-    points = place[used]
+    triangles, points = number[corners], place[used]
+    edges, sides, circles, table = _boundary(gmsh, outline, number)
+    seams = [_edges(gmsh, curve, number) for group in model.seams for curve in group]
+    counts = [sum(len(_edges(gmsh, c, number)) for c in group) for group in model.seams]
+    marks = [
+        int(number[int(gmsh.model.mesh.getNodes(0, group[0])[0][0])])
+        for group in model.marks
+    ]
     return Mesh(
         points=points,
         triangles=triangles,
-        boundary_edges=_plate_on_left(triangles, np.vstack(edges)),
-        boundary_sides=np.concatenate(sides),
-        side_names=names,
-        boundary_circles=np.concatenate(circles),
-        circles=np.array([(*c.centre, c.radius) for c in round_lines]).reshape(-1, 3),
+        boundary_edges=_plate_on_left(triangles, edges),
+        boundary_sides=sides,
+        side_names=outline.side_names,
+        boundary_circles=circles,
+        circles=table,
+        zones=zones,
+        zone_names=("plate", *outline.zone_names),
+        seam_edges=np.concatenate([*seams, np.empty((0, 2), dtype=np.int64)]),
+        seam_numbers=np.repeat(np.arange(len(counts)), counts),
+        seam_names=tuple(seam.name for seam in outline.seams),
+        mark_vertices=np.array(marks, dtype=np.int64),
+        mark_names=tuple(mark.name for mark in outline.marks),
+    )
+
+
+_NONE = np.empty((0, 3), dtype=np.int64)
+
+
+def _triangles(gmsh: Any, surface: int) -> Ints:
+    corners = gmsh.model.mesh.getElementsByType(2, surface)[1]
+    return np.asarray(corners, dtype=np.int64).reshape(-1, 3)
+
+
+def _edges(gmsh: Any, curve: int, number: Ints) -> Ints:
+    pairs = gmsh.model.mesh.getElementsByType(1, curve)[1].astype(np.int64)
+    edges: Ints = number[pairs].reshape(-1, 2)
+    return edges
+
+
+def _boundary(
+    gmsh: Any, outline: Outline, number: Ints
+) -> tuple[Ints, Ints, Ints, Floats]:
+    """Boundary edges with their sides and circles, and the table of circles."""
+    surfaces = gmsh.model.getEntities(2)
+    lines = gmsh.model.getBoundary(surfaces, combined=True, oriented=False)
+    pieces = outline.boundaries
+    starts = np.concatenate([line.points for line in pieces])
+    ends = np.concatenate([line.ends for line in pieces])
+    bulges = np.concatenate([line.bulges for line in pieces])
+    names = [name for line in pieces for name in line.sides]
+    rounds = np.cumsum(bulges != 0.0) - 1
+    order = outline.side_names
+    edges, sides, circles = [], [], []
+    for _, curve in lines:
+        low, high = gmsh.model.getParametrizationBounds(1, curve)
+        middle = gmsh.model.getValue(1, curve, [0.5 * (low[0] + high[0])])[:2]
+        off = curves.distances(np.array([middle]), starts, ends, bulges)[0]
+        piece = int(np.argmin(off))
+        if off[piece] > SNAP * outline.size:
+            raise MeshError(
+                f"a boundary curve near ({middle[0]:.6g}, {middle[1]:.6g}) m lies on "
+                "no side; please report the outline."
+            )
+        own = _edges(gmsh, curve, number)
+        edges.append(own)
+        sides.append(np.full(len(own), order.index(names[piece])))
+        circle = rounds[piece] if bulges[piece] != 0.0 else STRAIGHT_EDGE
+        circles.append(np.full(len(own), circle))
+    table = curves.circles(starts, ends, bulges)[bulges != 0.0]
+    return (
+        np.concatenate(edges),
+        np.concatenate(sides),
+        np.concatenate(circles),
+        table,
     )
 
 
@@ -265,27 +433,19 @@ def _plate_on_left(triangles: Ints, edges: Ints) -> Ints:
 
 def _check_area(mesh: Mesh, outline: Outline) -> None:
     """Compare with the outline's area, the slivers behind chords allowed for."""
-    expected = outline.area
     curved = mesh.boundary_circles != STRAIGHT_EDGE
-    radius = mesh.circles[mesh.boundary_circles[curved], 2]
-    sign = _circle_signs(outline)[mesh.boundary_circles[curved]]
-    expected -= float(np.sum(sign * _sliver(radius, mesh.boundary_lengths[curved])))
+    x, y, radius = mesh.circles[mesh.boundary_circles[curved]].T
+    start, end = np.moveaxis(mesh.points[mesh.boundary_edges[curved]], 1, 0)
+    # The centre lies on the plate's side of the chord where the arc bulges outwards.
+    step, arm = end - start, np.column_stack([x, y]) - start
+    sign = np.sign(step[:, 0] * arm[:, 1] - step[:, 1] * arm[:, 0])
+    slivers = _sliver(radius, mesh.boundary_lengths[curved])
+    expected = outline.area - float(np.sum(sign * slivers))
     if abs(mesh.area - expected) > 1e-9 * outline.size**2:
         raise MeshError(
             f"the mesh covers {mesh.area:.9g} m2 of an outline of {expected:.9g} m2; "
             "please report the outline."
         )
-
-
-def _circle_signs(outline: Outline) -> Floats:
-    """+1 where the chords of a circle cut plate off (a rim), -1 on a hole."""
-    return np.array(
-        [
-            1.0 if line is outline.rim else -1.0
-            for line in outline.lines
-            if isinstance(line, Circle)
-        ]
-    )
 
 
 def _sliver(radius: Floats, chord: Floats) -> Floats:

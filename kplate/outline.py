@@ -1,14 +1,12 @@
-"""The outline of a plate: its sides and holes, checked before anything is meshed.
+"""The outline of a plate: sides, holes, zones, seams and marks, checked before meshing.
 
-A closed line is a `Polygon` or a `Circle`. Both run counter-clockwise as stated; the
-sides of a polygon run from each point to the next. Turns at the vertices are recorded
-here; whether a turn is a corner or a bend of a curve is decided where supports meet it.
+The rim and the holes are closed lines that run counter-clockwise as stated, with a name
+for each side. Zones are areas inside with a thickness, material or load of their own;
+seams are lines inside that the mesh follows; marks are single points of it.
 """
 
-import contextlib
 import math
-import reprlib
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
 from itertools import combinations
@@ -17,283 +15,182 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike
 
-from kplate.arrays import Bools, Floats, read_only_floats
+from kplate import curves
+from kplate.arrays import Floats, read_only_floats
 from kplate.errors import InputError
+from kplate.polygon import FARTHEST, SNAP, Chords, Polygon, as_names, as_points, at
+from kplate.shapes import Circle, ClosedLine, Ellipse, Rectangle, Slot
 
-# Lengths below this share of the plate's size are no lengths: points coincide, a hole
-# touches, a vertex is not meant to be off the straight line between its neighbours.
-SNAP = 1e-6
-# A vertex that is off the line by no more than this share is on it, but for round-off.
-STRAIGHT = 1e-12
-# Nobody draws a plate farther from its origin; beyond, products of lengths overflow.
-FARTHEST = 1e9  # m
-# Between sides held alike, a smaller turn is a bend of a curve, not a corner (a simply
-# supported square with mid-side vertices 0.1 mm out would otherwise lose a third of w).
-BEND_TURN = math.radians(10.0)
+_SHAPES = (Polygon, Circle, Slot, Rectangle, Ellipse)
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
-class Polygon:
-    """A closed line of straight pieces.
+class Zone:
+    """An area of the plate with a name.
+
+    Parameters
+    ----------
+    shape : Polygon, Circle, Slot, Rectangle or Ellipse
+        Its boundary; it may share edges with the rim, with holes and with other zones.
+    name : str
+        Its name.
+    """
+
+    shape: ClosedLine
+    name: str
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Seam:
+    """A line on the plate that the mesh follows.
 
     Parameters
     ----------
     points : array_like, shape (n, 2)
-        Vertices in m, counter-clockwise, the first not repeated at the end.
-    sides : sequence of str
-        Names of the pieces, the first from point 0 to point 1; several pieces may
-        share a name and make one side.
+        Its vertices in m, from end to end.
+    name : str
+        Its name.
+    bulges : array_like, shape (n - 1,), optional
+        Tangent of a quarter of the angle each piece turns through; all straight if
+        left out.
 
     Raises
     ------
     InputError
-        If it has fewer than three points, points that coincide, a vertex that is
-        nearly but not quite straight, crosses itself, or runs clockwise.
+        If it has fewer than two points, or points that coincide.
     """
 
     points: Floats
-    sides: tuple[str, ...]
+    name: str
+    bulges: Floats = ()  # type: ignore[assignment]  # filled when built
 
     def __post_init__(self) -> None:
         """Check the line."""
-        points = _as_points(self.points)
+        points = as_points(self.points)
         object.__setattr__(self, "points", points)
-        object.__setattr__(self, "sides", _as_names(self.sides))
-        if points.ndim != 2 or points.shape[1:] != (2,) or len(points) < 3:
+        if points.ndim != 2 or points.shape[1:] != (2,) or len(points) < 2:
             raise InputError(
-                f"{self._label} has points of shape {points.shape}; it takes at least "
-                "three pairs (x, y)."
+                f"seam {self.name!r} has points of shape {points.shape}; it takes at "
+                "least two pairs (x, y)."
             )
-        far = ~(np.abs(points) <= FARTHEST).all(axis=1)
-        for i in np.flatnonzero(far):
+        if not (np.abs(points) <= FARTHEST).all():
+            raise InputError(f"seam {self.name!r} has points that are not finite.")
+        bulges = np.zeros(len(points) - 1) if len(self.bulges) == 0 else self.bulges
+        object.__setattr__(self, "bulges", read_only_floats(bulges))
+        if len(self.bulges) != len(points) - 1:
             raise InputError(
-                f"{self._label}: point {i + 1} is {_at(points[i])}; coordinates must "
-                f"be numbers in m, no larger than {FARTHEST:g}."
+                f"seam {self.name!r} has {len(points) - 1} pieces and "
+                f"{len(self.bulges)} bulges; give one for each."
             )
-        if len(self.sides) != len(points):
+        size = float(np.hypot(*np.ptp(points, axis=0)))
+        for i in np.flatnonzero(self.chords <= SNAP * size):
             raise InputError(
-                f"{self._label} has {len(points)} points and {len(self.sides)} side "
-                "names; name each piece, from each point to the next."
+                f"seam {self.name!r}: points {i + 1} and {i + 2} coincide near "
+                f"{at(points[i])}; drop one of them."
             )
-        self._check_points()
-        self._check_crossing()
 
     @property
-    def size(self) -> float:
-        """Diagonal of the box around it in m."""
-        return float(np.hypot(*np.ptp(self.points, axis=0)))
+    def chords(self) -> Floats:
+        """Distance from end to end of each piece in m."""
+        return curves.chords(self.points[:-1], self.points[1:])
 
     @property
-    def area(self) -> float:
-        """Enclosed area in m2."""
-        x, y = (self.points - self.points[0]).T  # coordinates may be a site's
-        return 0.5 * float(np.sum(x * np.roll(y, -1) - np.roll(x, -1) * y))
-
-    @property
-    def perimeter(self) -> float:
-        """Length in m."""
-        return float(
-            np.hypot(*(np.roll(self.points, -1, axis=0) - self.points).T).sum()
-        )
-
-    @cached_property
     def turns(self) -> Floats:
-        """Turn to the left at each vertex in rad, in (-pi, pi), (n,)."""
-        ahead = np.roll(self.points, -1, axis=0) - self.points
-        behind = np.roll(ahead, 1, axis=0)
-        cross = behind[:, 0] * ahead[:, 1] - behind[:, 1] * ahead[:, 0]
-        turn: Floats = np.arctan2(cross, np.einsum("ij,ij->i", behind, ahead))
+        """Turn to the left at each vertex between two pieces in rad, (n - 2,)."""
+        out, into = curves.tangents(self.points[:-1], self.points[1:], self.bulges)
+        out, into = out[1:], into[:-1]
+        cross = into[:, 0] * out[:, 1] - into[:, 1] * out[:, 0]
+        turn: Floats = np.arctan2(cross, np.einsum("ij,ij->i", into, out))
         return turn
 
     @cached_property
-    def straight(self) -> Bools:
-        """Vertices on the line through their neighbours but for round-off, (n,)."""
-        return self._offset() <= STRAIGHT * self.size
-
-    @cached_property
-    def region(self) -> Any:
-        """The enclosed area as a shapely polygon."""
+    def path(self) -> Any:
+        """The seam as a shapely line, chords for arcs."""
         import shapely
 
-        return shapely.Polygon(self.points)
-
-    @property
-    def _label(self) -> str:
-        return f"the polygon with side {self.sides[0]!r}" if self.sides else "a polygon"
-
-    def _offset(self) -> Floats:
-        """Distance of each vertex from the line through its neighbours in m."""
-        before, after = (
-            np.roll(self.points, 1, axis=0),
-            np.roll(self.points, -1, axis=0),
-        )
-        chord = after - before
-        arm = self.points - before
-        cross = chord[:, 0] * arm[:, 1] - chord[:, 1] * arm[:, 0]
-        length = np.hypot(*chord.T)
-        return np.abs(cross) / np.where(length > 0.0, length, np.inf)
-
-    def _check_points(self) -> None:
-        n = len(self.points)
-        ahead = np.roll(self.points, -1, axis=0) - self.points
-        for i in np.flatnonzero(np.hypot(*ahead.T) <= SNAP * self.size):
-            j = (i + 1) % n
-            raise InputError(
-                f"{self._label}: points {i + 1} and {j + 1} coincide near "
-                f"{_at(self.points[i])}; drop one of them."
-            )
-        for i in np.flatnonzero(np.abs(self.turns) > math.pi - SNAP):
-            raise InputError(
-                f"{self._label}: the line turns back on itself at point {i + 1}, "
-                f"{_at(self.points[i])}; take the spike out."
-            )
-        off = self._offset()
-        near = (off > STRAIGHT * self.size) & (off < SNAP * self.size)
-        for i in np.flatnonzero(near & (np.abs(self.turns) < BEND_TURN)):
-            raise InputError(
-                f"{self._label}: point {i + 1}, {_at(self.points[i])}, is nearly "
-                f"straight, {off[i]:.2g} m off the line between its neighbours; drop "
-                "it or move it onto the line."
-            )
-
-    def _check_crossing(self) -> None:
-        import shapely
-        from shapely.validation import explain_validity
-
-        if not self.region.is_valid:
-            where = explain_validity(self.region).partition("[")[2].rstrip("]")
-            x, y, *_ = (float(word) for word in where.split())
-            raise InputError(
-                f"{self._label} crosses or touches itself at {_at((x, y))}; list its "
-                "points in the order in which a pencil would draw it."
-            )
-        if self.area < 0.0:
-            raise InputError(
-                f"{self._label} runs clockwise from {_at(self.points[0])}; list its "
-                "points counter-clockwise, with their side names."
-            )
-        neck = shapely.minimum_clearance_line(self.region)
-        if neck.length <= SNAP * self.size:
-            raise InputError(
-                f"{self._label} comes within {neck.length:.2g} m of itself at "
-                f"{_at(neck.coords[0])}; part it there, or leave a gap."
-            )
+        flat, _ = curves.flattened(self.points[:-1], self.points[1:], self.bulges)
+        return shapely.LineString(np.vstack([flat, self.points[-1:]]))
 
 
 @dataclass(frozen=True, kw_only=True)
-class Circle:
-    """A full circle: one side without corners.
+class Mark:
+    """A point of the plate that is a vertex of the mesh.
 
     Parameters
     ----------
-    centre : tuple of float
-        Centre in m.
-    radius : float
-        Radius in m.
+    at : tuple of float
+        Where, in m.
     name : str
-        Name of the side.
-
-    Raises
-    ------
-    InputError
-        If a number is no number, not finite, or the radius not positive.
+        Its name.
     """
 
-    centre: tuple[float, float]
-    radius: float
+    at: tuple[float, float]
     name: str
-
-    def __post_init__(self) -> None:
-        """Check the numbers."""
-        try:
-            # Adding 0.0 keeps text from being read as a number.
-            x, y, radius = (float(c + 0.0) for c in (*self.centre, self.radius))
-        except (TypeError, ValueError) as error:
-            raise InputError(
-                f"circle {self.name!r} has centre {self.centre!r} and radius "
-                f"{self.radius!r}; give a pair (x, y) and a number in m."
-            ) from error
-        object.__setattr__(self, "centre", (x, y))
-        object.__setattr__(self, "radius", radius)
-        if not all(abs(c) <= FARTHEST for c in (x, y, radius)):
-            raise InputError(
-                f"circle {self.name!r} has centre {_at(self.centre)} and radius "
-                f"{self.radius:g} m; its numbers must be finite, no larger than "
-                f"{FARTHEST:g}."
-            )
-        if self.radius <= 0.0:
-            raise InputError(
-                f"circle {self.name!r} has radius {self.radius:g} m; it must be "
-                "positive."
-            )
-
-    @property
-    def sides(self) -> tuple[str, ...]:
-        """Its one side."""
-        return (self.name,)
-
-    @property
-    def size(self) -> float:
-        """Diagonal of the box around it in m."""
-        return 2.0 * math.sqrt(2.0) * self.radius
-
-    @property
-    def area(self) -> float:
-        """Enclosed area in m2."""
-        return math.pi * self.radius**2
-
-    @property
-    def perimeter(self) -> float:
-        """Length in m."""
-        return 2.0 * math.pi * self.radius
-
-
-ClosedLine = Polygon | Circle
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
 class Outline:
-    """The whole boundary of a plate.
+    """The whole boundary of a plate and the lines the mesh follows inside.
 
-    Build one with `Outline.polygon` or `Outline.circle`, then `cut` the holes.
+    Build one with `Outline.polygon`, `Outline.circle` or `Outline.of`, then `cut` holes
+    and add zones, seams and marks.
 
     Parameters
     ----------
-    rim : Polygon or Circle
+    rim : Polygon, Circle, Slot, Rectangle or Ellipse
         The outer boundary.
-    holes : tuple of Polygon or Circle
+    holes : tuple of the same
         Openings, strictly inside the rim and apart from each other.
+    zones : tuple of Zone
+        Areas inside the rim that do not overlap.
+    seams : tuple of Seam
+        Lines on the plate; they may cross, and end on sides.
+    marks : tuple of Mark
+        Points on the plate.
 
     Raises
     ------
     InputError
-        If a hole is outside, touches or crosses the rim or another hole, or a side name
-        stands on two closed lines.
+        If a hole is outside, touches or crosses the rim or another hole, a zone, seam
+        or mark is not on the plate, zones overlap, or a name stands twice.
     """
 
     rim: ClosedLine
     holes: tuple[ClosedLine, ...] = ()
+    zones: tuple[Zone, ...] = ()
+    seams: tuple[Seam, ...] = ()
+    marks: tuple[Mark, ...] = ()
 
     def __post_init__(self) -> None:
-        """Check names, and that the holes lie inside and apart."""
-        object.__setattr__(self, "holes", tuple(self.holes))
-        for line in self.lines:
-            if not isinstance(line, Polygon | Circle):
+        """Check names, and that everything lies where it may."""
+        for key in ("holes", "zones", "seams", "marks"):
+            object.__setattr__(self, key, tuple(getattr(self, key)))
+        shapes = [self.rim, *self.holes, *(zone.shape for zone in self.zones)]
+        for shape in shapes:
+            if not isinstance(shape, _SHAPES):
                 raise InputError(
-                    f"{line!r} is no closed line; a rim or a hole is a Polygon or a "
-                    "Circle."
+                    f"{shape!r} is no closed line; a rim, hole or zone is a Polygon, "
+                    "Circle, Slot, Rectangle or Ellipse."
                 )
         self._check_names()
-        for number, hole in enumerate(self.holes, start=1):
-            _check_inside(self.rim, hole, number)
-        for (i, a), (j, b) in combinations(enumerate(self.holes, start=1), 2):
-            _check_apart(a, b, (i, j), SNAP * self.size)
+        least = SNAP * self.size
+        for number, hole in enumerate(self.boundaries[1:], start=1):
+            _check_inside(self.boundaries[0], hole, number, least)
+        for (i, a), (j, b) in combinations(enumerate(self.boundaries[1:], start=1), 2):
+            _check_apart(a, b, (i, j), least)
+        self._check_zones(least)
+        self._check_seams_and_marks(least)
 
     @classmethod
     def polygon(
-        cls, points: ArrayLike, *, sides: Sequence[str] | None = None
+        cls,
+        points: ArrayLike,
+        *,
+        sides: Sequence[str] | None = None,
+        bulges: ArrayLike = (),
+        chords: Chords = "ask",
     ) -> "Outline":
-        """Outline with straight sides.
+        """Outline of straight sides and arcs.
 
         Parameters
         ----------
@@ -302,15 +199,24 @@ class Outline:
         sides : sequence of str, optional
             A name for each piece, the first from point 0 to point 1; "side-1",
             "side-2", ... if left out.
+        bulges, chords
+            As in `Polygon`.
 
         Returns
         -------
         Outline
         """
-        array = _as_points(points)
+        array = as_points(points)
         if sides is None:
             sides = [f"side-{i + 1}" for i in range(len(np.atleast_1d(array)))]
-        return cls(rim=Polygon(points=array, sides=_as_names(sides)))
+        return cls(
+            rim=Polygon(
+                points=array,
+                sides=as_names(sides),
+                bulges=as_points(bulges),
+                chords=chords,
+            )
+        )
 
     @classmethod
     def circle(
@@ -319,38 +225,157 @@ class Outline:
         """Round outline: one side, a true circle."""
         return cls(rim=Circle(centre=centre, radius=radius, name=side))
 
+    @classmethod
+    def of(cls, shape: ClosedLine) -> "Outline":
+        """Outline with any shape for its rim."""
+        return cls(rim=shape)
+
     def cut(self, *holes: ClosedLine) -> "Outline":
         """Return the outline with these openings cut into it."""
         return replace(self, holes=(*self.holes, *holes))
 
+    def zone(self, shape: ClosedLine, *, name: str) -> "Outline":
+        """Return the outline with a zone added."""
+        return replace(self, zones=(*self.zones, Zone(shape=shape, name=name)))
+
+    def seam(
+        self, points: ArrayLike, *, name: str, bulges: ArrayLike = ()
+    ) -> "Outline":
+        """Return the outline with a seam added."""
+        seam = Seam(points=as_points(points), name=name, bulges=as_points(bulges))
+        return replace(self, seams=(*self.seams, seam))
+
+    def mark(self, place: tuple[float, float], *, name: str) -> "Outline":
+        """Return the outline with a marked point added."""
+        x, y = as_points([place])[0]
+        mark = Mark(at=(float(x), float(y)), name=name)
+        return replace(self, marks=(*self.marks, mark))
+
+    def fillet(
+        self, first: str, second: str, *, radius: float, name: str | None = None
+    ) -> "Outline":
+        """Return the outline with the corner between two sides rounded.
+
+        Parameters
+        ----------
+        first, second : str
+            The sides that meet there, straight, in either order.
+        radius : float
+            Radius in m of the arc that touches both.
+        name : str, optional
+            Name of the arc's side; "fillet of A and B" if left out.
+        """
+        line = self._line_with((first, second)).fillet((first, second), radius, name)
+        return self._replaced(line, (first, second))
+
+    def relieve(
+        self, first: str, second: str, *, radius: float, name: str | None = None
+    ) -> "Outline":
+        """Return the outline with a round relief cut at the corner of two sides.
+
+        Parameters are those of `fillet`; material within the radius is taken off.
+        """
+        line = self._line_with((first, second)).relieve((first, second), radius, name)
+        return self._replaced(line, (first, second))
+
+    def part(
+        self,
+        side: str,
+        *,
+        name: str,
+        fractions: tuple[float, float] | None = None,
+        between: tuple[tuple[float, float], tuple[float, float]] | None = None,
+    ) -> "Outline":
+        """Return the outline with a part of a side made a side of its own.
+
+        Parameters
+        ----------
+        side : str
+            A side in one stretch.
+        name : str
+            Name of the part; the rest keeps the side's.
+        fractions : tuple of float, optional
+            Where it begins and ends, as shares of the side's length in the sense in
+            which the line was stated.
+        between : tuple of points, optional
+            Two points in m instead; the nearest of the side are taken.
+
+        Returns
+        -------
+        Outline
+
+        Raises
+        ------
+        InputError
+            If there is no such side, it is in several stretches, or the part has no
+            length.
+        """
+        line = self._line_with((side,))
+        if (fractions is None) == (between is None):
+            raise InputError(
+                f"a part of side {side!r} is given by fractions or between two points; "
+                "give one of them."
+            )
+        if between is not None:
+            fractions = line.fractions(side, between)
+        assert fractions is not None
+        return self._replaced(line.parted(side, name, fractions), (side,))
+
     @property
     def lines(self) -> tuple[ClosedLine, ...]:
-        """The rim, then the holes."""
+        """The rim, then the holes, as they were stated."""
         return (self.rim, *self.holes)
+
+    @cached_property
+    def boundaries(self) -> tuple[Polygon, ...]:
+        """Their pieces: the boundary of the rim, then of each hole."""
+        return tuple(shape.line for shape in self.lines)
+
+    @property
+    def notes(self) -> tuple[str, ...]:
+        """What was tidied, in words."""
+        return tuple(note for line in self.boundaries for note in line.notes)
 
     @property
     def side_names(self) -> tuple[str, ...]:
         """Names of all sides, rim first, each once."""
-        return tuple(dict.fromkeys(name for line in self.lines for name in line.sides))
+        return tuple(
+            dict.fromkeys(name for line in self.boundaries for name in line.sides)
+        )
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        """Names of all that can be held: sides, seams, marks."""
+        seams = (seam.name for seam in self.seams)
+        return (*self.side_names, *seams, *(mark.name for mark in self.marks))
+
+    @property
+    def zone_names(self) -> tuple[str, ...]:
+        """Names of the zones."""
+        return tuple(zone.name for zone in self.zones)
 
     @property
     def size(self) -> float:
         """Diagonal of the box around it in m."""
-        return self.rim.size
+        return self.boundaries[0].size
 
     @property
     def box(self) -> tuple[float, float, float, float]:
         """Smallest x, smallest y, largest x, largest y in m."""
-        if isinstance(self.rim, Circle):
-            (x, y), r = self.rim.centre, self.rim.radius
-            return x - r, y - r, x + r, y + r
-        (x0, y0), (x1, y1) = self.rim.points.min(axis=0), self.rim.points.max(axis=0)
-        return float(x0), float(y0), float(x1), float(y1)
+        return self.boundaries[0].box
 
     @property
     def area(self) -> float:
         """Area of the plate, holes taken off, in m2."""
-        return self.rim.area - sum(hole.area for hole in self.holes)
+        return self.boundaries[0].area - sum(line.area for line in self.boundaries[1:])
+
+    @cached_property
+    def region(self) -> Any:
+        """The plate as a shapely polygon with holes, chords for arcs."""
+        import shapely
+
+        rim, *holes = (line.region.exterior.coords for line in self.boundaries)
+        return shapely.Polygon(rim, holes)
 
     @cached_property
     def span(self) -> float:
@@ -363,9 +388,26 @@ class Outline:
             return 2.0 * self.rim.radius
         import shapely
 
-        region = self.rim.region
+        region = self.boundaries[0].region
         line = shapely.maximum_inscribed_circle(region, tolerance=1e-4 * self.size)
         return 2.0 * float(shapely.length(line))
+
+    @property
+    def smallest_radius(self) -> float | None:
+        """Smallest radius in m of an arc of a hole or of a hollow in the rim.
+
+        ``None`` where there is none; the rim's own bulging arcs do not count.
+        """
+        radii: list[float] = []
+        for number, line in enumerate(self.boundaries):
+            hollow = line.bulges > 0.0 if number else line.bulges < 0.0
+            radii += line.circles[hollow, 2].tolist()
+        return min(radii, default=None)
+
+    def zone_area(self, name: str) -> float:
+        """Area in m2 of a zone, holes taken off."""
+        zone = next(zone for zone in self.zones if zone.name == name)
+        return float(zone.shape.line.region.intersection(self.region).area)
 
     def side_length(self, name: str) -> float:
         """Length in m of a side.
@@ -375,122 +417,135 @@ class Outline:
         InputError
             If there is no such side.
         """
-        for line in self.lines:
-            if name in line.sides:
-                if isinstance(line, Circle):
-                    return line.perimeter
-                pieces = np.roll(line.points, -1, axis=0) - line.points
-                own = np.array([side == name for side in line.sides])
-                return float(np.hypot(*pieces[own].T).sum())
-        raise InputError(
-            f"there is no side {name!r}; the sides are {', '.join(self.side_names)}."
+        line = self._line_with((name,))
+        own = np.array([side == name for side in line.sides])
+        return float(line.lengths[own].sum())
+
+    def _line_with(self, sides: tuple[str, ...]) -> Polygon:
+        for line in self.boundaries:
+            if all(side in line.sides for side in sides):
+                return line
+        missing = [side for side in sides if side not in self.side_names]
+        what = (
+            f"there is no side {missing[0]!r}"
+            if missing
+            else (f"sides {sides[0]!r} and {sides[-1]!r} are not on one line")
         )
+        raise InputError(f"{what}; the sides are {', '.join(self.side_names)}.")
+
+    def _replaced(self, line: Polygon, sides: tuple[str, ...]) -> "Outline":
+        old = self._line_with(sides)
+        number = next(i for i, own in enumerate(self.boundaries) if own is old)
+        if number == 0:
+            return replace(self, rim=line)
+        holes = list(self.holes)
+        holes[number - 1] = line
+        return replace(self, holes=tuple(holes))
 
     def _check_names(self) -> None:
-        seen: dict[str, int] = {}
-        for number, line in enumerate(self.lines):
-            for name in line.sides:
-                if not isinstance(name, str) or not name or name != name.strip():
-                    raise InputError(
-                        f"a side is called {name!r}; a name is text of at least one "
-                        "character, with no space around it."
-                    )
-                if seen.setdefault(name, number) != number:
-                    raise InputError(
-                        f"side name {name!r} stands on two closed lines; the rim and "
-                        "each hole need names of their own."
-                    )
+        seen: dict[str, object] = {}
+        named: list[tuple[str, object, str]] = []
+        for number, line in enumerate(self.boundaries):
+            named += [(name, number, "side") for name in line.sides]
+        inside: list[tuple[str, Sequence[Zone | Seam | Mark]]] = [
+            ("zone", self.zones),
+            ("seam", self.seams),
+            ("mark", self.marks),
+        ]
+        for kind, items in inside:
+            named += [(item.name, (kind, i), kind) for i, item in enumerate(items)]
+        for name, owner, kind in named:
+            if not isinstance(name, str) or not name or name != name.strip():
+                raise InputError(
+                    f"a {kind} is called {name!r}; a name is text of at least one "
+                    "character and no space around it."
+                )
+            if seen.setdefault(name, owner) == owner:
+                continue
+            if kind == "side" and isinstance(seen[name], int):
+                raise InputError(
+                    f"side name {name!r} stands on two closed lines; the rim and each "
+                    "hole need names of their own."
+                )
+            raise InputError(
+                f"{kind} {name!r} has the name of something else; sides, zones, seams "
+                "and marks need names of their own."
+            )
+
+    def _check_zones(self, least: float) -> None:
+        rim = self.boundaries[0].region.buffer(least)
+        for zone in self.zones:
+            region = zone.shape.line.region
+            if not rim.covers(region):
+                outside = region.difference(rim).representative_point().coords[0]
+                raise InputError(
+                    f"zone {zone.name!r} lies outside the outline near {at(outside)}; "
+                    "draw it within."
+                )
+            if region.intersection(self.region).area <= least * self.size:
+                raise InputError(f"zone {zone.name!r} lies in a hole; move it.")
+        for a, b in combinations(self.zones, 2):
+            common = a.shape.line.region.intersection(b.shape.line.region)
+            if common.area > least * self.size:
+                place = common.representative_point().coords[0]
+                raise InputError(
+                    f"zones {a.name!r} and {b.name!r} overlap near {at(place)}; zones "
+                    "may share edges but not areas."
+                )
+
+    def _check_seams_and_marks(self, least: float) -> None:
+        import shapely
+
+        plate = self.region.buffer(least)
+        for seam in self.seams:
+            if not seam.path.is_simple:
+                raise InputError(
+                    f"seam {seam.name!r} crosses itself; draw it as two seams."
+                )
+            if not plate.covers(seam.path):
+                outside = seam.path.difference(plate).interpolate(0.5, normalized=True)
+                raise InputError(
+                    f"seam {seam.name!r} leaves the plate near {at(outside.coords[0])};"
+                    " end it on the boundary."
+                )
+        for mark in self.marks:
+            if not all(math.isfinite(c) for c in mark.at) or not plate.covers(
+                shapely.Point(mark.at)
+            ):
+                raise InputError(
+                    f"mark {mark.name!r} at {at(mark.at)} is not on the plate; it lies "
+                    "outside the outline or in a hole."
+                )
 
 
-def _check_inside(rim: ClosedLine, hole: ClosedLine, number: int) -> None:
+def _check_inside(rim: Polygon, hole: Polygon, number: int, least: float) -> None:
     """Refuse a hole that is not strictly inside the rim."""
-    gap, place = _gap_inside(rim, hole)
-    if gap > SNAP * rim.size:
+    import shapely
+
+    gap = shapely.shortest_line(rim.region.exterior, hole.region.exterior)
+    inside = rim.region.contains(hole.region)
+    if inside and gap.length > least:
         return
-    how = "touches" if abs(gap) <= SNAP * rim.size else "crosses or lies outside"
+    touches = rim.region.buffer(least).contains(hole.region)
+    how = "touches" if touches else "crosses or lies outside"
     raise InputError(
-        f"hole {number} ({hole.sides[0]!r}) {how} the outline near {_at(place)}; a "
-        "hole must lie strictly inside the plate. Move or shrink it, or cut the notch "
-        "into the outline."
+        f"hole {number} ({hole.sides[0]!r}) {how} the outline near {at(gap.coords[0])};"
+        " a hole must lie strictly inside the plate. Move or shrink it, or cut the "
+        "notch into the outline."
     )
 
 
-def _gap_inside(rim: ClosedLine, hole: ClosedLine) -> tuple[float, Any]:
-    """Smallest distance from hole to rim (negative: outside) and where, both in m."""
-    import shapely
-
-    if isinstance(rim, Circle):
-        points = _support_points(hole, rim.centre)
-        reach = np.hypot(*(points - rim.centre).T)
-        k = int(reach.argmax())
-        return rim.radius - float(reach[k]), points[k]
-    if isinstance(hole, Circle):
-        centre = shapely.Point(hole.centre)
-        line = shapely.shortest_line(rim.region.exterior, centre)
-        sign = 1.0 if rim.region.contains(centre) else -1.0
-        return sign * line.length - hole.radius, line.coords[0]
-    line = shapely.shortest_line(rim.region.exterior, hole.region.exterior)
-    if rim.region.contains(hole.region):
-        return line.length, line.coords[0]
-    touches = rim.region.contains(hole.region.buffer(-SNAP * rim.size))
-    return 0.0 if touches else -rim.size, line.coords[0]
-
-
-def _support_points(line: ClosedLine, away_from: tuple[float, float]) -> Floats:
-    """Points of a closed line that may be its farthest from a point, (k, 2)."""
-    if isinstance(line, Polygon):
-        return line.points
-    arm = np.subtract(line.centre, away_from)
-    length = float(np.hypot(*arm))
-    direction = arm / length if length > 0.0 else np.array([1.0, 0.0])
-    return (np.asarray(line.centre) + line.radius * direction)[None]
-
-
 def _check_apart(
-    a: ClosedLine, b: ClosedLine, numbers: tuple[int, int], least: float
+    a: Polygon, b: Polygon, numbers: tuple[int, int], least: float
 ) -> None:
     """Refuse two holes that overlap or touch."""
     import shapely
 
-    shapes = [
-        shapely.Point(line.centre) if isinstance(line, Circle) else line.region
-        for line in (a, b)
-    ]
-    radii = [line.radius if isinstance(line, Circle) else 0.0 for line in (a, b)]
-    line = shapely.shortest_line(*shapes)
-    if line.length - sum(radii) > least:
+    line = shapely.shortest_line(a.region, b.region)
+    if line.length > least:
         return
-    # In the middle of what both cover of the line between them.
-    share = 0.5 * (line.length + radii[0] - radii[1])
-    place = line.interpolate(min(max(share, 0.0), line.length)).coords[0]
     raise InputError(
         f"holes {numbers[0]} ({a.sides[0]!r}) and {numbers[1]} ({b.sides[0]!r}) "
-        f"overlap or touch near {_at(place)}; move them apart, or draw them as one "
-        "hole."
+        f"overlap or touch near {at(line.coords[0])}; move them apart, or draw them as "
+        "one hole."
     )
-
-
-def _as_points(points: ArrayLike) -> Floats:
-    """Copy what a user gives for points."""
-    with contextlib.suppress(TypeError, ValueError):
-        if np.asarray(points).dtype.kind in "iufO":  # no text, no complex numbers
-            return read_only_floats(points)
-    raise InputError(
-        f"the points of a polygon are {reprlib.repr(points)}; give pairs (x, y) of "
-        "numbers in m."
-    )
-
-
-def _as_names(names: Sequence[str]) -> tuple[str, ...]:
-    """Copy what a user gives for the names of the sides."""
-    if isinstance(names, str) or not isinstance(names, Iterable):
-        raise InputError(
-            f"the side names of a polygon are {names!r}; give a list with a name for "
-            "each piece."
-        )
-    # Names from a numpy array are made plain: messages show them.
-    return tuple(str(name) if isinstance(name, str) else name for name in names)
-
-
-def _at(point: Any) -> str:
-    return f"({point[0]:.6g}, {point[1]:.6g}) m"

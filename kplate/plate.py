@@ -4,16 +4,47 @@ import difflib
 import math
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 from types import MappingProxyType
 from typing import Any
 
 import numpy as np
 
+from kplate import chords
 from kplate.arrays import Floats
 from kplate.errors import InputError
 from kplate.materials import Isotropic
-from kplate.outline import BEND_TURN, Outline, Polygon
+from kplate.outline import Outline
+from kplate.polygon import Polygon, at
 from kplate.supports import FREE, SUPPORTS, Support
+
+# Between sides held alike, a smaller turn is a bend of a curve, not a corner (a simply
+# supported square with mid-side vertices 0.1 mm out would otherwise lose a third of w).
+BEND_TURN = math.radians(10.0)
+
+
+@dataclass(frozen=True, kw_only=True)
+class Section:
+    """What a zone is made of, where it differs from the plate.
+
+    Parameters
+    ----------
+    thickness : float, optional
+        Thickness in m, about the same middle plane; the plate's if left out.
+    material : Isotropic, optional
+        Material; the plate's if left out.
+    """
+
+    thickness: float | None = None
+    material: Isotropic | None = None
+
+    def __post_init__(self) -> None:
+        """Check the thickness."""
+        h = self.thickness
+        if h is not None and not (math.isfinite(h) and h > 0.0):
+            raise InputError(
+                f"the thickness of a zone is {h:g} m; it must be a positive number."
+            )
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -29,7 +60,10 @@ class Plate:
     material : Isotropic
         Its material.
     supports : mapping of str to Support
-        How each side is held, hole rims included; a side that is not named is free.
+        How each side is held, hole rims included, and seams and marks; what is not
+        named is free.
+    zones : mapping of str to Section
+        What zones of the outline are made of, where they differ.
     bend_turn : float
         Between sides held alike, a turn of less than this (rad) is a bend of a curve
         with one tangent, not a corner with two.
@@ -37,14 +71,16 @@ class Plate:
     Raises
     ------
     InputError
-        If the thickness is not positive, a support names no side, or a supported side
-        is a run of chords (three or more bends in a row).
+        If the thickness is not positive, a support names no side, seam or mark, a
+        section names no zone, or a supported side is a run of chords that may stand for
+        a curve.
     """
 
     outline: Outline
     thickness: float
     material: Isotropic
     supports: Mapping[str, Support] = field(default_factory=dict)
+    zones: Mapping[str, Section] = field(default_factory=dict)
     bend_turn: float = BEND_TURN
 
     def __post_init__(self) -> None:
@@ -62,37 +98,73 @@ class Plate:
         for name, support in supports.items():
             self._check_support(name, support)
         object.__setattr__(self, "supports", MappingProxyType(supports))
-        for line in self.outline.lines:
-            if isinstance(line, Polygon):
-                self._check_chords(line)
+        zones = dict(self.zones)
+        for name in zones:
+            if name not in self.outline.zone_names:
+                raise InputError(
+                    f"unknown zone {name!r}; the zones are "
+                    f"{', '.join(self.outline.zone_names) or 'none'}."
+                )
+        object.__setattr__(self, "zones", MappingProxyType(zones))
+        for line in self.outline.boundaries:
+            self._check_chords(line)
 
     def __getstate__(self) -> dict[str, Any]:
         """State to copy or send to another process, which takes no read-only views."""
-        return {**self.__dict__, "supports": dict(self.supports)}
+        plain = {"supports": dict(self.supports), "zones": dict(self.zones)}
+        return {**self.__dict__, **plain}
 
     def __setstate__(self, state: dict[str, Any]) -> None:
         """Restore what `__getstate__` gave."""
-        supports = MappingProxyType(state["supports"])
-        self.__dict__.update(state, supports=supports)
+        for key in ("supports", "zones"):
+            state = {**state, key: MappingProxyType(state[key])}
+        self.__dict__.update(state)
 
-    def support(self, side: str) -> Support:
-        """How a side is held."""
-        return self.supports.get(side, FREE)
+    def support(self, name: str) -> Support:
+        """How a side, seam or mark is held."""
+        return self.supports.get(name, FREE)
+
+    @cached_property
+    def sections(self) -> tuple[tuple[float, Isotropic], ...]:
+        """Thickness and material of the plate around the zones, then of each zone."""
+        found = [(self.thickness, self.material)]
+        for name in self.outline.zone_names:
+            own = self.zones.get(name, Section())
+            found.append(
+                (own.thickness or self.thickness, own.material or self.material)
+            )
+        return tuple(found)
+
+    @cached_property
+    def rigidities(self) -> Floats:
+        """Moments per curvature of each section, (n_sections, 3, 3) in N m."""
+        return np.stack([material.rigidity(h) for h, material in self.sections])
 
     @property
     def rigidity(self) -> Floats:
-        """Moments per curvature, (3, 3) in N m."""
+        """Moments per curvature of the plate around the zones, (3, 3) in N m."""
         return self.material.rigidity(self.thickness)
 
     @property
+    def thicknesses(self) -> Floats:
+        """Thickness of each section in m."""
+        return np.array([h for h, _ in self.sections])
+
+    @property
     def mass(self) -> float | None:
-        """Mass in kg, or ``None`` where the material states no density."""
-        if self.material.density is None:
-            return None
-        return self.material.density * self.thickness * self.outline.area
+        """Mass in kg, or ``None`` where a material states no density."""
+        areas = [self.outline.zone_area(name) for name in self.outline.zone_names]
+        total = 0.0
+        for (h, material), area in zip(
+            self.sections, [self.outline.area - sum(areas), *areas], strict=True
+        ):
+            if material.density is None:
+                return None
+            total += material.density * h * area
+        return total
 
     def _check_support(self, name: str, support: Support) -> None:
-        names = self.outline.side_names
+        names = self.outline.names
         if name not in names:
             close = difflib.get_close_matches(str(name), names, n=1)
             hint = f" Did you mean {close[0]!r}?" if close else ""
@@ -107,15 +179,23 @@ class Plate:
             )
 
     def _check_chords(self, line: Polygon) -> None:
-        """Refuse a curve drawn by chords where its supports would clamp it."""
+        """Refuse chords that may stand for a curve where supports would clamp it."""
         held = [self.support(name) for name in line.sides]
         alike = [s if s.holds_deflection else None for s in held]
+        runs = chords.runs(line.points, line.sides, line.bulges, line.turns)
+        for run in runs if line.chords == "ask" else ():
+            if alike[run.first] is not None:
+                raise InputError(
+                    f"side {line.sides[run.first]!r} is {held[run.first].name} and has "
+                    f"{run.pieces} pieces from {at(line.points[run.first])} that turn "
+                    f"by {math.degrees(abs(run.turn)):.3g} degrees each on a circle; "
+                    'say whether they are an "arc" or a "polygon" (chords).'
+                )
         for i in _bend_runs(line, alike, self.bend_turn):
-            x, y = line.points[i]
             raise InputError(
-                f"side {line.sides[i]!r} is {held[i].name} and "
-                f"bends at three or more vertices in a row from ({x:.6g}, {y:.6g}) m: "
-                "a curve drawn by chords. State a circle, or drop vertices until each "
+                f"side {line.sides[i]!r} is {held[i].name} and bends at three or more "
+                f"vertices in a row from {at(line.points[i])}: a curve drawn by "
+                "chords. State it by arcs, as an ellipse, or drop vertices until each "
                 "turn is a corner."
             )
 

@@ -21,8 +21,8 @@ from kplate import chords, curves
 from kplate.arrays import Bools, Floats, read_only_floats
 from kplate.errors import InputError
 
-# Lengths below this share of the size are no lengths: points coincide, a hole touches, a
-# vertex is not meant to be off the straight line between its neighbours.
+# Lengths below this share of the size are no lengths: points coincide, a hole touches,
+# a vertex is not meant to be off the straight line between its neighbours.
 SNAP = 1e-6
 # A vertex that is off the line by no more than this share is on it, but for round-off.
 STRAIGHT = 1e-12
@@ -185,6 +185,75 @@ class Polygon:
         bulges = np.concatenate([self.bulges[:piece], parts, self.bulges[piece + 1 :]])
         sides = (*self.sides[:piece], *names, *self.sides[piece + 1 :])
         return replace(self, points=points, sides=sides, bulges=bulges)
+
+    def fractions(
+        self, side: str, between: tuple[tuple[float, float], tuple[float, float]]
+    ) -> tuple[float, float]:
+        """Shares of a side's length at its points nearest to two given ones."""
+        pieces = self._stretch(side)
+        starts = np.concatenate([[0.0], np.cumsum(self.lengths[pieces])])
+        shares = []
+        for point in as_points(between):
+            off = curves.distances(
+                point[None], self.points[pieces], self.ends[pieces], self.bulges[pieces]
+            )[0]
+            k = int(np.argmin(off))
+            own = pieces[k : k + 1]
+            share = curves.nearest_share(
+                point,
+                self.points[own[0]],
+                self.ends[own[0]],
+                float(self.bulges[own[0]]),
+            )
+            shares.append((starts[k] + share * self.lengths[own[0]]) / starts[-1])
+        low, high = sorted(float(share) for share in shares)
+        return low, high
+
+    def parted(self, side: str, name: str, fractions: tuple[float, float]) -> "Polygon":
+        """Give the part of a side between two shares of its length its own name."""
+        low, high = fractions
+        if not (0.0 <= low < high <= 1.0):
+            raise InputError(
+                f"the part {name!r} of side {side!r} runs from {low:g} to {high:g} of "
+                "its length; it must run from a smaller to a larger share, 0 to 1."
+            )
+        line: Polygon = self
+        for share in (low, high):
+            line = line._cut_side(side, share)
+        pieces = line._stretch(side)
+        ends = np.cumsum(line.lengths[pieces]) / line.lengths[pieces].sum()
+        middle = ends - 0.5 * line.lengths[pieces] / line.lengths[pieces].sum()
+        own = pieces[(middle > low) & (middle < high)]
+        sides = list(line.sides)
+        for piece in own:
+            sides[piece] = name
+        return replace(line, sides=tuple(sides))
+
+    def _cut_side(self, side: str, share: float) -> "Polygon":
+        """Put a vertex at a share of a side's length, where none is yet."""
+        pieces = self._stretch(side)
+        lengths = self.lengths[pieces]
+        starts = np.concatenate([[0.0], np.cumsum(lengths)])
+        place = share * starts[-1]
+        k = min(int(np.searchsorted(starts, place, side="right")) - 1, len(pieces) - 1)
+        within = (place - starts[k]) / lengths[k]
+        if min(within, 1.0 - within) * lengths[k] <= SNAP * self.size:
+            return self
+        return self.split(int(pieces[k]), float(within), (side, side))
+
+    def _stretch(self, side: str) -> Any:
+        """Pieces of a side in order, from its start."""
+        own = np.array([name == side for name in self.sides])
+        n = len(own)
+        if own.all():
+            return np.arange(n)
+        heads = np.flatnonzero(own & ~np.roll(own, 1))
+        if len(heads) != 1:
+            raise InputError(
+                f"side {side!r} is in {len(heads)} stretches; give each a name of its "
+                "own before parting one."
+            )
+        return (heads[0] + np.arange(int(own.sum()))) % n
 
     def corner(self, sides: tuple[str, str]) -> int:
         """Find the vertex at which two sides meet, in either order.

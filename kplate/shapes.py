@@ -1,6 +1,7 @@
 """Shapes that rims and holes have: each gives its boundary as a `Polygon`."""
 
 import math
+from abc import ABC, abstractmethod
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -14,8 +15,32 @@ from kplate.errors import InputError
 from kplate.polygon import FARTHEST, Polygon
 
 
+class Shape(ABC):
+    """What all shapes take from their boundary."""
+
+    @property
+    @abstractmethod
+    def line(self) -> Polygon:
+        """Its boundary."""
+
+    @property
+    def sides(self) -> tuple[str, ...]:
+        """Names of its sides, each once."""
+        return tuple(dict.fromkeys(self.line.sides))
+
+    @property
+    def area(self) -> float:
+        """Enclosed area in m2."""
+        return self.line.area
+
+    @property
+    def perimeter(self) -> float:
+        """Length in m."""
+        return self.line.perimeter
+
+
 @dataclass(frozen=True, kw_only=True)
-class Circle:
+class Circle(Shape):
     """A full circle: one side without corners.
 
     Parameters
@@ -55,7 +80,7 @@ class Circle:
 
 
 @dataclass(frozen=True, kw_only=True)
-class Slot:
+class Slot(Shape):
     """A straight slot with round ends.
 
     Parameters
@@ -100,7 +125,7 @@ class Slot:
 
 
 @dataclass(frozen=True, kw_only=True)
-class Rectangle:
+class Rectangle(Shape):
     """A rectangle, its corners sharp or round.
 
     Parameters
@@ -152,7 +177,7 @@ class Rectangle:
 
 
 @dataclass(frozen=True, kw_only=True)
-class Ellipse:
+class Ellipse(Shape):
     """An ellipse, as arcs with one tangent where they meet.
 
     Parameters

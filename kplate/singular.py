@@ -2,20 +2,25 @@
 
 They follow from the statement alone, before anything is meshed: corners by Williams's
 exponent for their angle and the way their sides are held, changes of support along a
-straight side, and point forces. Moments there have no value to report.
+straight side, point supports, ends of supports inside, corners of a thickness step, and
+point forces. Moments there have no value to report.
 """
 
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import combinations
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from kplate import corners
-from kplate.loads import Case, PointForce
-from kplate.outline import Polygon
+from kplate.loads import Case, PointForce, PointMoment
 from kplate.plate import Plate
+from kplate.polygon import Polygon
 from kplate.supports import Support
+
+Place = tuple[float, float]
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -91,9 +96,8 @@ class Excluded:
 def plate_corners(plate: Plate) -> tuple[Corner, ...]:
     """Corners and changes of support, rim first."""
     found: list[Corner] = []
-    for line in plate.outline.lines:
-        if isinstance(line, Polygon):
-            found += _line_corners(plate, line, hole=line is not plate.outline.rim)
+    for number, line in enumerate(plate.outline.boundaries):
+        found += _line_corners(plate, line, hole=number > 0)
     return tuple(found)
 
 
@@ -121,13 +125,66 @@ def excluded_places(
         for corner in plate_corners(plate)
         if corner.unbounded
     ]
+    inside = [*_held_inside(plate), *_steps(plate)]
+    found += [Excluded(place=p, radius=r, reason=why) for p, why in inside]
     for case in cases:
-        found += [
-            Excluded(place=load.at, radius=r, reason="point force", case=case.name)
-            for load in case.loads
-            if isinstance(load, PointForce)
-        ]
+        for load in case.loads:
+            if isinstance(load, PointForce | PointMoment):
+                what = "point force" if isinstance(load, PointForce) else "point moment"
+                found.append(
+                    Excluded(place=load.at, radius=r, reason=what, case=case.name)
+                )
     return tuple(found)
+
+
+def _held_inside(plate: Plate) -> list[tuple[Place, str]]:
+    """Point supports, and ends, corners and crossings of held seams."""
+    found: list[tuple[Place, str]] = []
+    for mark in plate.outline.marks:
+        support = plate.support(mark.name)
+        if support.holds_deflection or support.holds_slope:
+            found.append((mark.at, f"point support {mark.name}"))
+    held = [
+        seam
+        for seam in plate.outline.seams
+        if plate.support(seam.name).holds_deflection
+        or plate.support(seam.name).holds_slope
+    ]
+    for seam in held:
+        ends = (seam.points[0], seam.points[-1])
+        if not np.array_equal(*ends):
+            found += [(_pair(end), f"end of the support {seam.name}") for end in ends]
+        found += [
+            (_pair(point), f"corner of the support {seam.name}")
+            for point, turn in zip(seam.points[1:-1], seam.turns, strict=True)
+            if abs(turn) >= plate.bend_turn
+        ]
+    for a, b in combinations(held, 2):
+        common = a.path.intersection(b.path)
+        found += [
+            (_pair(point.coords[0]), f"supports {a.name} and {b.name} meet")
+            for point in getattr(common, "geoms", [common])
+            if point.geom_type == "Point"
+        ]
+    return found
+
+
+def _steps(plate: Plate) -> list[tuple[Place, str]]:
+    """Corners of zones with a section of their own: the exponent there is not known."""
+    found = []
+    for number, zone in enumerate(plate.outline.zones, start=1):
+        if plate.sections[number] == plate.sections[0]:
+            continue
+        line = zone.shape.line
+        for point, turn in zip(line.points, line.turns, strict=True):
+            if abs(turn) >= plate.bend_turn:
+                found.append((_pair(point), f"corner of the step at zone {zone.name}"))
+    return found
+
+
+def _pair(point: ArrayLike) -> Place:
+    x, y = np.asarray(point, dtype=float)
+    return float(x), float(y)
 
 
 def _line_corners(plate: Plate, line: Polygon, *, hole: bool) -> list[Corner]:

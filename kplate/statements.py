@@ -25,7 +25,8 @@ from kplate.loads import (
     SelfWeight,
 )
 from kplate.materials import STOCK, Isotropic
-from kplate.outline import Circle, ClosedLine, Outline, Polygon
+from kplate.outline import Outline
+from kplate.polygon import Polygon
 from kplate.quantities import (
     angle,
     bare_number,
@@ -34,6 +35,7 @@ from kplate.quantities import (
     quantity,
     stated_unit,
 )
+from kplate.shapes import Circle, ClosedLine
 from kplate.supports import SUPPORTS, Support
 from kplate.units import Unit
 

@@ -45,4 +45,13 @@ FREE = Support(
     name="free", holds_deflection=False, holds_slope=False, words="nothing held"
 )
 
-SUPPORTS = {support.name: support for support in (CLAMPED, SIMPLY_SUPPORTED, FREE)}
+GUIDED = Support(
+    name="guided",
+    holds_deflection=False,
+    holds_slope=True,
+    words="rotation held, w free: a line of symmetry",
+)
+
+SUPPORTS = {
+    support.name: support for support in (CLAMPED, SIMPLY_SUPPORTED, FREE, GUIDED)
+}

@@ -2,7 +2,6 @@
 
 from dataclasses import dataclass
 
-from kplate.outline import Circle
 from kplate.solution import Solution
 
 # Beyond, shear deformation matters: common practice for "thin".
@@ -23,7 +22,7 @@ class Validity:
     largest_deflection : float
         w/h: largest deflection of all cases over the thickness.
     smallest_hole : float or None
-        Radius over thickness of the smallest circular hole.
+        Smallest radius of a hole or of a hollow of the rim, over the thickness.
     held_in_plane : bool or None
         Whether the supports hold the edges in the plane of the plate; ``None`` where
         it is not stated.
@@ -111,11 +110,11 @@ def validity(solution: Solution, *, held_in_plane: bool | None = None) -> Validi
     Validity
     """
     plate = solution.plate
-    radii = [hole.radius for hole in plate.outline.holes if isinstance(hole, Circle)]
+    radius = plate.outline.smallest_radius
     return Validity(
         slenderness=plate.thickness / plate.outline.span,
         largest_deflection=abs(solution.peak("deflection").value) / plate.thickness,
-        smallest_hole=min(radii) / plate.thickness if radii else None,
+        smallest_hole=None if radius is None else radius / plate.thickness,
         held_in_plane=held_in_plane,
         supported_all_round=all(
             plate.support(side).holds_deflection for side in plate.outline.rim.sides

@@ -13,8 +13,9 @@ from kplate.boundary import Constraints, constrain, free_motions, rigid_motions,
 from kplate.dofs import Numbering
 from kplate.materials import STEEL
 from kplate.mesh import Mesh
-from kplate.outline import Circle, Outline
+from kplate.outline import Outline
 from kplate.plate import Plate
+from kplate.shapes import Circle
 from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED
 
 C, S, F = CLAMPED, SIMPLY_SUPPORTED, FREE

@@ -14,6 +14,7 @@ from kplate import cli
 from kplate.check import check, new_panel, version
 from kplate.limits import Outcome
 from kplate.panel import read_panel
+import itertools
 
 MESHES = Path(__file__).parents[1] / "meshes"
 
@@ -215,10 +216,9 @@ def test_new_writes_a_panel_that_checks_and_keeps_what_is_there(tmp_path, capsys
     assert path.read_text("utf-8") == "precious"
     starter = new_panel(tmp_path / "starter.toml")
     lines = [s.strip() for s in starter.read_text("utf-8").splitlines()]
-    for before, line in zip(lines, lines[1:], strict=False):
+    for before, line in itertools.pairwise(lines):
         if "=" in line and not line.startswith("#"):
             assert "#" in line or before.startswith("#"), line
-
 
 
 def test_results_land_below_the_current_directory(tmp_path):

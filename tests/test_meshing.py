@@ -20,7 +20,9 @@ from kplate.meshing import (
     refined_triangles,
     size_for,
 )
-from kplate.outline import Circle, Outline, Polygon
+from kplate.outline import Outline
+from kplate.polygon import Polygon
+from kplate.shapes import Circle
 
 SQUARE = np.array([(0.0, 0.0), (1.0, 0.0), (1.0, 1.0), (0.0, 1.0)])
 SIDES = ("south", "east", "north", "west")
@@ -167,7 +169,12 @@ def test_the_edges_around_a_circle_are_alike():
 @pytest.mark.parametrize("triangles", [1000, 5000])
 @pytest.mark.parametrize(
     "outline",
-    [PLATE, Outline.circle((0, 0), radius=2.0), Outline.polygon(SQUARE * (3.0, 0.5))],
+    [
+        PLATE,
+        HOLED,
+        Outline.circle((0, 0), radius=2.0),
+        Outline.polygon(SQUARE * (3.0, 0.5)),
+    ],
 )
 def test_a_mesh_has_about_as_many_triangles_as_asked_for(outline, triangles):
     size = size_for(outline, triangles)

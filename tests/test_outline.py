@@ -11,7 +11,9 @@ from hypothesis import assume, given
 from hypothesis import strategies as st
 
 from kplate.errors import InputError
-from kplate.outline import Circle, Outline, Polygon
+from kplate.outline import Outline
+from kplate.polygon import Polygon
+from kplate.shapes import Circle
 
 SQUARE = np.array([(0.0, 0.0), (1.0, 0.0), (1.0, 1.0), (0.0, 1.0)])
 L_SHAPE = np.array([(0, 0), (4, 0), (4, 1), (2, 1), (2, 2), (0, 2)])

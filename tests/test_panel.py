@@ -21,8 +21,9 @@ from kplate.loads import (
     SelfWeight,
 )
 from kplate.materials import GLASS, STEEL
-from kplate.outline import Circle, Polygon
 from kplate.panel import Panel, read_panel
+from kplate.polygon import Polygon
+from kplate.shapes import Circle
 from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED
 
 

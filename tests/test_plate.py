@@ -9,8 +9,10 @@ import pytest
 
 from kplate.errors import InputError
 from kplate.materials import STEEL, Isotropic
-from kplate.outline import Circle, Outline, Polygon
+from kplate.outline import Outline
 from kplate.plate import Plate
+from kplate.polygon import Polygon
+from kplate.shapes import Circle
 from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED, Support
 
 SIDES = ("south", "east", "north", "west")

@@ -10,9 +10,10 @@ from plates import SIDES, grid, rectangle, solved
 from kplate.adapt import solve
 from kplate.loads import Case, Hydrostatic, PointForce, Pressure, RectanglePatch
 from kplate.materials import STEEL
-from kplate.outline import Circle, Outline
+from kplate.outline import Outline
 from kplate.plate import Plate
 from kplate.reactions import hold_down
+from kplate.shapes import Circle
 from kplate.supports import CLAMPED, SIMPLY_SUPPORTED
 
 DOWN = oracles.LinearPressure(at_origin=-1.0)

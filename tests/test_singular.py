@@ -11,8 +11,10 @@ import pytest
 
 from kplate.loads import Case, PointForce, Pressure
 from kplate.materials import STEEL, Isotropic
-from kplate.outline import Circle, Outline, Polygon
+from kplate.outline import Outline
 from kplate.plate import Plate
+from kplate.polygon import Polygon
+from kplate.shapes import Circle
 from kplate.singular import Excluded, excluded_places, plate_corners
 from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED
 

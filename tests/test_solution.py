@@ -9,8 +9,9 @@ from kplate.adapt import solve
 from kplate.errors import InputError
 from kplate.loads import Case, DiscPatch, PointForce, Pressure, RectanglePatch
 from kplate.materials import STEEL
-from kplate.outline import Circle, Outline
+from kplate.outline import Outline
 from kplate.plate import Plate
+from kplate.shapes import Circle
 from kplate.supports import CLAMPED, SIMPLY_SUPPORTED
 
 UP = oracles.LinearPressure(at_origin=1.0)

@@ -23,8 +23,9 @@ from kplate.loads import (
     SelfWeight,
 )
 from kplate.materials import STEEL
-from kplate.outline import Circle, Outline
+from kplate.outline import Outline
 from kplate.plate import Plate
+from kplate.shapes import Circle
 from kplate.solve.static import solve_static
 from kplate.supports import CLAMPED, SIMPLY_SUPPORTED
 

@@ -7,7 +7,7 @@ from plates import grid, rectangle, solved
 
 from kplate.adapt import solve
 from kplate.loads import Pressure
-from kplate.outline import Circle
+from kplate.shapes import Circle
 from kplate.supports import CLAMPED, SIMPLY_SUPPORTED
 from kplate.validity import validity
 

@@ -6,15 +6,18 @@ pixels; what is drawn stands in the data coordinates of its axes, `per_pixel` of
 pixel.
 """
 
+import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 
+from kplate import curves
 from kplate.arrays import Floats
-from kplate.outline import Circle, ClosedLine, Outline
+from kplate.outline import Outline
 from kplate.output.lettering import Hand, Names, Spot, halo, upright
+from kplate.polygon import Polygon
 from kplate.supports import Support
 
 INK, FAINT = "#1a1a1a", "#6b6b6b"
@@ -24,7 +27,7 @@ HATCH_STEP = 8.0
 END = 16.0  # that a shortened name stays off the ends of its side
 MOST_NAMES = 60  # more sides than that cannot be told apart on a picture
 SIDE_NAME = Hand(size=9.5, style="italic")
-_CIRCLE_PIECES = 180
+ARC_STEP = math.radians(2.0)  # from chord to chord of an arc
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -64,20 +67,27 @@ def pieces(outline: Outline, size: float) -> list[Piece]:
     """Pieces of all sides, lengths in units of `size` m."""
     return [
         piece
-        for line in outline.lines
-        for piece in _line_pieces(line, size, hole=line is not outline.rim)
+        for number, line in enumerate(outline.boundaries)
+        for piece in _line_pieces(line, size, hole=number > 0)
     ]
 
 
-def _line_pieces(line: ClosedLine, size: float, *, hole: bool) -> Iterator[Piece]:
-    if isinstance(line, Circle):
-        angle = np.linspace(0.0, 2.0 * np.pi, _CIRCLE_PIECES + 1)
-        rim = line.radius * np.column_stack([np.cos(angle), np.sin(angle)])
-        yield _piece(line.name, (line.centre + rim) / size, hole=hole)
-        return
-    ends = np.roll(line.points, -1, axis=0)
-    for side, start, end in zip(line.sides, line.points, ends, strict=True):
-        yield _piece(side, np.array([start, end]) / size, hole=hole)
+def _line_pieces(line: Polygon, size: float, *, hole: bool) -> Iterator[Piece]:
+    """Pieces of a line; arcs of one side that run on are drawn as one."""
+    runs: list[list[int]] = []
+    for i, bulge in enumerate(line.bulges):
+        runs_on = bulge != 0.0 and line.bulges[i - 1] != 0.0 and line.straight[i]
+        if runs and runs_on and line.sides[i] == line.sides[i - 1]:
+            runs[-1].append(i)
+        else:
+            runs.append([i])
+    for run in runs:
+        ends = line.ends[run]
+        points, _ = curves.flattened(
+            line.points[run], ends, line.bulges[run], step=ARC_STEP
+        )
+        drawn = np.vstack([points, ends[-1:]])
+        yield _piece(line.sides[run[0]], drawn / size, hole=hole)
 
 
 def _piece(side: str, points: Floats, *, hole: bool) -> Piece:

@@ -26,10 +26,10 @@ from kplate.loads import (
     RectanglePatch,
     SelfWeight,
 )
-from kplate.outline import Circle, ClosedLine
 from kplate.output.vtk import array_name
 from kplate.plate import Plate
 from kplate.reactions import CornerForce, Reactions, Resultant, SideReaction
+from kplate.shapes import Circle, ClosedLine
 from kplate.solution import Solution
 from kplate.values import Value
 
@@ -216,20 +216,24 @@ def _statement(solution: Solution) -> dict[str, Any]:
     }
 
 
-def _line(line: ClosedLine) -> dict[str, Any]:
-    """A closed line as stated."""
-    if isinstance(line, Circle):
+def _line(shape: ClosedLine) -> dict[str, Any]:
+    """A closed line: a circle as stated, everything else by its pieces."""
+    if isinstance(shape, Circle):
         return {
             "shape": "circle",
-            "centre [m]": _numbers(line.centre),
-            "radius [m]": _number(line.radius),
-            "sides": list(line.sides),
+            "centre [m]": _numbers(shape.centre),
+            "radius [m]": _number(shape.radius),
+            "sides": list(shape.sides),
         }
-    return {
-        "shape": "polygon",
+    line = shape.line
+    found: dict[str, Any] = {
+        "shape": type(shape).__name__.lower(),
         "points [m]": [_numbers(point) for point in line.points],
         "sides": list(line.sides),
     }
+    if (line.bulges != 0.0).any():
+        found["bulges"] = _numbers(line.bulges)
+    return found
 
 
 def _material(plate: Plate) -> dict[str, Any]:

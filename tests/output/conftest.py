@@ -5,8 +5,9 @@ import pytest
 from kplate.adapt import solve
 from kplate.loads import Case, PointForce, Pressure, SelfWeight
 from kplate.materials import STEEL
-from kplate.outline import Circle, Outline
+from kplate.outline import Outline
 from kplate.plate import Plate
+from kplate.shapes import Circle
 from kplate.supports import CLAMPED, SIMPLY_SUPPORTED
 
 

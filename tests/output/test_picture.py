@@ -16,12 +16,13 @@ from kplate.adapt import solve
 from kplate.errors import InputError
 from kplate.loads import Case, Pressure
 from kplate.materials import ALUMINIUM
-from kplate.outline import Circle, Outline
+from kplate.outline import Outline
 from kplate.output import plan, shape
 from kplate.output.contours import bands, draw_bands
 from kplate.output.lettering import Hand, Names, Spot, upright
 from kplate.output.picture import HEIGHT, WIDTH, figure, write_picture
 from kplate.plate import Plate
+from kplate.shapes import Circle
 from kplate.supports import CLAMPED, SIMPLY_SUPPORTED, Support
 from kplate.units import DisplayUnits, Unit
 

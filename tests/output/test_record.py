@@ -25,7 +25,7 @@ from kplate.loads import (
     SelfWeight,
 )
 from kplate.materials import STEEL
-from kplate.outline import Circle, Outline, Polygon
+from kplate.outline import Outline
 from kplate.output.record import (
     COLUMNS,
     LOADS,
@@ -36,6 +36,8 @@ from kplate.output.record import (
 )
 from kplate.output.vtk import write_vtk
 from kplate.plate import Plate
+from kplate.polygon import Polygon
+from kplate.shapes import Circle
 from kplate.supports import SIMPLY_SUPPORTED
 
 
