@@ -25,8 +25,11 @@ from kplate.limits import DeflectionLimit, Judgement, Limits, StressLimit, Verdi
 from kplate.loads import (
     Case,
     DiscPatch,
+    EdgeMoment,
     Hydrostatic,
+    LineForce,
     PointForce,
+    PointMoment,
     Pressure,
     PressureField,
     RectanglePatch,
@@ -47,12 +50,12 @@ from kplate.output.record import solution_record, write_json, write_reactions
 from kplate.output.view import view
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
-from kplate.plate import Plate
+from kplate.plate import Plate, Section
 from kplate.polygon import Polygon
 from kplate.recovery import principal_moments
 from kplate.shapes import Circle, Ellipse, Rectangle, Slot
 from kplate.solution import Solution
-from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED, Support
+from kplate.supports import CLAMPED, FREE, GUIDED, SIMPLY_SUPPORTED, Support
 from kplate.validity import Validity, validity
 from kplate.values import Value
 
@@ -61,6 +64,7 @@ __all__ = [
     "CLAMPED",
     "FREE",
     "GLASS",
+    "GUIDED",
     "SIMPLY_SUPPORTED",
     "STAINLESS_STEEL",
     "STEEL",
@@ -70,6 +74,7 @@ __all__ = [
     "Circle",
     "DeflectionLimit",
     "DiscPatch",
+    "EdgeMoment",
     "Ellipse",
     "Hydrostatic",
     "InputError",
@@ -78,17 +83,20 @@ __all__ = [
     "KplateError",
     "KplateWarning",
     "Limits",
+    "LineForce",
     "Mesh",
     "MeshError",
     "Outline",
     "Panel",
     "Plate",
     "PointForce",
+    "PointMoment",
     "Polygon",
     "Pressure",
     "PressureField",
     "Rectangle",
     "RectanglePatch",
+    "Section",
     "SelfWeight",
     "Slot",
     "Solution",

@@ -8,7 +8,8 @@ import math
 from collections.abc import Sequence
 
 from kplate.errors import InputError
-from kplate.loads import Case, Load
+from kplate.guard import mesh_guarded
+from kplate.loads import Case, DiscPatch, Load, RectanglePatch
 from kplate.meshing import mesh_outline, refined_triangles, size_for
 from kplate.plate import Plate
 from kplate.singular import excluded_places
@@ -19,6 +20,8 @@ TRIANGLES = 20_000
 # Edges at a place without a finite moment, as a share of the disc that is left out, so
 # that the rim of the disc, which is judged, lies several triangles from its centre.
 RIM_SHARE = 0.25
+# Edges at the centre of a patch, as a share of its smaller length.
+PATCH_SHARE = 0.125
 
 
 def solve(
@@ -93,23 +96,38 @@ def solve(
         size = size_for(plate.outline, TRIANGLES if triangles is None else triangles)
     if progress is not None:
         progress("mesh", 0.0)
-    places = excluded_places(plate, cases, excluded_radius)
-    fine = [
-        (place.place, _rim_size(place.radius, size, plate.outline.area / len(places)))
-        for place in places
-    ]
-    mesh = mesh_outline(plate.outline, size=size, fine=fine)
+    fine = _fine(plate, cases, size, excluded_radius)
+    outline = plate.outline
+    inside = outline.zones or outline.seams or outline.marks
+    mesh = (mesh_guarded if inside else mesh_outline)(outline, size=size, fine=fine)
     state = solve_static(plate, mesh, cases, progress=progress)
     return Solution(state=state, excluded_radius=excluded_radius)
 
 
-def _rim_size(radius: float, size: float, area: float) -> float:
-    """Length of the edges in m at a place without a finite moment.
+def _fine(
+    plate: Plate, cases: Sequence[Case], size: float, radius: float | None
+) -> list[tuple[tuple[float, float], float]]:
+    """Places to refine, with the length of the edges there in m.
 
-    Each place may take as many triangles more as its share of the plate's area has.
+    They are those without a finite moment, and patches. Each may take as many triangles
+    more as its share of the plate's area has.
     """
-    most = 4.0 / math.sqrt(3.0) * area / size**2
-    least = RIM_SHARE * radius
+    wanted = [
+        (place.place, RIM_SHARE * place.radius)
+        for place in excluded_places(plate, cases, radius)
+    ]
+    for case in cases:
+        for load in case.loads:
+            if isinstance(load, RectanglePatch):
+                wanted.append((load.centre, PATCH_SHARE * min(load.size)))
+            elif isinstance(load, DiscPatch):
+                wanted.append((load.centre, 2.0 * PATCH_SHARE * load.radius))
+    most = 4.0 / math.sqrt(3.0) * plate.outline.area / (size**2 * max(len(wanted), 1))
+    return [(place, _allowed(least, size, most)) for place, least in wanted]
+
+
+def _allowed(least: float, size: float, most: float) -> float:
+    """The least size, or a larger one that needs no more triangles than `most`."""
     while least < size and refined_triangles(size / least) > most:
         least *= 1.25
     return least

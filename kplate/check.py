@@ -13,19 +13,21 @@ from kplate.files import replacing
 from kplate.limits import Outcome, Verdict, governing
 from kplate.output.picture import write_picture
 from kplate.output.record import solution_record, write_json, write_reactions
-from kplate.output.tables import Line, legend, values_table
+from kplate.output.tables import Line, legend, reactions_table, values_table
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
-from kplate.reactions import CornerForce
+from kplate.reactions import CornerForce, Resultant
 from kplate.solution import Solution
 from kplate.solve.static import Progress
+from kplate.supports import Support
 from kplate.validity import FLAG, Validity, validity
 from kplate.values import Value
 
 CAUTION = (
-    "Results are for a qualified engineer's judgement; local codes and licensed "
-    "practice decide."
+    "Not checked: welds, bolts, the frame, fatigue, impact, buckling. Results are for "
+    "a qualified\nengineer's judgement; local codes and licensed practice decide."
 )
+SLIGHT = 0.01  # share of the largest line reaction below which uplift is not listed
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -66,6 +68,7 @@ class Checked:
         parts = [
             "\n".join(_heading(self.panel)),
             values_table(self.lines),
+            reactions_table(_supports(self.solution), self.panel.units),
             "\n".join(_closing(self)),
         ]
         return "\n\n".join(part for part in parts if part)
@@ -106,16 +109,27 @@ def check(
     lines = tuple(_lines(panel, solution))
     judgements = tuple(j for line in lines if (j := line.judgement) is not None)
     places = {excluded.place for excluded in solution.excluded}
+    if panel.limits.stress is None:
+        places = set()
+    if panel.limits.hold_down is not None:
+        places |= {
+            corner.corner.place
+            for case in solution.cases
+            for corner in solution.reactions(case=case).corners
+            if np.isnan(corner.force.value)
+        }
+    found = validity(solution, held_in_plane=panel.held_in_plane)
     verdict = Verdict(
         judgements=judgements,
-        to_judge=len(places) if panel.limits.stress is not None else 0,
+        to_judge=len(places),
+        flagged=not found.holds,
     )
     checked = Checked(
         panel=panel,
         solution=solution,
         lines=lines,
         verdict=verdict,
-        validity=validity(solution, held_in_plane=panel.held_in_plane),
+        validity=found,
     )
     if out is None:
         return checked
@@ -167,14 +181,21 @@ def _heading(panel: Panel) -> list[str]:
     if plate.mass is not None:
         panel_is += f", mass {plate.mass:.4g} kg"
     lines = [f"{title}   input {panel.digest}, kplate {version()}", panel_is]
-    by_support: dict[str, list[str]] = {}
-    for side in plate.outline.side_names:
-        by_support.setdefault(plate.support(side).words, []).append(side)
-    for side in plate.outline.side_names:
-        support = plate.support(side)
-        if support.words in by_support:
-            sides = by_support.pop(support.words)
-            lines.append(f"{support.name} ({support.words}): {', '.join(sides)}")
+    by_support: dict[Support, list[str]] = {}
+    for name in plate.outline.names:
+        by_support.setdefault(plate.support(name), []).append(name)
+    lines += [
+        f"{support.name} ({support.words}): {', '.join(names)}"
+        for support, names in by_support.items()
+    ]
+    lines += [
+        f"zone {name}: {_short(h, panel.units.deflection.size)} "
+        f"{panel.units.deflection.symbol} {material.name}"
+        for name, (h, material) in zip(
+            plate.outline.zone_names, plate.sections[1:], strict=True
+        )
+    ]
+    lines += plate.outline.notes
     bends = _bends(panel)
     if bends:
         degrees = np.degrees(plate.bend_turn)
@@ -182,11 +203,31 @@ def _heading(panel: Panel) -> list[str]:
             f"bends, turning less than {degrees:.3g} degrees, taken with one tangent: "
             f"{', '.join(bends)} {length.symbol}"
         )
+    lines += _stated(panel)
     if panel.tolerance is not None:
         lines.append(
             f"tolerance {100.0 * panel.tolerance:.3g} %: not used: bands not estimated"
         )
     return lines
+
+
+def _stated(panel: Panel) -> list[str]:
+    """Material and limits as they were stated."""
+    material, units = panel.plate.material, panel.units
+    words = [f"{material.name}: E {material.E / 1e9:.6g} GPa, nu {material.nu:g}"]
+    limits = panel.limits
+    if limits.deflection is not None:
+        how = f" ({limits.deflection.words})" if limits.deflection.words else ""
+        most = units.deflection.show(limits.deflection.at_most)
+        words.append(f"deflection at most {most}{how}")
+    if limits.stress is not None:
+        strength = units.stress.show(limits.stress.strength)
+        words.append(
+            f"{limits.stress.criterion} at most {strength} / {limits.stress.factor:g}"
+        )
+    held = {True: "yes", False: "no", None: "not stated"}[panel.held_in_plane]
+    words.append(f"held in plane: {held}")
+    return ["; ".join(words)]
 
 
 def _bends(panel: Panel) -> list[str]:
@@ -248,17 +289,54 @@ def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
         where="supports push " + ("up" if total > 0.0 else "down"),
     )
     pull, forces = solution.hold_down(case=case)
-    if forces or limits.hold_down is not None:
+    if forces or pull.reason or limits.hold_down is not None:
+        words = [_corner_words(solution, forces, case, size)] if forces else []
+        where = "; ".join([*words, *([pull.reason] if pull.reason else [])])
         yield Line(
             case=case,
             quantity="corner hold-down",
             value=pull,
             unit=units.force,
             limit=limits.hold_down,
-            where=_corner_words(solution, forces, case, size)
-            if forces
-            else "none needed",
+            where=where or "none needed",
         )
+    uplift, side = solution.side_uplift(case=case)
+    if uplift.value > SLIGHT * _largest_line_reaction(solution, case):
+        yield Line(
+            case=case,
+            quantity="side hold-down",
+            value=uplift,
+            unit=units.line_force,
+            where=f"{side} at {_at(uplift, panel)}",
+        )
+
+
+def _largest_line_reaction(solution: Solution, case: str) -> float:
+    sides = solution.reactions(case=case).sides
+    sizes = [np.nanmax(np.abs(side.line_reaction), initial=0.0) for side in sides]
+    return float(max(sizes, default=0.0))
+
+
+def _supports(
+    solution: Solution,
+) -> list[tuple[str, str, Resultant, float, float]]:
+    """What each side, seam and point support brings, case by case."""
+    rows = []
+    for case in solution.cases:
+        reactions = solution.reactions(case=case)
+        for side in reactions.sides:
+            known = side.line_reaction[~np.isnan(side.line_reaction)]
+            ends = (
+                (float(known.min()), float(known.max()))
+                if known.size
+                else (np.nan,) * 2
+            )
+            rows.append((case, side.side, side.resultant, *ends))
+        rows += [
+            (case, point.mark, point.resultant, np.nan, np.nan)
+            for point in reactions.points
+        ]
+    return rows
 
 
 def _corner_words(
@@ -293,8 +371,11 @@ def _closing(checked: Checked) -> list[str]:
             f"{length.symbol}{only}, radius {_short(excluded.radius, length.size)} "
             f"{length.symbol}: {excluded.reason}"
         )
-    for case in solution.cases:
+    for case, forces in zip(solution.cases, solution.state.forces.T, strict=True):
         reactions = solution.reactions(case=case)
+        if not forces.any():
+            lines.append(f"case {case} brings no load on the panel")
+            continue
         lines.append(
             f"balance of {case}: loads {_signed(reactions.load.force, panel)}, "
             f"supports {_signed(reactions.total.force, panel)}, force and moments to "
@@ -320,6 +401,18 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
         ) from error
     panel, solution = checked.panel, checked.solution
     name = panel.path.stem
+    targets = [f"{name}.png", f"{name}.vtu", f"{name}.json", f"{name}-reactions.csv"]
+    for target in targets:
+        path = out / target
+        if path.exists() and path.samefile(panel.path):
+            raise InputError(
+                f"the result {path} would replace the panel file itself; name the "
+                "panel file .toml or choose another --out."
+            )
+        if path.is_dir():
+            raise InputError(
+                f"{path} is a directory; remove it or choose another --out."
+            )
     record = solution_record(solution, version())
     record["panel"] = {
         "name": panel.name,
@@ -336,9 +429,9 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
             {
                 "case": j.value.case,
                 "quantity": j.quantity,
-                "value": j.value.value,
+                "value": None if np.isnan(j.value.value) else j.value.value,
                 "limit": j.limit,
-                "used": j.used,
+                "used": None if np.isnan(j.used) else j.used,
                 "outcome": j.outcome.name.lower().replace("_", " "),
             }
             for j in checked.verdict.judgements

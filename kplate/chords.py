@@ -7,14 +7,14 @@ than `ARC_TURN`; from there to `ASK_TURN` it may be either, and whoever draws it
 say so; an octagon is a polygon.
 """
 
+import itertools
 import math
 from dataclasses import dataclass
 
 import numpy as np
 
 from kplate import curves
-from kplate.arrays import Floats
-import itertools
+from kplate.arrays import Bools, Floats
 
 # Fewer vertices on a circle than these are no curve.
 FEWEST = 8
@@ -110,11 +110,39 @@ def as_arcs(
         parts = 2 if run.pieces == n else 1
         cuts = [run.first + round(k * run.pieces / parts) for k in range(parts + 1)]
         for start, stop in itertools.pairwise(cuts):
-            inside = [(start + k) % n for k in range(1, stop - start)]
-            drop[inside] = True
-            bent[start % n] = math.tan(0.25 * run.turn * (stop - start))
+            drop[[(start + k) % n for k in range(1, stop - start)]] = True
+            # Through the vertices, whose places are better known than the turns.
+            middle = (start + stop) // 2
+            a, b, c = (points[i % n] for i in (start, middle, stop))
+            bent[start % n] = curves.through(a, b, c)
     keep = np.flatnonzero(~drop)
     return points[keep], tuple(sides[i] for i in keep), bent[keep]
+
+
+def lowest(off: Floats) -> Bools:
+    """Vertices (n,) that are off less than both neighbours, or the one that is least.
+
+    No two of them are next to each other, and at least three others are left.
+    """
+    least: Bools = (off < np.roll(off, 1)) & (off < np.roll(off, -1))
+    if not 0 < least.sum() <= len(off) - 3:
+        least = np.arange(len(off)) == np.argmin(off)
+    return least
+
+
+def flattened(
+    points: Floats, sides: tuple[str, ...], bulges: Floats, flat: Bools
+) -> tuple[Floats, tuple[str, ...], Floats]:
+    """Drop vertices (n,) from straight lines; those between sides are put on them."""
+    before, after = np.roll(points, 1, axis=0), np.roll(points, -1, axis=0)
+    chord = (after - before)[flat]
+    share = np.einsum("ij,ij->i", (points - before)[flat], chord)
+    share /= np.einsum("ij,ij->i", chord, chord)
+    moved = points.copy()
+    moved[flat] = before[flat] + share[:, None] * chord
+    between = np.array([sides[i] != sides[i - 1] for i in range(len(sides))])
+    keep = np.flatnonzero(~flat | between)
+    return moved[keep], tuple(sides[i] for i in keep), bulges[keep]
 
 
 def _stretches(joins: Floats, turns: Floats) -> list[tuple[int, int]]:

@@ -1,41 +1,58 @@
 """The command line: parse, call one public function, print.
 
-Results go to stdout, everything else to stderr. Exit status 0: passes; 1: fails or not
-proven; 2: bad input or no solution.
+Libraries are imported by the command that needs them, so that a key pressed while they
+load is heard. Results go to stdout, everything else to stderr. Exit status 0: passes;
+1: fails or not proven; 2: bad input or no solution.
 """
 
 import argparse
-import os
+import signal
 import sys
 import warnings
 from collections.abc import Sequence
+from importlib import metadata
+from io import TextIOWrapper
 from pathlib import Path
 
-from kplate.check import check, new_panel, version
-from kplate.errors import KplateError, KplateWarning
-from kplate.output.view import view
+from kplate.errors import InputError, KplateError, KplateWarning
 
 INTERRUPTED = 130  # 128 + SIGINT, as shells have it
 
 
 def main(argv: Sequence[str] | None = None) -> int:
     """Run one command and return its exit status."""
-    args = _parser().parse_args(argv)
-    warnings.showwarning = _show_warning  # type: ignore[assignment]  # fewer arguments
+    _print_anything()
     try:
-        status = int(args.run(args))
-        sys.stdout.flush()
+        args = _parser().parse_args(argv)
+        warnings.showwarning = _show_warning  # type: ignore[assignment]  # takes fewer
+        return int(args.run(args))
     except KplateError as error:
         print(f"kplate: {args.file}: {_one_line(error)}", file=sys.stderr)
-        return 2
-    except BrokenPipeError:
-        # The reader went away; keep the interpreter from complaining when it closes.
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 2
     except KeyboardInterrupt:
         print("kplate: interrupted; nothing more is written.", file=sys.stderr)
         return INTERRUPTED
-    return status
+
+
+def _print_anything() -> None:
+    """Let names be printed that the terminal's encoding does not hold."""
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, TextIOWrapper):
+            stream.reconfigure(errors="replace")
+
+
+def _say(text: str) -> None:
+    """Print results; say it once where nobody takes them."""
+    try:
+        print(text)
+        if sys.stdout is not None:
+            sys.stdout.flush()
+    except OSError as error:
+        # Keep the interpreter from trying again, in vain, when it closes.
+        sys.stdout = None  # type: ignore[assignment]
+        raise InputError(
+            f"the results cannot be printed ({error.strerror})."
+        ) from error
 
 
 def _parser() -> argparse.ArgumentParser:
@@ -44,7 +61,9 @@ def _parser() -> argparse.ArgumentParser:
         description="Thin flat panels from their outline to a judged answer.",
         epilog="Exit status: 0 passes, 1 fails or not proven, 2 bad input.",
     )
-    parser.add_argument("--version", action="version", version=f"kplate {version()}")
+    parser.add_argument(
+        "--version", action="version", version=f"kplate {metadata.version('kplate')}"
+    )
     commands = parser.add_subparsers(title="commands", required=True, metavar="COMMAND")
     command = commands.add_parser("check", help="solve a panel file, judge it, write")
     command.add_argument("file", type=Path, help="panel file (TOML)")
@@ -64,19 +83,27 @@ def _parser() -> argparse.ArgumentParser:
 
 
 def _check(args: argparse.Namespace) -> int:
+    from kplate.check import check
+
     out = args.out if args.out is not None else Path("results") / args.file.stem
     checked = check(args.file, out=out)
-    print(checked.text)
-    print("written: " + ", ".join(str(path) for path in checked.files))
+    written = ", ".join(str(path) for path in checked.files)
+    _say(f"{checked.text}\nwritten: {written}")
     return checked.status
 
 
 def _new(args: argparse.Namespace) -> int:
-    print(f"written: {new_panel(args.file)}; now run: kplate check {args.file}")
+    from kplate.check import new_panel
+
+    _say(f"written: {new_panel(args.file)}; now run: kplate check {args.file}")
     return 0
 
 
 def _view(args: argparse.Namespace) -> int:
+    from kplate.output.view import view
+
+    # The window's loop does not look at Python's own handler.
+    signal.signal(signal.SIGINT, signal.SIG_DFL)
     view(args.file)
     return 0
 

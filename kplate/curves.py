@@ -14,11 +14,12 @@ import numpy as np
 
 from kplate.arrays import Floats, Ints
 
-# Chords that stand for arcs in checks of crossing and distance turn by this (rad): they
-# stay within 1e-6 of the radius.
-FLAT_STEP = 2.0 * math.acos(1.0 - 1e-6)
+# Chords that stand for arcs in checks of crossing and distance turn by this (rad), the
+# square root of it on shallow arcs: they stay within 1e-6 of the radius and the length.
+FLAT_STEP = math.sqrt(8e-6)
 # Pairs of arcs in each quarter of an ellipse.
 ELLIPSE_PARTS = 12
+_AXES = np.array([(1.0, 0.0), (0.0, 1.0), (-1.0, 0.0), (0.0, -1.0)])
 
 
 def sweeps(bulges: Floats) -> Floats:
@@ -28,7 +29,8 @@ def sweeps(bulges: Floats) -> Floats:
 
 def chords(starts: Floats, ends: Floats) -> Floats:
     """Distance from start to end in m."""
-    return np.hypot(*(ends - starts).T)
+    distance: Floats = np.hypot(*(ends - starts).T)
+    return distance
 
 
 def lengths(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
@@ -68,6 +70,19 @@ def part(bulge: float, share: float) -> float:
     return math.tan(math.atan(bulge) * share)
 
 
+def outermost(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
+    """Points of pieces that may lie outermost along x or y, (k, 2)."""
+    found = [starts]
+    bent = np.flatnonzero(bulges)
+    for i, (x, y, radius) in zip(
+        bent, circles(starts, ends, bulges)[bent], strict=True
+    ):
+        on_axes = (x, y) + radius * _AXES
+        angle, sweep = _angle_along(on_axes, starts[i], ends[i], float(bulges[i]))
+        found.append(on_axes[angle <= sweep])
+    return np.concatenate(found)
+
+
 def slivers(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
     """Area in m2 between each piece and its chord, positive on the chord's right."""
     angle = sweeps(bulges)
@@ -76,7 +91,7 @@ def slivers(starts: Floats, ends: Floats, bulges: Floats) -> Floats:
 
 
 def flattened(
-    starts: Floats, ends: Floats, bulges: Floats, step: float = FLAT_STEP
+    starts: Floats, ends: Floats, bulges: Floats, step: float | None = None
 ) -> tuple[Floats, Ints]:
     """Points along a run of pieces, chords for arcs, without the last end.
 
@@ -84,8 +99,9 @@ def flattened(
     ----------
     starts, ends, bulges : ndarray
         The pieces.
-    step : float
-        Largest turn in rad from chord to chord.
+    step : float, optional
+        Largest turn in rad from chord to chord; if left out, chords are within 1e-6 of
+        the radius and of the length of each arc.
 
     Returns
     -------
@@ -94,7 +110,10 @@ def flattened(
     owners : ndarray, shape (k,)
         The piece each point begins or lies on.
     """
-    counts = np.maximum(1, np.ceil(np.abs(sweeps(bulges)) / step).astype(int))
+    turn = np.abs(sweeps(bulges))
+    if step is None:
+        turn, step = np.maximum(turn, np.sqrt(turn)), FLAT_STEP
+    counts = np.maximum(1, np.ceil(turn / step).astype(int))
     owners = np.repeat(np.arange(len(bulges)), counts)
     first = np.repeat(np.cumsum(counts) - counts, counts)
     share = (np.arange(len(owners)) - first) / counts[owners]
@@ -199,8 +218,9 @@ def ellipse(axes: tuple[float, float]) -> tuple[Floats, Floats]:
 
 
 def _turned(vectors: Floats, angles: Floats) -> Floats:
-    """Unit vectors along (n, 2), turned to the left by angles (n,)."""
-    unit = vectors / np.hypot(*vectors.T)[:, None]
+    """Unit vectors along (n, 2), turned to the left by angles (n,); 0 for no length."""
+    length = np.hypot(*vectors.T)
+    unit = vectors / np.where(length > 0.0, length, 1.0)[:, None]
     c, s = np.cos(angles), np.sin(angles)
     return np.column_stack(
         [c * unit[:, 0] - s * unit[:, 1], s * unit[:, 0] + c * unit[:, 1]]
@@ -219,7 +239,8 @@ def _arc_distance(points: Floats, start: Floats, end: Floats, bulge: float) -> F
     angle, sweep = _angle_along(points, start, end, bulge)
     to_ends = np.minimum(np.hypot(*(points - start).T), np.hypot(*(points - end).T))
     to_circle = np.abs(np.hypot(*(points - (x, y)).T) - radius)
-    return np.where(angle <= sweep, to_circle, to_ends)
+    distance: Floats = np.where(angle <= sweep, to_circle, to_ends)
+    return distance
 
 
 def _angle_along(

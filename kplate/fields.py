@@ -10,7 +10,17 @@ from dataclasses import dataclass
 from typing import Any
 
 from kplate.errors import InputError
-from kplate.quantities import MOST_TEXT, bare_number, directed, positive, quantity, unit
+from kplate.quantities import (
+    MOST_TEXT,
+    angle,
+    bare_number,
+    check_reach,
+    directed,
+    length,
+    positive,
+    quantity,
+    unit,
+)
 from kplate.units import Unit
 
 
@@ -107,6 +117,27 @@ class Fields:
         with within(self.place(key)):
             return directed(self.value(key), dimension)
 
+    def length(self, key: str, plain: Unit) -> float:
+        """Return a size in m, larger than zero; a plain number is of this unit."""
+        with within(self.place(key)):
+            size = length(self.value(key), plain)
+            if size <= 0.0:
+                raise InputError("it must be a positive length.")
+            check_reach(size, "length")
+            return size
+
+    def pair(self, key: str, plain: Unit) -> tuple[float, float]:
+        """Return a place in m; plain numbers are of this unit."""
+        with within(self.place(key)):
+            return pair(self.value(key), plain)
+
+    def angle(self, key: str) -> float:
+        """Return an angle in rad, 0 where the field is left out."""
+        if key not in self.table:
+            return 0.0
+        with within(self.place(key)):
+            return angle(self.value(key))
+
     def unit(self, key: str, dimension: str) -> Unit:
         """Return a unit that the file names."""
         with within(self.place(key)):
@@ -124,9 +155,35 @@ class Fields:
             for i, item in enumerate(value, 1)
         ]
 
+    def words(self, key: str) -> list[str]:
+        """Return the items of a list of names."""
+        names = []
+        for place, item in self.items(key):
+            with within(place):
+                names.append(one_line(item))
+        return names
+
+    def tables(self, key: str, examples: Mapping[str, str]) -> "list[Fields]":
+        """Return the items of a list of tables, each with its own fields."""
+        count = len(self.items(key))
+        return [self.row(key, i, examples) for i in range(1, count + 1)]
+
+    def row(self, key: str, number: int, examples: Mapping[str, str]) -> "Fields":
+        """Return one item of a list, the first is 1, as a table."""
+        where = f"{self._path(key)}, item {number}"
+        item = self.value(key)[number - 1]
+        return Fields(where=where, table=item, examples=examples)
+
     def _path(self, key: str) -> str:
         gap = " " if self.where.endswith("]") else ": "
         return f"{self.where}{gap}{key}"
+
+
+def pair(value: object, plain: Unit) -> tuple[float, float]:
+    """Check two coordinates; return them in m."""
+    if not isinstance(value, list) or len(value) != 2:
+        raise InputError("a place is two numbers [x, y] in the outline's unit.")
+    return length(value[0], plain), length(value[1], plain)
 
 
 def one_line(value: object) -> str:
@@ -173,6 +230,35 @@ def closest(word: str, words: Collection[str]) -> str:
     """Ask whether the nearest of some words was meant, if one is near."""
     close = difflib.get_close_matches(word[:MOST_TEXT], list(words), n=1)
     return f" Did you mean {close[0]!r}?" if close else ""
+
+
+def some(names: Collection[str]) -> str:
+    """List names, but no more than a line holds."""
+    first = list(names)[:8]
+    more = len(names) - len(first)
+    return ", ".join(map(shown, first)) + (f" and {more} more" if more else "")
+
+
+def numbered(section: str, number: int, table: Any) -> str:
+    """Say how messages name one of several tables: by its number and its name."""
+    name = table.get("name") if isinstance(table, Mapping) else None
+    return f"{section} {number}" + (f" {shown(name)}" if isinstance(name, str) else "")
+
+
+def refuse_later(where: str, table: Mapping[str, Any], later: Collection[str]) -> None:
+    """Refuse fields that this version does not read yet."""
+    for key in table:
+        if key in later:
+            raise InputError(f"{where} {key} is not read by this version; take it out.")
+
+
+def refuse_beside(fields: Fields, key: str, others: Collection[str]) -> None:
+    """Refuse fields that say twice what one field says."""
+    for other in others:
+        if other in fields:
+            raise InputError(
+                f"{fields.where}: {key} and {other} exclude each other; keep one."
+            )
 
 
 def _is_plain(value: object) -> bool:

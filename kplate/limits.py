@@ -130,6 +130,8 @@ class Judgement:
     def outcome(self) -> Outcome:
         """Passes, fails, or straddles the limit."""
         least, most = _magnitudes(self.value)
+        if math.isnan(most):
+            return Outcome.NOT_PROVEN
         if most <= self.limit:
             return Outcome.PASSES
         return Outcome.FAILS if least > self.limit else Outcome.NOT_PROVEN
@@ -145,10 +147,13 @@ class Verdict:
         All that was judged.
     to_judge : int
         Places left out of the peaks because plate theory gives them no finite value.
+    flagged : bool
+        Whether the theory is used beyond where it holds.
     """
 
     judgements: tuple[Judgement, ...]
     to_judge: int = 0
+    flagged: bool = False
 
     @property
     def outcome(self) -> Outcome:
@@ -164,6 +169,9 @@ class Verdict:
             failed = [j.quantity for j in self.judgements if j.outcome is Outcome.FAILS]
             return f"fails: {', '.join(dict.fromkeys(failed))}"
         if self.outcome is Outcome.NOT_PROVEN:
+            unknown = [j for j in self.judgements if math.isnan(j.value.value)]
+            if unknown:
+                return f"not proven: {unknown[0].quantity} {unknown[0].value.reason}"
             return "not proven: a band straddles its limit"
         words = "passes"
         if any(j.value.kind == "none" for j in self.judgements):
@@ -171,12 +179,15 @@ class Verdict:
         if self.to_judge:
             places = "place" if self.to_judge == 1 else "places"
             words += f", {self.to_judge} {places} to judge"
+        if self.flagged:
+            words += ", theory flagged"
         return words
 
 
 def governing(judgements: Sequence[Judgement]) -> Judgement | None:
     """Return the judgement with the largest utilisation."""
-    return max(judgements, key=lambda j: j.used, default=None)
+    known = [j for j in judgements if not math.isnan(j.used)]
+    return max(known, key=lambda j: j.used, default=None)
 
 
 def _magnitudes(value: Value) -> tuple[float, float]:

@@ -5,9 +5,8 @@ for each side. Zones are areas inside with a thickness, material or load of thei
 seams are lines inside that the mesh follows; marks are single points of it.
 """
 
-import math
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from itertools import combinations
 from typing import Any
@@ -15,117 +14,18 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike
 
-from kplate import curves
-from kplate.arrays import Floats, read_only_floats
+from kplate import placement
 from kplate.errors import InputError
-from kplate.polygon import FARTHEST, SNAP, Chords, Polygon, as_names, as_points, at
+from kplate.given import as_bulges, as_names, as_points
+from kplate.interior import Mark, Seam, Zone, joined
+from kplate.polygon import SNAP, Chords, Polygon
 from kplate.shapes import Circle, ClosedLine, Ellipse, Rectangle, Slot
 
+__all__ = ["Mark", "Outline", "Seam", "Zone"]
+
+# What is not in a zone.
+PLATE = "plate"
 _SHAPES = (Polygon, Circle, Slot, Rectangle, Ellipse)
-
-
-@dataclass(frozen=True, eq=False, kw_only=True)
-class Zone:
-    """An area of the plate with a name.
-
-    Parameters
-    ----------
-    shape : Polygon, Circle, Slot, Rectangle or Ellipse
-        Its boundary; it may share edges with the rim, with holes and with other zones.
-    name : str
-        Its name.
-    """
-
-    shape: ClosedLine
-    name: str
-
-
-@dataclass(frozen=True, eq=False, kw_only=True)
-class Seam:
-    """A line on the plate that the mesh follows.
-
-    Parameters
-    ----------
-    points : array_like, shape (n, 2)
-        Its vertices in m, from end to end.
-    name : str
-        Its name.
-    bulges : array_like, shape (n - 1,), optional
-        Tangent of a quarter of the angle each piece turns through; all straight if
-        left out.
-
-    Raises
-    ------
-    InputError
-        If it has fewer than two points, or points that coincide.
-    """
-
-    points: Floats
-    name: str
-    bulges: Floats = ()  # type: ignore[assignment]  # filled when built
-
-    def __post_init__(self) -> None:
-        """Check the line."""
-        points = as_points(self.points)
-        object.__setattr__(self, "points", points)
-        if points.ndim != 2 or points.shape[1:] != (2,) or len(points) < 2:
-            raise InputError(
-                f"seam {self.name!r} has points of shape {points.shape}; it takes at "
-                "least two pairs (x, y)."
-            )
-        if not (np.abs(points) <= FARTHEST).all():
-            raise InputError(f"seam {self.name!r} has points that are not finite.")
-        bulges = np.zeros(len(points) - 1) if len(self.bulges) == 0 else self.bulges
-        object.__setattr__(self, "bulges", read_only_floats(bulges))
-        if len(self.bulges) != len(points) - 1:
-            raise InputError(
-                f"seam {self.name!r} has {len(points) - 1} pieces and "
-                f"{len(self.bulges)} bulges; give one for each."
-            )
-        size = float(np.hypot(*np.ptp(points, axis=0)))
-        for i in np.flatnonzero(self.chords <= SNAP * size):
-            raise InputError(
-                f"seam {self.name!r}: points {i + 1} and {i + 2} coincide near "
-                f"{at(points[i])}; drop one of them."
-            )
-
-    @property
-    def chords(self) -> Floats:
-        """Distance from end to end of each piece in m."""
-        return curves.chords(self.points[:-1], self.points[1:])
-
-    @property
-    def turns(self) -> Floats:
-        """Turn to the left at each vertex between two pieces in rad, (n - 2,)."""
-        out, into = curves.tangents(self.points[:-1], self.points[1:], self.bulges)
-        out, into = out[1:], into[:-1]
-        cross = into[:, 0] * out[:, 1] - into[:, 1] * out[:, 0]
-        turn: Floats = np.arctan2(cross, np.einsum("ij,ij->i", into, out))
-        return turn
-
-    @cached_property
-    def path(self) -> Any:
-        """The seam as a shapely line, chords for arcs."""
-        import shapely
-
-        flat, _ = curves.flattened(self.points[:-1], self.points[1:], self.bulges)
-        return shapely.LineString(np.vstack([flat, self.points[-1:]]))
-
-
-@dataclass(frozen=True, kw_only=True)
-class Mark:
-    """A point of the plate that is a vertex of the mesh.
-
-    Parameters
-    ----------
-    at : tuple of float
-        Where, in m.
-    name : str
-        Its name.
-    """
-
-    at: tuple[float, float]
-    name: str
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -148,6 +48,12 @@ class Outline:
     marks : tuple of Mark
         Points on the plate.
 
+    Attributes
+    ----------
+    joints : tuple of str
+        What of zones, seams and marks was moved onto lines that it nearly touched, in
+        words.
+
     Raises
     ------
     InputError
@@ -160,9 +66,10 @@ class Outline:
     zones: tuple[Zone, ...] = ()
     seams: tuple[Seam, ...] = ()
     marks: tuple[Mark, ...] = ()
+    joints: tuple[str, ...] = field(init=False, default=())
 
     def __post_init__(self) -> None:
-        """Check names, and that everything lies where it may."""
+        """Check names, join what nearly touches, check that all lies where it may."""
         for key in ("holes", "zones", "seams", "marks"):
             object.__setattr__(self, key, tuple(getattr(self, key)))
         shapes = [self.rim, *self.holes, *(zone.shape for zone in self.zones)]
@@ -173,13 +80,8 @@ class Outline:
                     "Circle, Slot, Rectangle or Ellipse."
                 )
         self._check_names()
-        least = SNAP * self.size
-        for number, hole in enumerate(self.boundaries[1:], start=1):
-            _check_inside(self.boundaries[0], hole, number, least)
-        for (i, a), (j, b) in combinations(enumerate(self.boundaries[1:], start=1), 2):
-            _check_apart(a, b, (i, j), least)
-        self._check_zones(least)
-        self._check_seams_and_marks(least)
+        self._join()
+        self._check_places()
 
     @classmethod
     def polygon(
@@ -213,7 +115,7 @@ class Outline:
             rim=Polygon(
                 points=array,
                 sides=as_names(sides),
-                bulges=as_points(bulges),
+                bulges=as_bulges(bulges, len(np.atleast_1d(array))),
                 chords=chords,
             )
         )
@@ -232,24 +134,24 @@ class Outline:
 
     def cut(self, *holes: ClosedLine) -> "Outline":
         """Return the outline with these openings cut into it."""
-        return replace(self, holes=(*self.holes, *holes))
+        return self._changed(holes=(*self.holes, *holes))
 
     def zone(self, shape: ClosedLine, *, name: str) -> "Outline":
         """Return the outline with a zone added."""
-        return replace(self, zones=(*self.zones, Zone(shape=shape, name=name)))
+        return self._changed(zones=(*self.zones, Zone(shape=shape, name=name)))
 
     def seam(
         self, points: ArrayLike, *, name: str, bulges: ArrayLike = ()
     ) -> "Outline":
         """Return the outline with a seam added."""
-        seam = Seam(points=as_points(points), name=name, bulges=as_points(bulges))
-        return replace(self, seams=(*self.seams, seam))
+        array = as_points(points, f"the points of seam {name!r}")
+        bent = as_bulges(bulges, max(len(np.atleast_1d(array)) - 1, 0))
+        seam = Seam(points=array, name=name, bulges=bent)
+        return self._changed(seams=(*self.seams, seam))
 
     def mark(self, place: tuple[float, float], *, name: str) -> "Outline":
         """Return the outline with a marked point added."""
-        x, y = as_points([place])[0]
-        mark = Mark(at=(float(x), float(y)), name=name)
-        return replace(self, marks=(*self.marks, mark))
+        return self._changed(marks=(*self.marks, Mark(at=place, name=name)))
 
     def fillet(
         self, first: str, second: str, *, radius: float, name: str | None = None
@@ -333,8 +235,9 @@ class Outline:
 
     @property
     def notes(self) -> tuple[str, ...]:
-        """What was tidied, in words."""
-        return tuple(note for line in self.boundaries for note in line.notes)
+        """What was tidied and moved, in words."""
+        tidied = (note for line in self.boundaries for note in line.notes)
+        return (*tidied, *self.joints)
 
     @property
     def side_names(self) -> tuple[str, ...]:
@@ -405,9 +308,24 @@ class Outline:
         return min(radii, default=None)
 
     def zone_area(self, name: str) -> float:
-        """Area in m2 of a zone, holes taken off."""
-        zone = next(zone for zone in self.zones if zone.name == name)
-        return float(zone.shape.line.region.intersection(self.region).area)
+        """Area in m2 of a zone, holes taken off.
+
+        Raises
+        ------
+        InputError
+            If there is no such zone.
+        """
+        for zone in self.zones:
+            if zone.name == name:
+                break
+        else:
+            known = ", ".join(self.zone_names) or "none"
+            raise InputError(f"there is no zone {name!r}; the zones are {known}.")
+        own = zone.shape.line
+        holes = [h for h in self.boundaries[1:] if h.region.intersects(own.region)]
+        if all(own.region.covers(hole.region) for hole in holes):
+            return own.area - sum(hole.area for hole in holes)
+        return float(own.region.intersection(self.region).area)
 
     def side_length(self, name: str) -> float:
         """Length in m of a side.
@@ -437,10 +355,28 @@ class Outline:
         old = self._line_with(sides)
         number = next(i for i, own in enumerate(self.boundaries) if own is old)
         if number == 0:
-            return replace(self, rim=line)
+            return self._changed(rim=line)
         holes = list(self.holes)
         holes[number - 1] = line
-        return replace(self, holes=tuple(holes))
+        return self._changed(holes=tuple(holes))
+
+    def _changed(self, **changes: Any) -> "Outline":
+        """Variant that keeps the notes."""
+        outline = replace(self, **changes)
+        joints = dict.fromkeys((*self.joints, *outline.joints))
+        object.__setattr__(outline, "joints", tuple(joints))
+        return outline
+
+    def _join(self) -> None:
+        """Put zones, seams and marks on lines that they nearly touch."""
+        if not (self.zones or self.seams or self.marks):
+            return
+        inside = (self.zones, self.seams, self.marks)
+        zones, seams, marks, notes = joined(inside, self.boundaries, self.size)
+        object.__setattr__(self, "zones", tuple(zones))
+        object.__setattr__(self, "seams", tuple(seams))
+        object.__setattr__(self, "marks", tuple(marks))
+        object.__setattr__(self, "joints", tuple(notes))
 
     def _check_names(self) -> None:
         seen: dict[str, object] = {}
@@ -458,7 +394,12 @@ class Outline:
             if not isinstance(name, str) or not name or name != name.strip():
                 raise InputError(
                     f"a {kind} is called {name!r}; a name is text of at least one "
-                    "character and no space around it."
+                    "character, with no space around it."
+                )
+            if kind == "zone" and name == PLATE:
+                raise InputError(
+                    f"a zone is called {name!r}; that is the name of the plate around "
+                    "the zones, give it another."
                 )
             if seen.setdefault(name, owner) == owner:
                 continue
@@ -472,80 +413,22 @@ class Outline:
                 "and marks need names of their own."
             )
 
-    def _check_zones(self, least: float) -> None:
-        rim = self.boundaries[0].region.buffer(least)
-        for zone in self.zones:
-            region = zone.shape.line.region
-            if not rim.covers(region):
-                outside = region.difference(rim).representative_point().coords[0]
-                raise InputError(
-                    f"zone {zone.name!r} lies outside the outline near {at(outside)}; "
-                    "draw it within."
-                )
-            if region.intersection(self.region).area <= least * self.size:
-                raise InputError(f"zone {zone.name!r} lies in a hole; move it.")
-        for a, b in combinations(self.zones, 2):
-            common = a.shape.line.region.intersection(b.shape.line.region)
-            if common.area > least * self.size:
-                place = common.representative_point().coords[0]
-                raise InputError(
-                    f"zones {a.name!r} and {b.name!r} overlap near {at(place)}; zones "
-                    "may share edges but not areas."
-                )
-
-    def _check_seams_and_marks(self, least: float) -> None:
-        import shapely
-
-        plate = self.region.buffer(least)
+    def _check_places(self) -> None:
+        """Check that holes, zones, seams and marks lie where they may."""
+        rim, *holes = self.boundaries
+        least = SNAP * self.size
+        for number, hole in enumerate(holes, start=1):
+            placement.check_hole(rim, hole, number, least)
+        for (i, a), (j, b) in combinations(enumerate(holes, start=1), 2):
+            placement.check_apart(a, b, (i, j), least)
+        zones = [(zone.name, zone.shape.line.region) for zone in self.zones]
+        grown = rim.region.buffer(least) if zones else None
+        for name, region in zones:
+            placement.check_zone(name, region, grown, self.region)
+        for (first, c), (second, d) in combinations(zones, 2):
+            placement.check_zones_apart((first, second), c, d, least)
+        plate = self.region.buffer(least) if self.seams or self.marks else None
         for seam in self.seams:
-            if not seam.path.is_simple:
-                raise InputError(
-                    f"seam {seam.name!r} crosses itself; draw it as two seams."
-                )
-            if not plate.covers(seam.path):
-                outside = seam.path.difference(plate).interpolate(0.5, normalized=True)
-                raise InputError(
-                    f"seam {seam.name!r} leaves the plate near {at(outside.coords[0])};"
-                    " end it on the boundary."
-                )
+            placement.check_seam(seam.name, seam.path, plate)
         for mark in self.marks:
-            if not all(math.isfinite(c) for c in mark.at) or not plate.covers(
-                shapely.Point(mark.at)
-            ):
-                raise InputError(
-                    f"mark {mark.name!r} at {at(mark.at)} is not on the plate; it lies "
-                    "outside the outline or in a hole."
-                )
-
-
-def _check_inside(rim: Polygon, hole: Polygon, number: int, least: float) -> None:
-    """Refuse a hole that is not strictly inside the rim."""
-    import shapely
-
-    gap = shapely.shortest_line(rim.region.exterior, hole.region.exterior)
-    inside = rim.region.contains(hole.region)
-    if inside and gap.length > least:
-        return
-    touches = rim.region.buffer(least).contains(hole.region)
-    how = "touches" if touches else "crosses or lies outside"
-    raise InputError(
-        f"hole {number} ({hole.sides[0]!r}) {how} the outline near {at(gap.coords[0])};"
-        " a hole must lie strictly inside the plate. Move or shrink it, or cut the "
-        "notch into the outline."
-    )
-
-
-def _check_apart(
-    a: Polygon, b: Polygon, numbers: tuple[int, int], least: float
-) -> None:
-    """Refuse two holes that overlap or touch."""
-    import shapely
-
-    line = shapely.shortest_line(a.region, b.region)
-    if line.length > least:
-        return
-    raise InputError(
-        f"holes {numbers[0]} ({a.sides[0]!r}) and {numbers[1]} ({b.sides[0]!r}) "
-        f"overlap or touch near {at(line.coords[0])}; move them apart, or draw them as "
-        "one hole."
-    )
+            placement.check_mark(mark.name, mark.at, plate)

@@ -12,18 +12,20 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from kplate.caseloads import read_cases
 from kplate.errors import InputError
 from kplate.fields import Fields, closest, shown, within
 from kplate.limits import Limits
 from kplate.loads import Case
+from kplate.outline import Outline
+from kplate.outlines import read_outline
 from kplate.plate import Plate
 from kplate.quantities import share, unit
 from kplate.statements import (
-    read_cases,
     read_limits,
     read_material,
-    read_outline,
     read_supports,
+    read_zones,
 )
 from kplate.units import DisplayUnits, Unit
 
@@ -34,6 +36,9 @@ SECTIONS = {
     "panel": "[panel]",
     "outline": "[outline]",
     "hole": "[[hole]]",
+    "zone": "[[zone]]",
+    "seam": "[[seam]]",
+    "mark": "[[mark]]",
     "supports": "[supports]",
     "case": "[[case]]",
     "limits": "[limits]",
@@ -41,7 +46,6 @@ SECTIONS = {
 NEEDED = ("panel", "outline", "case")
 # What a panel file is to hold one day.
 LATER = {
-    "zone": "[[zone]]",
     "combination": "[[combination]]",
     "ask": "[[ask]]",
 }
@@ -82,10 +86,13 @@ class Panel:
         Thicknesses to choose from in m, as listed; empty where none are stated.
     units : DisplayUnits
         The units to show it in, from those of the file.
+    notes : tuple of str
+        What was tidied in the outline, and what a drawing holds that was not taken.
     path : Path
         The file.
     digest : str
-        First 8 hexadecimal digits of the SHA-256 of its bytes.
+        First 8 hexadecimal digits of the SHA-256 of its bytes, followed by those of the
+        drawing that it names, if any.
     """
 
     name: str
@@ -99,6 +106,7 @@ class Panel:
     triangles: int | None
     stock: tuple[float, ...]
     units: DisplayUnits
+    notes: tuple[str, ...]
     path: Path
     digest: str
 
@@ -131,35 +139,48 @@ def read_panel(path: Path) -> Panel:
     content = _content(path)
     sections = _sections(_table(content, path))
     head = Fields(where="[panel]", table=sections["panel"], examples=PANEL)
-    plate, length = _plate(head, sections)
+    stated = read_outline(sections, path.parent)
+    plate = _plate(head, sections, stated.outline)
     limits, stock, stress = read_limits(sections.get("limits", {}))
     return Panel(
         name=head.word("name"),
         revision=head.word("revision", default=""),
         author=head.word("author", default=""),
         plate=plate,
-        cases=read_cases(sections["case"], plate.material),
+        cases=read_cases(sections["case"], plate),
         limits=limits,
         tolerance=_tolerance(head),
         held_in_plane=_held_in_plane(head),
         triangles=_triangles(head),
         stock=stock,
-        units=_display_units(length, stress),
+        units=_display_units(stated.length, stress),
+        notes=stated.notes,
         path=path,
-        digest=hashlib.sha256(content).hexdigest()[:8],
+        digest=_digest(content, stated.file),
     )
 
 
-def _plate(head: Fields, sections: dict[str, Any]) -> tuple[Plate, Unit]:
-    """Plate of a panel file, and the unit of its coordinates."""
+def _plate(head: Fields, sections: dict[str, Any], outline: Outline) -> Plate:
+    """Plate of a panel file."""
     thickness, material = head.positive("thickness", "length"), read_material(head)
-    outline, length = read_outline(sections["outline"], sections.get("hole", []))
+    zones = read_zones(sections.get("zone", []))
     supports = read_supports(sections.get("supports", {}), outline)
     with within("[supports]"):
-        plate = Plate(
-            outline=outline, thickness=thickness, material=material, supports=supports
+        return Plate(
+            outline=outline,
+            thickness=thickness,
+            material=material,
+            supports=supports,
+            zones=zones,
         )
-    return plate, length
+
+
+def _digest(content: bytes, drawing: Path | None) -> str:
+    """Short hash of the panel file, and of the drawing that it names."""
+    whole = hashlib.sha256(content)
+    if drawing is not None:
+        whole.update(drawing.read_bytes())
+    return whole.hexdigest()[:8]
 
 
 def _content(path: Path) -> bytes:

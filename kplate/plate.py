@@ -20,7 +20,8 @@ from kplate.supports import FREE, SUPPORTS, Support
 
 # Between sides held alike, a smaller turn is a bend of a curve, not a corner (a simply
 # supported square with mid-side vertices 0.1 mm out would otherwise lose a third of w).
-BEND_TURN = math.radians(10.0)
+# Round-off does not decide about a 36-gon, whose vertices are corners.
+BEND_TURN = chords.ARC_TURN - 1e-9
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -99,7 +100,12 @@ class Plate:
             self._check_support(name, support)
         object.__setattr__(self, "supports", MappingProxyType(supports))
         zones = dict(self.zones)
-        for name in zones:
+        for name, section in zones.items():
+            if not isinstance(section, Section):
+                raise InputError(
+                    f"zone {name!r} is made of {section!r}; give a Section with its "
+                    "thickness or material."
+                )
             if name not in self.outline.zone_names:
                 raise InputError(
                     f"unknown zone {name!r}; the zones are "
@@ -181,16 +187,13 @@ class Plate:
     def _check_chords(self, line: Polygon) -> None:
         """Refuse chords that may stand for a curve where supports would clamp it."""
         held = [self.support(name) for name in line.sides]
-        alike = [s if s.holds_deflection else None for s in held]
-        runs = chords.runs(line.points, line.sides, line.bulges, line.turns)
-        for run in runs if line.chords == "ask" else ():
-            if alike[run.first] is not None:
-                raise InputError(
-                    f"side {line.sides[run.first]!r} is {held[run.first].name} and has "
-                    f"{run.pieces} pieces from {at(line.points[run.first])} that turn "
-                    f"by {math.degrees(abs(run.turn)):.3g} degrees each on a circle; "
-                    'say whether they are an "arc" or a "polygon" (chords).'
-                )
+        alike = [s if s.holds_deflection or s.holds_slope else None for s in held]
+        # By supports, not names: pieces of a curve may have names of their own.
+        words = tuple(support.name for support in held)
+        for run in chords.runs(line.points, words, line.bulges, line.turns):
+            ask = line.chords != "polygon" and abs(run.turn) >= BEND_TURN
+            if ask and alike[run.first] is not None:
+                raise InputError(_ask(line, run, words[run.first]))
         for i in _bend_runs(line, alike, self.bend_turn):
             raise InputError(
                 f"side {line.sides[i]!r} is {held[i].name} and bends at three or more "
@@ -198,6 +201,19 @@ class Plate:
                 "chords. State it by arcs, as an ellipse, or drop vertices until each "
                 "turn is a corner."
             )
+
+
+def _ask(line: Polygon, run: chords.Run, held: str) -> str:
+    """Ask what chords on a circle are."""
+    n = len(line.sides)
+    names = {line.sides[(run.first + k) % n] for k in range(run.pieces)}
+    first = "" if len(names) == 1 else "give them one name and "
+    return (
+        f"side {line.sides[run.first]!r} is {held} and has {run.pieces} pieces from "
+        f"{at(line.points[run.first])} that turn by {math.degrees(abs(run.turn)):.3g} "
+        f'degrees each on a circle; {first}say whether they are an "arc" or a '
+        '"polygon" (chords).'
+    )
 
 
 def _bend_runs(line: Polygon, alike: Sequence[object], limit: float) -> Iterator[int]:
@@ -225,7 +241,9 @@ def _bend_runs(line: Polygon, alike: Sequence[object], limit: float) -> Iterator
         [alike[i] is not None and alike[i] == alike[i - 1] for i in range(n)]
     )
     kept = np.flatnonzero(~(held & line.straight))
-    bend = (held & (np.abs(line.turns) < limit))[kept]
+    # Where a piece is an arc, a small turn is a tangent that was rounded.
+    chord = (line.bulges == 0.0) & (np.roll(line.bulges, 1) == 0.0)
+    bend = (held & chord & (np.abs(line.turns) < limit))[kept]
     m = len(kept)
     for i in range(m):
         first = not bend[i - 1] or (i == 0 and bend.all())

@@ -6,33 +6,30 @@ arc) is tidied and noted. Turns at the vertices are recorded here; whether a tur
 corner or a bend of a curve is decided where supports meet it.
 """
 
-import contextlib
 import math
-import reprlib
-from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field, replace
 from functools import cached_property
 from typing import Any, Literal
 
 import numpy as np
-from numpy.typing import ArrayLike
 
 from kplate import chords, curves
 from kplate.arrays import Bools, Floats, read_only_floats
 from kplate.errors import InputError
+from kplate.given import FARTHEST, as_bulges, as_names, as_points
 
 # Lengths below this share of the size are no lengths: points coincide, a hole touches,
 # a vertex is not meant to be off the straight line between its neighbours.
 SNAP = 1e-6
-# A vertex that is off the line by no more than this share is on it, but for round-off.
+# A vertex that is off the line by no more than this share is on it, but for round-off;
+# far from the origin, four units in the last place of the coordinates.
 STRAIGHT = 1e-12
+LAST_PLACES = 4.0 * float(np.finfo(float).eps)
 # Pieces that meet an arc with less than this turn (rad) have one tangent with it.
 SMOOTH = 1e-6
-# Nobody draws a plate farther from its origin; beyond, products of lengths overflow.
-FARTHEST = 1e9  # m
-
 # An arc of 352 degrees; more has ends that nearly meet.
 MOST_BULGE = 30.0
+MOST_LISTED = 5  # merged vertices that a note lists one by one
 
 Chords = Literal["ask", "arc", "polygon"]
 
@@ -83,12 +80,13 @@ class Polygon:
         """Check the line and tidy it."""
         object.__setattr__(self, "points", as_points(self.points))
         object.__setattr__(self, "sides", as_names(self.sides))
-        bulges = np.zeros(len(self.sides)) if len(self.bulges) == 0 else self.bulges
-        object.__setattr__(self, "bulges", read_only_floats(bulges))
+        n = len(np.atleast_1d(self.points))
+        object.__setattr__(self, "bulges", as_bulges(self.bulges, n))
         self._check_numbers()
         self._check_points()
-        self._merge_straight()
+        # Arcs first: the vertices of fine chords are hardly off a line as well.
         self._take_arcs()
+        self._merge_straight()
         self._check_crossing()
 
     @property
@@ -104,7 +102,7 @@ class Polygon:
     @cached_property
     def box(self) -> tuple[float, float, float, float]:
         """Smallest x, smallest y, largest x, largest y in m."""
-        outer = curves.flattened(self.points, self.ends, self.bulges)[0]
+        outer = curves.outermost(self.points, self.ends, self.bulges)
         (x0, y0), (x1, y1) = outer.min(axis=0), outer.max(axis=0)
         return float(x0), float(y0), float(x1), float(y1)
 
@@ -149,7 +147,7 @@ class Polygon:
     def straight(self) -> Bools:
         """Vertices without a turn, but for round-off, (n,)."""
         flat = (self.bulges == 0.0) & (np.roll(self.bulges, 1) == 0.0)
-        on_line = self._offset() <= STRAIGHT * self.size
+        on_line = self._offset() <= self._round_off
         return np.where(flat, on_line, np.abs(self.turns) < SMOOTH)
 
     @cached_property
@@ -184,7 +182,7 @@ class Polygon:
         parts = [curves.part(bulge, share), curves.part(bulge, 1.0 - share)]
         bulges = np.concatenate([self.bulges[:piece], parts, self.bulges[piece + 1 :]])
         sides = (*self.sides[:piece], *names, *self.sides[piece + 1 :])
-        return replace(self, points=points, sides=sides, bulges=bulges)
+        return self._changed(points=points, sides=sides, bulges=bulges)
 
     def fractions(
         self, side: str, between: tuple[tuple[float, float], tuple[float, float]]
@@ -193,7 +191,7 @@ class Polygon:
         pieces = self._stretch(side)
         starts = np.concatenate([[0.0], np.cumsum(self.lengths[pieces])])
         shares = []
-        for point in as_points(between):
+        for point in as_points(between, f"the ends of a part of side {side!r}"):
             off = curves.distances(
                 point[None], self.points[pieces], self.ends[pieces], self.bulges[pieces]
             )[0]
@@ -227,7 +225,7 @@ class Polygon:
         sides = list(line.sides)
         for piece in own:
             sides[piece] = name
-        return replace(line, sides=tuple(sides))
+        return line._changed(sides=tuple(sides))
 
     def _cut_side(self, side: str, share: float) -> "Polygon":
         """Put a vertex at a share of a side's length, where none is yet."""
@@ -351,12 +349,17 @@ class Polygon:
         second = self.points[i] + cut * out / np.hypot(*out)
         points = np.insert(self.points, i + 1, second, axis=0)
         points[i] = first
-        return replace(
-            self,
+        return self._changed(
             points=points,
             sides=(*self.sides[:i], label, *self.sides[i:]),
             bulges=np.insert(self.bulges, i, bulge),
         )
+
+    def _changed(self, **changes: Any) -> "Polygon":
+        """Variant that keeps the notes."""
+        line = replace(self, **changes)
+        object.__setattr__(line, "notes", (*self.notes, *line.notes))
+        return line
 
     def _corner_words(self) -> list[str]:
         return [
@@ -369,6 +372,11 @@ class Polygon:
     def _label(self) -> str:
         return f"the polygon with side {self.sides[0]!r}" if self.sides else "a polygon"
 
+    @property
+    def _round_off(self) -> float:
+        """Distance in m that is none."""
+        return STRAIGHT * self.size + LAST_PLACES * float(np.abs(self.points).max())
+
     def _offset(self) -> Floats:
         """Distance of each vertex from the line through its neighbours in m."""
         before, after = np.roll(self.points, 1, axis=0), self.ends
@@ -378,7 +386,7 @@ class Polygon:
         return np.abs(cross) / np.where(length > 0.0, length, np.inf)
 
     def _check_numbers(self) -> None:
-        points, n = self.points, len(self.points)
+        points, n = self.points, len(np.atleast_1d(self.points))
         arcs = bool(np.any(self.bulges != 0.0))
         if points.ndim != 2 or points.shape[1:] != (2,) or n < (2 if arcs else 3):
             raise InputError(
@@ -432,33 +440,27 @@ class Polygon:
     def _merge_straight(self) -> None:
         """Take vertices that are hardly off a straight line into it."""
         snap = SNAP * self.size if self.snap is None else self.snap
-        merged = []
-        while True:
-            flat = (self.bulges == 0.0) & (np.roll(self.bulges, 1) == 0.0)
+        merged: list[str] = []
+        while len(self.points) > 3:
             off = self._offset()
-            near = flat & (off > STRAIGHT * self.size) & (off < snap)
+            flat = (self.bulges == 0.0) & (np.roll(self.bulges, 1) == 0.0)
+            near = flat & (off > self._round_off) & (off < snap)
             near &= np.abs(self.turns) < chords.ARC_TURN
-            if not near.any() or len(self.points) == 3:
+            if not near.any():
                 break
-            i = int(np.argmin(np.where(near, off, np.inf)))
-            merged.append(f"{at(self.points[i])} by {off[i]:.2g} m")
-            self._flatten(i)
+            least = chords.lowest(np.where(near, off, np.inf))
+            merged += [
+                f"{at(self.points[i])} by {off[i]:.2g} m" for i in np.flatnonzero(least)
+            ]
+            self._replace(
+                *chords.flattened(self.points, self.sides, self.bulges, least)
+            )
         if merged:
-            note = f"merged into the straight line: {', '.join(merged)}"
+            listed = ", ".join(merged[:MOST_LISTED])
+            more = len(merged) - MOST_LISTED
+            rest = f" and {more} more" if more > 0 else ""
+            note = f"merged into the straight line: {listed}{rest}"
             object.__setattr__(self, "notes", (*self.notes, note))
-
-    def _flatten(self, i: int) -> None:
-        """Drop vertex i, or move it onto the line where its sides differ."""
-        if self.sides[i] == self.sides[i - 1]:
-            points = np.delete(self.points, i, axis=0)
-            sides = (*self.sides[:i], *self.sides[i + 1 :])
-            bulges = np.delete(self.bulges, i)
-        else:
-            a, b = self.points[i - 1], self.ends[i]
-            points, sides, bulges = self.points.copy(), self.sides, self.bulges
-            share = (points[i] - a) @ (b - a) / ((b - a) @ (b - a))
-            points[i] = a + share * (b - a)
-        self._replace(points, sides, bulges)
 
     def _take_arcs(self) -> None:
         """Take runs of chords for the arcs they stand for."""
@@ -490,7 +492,6 @@ class Polygon:
             self.__dict__.pop(name, None)
 
     def _check_crossing(self) -> None:
-        import shapely
         from shapely.validation import explain_validity
 
         if not self.region.is_valid:
@@ -505,39 +506,47 @@ class Polygon:
                 f"{self._label} runs clockwise from {at(self.points[0])}; list its "
                 "points counter-clockwise, with their side names."
             )
+        self._check_necks()
+
+    def _check_necks(self) -> None:
+        """Refuse a line that comes next to itself."""
+        import shapely
+
+        least = SNAP * self.size
         if (self.bulges == 0.0).all():
-            neck = shapely.minimum_clearance_line(self.region)
-            if neck.length <= SNAP * self.size:
-                raise InputError(
-                    f"{self._label} comes within {neck.length:.2g} m of itself at "
-                    f"{at(neck.coords[0])}; part it there, or leave a gap."
-                )
-
-
-def as_points(points: ArrayLike) -> Floats:
-    """Array of the user's points, or an error in words."""
-    try:
-        return read_only_floats(points)
-    except (TypeError, ValueError, OverflowError) as error:
+            neck: Any = shapely.minimum_clearance_line(self.region)
+            if neck.length > least:
+                return
+        else:
+            # The clearance of the region is that of the chords it has for arcs.
+            pieces = self._pieces()
+            near = shapely.STRtree(pieces).query(pieces, "dwithin", least)
+            i, j = near[:, (near[0] < near[1])]
+            apart = (j - i > 1) & (j - i < len(pieces) - 1)
+            if not apart.any():
+                return
+            neck = shapely.shortest_line(pieces[j[apart][0]], pieces[i[apart][0]])
         raise InputError(
-            f"points are {reprlib.repr(points)}; give pairs (x, y) of numbers in m."
-        ) from error
-
-
-def as_names(names: Sequence[str]) -> tuple[str, ...]:
-    """Tuple of the user's side names, or an error in words."""
-    listed: Iterable[Any] = ()
-    with contextlib.suppress(TypeError):
-        listed = tuple(names)
-    if isinstance(names, str) or not listed:
-        raise InputError(
-            f"the side names of a polygon are {names!r}; give a list with a name for "
-            "each piece."
+            f"{self._label} comes within {neck.length:.2g} m of itself at "
+            f"{at(neck.coords[0])}; part it there, or leave a gap."
         )
-    # Names from a numpy array are made plain: messages show them.
-    return tuple(str(name) if isinstance(name, str) else name for name in listed)
+
+    def _pieces(self) -> Any:
+        """Each piece as a shapely line, chords for arcs, (n,)."""
+        import shapely
+
+        flat, owners = curves.flattened(self.points, self.ends, self.bulges)
+        ends = self.ends
+        return np.array(
+            [
+                shapely.LineString(np.vstack([flat[owners == i], ends[i]]))
+                for i in range(len(ends))
+            ]
+        )
 
 
 def at(point: Any) -> str:
-    """Write a place in m."""
-    return f"({point[0]:.6g}, {point[1]:.6g}) m"
+    """Write a place in m; round-off is nought."""
+    reach = max(abs(float(point[0])), abs(float(point[1])))
+    x, y = (0.0 if abs(c) < STRAIGHT * reach else c + 0.0 for c in point[:2])
+    return f"({x:.6g}, {y:.6g}) m"

@@ -16,12 +16,18 @@ from kplate.units import Unit
 # What a file may measure: the SI unit, and how it is written in a file.
 DIMENSIONS = {
     "length": ("m", '"10 mm"'),
+    "area": ("m**2", '"1.02 m^2"'),
     "force": ("N", '"1.5 kN"'),
+    "line force": ("N/m", '"2 kN/m"'),
+    "moment": ("N*m", '"50 N m"'),
+    "line moment": ("N", '"100 N m/m"'),
     "pressure": ("Pa", '"5 kPa"'),
     "stress": ("Pa", '"235 MPa"'),
     "density": ("kg/m**3", '"7850 kg/m^3"'),
     "acceleration": ("m/s**2", '"9.81 m/s^2"'),
 }
+# Only their units may have a space for a product: "N m/m".
+SPACED = ("moment", "line moment")
 # No quantity of a panel lies outside, in SI units; squares and cubes stay finite.
 REACH = (1e-12, 1e15)
 # Units that are nearly always a slip of the shift key.
@@ -32,7 +38,8 @@ _NUMBER = r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?"
 _FRACTION = r"[+-]?(?:[0-9]+ +)?[0-9]+ ?/ ?[1-9][0-9]*"
 _FACTOR = r"[A-Za-zµμ]{1,32}(?:(?:\^|\*\*)?[1-4]|[²³])?"
 _UNIT = rf"{_FACTOR}(?: ?[/*·] ?{_FACTOR}){{0,3}}"
-_QUANTITY = re.compile(rf"({_FRACTION}|{_NUMBER})(?:\s*({_UNIT}))?")
+_SPACED_UNIT = rf"{_FACTOR}(?:(?: ?[/*·] ?| ){_FACTOR}){{0,3}}"
+_QUANTITY = re.compile(rf"({_FRACTION}|{_NUMBER})(?:\s*({_SPACED_UNIT}))?")
 
 
 def quantity(text: object, dimension: str) -> float:
@@ -64,6 +71,41 @@ def quantity(text: object, dimension: str) -> float:
     value = number * its_unit.size
     check_reach(value, dimension)
     return value
+
+
+def length(value: object, plain: Unit) -> float:
+    """Read a length or coordinate in m, with its sign.
+
+    Parameters
+    ----------
+    value : object
+        Text with a unit, or a number without one.
+    plain : Unit
+        What the number without one counts in.
+
+    Raises
+    ------
+    InputError
+        If it is neither, or too large.
+    """
+    if isinstance(value, str):
+        return quantity(value, "length")
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        raise InputError(
+            "a length is a number in the outline's unit, or text with a unit of its "
+            f"own, such as {DIMENSIONS['length'][1]}."
+        )
+    size = bare_number(value) * plain.size
+    check_reach(max(abs(size), 1.0), "length")  # a tiny one is 0 but for round-off
+    return size
+
+
+def two_lengths(text: str) -> tuple[float, float] | None:
+    """Read ``"200 mm x 100 mm"`` in m; ``None`` where it is not of two parts."""
+    parts = re.split("[x\u00d7]", text)
+    if len(parts) != 2:
+        return None
+    return positive(parts[0], "length"), positive(parts[1], "length")
 
 
 def stated_unit(text: object, dimension: str) -> Unit:
@@ -110,15 +152,19 @@ def angle(text: object) -> float:
 
 
 def share(text: object) -> float:
-    """Read a share such as ``"1 %"``, as a number between 0 and 1."""
-    match = (
-        re.fullmatch(rf"({_NUMBER})\s*%", text.strip())
-        if isinstance(text, str) and len(text) <= MOST_TEXT
-        else None
-    )
-    if match is None or not 0.0 < _number(match[1]) < 100.0:
+    """Read a share such as ``"1 %"``, as a number between 0 and 1, exclusive."""
+    per_cent = _per_cent(text)
+    if per_cent is None or not 0.0 < per_cent < 100.0:
         raise InputError('it must be a share between 0 and 100 %, such as "1 %".')
-    return _number(match[1]) / 100.0
+    return per_cent / 100.0
+
+
+def fraction(text: object) -> float:
+    """Read a part of a whole such as ``"40 %"``, as a number from 0 to 1."""
+    per_cent = _per_cent(text)
+    if per_cent is None or not 0.0 <= per_cent <= 100.0:
+        raise InputError('it must be a share from 0 % to 100 %, such as "40 %".')
+    return per_cent / 100.0
 
 
 @lru_cache(maxsize=256)
@@ -138,7 +184,8 @@ def unit(text: str, dimension: str) -> Unit:
         If there is no such unit, or it measures something else.
     """
     si, example = DIMENSIONS[dimension]
-    if len(text) > MOST_TEXT or not re.fullmatch(_UNIT, text):
+    pattern = _SPACED_UNIT if dimension in SPACED else _UNIT
+    if len(text) > MOST_TEXT or not re.fullmatch(pattern, text):
         raise InputError(f"{text!r} is no unit; write one such as {si}.")
     if text in SLIPS:
         raise InputError(
@@ -146,6 +193,7 @@ def unit(text: str, dimension: str) -> Unit:
         )
     ascii_text = text.replace("²", "^2").replace("³", "^3").replace("·", "*")
     ascii_text = re.sub(r"(?<=[A-Za-zµμ])(?=[1-4])", "^", ascii_text)
+    ascii_text = re.sub(r"(?<=[^/* ]) (?=[^/* ])", "*", ascii_text)
     pint = _registry()
     try:
         found = pint.parse_units(ascii_text)
@@ -193,6 +241,16 @@ def _split(text: object, dimension: str) -> tuple[float, Unit]:
     if unit_text is None:
         raise InputError(f"{name} needs a unit, such as {example}.")
     return _number(number), unit(unit_text, dimension)
+
+
+def _per_cent(text: object) -> float | None:
+    """Read the number of a text such as ``"1 %"``; ``None`` for anything else."""
+    match = (
+        re.fullmatch(rf"({_NUMBER})\s*%", text.strip())
+        if isinstance(text, str) and len(text) <= MOST_TEXT
+        else None
+    )
+    return None if match is None else _number(match[1])
 
 
 def _number(text: str) -> float:

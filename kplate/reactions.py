@@ -17,11 +17,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from kplate.arrays import Floats, Ints
+from kplate.arrays import Bools, Floats, Ints
 from kplate.boundary import rigid_motions
 from kplate.mesh import Mesh
 from kplate.recovery import SmoothedMoments
-from kplate.singular import Corner, plate_corners
+from kplate.singular import Corner, Place, excluded_places, plate_corners
 from kplate.solve.static import StaticState
 from kplate.supports import Support
 from kplate.values import Value
@@ -54,7 +54,7 @@ class Resultant:
 
 @dataclass(frozen=True, eq=False, kw_only=True)
 class SideReaction:
-    """What one side's support brings.
+    """What the support along one side or seam brings.
 
     Parameters
     ----------
@@ -69,7 +69,8 @@ class SideReaction:
     distance : ndarray, shape (k,)
         Distance in m along the side's stretches, one after the other.
     line_reaction : ndarray, shape (k,)
-        Effective shear v_n in N/m at the stations; nan at an unbounded corner.
+        Effective shear v_n in N/m at the stations; nan within the discs around places
+        without a finite moment.
     line_moment : ndarray, shape (k,)
         Clamping moment m_nn in N; 0 where the slope is not held.
     """
@@ -100,6 +101,28 @@ class CornerForce:
     force: Value
 
 
+@dataclass(frozen=True, kw_only=True)
+class PointReaction:
+    """What a point support brings.
+
+    Parameters
+    ----------
+    mark : str
+        Its name.
+    support : Support
+        How it is held.
+    force : Value
+        N, positive up, with its place.
+    resultant : Resultant
+        The force, and the couples where the slopes are held, about the origin's axes.
+    """
+
+    mark: str
+    support: Support
+    force: Value
+    resultant: Resultant
+
+
 @dataclass(frozen=True, eq=False, kw_only=True)
 class Reactions:
     """All support forces of one case, and their balance with the loads.
@@ -109,9 +132,11 @@ class Reactions:
     case : str
         The load case.
     sides : tuple of SideReaction
-        Supported sides.
+        Supported sides and seams.
     corners : tuple of CornerForce
         Corners at which a force can arise.
+    points : tuple of PointReaction
+        Point supports.
     load : Resultant
         The loads as integrated.
     total : Resultant
@@ -124,6 +149,7 @@ class Reactions:
     case: str
     sides: tuple[SideReaction, ...]
     corners: tuple[CornerForce, ...]
+    points: tuple[PointReaction, ...]
     load: Resultant
     total: Resultant
     imbalance: float
@@ -139,10 +165,12 @@ def reactions(state: StaticState, smoothed: SmoothedMoments, index: int) -> Reac
     rest = nodal.copy()
     for corner_force, vertex in found:
         rest[vertex, 0] -= np.nan_to_num(corner_force.force.value)
+    points = _point_reactions(state, rest, motions, index)
     return Reactions(
         case=state.cases[index].name,
         sides=tuple(_side_reactions(state, rest, motions)),
         corners=tuple(corner_force for corner_force, _ in found),
+        points=points,
         load=_resultant(motions, loads),
         total=_resultant(motions, nodal),
         imbalance=_imbalance(mesh, motions, nodal, loads),
@@ -164,7 +192,10 @@ def _corner_forces(
         if not corner.unbounded:
             edges = mesh.boundary_joints[joint]
             tangents = mesh.tangents(edges, np.full(2, vertex))
-            m_ns = _twist(smoothed.moments[vertex, :, index], tangents)
+            # The arriving edge ends at the corner, the leaving one begins there.
+            ends = smoothed.nodes.of_edges(mesh, mesh.boundary_edges[edges])
+            nodes = [ends[0, 1], ends[1, 0]]
+            m_ns = _twist(smoothed.moments[nodes, :, index], tangents)
             jump, reason = float(m_ns[0] - m_ns[1]), ""
         force = Value(
             value=jump, place=corner.place, case=state.cases[index].name, reason=reason
@@ -179,83 +210,208 @@ def _joint_at(mesh: Mesh, corner: Corner) -> int:
     return int(np.argmin(np.hypot(*(ends - corner.place).T)))
 
 
-def _twist(moment: Floats, tangents: Floats) -> Floats:
-    """m_ns of a moment (3,) on edges of tangents (k, 2), outward on their right."""
+def _twist(moments: Floats, tangents: Floats) -> Floats:
+    """m_ns of moments (k, 3) on edges of tangents (k, 2), outward on their right."""
     tx, ty = tangents.T
     nx, ny = ty, -tx
-    return nx * tx * moment[0] + ny * ty * moment[1] + (nx * ty + ny * tx) * moment[2]
+    m_xx, m_yy, m_xy = moments.T
+    return nx * tx * m_xx + ny * ty * m_yy + (nx * ty + ny * tx) * m_xy
+
+
+def _point_reactions(
+    state: StaticState, rest: Floats, motions: Floats, index: int
+) -> tuple[PointReaction, ...]:
+    """Reactions of held marks, which are taken off what vertices bring."""
+    mesh, found = state.mesh, []
+    for name, vertex in zip(mesh.mark_names, mesh.mark_vertices, strict=True):
+        support = state.plate.support(name)
+        if not (support.holds_deflection or support.holds_slope):
+            continue
+        own = np.zeros_like(rest)
+        own[vertex], rest[vertex] = rest[vertex], 0.0
+        x, y = mesh.points[vertex]
+        force = Value(
+            value=float(own[vertex, 0]),
+            place=(float(x), float(y)),
+            case=state.cases[index].name,
+        )
+        found.append(
+            PointReaction(
+                mark=name,
+                support=support,
+                force=force,
+                resultant=_resultant(motions, own),
+            )
+        )
+    return tuple(found)
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class _Line:
+    """Edges of a held side or seam, with their lengths."""
+
+    name: str
+    support: Support
+    edges: Ints
+    lengths: Floats
+
+
+def _held_lines(state: StaticState) -> list[_Line]:
+    """Held sides, then held seams."""
+    mesh, plate = state.mesh, state.plate
+    sides = [
+        (name, mesh.boundary_edges[mesh.boundary_sides == number])
+        for number, name in enumerate(mesh.side_names)
+    ]
+    seams = [
+        (name, mesh.seam_edges[mesh.seam_numbers == number])
+        for number, name in enumerate(mesh.seam_names)
+    ]
+    found = []
+    for name, edges in [*sides, *seams]:
+        support = plate.support(name)
+        if support.holds_deflection or support.holds_slope:
+            start, end = np.moveaxis(mesh.points[edges], 1, 0)
+            lengths = np.hypot(*(end - start).T)
+            found.append(
+                _Line(name=name, support=support, edges=edges, lengths=lengths)
+            )
+    return found
 
 
 def _side_reactions(
     state: StaticState, rest: Floats, motions: Floats
 ) -> list[SideReaction]:
-    """Reactions of the supported sides from vertex forces less corner forces."""
-    mesh, plate = state.mesh, state.plate
-    holds = np.array([plate.support(name).holds_deflection for name in mesh.side_names])
-    held_length = np.zeros(len(mesh.points))  # of the supported edges at each vertex
-    for end in (0, 1):
-        lengths = mesh.boundary_lengths * holds[mesh.boundary_sides]
-        np.add.at(held_length, mesh.boundary_edges[:, end], lengths)
-    unbounded = {
-        int(mesh.boundary_edges[_joint_at(mesh, corner), 1])
-        for corner in plate_corners(plate)
-        if corner.unbounded
-    }
-    found = []
-    for number, name in enumerate(mesh.side_names):
-        if not holds[number]:
-            continue
-        edges = np.flatnonzero(mesh.boundary_sides == number)
-        share = np.zeros(len(mesh.points))
-        for end in (0, 1):
-            np.add.at(
-                share, mesh.boundary_edges[edges, end], mesh.boundary_lengths[edges]
-            )
-        length = 0.5 * share
-        used = share > 0.0
-        share[used] /= held_length[used]
-        own = share[:, None] * rest
-        chains = _stretches(mesh, edges)
-        parts = [_along(mesh, chain, own, length, unbounded) for chain in chains]
-        support = plate.support(name)
-        starts = np.cumsum([0.0, *(float(part[0][-1]) for part in parts[:-1])])
-        found.append(
-            SideReaction(
-                side=name,
-                support=support,
-                resultant=_resultant(motions, own),
-                stations=mesh.points[np.concatenate(chains)],
-                distance=np.concatenate(
-                    [part[0] + s for part, s in zip(parts, starts, strict=True)]
-                ),
-                line_reaction=np.concatenate([part[1] for part in parts]),
-                line_moment=np.concatenate([part[2] for part in parts])
-                * support.holds_slope,
-            )
-        )
-    return found
+    """Reactions of held sides and seams from vertex forces less corner forces."""
+    mesh = state.mesh
+    lines = _held_lines(state)
+    discs = excluded_places(state.plate, ())
+    unbounded = np.zeros(len(mesh.points), dtype=bool)
+    for disc in discs:
+        reach = np.hypot(*(mesh.points - disc.place).T)
+        unbounded |= reach <= disc.radius * (1.0 + 1e-9)
+    owns = _shared(mesh, lines, rest)
+    return [
+        _line_reaction(mesh, line, own, (motions, unbounded))
+        for line, own in zip(lines, owns, strict=True)
+    ]
 
 
-def _stretches(mesh: Mesh, edges: Ints) -> list[Ints]:
-    """Vertices along each connected stretch of some boundary edges, in order.
+def _shared(mesh: Mesh, lines: list[_Line], rest: Floats) -> list[Floats]:
+    """What vertices bring, shared among the lines that hold them, (n_points, 3) each.
 
-    A closed stretch repeats its first vertex at the end.
+    Forces go by the length of the lines that hold w. Of couples, lines that hold the
+    slope take the parts along their normals; what is left goes by length.
     """
-    follow = dict(mesh.boundary_edges[edges].tolist())
-    ends = set(follow.values())
-    heads = [v for v in follow if v not in ends]
+    lengths = np.array([_length_at(mesh, line) for line in lines])
+    carries = np.array([line.support.holds_deflection for line in lines])
+    total = np.maximum(lengths.sum(axis=0), np.finfo(float).tiny)
+    pushing = lengths * carries[:, None]
+    by_force = pushing / np.maximum(pushing.sum(axis=0), np.finfo(float).tiny)
+    owns = [np.zeros_like(rest) for _ in lines]
+    for k, own in enumerate(owns):
+        own[:, 0] = by_force[k] * rest[:, 0]
+        own[:, 1:] = (lengths[k] / total)[:, None] * rest[:, 1:]
+    for vertex in np.flatnonzero((lengths > 0.0).sum(axis=0) > 1).tolist():
+        at = np.flatnonzero(lengths[:, vertex] > 0.0).tolist()
+        turning = [k for k in at if lines[k].support.holds_slope]
+        normals = np.array([_normal_at(mesh, lines[k], vertex) for k in turning])
+        if not len(normals):
+            continue
+        parts = np.linalg.pinv(normals.T) @ rest[vertex, 1:]
+        left = rest[vertex, 1:] - normals.T @ parts
+        for k in at:
+            owns[k][vertex, 1:] = lengths[k, vertex] / total[vertex] * left
+        for k, normal, part in zip(turning, normals, parts, strict=True):
+            owns[k][vertex, 1:] += part * normal
+    return owns
+
+
+def _normal_at(mesh: Mesh, line: _Line, vertex: int) -> Floats:
+    """Unit normal on the right of a line at one of its vertices, (2,)."""
+    own = line.edges[(line.edges == vertex).any(axis=1)]
+    step = (mesh.points[own[:, 1]] - mesh.points[own[:, 0]]).sum(axis=0)
+    normal: Floats = np.array([step[1], -step[0]]) / np.hypot(*step)
+    return normal
+
+
+def _length_at(mesh: Mesh, line: _Line) -> Floats:
+    """Length of a line's edges at each vertex, (n_points,)."""
+    ends = line.edges.ravel()
+    return np.bincount(
+        ends, np.repeat(line.lengths, 2), minlength=len(mesh.points)
+    ).astype(np.float64)
+
+
+def _line_reaction(
+    mesh: Mesh, line: _Line, own: Floats, shared: tuple[Floats, Bools]
+) -> SideReaction:
+    """Reaction of one side or seam from its share of what its vertices bring."""
+    motions, unbounded = shared
+    at = _length_at(mesh, line)
+    chains = _stretches(line.edges)
+    parts = [_along(mesh, chain, own, 0.5 * at, unbounded) for chain in chains]
+    starts = np.cumsum([0.0, *(float(part[0][-1]) for part in parts[:-1])])
+    return SideReaction(
+        side=line.name,
+        support=line.support,
+        resultant=_resultant(motions, own),
+        stations=mesh.points[np.concatenate(chains)],
+        distance=np.concatenate(
+            [part[0] + s for part, s in zip(parts, starts, strict=True)]
+        ),
+        line_reaction=np.concatenate([part[1] for part in parts])
+        * line.support.holds_deflection,
+        line_moment=np.concatenate([part[2] for part in parts])
+        * line.support.holds_slope,
+    )
+
+
+def _stretches(edges: Ints) -> list[Ints]:
+    """Vertices along each connected stretch of edges, in order.
+
+    Stretches follow the first edge's sense; a closed one repeats its first vertex.
+    """
+    neighbours: dict[int, list[int]] = {}
+    for a, b in edges.tolist():
+        neighbours.setdefault(a, []).append(b)
+        neighbours.setdefault(b, []).append(a)
+    left = dict.fromkeys(map(tuple, edges.tolist()))
+    ends = [v for v in edges[:, 0].tolist() if len(neighbours[v]) == 1]
+    others = [v for v in edges[:, 1].tolist() if len(neighbours[v]) == 1]
     chains = []
-    while follow:
-        first = heads.pop(0) if heads else next(iter(follow))
-        chain = [first]
-        while chain[-1] in follow:
-            chain.append(follow.pop(chain[-1]))
+    while left:
+        heads = [v for v in (*ends, *others) if _open(v, neighbours, left)]
+        chain = [heads[0] if heads else next(iter(left))[0]]
+        while True:
+            step = next(
+                (
+                    (pair, v)
+                    for v in neighbours[chain[-1]]
+                    for pair in ((chain[-1], v), (v, chain[-1]))
+                    if pair in left
+                ),
+                None,
+            )
+            if step is None:
+                break
+            del left[step[0]]
+            chain.append(step[1])
         chains.append(np.array(chain))
     return chains
 
 
+def _open(
+    vertex: int,
+    neighbours: dict[int, list[int]],
+    left: dict[tuple[int, ...], None],
+) -> bool:
+    """Whether an edge at a vertex is still left."""
+    return any((vertex, v) in left or (v, vertex) in left for v in neighbours[vertex])
+
+
 def _along(
-    mesh: Mesh, chain: Ints, own: Floats, length: Floats, unbounded: set[int]
+    mesh: Mesh, chain: Ints, own: Floats, length: Floats, unbounded: Bools
 ) -> tuple[Floats, Floats, Floats]:
     """Distance, line reaction and line moment at the vertices of a stretch."""
     step = np.diff(mesh.points[chain], axis=0)
@@ -270,11 +426,11 @@ def _along(
     normal = np.column_stack([tangent[:, 1], -tangent[:, 0]])
     across = np.einsum("kc,kc->k", normal, own[chain, 1:])
     along = np.einsum("kc,kc->k", tangent, own[chain, 1:]) / length[chain]
-    spans = _three(length[chain], closed)
+    spans = _three(_three(length[chain], closed), closed)
     force = _three(own[chain, 0], closed) - _gain(along, closed)
-    reaction = force / spans
-    moment = _three(across, closed) / spans
-    reaction[[int(v) in unbounded for v in chain]] = np.nan
+    reaction = _three(force, closed) / spans
+    moment = _three(_three(across, closed), closed) / spans
+    reaction[unbounded[chain]] = np.nan
     return distance, reaction, moment
 
 
@@ -317,15 +473,40 @@ def _imbalance(mesh: Mesh, motions: Floats, nodal: Floats, loads: Floats) -> flo
     """Largest sum of loads and support forces over the sum of their magnitudes."""
     size = float(np.ptp(mesh.points, axis=0).max())
     sums = np.einsum("vum,vu->m", motions, nodal + loads)
-    scale = float(np.abs(nodal[:, 0]).sum() + np.abs(loads[:, 0]).sum())
+    magnitude = np.abs(nodal).sum(axis=0) + np.abs(loads).sum(axis=0)
+    scale = float(magnitude[0] + magnitude[1:].sum() / size)
     reach = np.array([1.0, size, size])
     return float(np.max(np.abs(sums) / reach) / scale) if scale > 0.0 else 0.0
 
 
 def hold_down(forces: Sequence[CornerForce]) -> tuple[float, list[CornerForce]]:
-    """Largest pull in N that a corner needs, and which need it within 0.1 %."""
+    """Largest pull in N that a corner needs, and which need it within 1 %.
+
+    Corners without a finite force are left out; the pull is nan where there are no
+    others.
+    """
     known = [f for f in forces if not np.isnan(f.force.value)]
+    if forces and not known:
+        return np.nan, []
     most = max((-f.force.value for f in known), default=0.0)
     if most <= 0.0:
         return 0.0, []
-    return most, [f for f in known if -f.force.value >= 0.999 * most]
+    return most, [f for f in known if -f.force.value >= 0.99 * most]
+
+
+def side_uplift(sides: Sequence[SideReaction]) -> tuple[float, Place | None, str]:
+    """Largest line force in N/m with which a side must be held down, where, and which.
+
+    0 where every side only pushes the plate up.
+    """
+    most, place, name = 0.0, None, ""
+    for side in sides:
+        known = ~np.isnan(side.line_reaction)
+        if not known.any():
+            continue
+        pull = np.where(known, -side.line_reaction, -np.inf)
+        best = int(np.argmax(pull))
+        if pull[best] > most:
+            x, y = side.stations[best].tolist()
+            most, place, name = float(pull[best]), (x, y), side.side
+    return most, place, name

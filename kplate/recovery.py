@@ -26,9 +26,10 @@ import numpy as np
 import scipy.sparse as sp
 from numpy.typing import ArrayLike
 
-from kplate.arrays import Bools, Floats
+from kplate.arrays import Floats, Ints
 from kplate.errors import InputError
 from kplate.mesh import Mesh
+from kplate.plate import Plate
 from kplate.quadrature import triangle_rule
 from kplate.solve.static import StaticState
 from kplate.values import Face
@@ -43,38 +44,85 @@ _BLOCK = 2048  # vertices
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
-class SmoothedMoments:
-    """Moments and transverse shears at the vertices.
+class Nodes:
+    """Vertices, each once for every part of the plate that meets there.
+
+    A step of thickness or material parts the triangles around a vertex, and so does a
+    seam, across which moments may have a kink: nothing is averaged over either.
 
     Parameters
     ----------
-    moments : ndarray, shape (n_points, 3, c)
+    vertices : ndarray, shape (n,)
+        Vertex of each node.
+    triangles : ndarray, shape (n_triangles, 3)
+        Nodes of each triangle.
+    sections : ndarray, shape (n,)
+        Section of the plate around each node.
+    """
+
+    vertices: Ints
+    triangles: Ints
+    sections: Ints
+
+    @classmethod
+    def of(cls, plate: Plate, mesh: Mesh) -> "Nodes":
+        """Nodes of a plate on its mesh; the vertices themselves where nothing parts."""
+        alike = np.array([plate.sections.index(own) for own in plate.sections])
+        section = alike[mesh.zones]
+        label = _parted(mesh, section)
+        # Numbered vertex by vertex; the vertices' own numbers where nothing is parted.
+        corners = np.column_stack([mesh.triangles.ravel(), label])
+        unique, inverse = np.unique(corners, axis=0, return_inverse=True)
+        triangles = inverse.reshape(-1, 3)
+        sections = np.empty(len(unique), dtype=np.int64)
+        sections[triangles] = section[:, None]
+        return cls(vertices=unique[:, 0], triangles=triangles, sections=sections)
+
+    def of_edges(self, mesh: Mesh, edges: Ints) -> Ints:
+        """Nodes of edges (k, 2) as one triangle at each has them, (k, 2)."""
+        triangles = mesh.triangles_at(edges)
+        own = mesh.triangles[triangles]
+        which = np.argmax(own[:, None, :] == edges[:, :, None], axis=2)
+        return np.take_along_axis(self.triangles[triangles], which, axis=1)
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class SmoothedMoments:
+    """Moments and transverse shears at the nodes.
+
+    Parameters
+    ----------
+    nodes : Nodes
+        Where.
+    moments : ndarray, shape (n, 3, c)
         m_xx, m_yy, m_xy in N of each case.
-    shears : ndarray, shape (n_points, 2, c)
+    shears : ndarray, shape (n, 2, c)
         q_x, q_y in N/m.
     """
 
+    nodes: Nodes
     moments: Floats
     shears: Floats
 
 
 def smoothed_moments(state: StaticState) -> SmoothedMoments:
-    """Fit moments and shears at every vertex."""
+    """Fit moments and shears at every node."""
     mesh, cases = state.mesh, len(state.cases)
-    samples = element_moments(state, _SAMPLES).reshape(
-        len(mesh.triangles), -1, 3 * cases
-    )
+    nodes = Nodes.of(state.plate, mesh)
+    samples = element_moments(state, _SAMPLES)
+    samples = samples.reshape(len(mesh.triangles), -1, 3 * cases)
     places = np.einsum("qv,nvc->nqc", _SAMPLES, mesh.points[mesh.triangles])
-    near = _neighbours(mesh)
-    fitted = _fit(mesh, _triangle_patches(mesh, near), places, samples, _QUADRATIC)
+    touch = _touch(nodes)
+    near = (touch @ touch.T).tocsr()
+    at, radius = mesh.points[nodes.vertices], _radii(mesh)[nodes.vertices]
+    patches = _widen((near @ touch).tocsr(), near)
+    fitted = _fit((at, radius), patches, (places, samples), _QUADRATIC)
     moments = fitted[:, 0].reshape(-1, 3, cases)
-    inner = np.ones(len(mesh.points))
-    inner[mesh.boundary_edges] = 0.0
-    patches = _vertex_patches(near, inner)
-    by = _fit(mesh, patches, mesh.points[:, None], fitted[:, :1], _LINEAR)[:, 1:]
+    patches = _inner_patches(near, _inner(mesh, nodes))
+    by = _fit((at, radius), patches, (at[:, None], fitted[:, :1]), _LINEAR)[:, 1:]
     by_x, by_y = by.reshape(-1, 2, 3, cases).swapaxes(0, 1)
     shears = -np.stack([by_x[:, 0] + by_y[:, 2], by_x[:, 2] + by_y[:, 1]], axis=1)
-    return SmoothedMoments(moments=moments, shears=shears)
+    return SmoothedMoments(nodes=nodes, moments=moments, shears=shears)
 
 
 def element_moments(state: StaticState, barycentrics: Floats) -> Floats:
@@ -86,7 +134,8 @@ def element_moments(state: StaticState, barycentrics: Floats) -> Floats:
         B = state.element.curvature(mesh.points[mesh.triangles[block]], barycentrics)
         n, q, _, d = B.shape
         strain = B.reshape(n, 3 * q, d) @ state.unknowns[table[block]]
-        result[block] = state.plate.rigidity @ strain.reshape(n, q, 3, -1)
+        rigidity = state.plate.rigidities[mesh.zones[block]]
+        result[block] = rigidity[:, None] @ strain.reshape(n, q, 3, -1)
     return result
 
 
@@ -137,8 +186,10 @@ def principal_moments(moments: ArrayLike) -> tuple[Floats, Floats]:
     return principal, 0.5 * np.arctan2(m_xy, half)
 
 
-def surface_stress(moments: Floats, thickness: float, face: Face) -> Floats:
+def surface_stress(moments: Floats, thickness: Floats | float, face: Face) -> Floats:
     """Bending stress on a face in Pa, tension positive, of moments (..., 3) in N.
+
+    The thickness in m is one number or has shape (...).
 
     Raises
     ------
@@ -148,7 +199,7 @@ def surface_stress(moments: Floats, thickness: float, face: Face) -> Floats:
     if face not in ("top", "bottom"):
         raise InputError(f"there is no face {face!r}; the faces are top and bottom.")
     sign = -1.0 if face == "top" else 1.0
-    return sign * 6.0 / thickness**2 * moments
+    return sign * 6.0 / np.asarray(thickness, dtype=float)[..., None] ** 2 * moments
 
 
 def von_mises(stress: Floats) -> Floats:
@@ -157,27 +208,58 @@ def von_mises(stress: Floats) -> Floats:
     return np.sqrt(xx**2 - xx * yy + yy**2 + 3.0 * xy**2)
 
 
-def _neighbours(mesh: Mesh) -> sp.csr_array:
-    """Which vertices share a triangle, each with itself too, (n_points, n_points)."""
-    n = len(mesh.points)
-    rows = np.concatenate([mesh.edges[:, 0], mesh.edges[:, 1], np.arange(n)])
-    columns = np.concatenate([mesh.edges[:, 1], mesh.edges[:, 0], np.arange(n)])
-    return sp.csr_array((np.ones(len(rows)), (rows, columns)), shape=(n, n))
+def _parted(mesh: Mesh, section: Ints) -> Ints:
+    """Label of the part each corner of each triangle belongs to, (3 n_triangles,).
+
+    Corners that neighbours share are joined across their common edge, unless a seam or
+    a change of section runs along it.
+    """
+    n = len(mesh.triangles)
+    edge = mesh.triangle_edges.ravel()
+    order = np.argsort(edge, kind="stable")
+    twice = np.flatnonzero(edge[order][1:] == edge[order][:-1])
+    first, second = order[twice], order[twice + 1]
+    open_edge = section[first // 3] == section[second // 3]
+    if len(mesh.seam_edges):
+        size = len(mesh.points)
+        seams = np.sort(mesh.seam_edges, axis=1) @ [size, 1]
+        own = mesh.edges[edge[first]] @ [size, 1]
+        open_edge &= ~np.isin(own, seams)
+    first, second = first[open_edge], second[open_edge]
+    pairs = []
+    for turn in (1, 2):
+        # Going round, the ends of a common edge come in opposite order.
+        a = 3 * (first // 3) + (first % 3 + turn) % 3
+        b = 3 * (second // 3) + (second % 3 + 3 - turn) % 3
+        pairs.append(np.column_stack([a, b]))
+    joined = np.concatenate(pairs)
+    ones = np.ones(len(joined))
+    graph = sp.coo_array((ones, tuple(joined.T)), shape=(3 * n, 3 * n))
+    from scipy.sparse.csgraph import connected_components
+
+    labels = connected_components(graph, directed=False)[1]
+    return np.asarray(labels, dtype=np.int64)
 
 
-def _triangle_patches(mesh: Mesh, near: sp.csr_array) -> sp.csr_array:
-    """Triangles in two layers around each vertex, three where those are few."""
-    n, m = len(mesh.points), len(mesh.triangles)
+def _touch(nodes: Nodes) -> sp.csr_array:
+    """Which triangles touch each node, (n_nodes, n_triangles)."""
+    n, m = len(nodes.vertices), len(nodes.triangles)
     owner = np.repeat(np.arange(m), 3)
-    touch = sp.csr_array(
-        (np.ones(3 * m), (mesh.triangles.ravel(), owner)), shape=(n, m)
+    return sp.csr_array(
+        (np.ones(3 * m), (nodes.triangles.ravel(), owner)), shape=(n, m)
     )
-    patches = (near @ touch).tocsr()
-    return _widen(patches, np.diff(patches.indptr) < ENOUGH, near)
 
 
-def _vertex_patches(near: sp.csr_array, inner: Floats) -> sp.csr_array:
-    """Vertices in three layers around each; the boundary's own where others are few."""
+def _inner(mesh: Mesh, nodes: Nodes) -> Floats:
+    """One at nodes inside a part of the plate, zero at those on its edges."""
+    outer = np.bincount(nodes.vertices, minlength=len(mesh.points)) > 1
+    outer[mesh.boundary_edges] = True
+    outer[mesh.seam_edges] = True
+    return (~outer[nodes.vertices]).astype(float)
+
+
+def _inner_patches(near: sp.csr_array, inner: Floats) -> sp.csr_array:
+    """Nodes in three layers around each; those on edges where others are few."""
     patches = (near @ near @ near).tocsr()
     inside = (patches @ sp.diags_array(inner)).tocsr()
     inside.eliminate_zeros()
@@ -187,11 +269,12 @@ def _vertex_patches(near: sp.csr_array, inner: Floats) -> sp.csr_array:
     return patches
 
 
-def _widen(patches: sp.csr_array, rows: Bools, near: sp.csr_array) -> sp.csr_array:
-    """Take a further layer into some rows."""
-    if not rows.any():
+def _widen(patches: sp.csr_array, near: sp.csr_array) -> sp.csr_array:
+    """Take a further layer of triangles where there are few."""
+    few = np.diff(patches.indptr) < ENOUGH
+    if not few.any():
         return patches
-    further = sp.diags_array(rows.astype(float)) @ near @ patches
+    further = sp.diags_array(few.astype(float)) @ near @ patches
     further.eliminate_zeros()
     return (patches + further).tocsr()
 
@@ -205,15 +288,19 @@ def _radii(mesh: Mesh) -> Floats:
 
 
 def _fit(
-    mesh: Mesh, patches: sp.csr_array, places: Floats, samples: Floats, degree: int
+    about: tuple[Floats, Floats],
+    patches: sp.csr_array,
+    data: tuple[Floats, Floats],
+    terms: int,
 ) -> Floats:
-    """Value and gradient at the vertices of weighted polynomial fits, (n, 3, k).
+    """Value and gradient at nodes of weighted polynomial fits, (n, 3, k).
 
-    Row i of `patches` lists the groups of samples around vertex i; group j has its
-    samples (q, k) at the places (q, 2).
+    `about` holds the places (n, 2) and radii (n,) of the nodes. Row i of `patches`
+    lists the groups of samples around node i; `data` has the places (groups, q, 2) and
+    the samples (groups, q, k).
     """
-    n, k = len(mesh.points), samples.shape[-1]
-    radius = _radii(mesh)
+    (at, radius), (places, samples) = about, data
+    n, k = len(at), samples.shape[-1]
     fitted = np.empty((n, 3, k))
     for start in range(0, n, _BLOCK):
         stop = min(start + _BLOCK, n)
@@ -221,12 +308,9 @@ def _fit(
         groups = patches.indices[pointers[0] : pointers[-1]]
         owner = np.repeat(np.arange(start, stop), np.diff(pointers))
         x, y = np.moveaxis(
-            (places[groups] - mesh.points[owner, None]) / radius[owner, None, None],
-            -1,
-            0,
+            (places[groups] - at[owner, None]) / radius[owner, None, None], -1, 0
         )
-        terms = [np.ones_like(x), x, y, x * x, x * y, y * y][:degree]
-        p = np.stack(terms, axis=-1)
+        p = np.stack([np.ones_like(x), x, y, x * x, x * y, y * y][:terms], axis=-1)
         weighted = (p * np.exp(-0.5 * (x * x + y * y))[..., None]).swapaxes(1, 2)
         first = pointers[:-1] - pointers[0]
         normal = np.add.reduceat(weighted @ p, first, axis=0)

@@ -4,7 +4,6 @@ import math
 from abc import ABC, abstractmethod
 from dataclasses import dataclass
 from functools import cached_property
-from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -12,7 +11,8 @@ from numpy.typing import ArrayLike
 from kplate import curves
 from kplate.arrays import read_only_floats
 from kplate.errors import InputError
-from kplate.polygon import FARTHEST, Polygon
+from kplate.given import as_number, as_pair, as_positive
+from kplate.polygon import Polygon
 
 
 class Shape(ABC):
@@ -65,8 +65,8 @@ class Circle(Shape):
     def __post_init__(self) -> None:
         """Check the numbers."""
         what = f"circle {self.name!r}"
-        _put(self, "centre", _pair(what, "centre", self.centre))
-        _put(self, "radius", _positive(what, "radius", self.radius))
+        _put(self, "centre", as_pair(what, "centre", self.centre))
+        _put(self, "radius", as_positive(what, "radius", self.radius))
 
     @cached_property
     def line(self) -> Polygon:
@@ -106,10 +106,10 @@ class Slot(Shape):
     def __post_init__(self) -> None:
         """Check the numbers."""
         what = f"slot {self.name!r}"
-        _put(self, "centre", _pair(what, "centre", self.centre))
-        _put(self, "angle", _number(what, "angle", self.angle))
+        _put(self, "centre", as_pair(what, "centre", self.centre))
+        _put(self, "angle", as_number(what, "angle", self.angle))
         for key in ("length", "width"):
-            _put(self, key, _positive(what, key, getattr(self, key)))
+            _put(self, key, as_positive(what, key, getattr(self, key)))
         if self.length <= self.width:
             raise InputError(
                 f"{what} is {self.length:g} m long and {self.width:g} m wide; its "
@@ -151,11 +151,11 @@ class Rectangle(Shape):
     def __post_init__(self) -> None:
         """Check the numbers."""
         what = f"rectangle {self.name!r}"
-        _put(self, "centre", _pair(what, "centre", self.centre))
-        a, b = _pair(what, "size", self.size)
-        _put(self, "size", (_positive(what, "size", a), _positive(what, "size", b)))
-        _put(self, "angle", _number(what, "angle", self.angle))
-        r = _number(what, "corner radius", self.corner_radius)
+        _put(self, "centre", as_pair(what, "centre", self.centre))
+        a, b = as_pair(what, "size", self.size)
+        _put(self, "size", (as_positive(what, "size", a), as_positive(what, "size", b)))
+        _put(self, "angle", as_number(what, "angle", self.angle))
+        r = as_number(what, "corner radius", self.corner_radius)
         _put(self, "corner_radius", r)
         if not 0.0 <= r < 0.5 * min(a, b):
             raise InputError(
@@ -200,10 +200,10 @@ class Ellipse(Shape):
     def __post_init__(self) -> None:
         """Check the numbers."""
         what = f"ellipse {self.name!r}"
-        _put(self, "centre", _pair(what, "centre", self.centre))
-        a, b = _pair(what, "size", self.size)
-        _put(self, "size", (_positive(what, "size", a), _positive(what, "size", b)))
-        _put(self, "angle", _number(what, "angle", self.angle))
+        _put(self, "centre", as_pair(what, "centre", self.centre))
+        a, b = as_pair(what, "size", self.size)
+        _put(self, "size", (as_positive(what, "size", a), as_positive(what, "size", b)))
+        _put(self, "angle", as_number(what, "angle", self.angle))
 
     @cached_property
     def line(self) -> Polygon:
@@ -232,33 +232,3 @@ def _placed(
 
 def _put(shape: object, key: str, value: object) -> None:
     object.__setattr__(shape, key, value)
-
-
-def _number(what: str, key: str, value: Any) -> float:
-    try:
-        number = float(value + 0.0)  # adding keeps text from being read as a number
-    except (TypeError, ValueError) as error:
-        raise InputError(f"{what} has {key} {value!r}; it must be a number.") from error
-    if not abs(number) <= FARTHEST:
-        raise InputError(
-            f"{what} has {key} {number:g}; it must be finite, no larger than "
-            f"{FARTHEST:g}."
-        )
-    return number
-
-
-def _positive(what: str, key: str, value: Any) -> float:
-    number = _number(what, key, value)
-    if number <= 0.0:
-        raise InputError(f"{what} has {key} {number:g} m; it must be positive.")
-    return number
-
-
-def _pair(what: str, key: str, value: Any) -> tuple[float, float]:
-    try:
-        x, y = value
-    except (TypeError, ValueError) as error:
-        raise InputError(
-            f"{what} has {key} {value!r}; give a pair of numbers in m."
-        ) from error
-    return _number(what, key, x), _number(what, key, y)

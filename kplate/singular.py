@@ -14,10 +14,18 @@ from itertools import combinations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from kplate import corners
-from kplate.loads import Case, PointForce, PointMoment
+from kplate import corners, curves
+from kplate.arrays import Bools
+from kplate.loads import (
+    Case,
+    DiscPatch,
+    Load,
+    PointForce,
+    PointMoment,
+    RectanglePatch,
+)
 from kplate.plate import Plate
-from kplate.polygon import Polygon
+from kplate.polygon import SNAP, Polygon
 from kplate.supports import Support
 
 Place = tuple[float, float]
@@ -56,6 +64,11 @@ class Corner:
         return any(s.holds_deflection for s in self.supports) and not any(
             s.holds_slope for s in self.supports
         )
+
+    @property
+    def both_held(self) -> bool:
+        """Whether both sides hold the deflection."""
+        return all(s.holds_deflection for s in self.supports)
 
     @property
     def words(self) -> str:
@@ -129,12 +142,28 @@ def excluded_places(
     found += [Excluded(place=p, radius=r, reason=why) for p, why in inside]
     for case in cases:
         for load in case.loads:
-            if isinstance(load, PointForce | PointMoment):
-                what = "point force" if isinstance(load, PointForce) else "point moment"
+            what, place = _concentrated(load, plate)
+            if what:
                 found.append(
-                    Excluded(place=load.at, radius=r, reason=what, case=case.name)
+                    Excluded(place=place, radius=r, reason=what, case=case.name)
                 )
     return tuple(found)
+
+
+def _concentrated(load: Load, plate: Plate) -> tuple[str, Place]:
+    """What makes a load a point load, and where; no words where it is none."""
+    match load:
+        case PointForce(at=place):
+            return "point force", place
+        case PointMoment(at=place):
+            return "point moment", place
+        case RectanglePatch(centre=place, size=size):
+            small = max(size) < plate.thickness
+        case DiscPatch(centre=place, radius=radius):
+            small = 2.0 * radius < plate.thickness
+        case _:
+            return "", (0.0, 0.0)
+    return ("patch smaller than the thickness" if small else ""), place
 
 
 def _held_inside(plate: Plate) -> list[tuple[Place, str]]:
@@ -176,10 +205,24 @@ def _steps(plate: Plate) -> list[tuple[Place, str]]:
         if plate.sections[number] == plate.sections[0]:
             continue
         line = zone.shape.line
-        for point, turn in zip(line.points, line.turns, strict=True):
-            if abs(turn) >= plate.bend_turn:
-                found.append((_pair(point), f"corner of the step at zone {zone.name}"))
+        inner = _inside(plate, line)
+        for i, turn in enumerate(line.turns):
+            if abs(turn) >= plate.bend_turn and (inner[i] or inner[i - 1]):
+                place = _pair(line.points[i])
+                found.append((place, f"corner of the step at zone {zone.name}"))
     return found
+
+
+def _inside(plate: Plate, line: Polygon) -> Bools:
+    """Pieces of a line that do not run along the plate's boundary, (n,)."""
+    middle = curves.points_at(
+        line.points, line.ends, line.bulges, np.full(len(line.bulges), 0.5)
+    )
+    off = [
+        curves.distances(middle, own.points, own.ends, own.bulges).min(axis=1)
+        for own in plate.outline.boundaries
+    ]
+    return np.min(off, axis=0) > SNAP * plate.outline.size
 
 
 def _pair(point: ArrayLike) -> Place:

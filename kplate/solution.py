@@ -5,9 +5,11 @@ forces positive up, moments positive where they compress the top face, stresses 
 in tension. Methods that take a `case` want its name where there are several.
 """
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import cached_property
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -33,6 +35,15 @@ RIM_SAMPLES = 64  # points on the rim of an excluded disc
 # Steps along each edge of the triangles around the highest vertex of a deflection.
 _STEPS = 4
 _FACES: tuple[Face, Face] = ("top", "bottom")
+
+
+class _Candidates(NamedTuple):
+    """Places (k, 2) where moments may peak, with what is known there."""
+
+    places: Floats
+    moments: Floats
+    shears: Floats
+    thickness: Floats
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -96,14 +107,14 @@ class Solution:
     def shear_stress(self, points: ArrayLike, *, case: str | None = None) -> Floats:
         """Largest transverse shear stress 3 q / 2h in Pa, at mid-depth, (k,)."""
         q = self.shears(points, case=case)
-        return 1.5 * np.hypot(*q.T) / self.plate.thickness
+        return 1.5 * np.hypot(*q.T) / self._thickness_at(points)
 
     def stresses(
         self, points: ArrayLike, *, face: Face, case: str | None = None
     ) -> Floats:
         """Stresses xx, yy, xy in Pa on a face at points (k, 2) in m, (k, 3)."""
         moments = self.moments(points, case=case)
-        return surface_stress(moments, self.plate.thickness, face)
+        return surface_stress(moments, self._thickness_at(points), face)
 
     def von_mises(
         self, points: ArrayLike, *, face: Face, case: str | None = None
@@ -126,17 +137,35 @@ class Solution:
     def hold_down(self, *, case: str | None = None) -> tuple[Value, list[CornerForce]]:
         """Largest pull in N that a corner needs, and the corners that need it.
 
-        The value is 0 where no corner has to be held down.
+        Corners without a finite force are left out and counted in the value's reason.
+        The value is 0 where no corner has to be held down, nan where none is known.
         """
         names = self.cases if case is None else (self.cases[self._index(case)],)
         pulls = []
         for name in names:
-            most, forces = support_reactions.hold_down(
-                self.reactions(case=name).corners
+            corners = self.reactions(case=name).corners
+            most, forces = support_reactions.hold_down(corners)
+            unknown = sum(math.isnan(corner.force.value) for corner in corners)
+            value = Value(
+                value=most,
+                case=name,
+                place=forces[0].corner.place if forces else None,
+                reason=(
+                    f"not known at {unknown} corner{'s' * (unknown > 1)}"
+                    if unknown
+                    else ""
+                ),
             )
-            place = forces[0].corner.place if forces else None
-            pulls.append((Value(value=most, case=name, place=place), forces))
-        return max(pulls, key=lambda pull: pull[0].value)
+            pulls.append((value, forces))
+        lost = [pull for pull in pulls if np.isnan(pull[0].value)]
+        return max(lost or pulls, key=lambda pull: pull[0].value)
+
+    def side_uplift(self, *, case: str | None = None) -> tuple[Value, str]:
+        """Largest line force in N/m that holds a side down, and the side's name."""
+        index = self._index(case)
+        sides = self._reactions(index).sides
+        most, place, side = support_reactions.side_uplift(sides)
+        return Value(value=most, place=place, case=self.cases[index]), side
 
     def peak(self, quantity: str, *, case: str | None = None) -> Value:
         """Extreme value of a quantity over the plate, and where.
@@ -173,19 +202,21 @@ class Solution:
         return max(values, key=key)
 
     def point_fields(self, *, case: str | None = None) -> dict[str, Floats]:
-        """Fields at the vertices of the mesh, for files and pictures.
+        """Fields at `field_points`, for files and pictures.
 
         Returns
         -------
         dict of str to ndarray
-            Keys carry the SI unit, such as "deflection [m]"; shapes (n_points,) or
-            (n_points, k). Components are listed xx, yy, xy.
+            Keys carry the SI unit, such as "deflection [m]"; shapes (n,) or (n, k).
+            Components are listed xx, yy, xy.
         """
         index = self._index(case)
+        nodes = self._smoothed.nodes
         moments = self._smoothed.moments[:, :, index]
         shears = self._smoothed.shears[:, :, index]
         bent = self.state.constraints.numbering.by_vertex(self.state.unknowns)
-        h = self.plate.thickness
+        bent = bent[nodes.vertices]
+        h = self._node_thickness
         fields = {
             "deflection [m]": bent[:, 0, index],
             "slopes [rad]": bent[:, 1:3, index],
@@ -202,6 +233,38 @@ class Solution:
             ]
         fields["von Mises [Pa]"] = von_mises(surface_stress(moments, h, "bottom"))
         return fields
+
+    @property
+    def field_points(self) -> Floats:
+        """Places of the fields in m, (n, 2).
+
+        The vertices of the mesh, once for each part of the plate that meets there: a
+        step of thickness or a seam has a value on either side.
+        """
+        return self.mesh.points[self._smoothed.nodes.vertices]
+
+    @property
+    def field_triangles(self) -> Ints:
+        """Numbers of the field points of each triangle, (n_triangles, 3)."""
+        return self._smoothed.nodes.triangles
+
+    @property
+    def field_edges(self) -> Ints:
+        """Numbers of the field points of each boundary edge, (n_boundary, 2)."""
+        return self._smoothed.nodes.of_edges(self.mesh, self.mesh.boundary_edges)
+
+    @property
+    def field_vertices(self) -> Ints:
+        """Vertex of the mesh at each field point, (n,)."""
+        return self._smoothed.nodes.vertices
+
+    @cached_property
+    def _node_thickness(self) -> Floats:
+        return self.plate.thicknesses[self._smoothed.nodes.sections]
+
+    def _thickness_at(self, points: ArrayLike) -> Floats:
+        triangles, _ = self.mesh.locate(points)
+        return self.plate.thicknesses[self.mesh.zones[triangles]]
 
     @cached_property
     def _smoothed(self) -> SmoothedMoments:
@@ -247,36 +310,43 @@ class Solution:
         return np.einsum("krd,kd->kr", rows, self.state.unknowns[table, index])
 
     def _interpolate(
-        self, at_vertices: Floats, points: ArrayLike, case: str | None
+        self, at_nodes: Floats, points: ArrayLike, case: str | None
     ) -> Floats:
         triangles, barycentrics = self.mesh.locate(points)
-        own = at_vertices[self.mesh.triangles[triangles], :, self._index(case)]
+        own = at_nodes[self._smoothed.nodes.triangles[triangles], :, self._index(case)]
         return np.einsum("kv,kvc->kc", barycentrics, own)
 
-    def _candidates(self, index: int) -> tuple[Floats, Floats, Floats]:
-        """Places at which moments may peak, (k, 2), with moments and shears there.
+    def _candidates(self, index: int) -> "_Candidates":
+        """Places at which moments may peak, with moments, shears and thickness there.
 
         They are linear in each triangle and what is asked of them is convex, so that it
-        peaks at a vertex; where a disc is left out, on its rim.
+        peaks at a node; where a disc is left out, on its rim.
         """
-        case = self.cases[index]
+        case, nodes = self.cases[index], self._smoothed.nodes
+        places = self.mesh.points[nodes.vertices]
         moments = self._smoothed.moments[:, :, index]
         shears = self._smoothed.shears[:, :, index]
         discs = [e for e in self.excluded if e.case in ("", case)]
         if not discs:
-            return self.mesh.points, moments, shears
-        kept = _outside(self.mesh.points, discs, 1.0)
+            return _Candidates(places, moments, shears, self._node_thickness)
+        kept = _outside(places, discs, 1.0)
         rims = np.concatenate([_rim(self.mesh, disc) for disc in discs])
         rims = rims[_outside(rims, discs, 1.0 - 1e-9)]
         triangles, barycentrics = self.mesh.locate(rims)
-        own = self.mesh.triangles[triangles]
-        return (
-            np.concatenate([self.mesh.points[kept], rims]),
+        own = nodes.triangles[triangles]
+        return _Candidates(
+            np.concatenate([places[kept], rims]),
             np.concatenate(
                 [moments[kept], np.einsum("kv,kvc->kc", barycentrics, moments[own])]
             ),
             np.concatenate(
                 [shears[kept], np.einsum("kv,kvc->kc", barycentrics, shears[own])]
+            ),
+            np.concatenate(
+                [
+                    self._node_thickness[kept],
+                    self.plate.thicknesses[self.mesh.zones[triangles]],
+                ]
             ),
         )
 
@@ -331,38 +401,38 @@ def _stationary(places: Floats, values: Floats) -> Floats | None:
 
 
 def _peak_von_mises(solution: Solution, index: int) -> Value:
-    places, moments, _ = solution._candidates(index)
-    stress = von_mises(surface_stress(moments, solution.plate.thickness, "bottom"))
+    at = solution._candidates(index)
+    stress = von_mises(surface_stress(at.moments, at.thickness, "bottom"))
     best = int(np.argmax(stress))
-    principal = principal_moments(moments[best])[0]
+    principal = principal_moments(at.moments[best])[0]
     # The same on both faces; name the one in tension.
     face: Face = "bottom" if principal.sum() >= 0.0 else "top"
-    return replace(solution._value(stress[best], places[best], index), face=face)
+    return replace(solution._value(stress[best], at.places[best], index), face=face)
 
 
 def _peak_principal(solution: Solution, index: int, sign: float) -> Value:
-    places, moments, _ = solution._candidates(index)
+    at = solution._candidates(index)
     values = []
     for face in _FACES:
-        stress = surface_stress(moments, solution.plate.thickness, face)
+        stress = surface_stress(at.moments, at.thickness, face)
         first = principal_moments(sign * stress)[0][:, 0]
         best = int(np.argmax(first))
-        value = solution._value(sign * first[best], places[best], index)
+        value = solution._value(sign * first[best], at.places[best], index)
         values.append(replace(value, face=face))
     return max(values, key=lambda value: sign * value.value)
 
 
 def _peak_moment(solution: Solution, index: int, component: int) -> Value:
-    places, moments, _ = solution._candidates(index)
-    best = int(np.argmax(np.abs(moments[:, component])))
-    return solution._value(moments[best, component], places[best], index)
+    at = solution._candidates(index)
+    best = int(np.argmax(np.abs(at.moments[:, component])))
+    return solution._value(at.moments[best, component], at.places[best], index)
 
 
 def _peak_shear_stress(solution: Solution, index: int) -> Value:
-    places, _, shears = solution._candidates(index)
-    stress = 1.5 * np.hypot(*shears.T) / solution.plate.thickness
+    at = solution._candidates(index)
+    stress = 1.5 * np.hypot(*at.shears.T) / at.thickness
     best = int(np.argmax(stress))
-    return solution._value(stress[best], places[best], index)
+    return solution._value(stress[best], at.places[best], index)
 
 
 _PEAKS: dict[str, Callable[[Solution, int], Value]] = {

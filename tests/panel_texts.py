@@ -30,6 +30,95 @@ loads = [{ force = "1.5 kN down", over = "200 mm x 100 mm", at = ["400 mm", "300
 [limits]
 stress = { criterion = "von Mises", strength = "235 MPa", factor = 1.5 }
 """
+# Every kind of section, shape, support and load at once.
+RICH = """
+[panel]
+name = "sluice cover"
+thickness = "8 mm"
+material = "steel S235"
+
+[outline]
+unit = "mm"
+points = [
+    [0, 0],
+    { from = [1200, 0], through = [1350, 450] },
+    ["1.2 m", 900],
+    [400, 900],
+    [400, 600],
+    { from = [0, 600], through = [80, 300] },
+]
+sides = ["weir", "bow", "ladder", "notch-side", "notch", "hollow"]
+chords = "polygon"
+snap = 0.1
+fillets = [{ corner = ["ladder", "notch-side"], radius = 60 }]
+reliefs = [{ corner = ["notch", "notch-side"], radius = "4 cm", name = "relief" }]
+parts = [
+    { side = "bow", name = "hinge", from = "20 %", to = "45 %" },
+    { side = "weir", name = "weld", from = [100, 0], to = ["0.5 m", 0] },
+]
+expect = { size = "1350 mm x 900 mm", holes = 4, area = "0.963 m^2" }
+
+[[hole]]
+name = "oval"
+ellipse = { centre = [900, 600], size = [260, 120], angle = "30 deg" }
+
+[[hole]]
+name = "window"
+rectangle = { centre = [250, 420], size = [160, 120], corner_radius = 30, angle = "-20 deg" }
+
+[[hole]]
+slot = { centre = [250, 200], length = 160, width = 40 }
+
+[[hole]]
+circle = { centre = [700, 700], diameter = 60 }
+
+[[zone]]
+name = "doubler"
+points = [[500, 0], [800, 0], { from = [800, 200], through = [650, 320] }, [500, 200]]
+thickness = "12 mm"
+
+[[zone]]
+name = "pane"
+circle = { centre = [1150, 700], radius = 60 }
+material = { name = "own", E = "70 GPa", nu = 0.23, density = "2500 kg/m^3" }
+
+[[seam]]
+name = "rib"
+points = [[1000, 100], { from = [1050, 200], through = [1120, 300] }, [1050, 400]]
+
+[[seam]]
+name = "track"
+points = [[450, 350], [700, 500]]
+
+[[mark]]
+name = "pin"
+at = [600, 700]
+
+[[mark]]
+name = "stud"
+at = [950, 300]
+
+[supports]
+hinge = "clamped"
+weld = "clamped"
+ladder = "simply supported"
+hollow = "guided"
+rib = "clamped"
+pin = "simply supported"
+stud = "free"
+
+[[case]]
+name = "all"
+loads = [
+    { self_weight = "down" },
+    { pressure = "5 kPa up", on = "doubler" },
+    { line = "1 kN/m down", along = "track" },
+    { edge_moment = "100 N m/m", along = "notch", stretches = "top" },
+    { moment = "20 N m", lifts = "+x", at = "stud" },
+    { force = "1 kN down", over = "disc 50 mm", at = "stud" },
+    { liquid = "1000 kg/m^3", level = "0.5 m", pushes = "down" },
+]
+"""  # noqa: E501  TOML keeps an inline table on one line
 LOAD = BASE.partition("loads = [")[2].partition("]\n\n[limits]")[0]
 
 

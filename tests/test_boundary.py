@@ -221,7 +221,7 @@ def test_what_is_held_does_not_depend_on_the_size(size):
 
 
 def test_turning_there_and_back_changes_nothing():
-    outline, mesh = sector(200.0)
+    outline, mesh = sector(160.0)
     held = hold(outline, mesh, {"arriving": S, "far": C})
     values = np.random.default_rng(5).normal(size=(3 * len(mesh.points), 2))
     turned = held.turn(values)

@@ -168,7 +168,8 @@ def test_loads_cannot_be_changed(load):
         (
             {"loads": [Pressure(1.0), 5.0]},
             "case 'wind' holds 5.0, which is not a load; use Pressure, Hydrostatic, "
-            "PressureField, RectanglePatch, DiscPatch, PointForce or SelfWeight.",
+            "PressureField, RectanglePatch, DiscPatch, PointForce, PointMoment, "
+            "LineForce, EdgeMoment or SelfWeight.",
         ),
     ],
 )

@@ -189,8 +189,33 @@ def test_what_is_left_out_is_straight_and_of_one_zone():
     assert mesh.boundary_circles.tolist() == [STRAIGHT_EDGE] * 4
     assert mesh.zones.tolist() == [0, 0]
     assert mesh.circles.shape == (0, 3)
-    zoned = replace(mesh, zones=[0, 3])
-    assert zoned.zones.tolist() == [0, 3]
+    assert mesh.zone_names == ("plate",)
+    assert mesh.seam_edges.shape == (0, 2)
+    assert mesh.seam_numbers.shape == mesh.mark_vertices.shape == (0,)
+
+
+def test_zones_seams_and_marks_are_parts_of_the_mesh():
+    parts = {
+        "zones": [0, 1],
+        "zone_names": ("plate", "rib"),
+        "seam_edges": [(2, 0)],
+        "seam_numbers": [0],
+        "seam_names": ("weld",),
+        "mark_vertices": [3],
+        "mark_names": ("post",),
+    }
+    mesh = square(**parts)
+    assert mesh.zones.tolist() == [0, 1]
+    assert mesh.seam_edges.tolist() == [[2, 0]]
+    assert mesh.mark_vertices.tolist() == [3]
+    for wrong, words in (
+        ({"zones": [0, 2]}, "a triangle belongs to no named zone."),
+        ({"seam_edges": [(1, 3)]}, "a seam is not made of edges of triangles; mesh again."),
+        ({"seam_numbers": []}, "each seam edge needs the number of its seam."),
+        ({"mark_vertices": [4]}, "a mark is not a vertex of the mesh; mesh again."),
+        ({"mark_vertices": []}, "a mark is not a vertex of the mesh; mesh again."),
+    ):
+        assert refusal(lambda wrong=wrong: square(**{**parts, **wrong})) == words
 
 
 def test_arrays_are_copied_and_read_only():

@@ -217,16 +217,6 @@ def test_an_outline_survives_a_copy_to_another_process():
             ": points 1 and 2 coincide near (2, 3) m; drop one of them.",
         ),
         (
-            [(0, 0), (1, 0), (1, 1), (0.5, 1 + 2e-7), (0, 1)],
-            ": point 4, (0.5, 1) m, is nearly straight, 2e-07 m off the line between "
-            "its neighbours; drop it or move it onto the line.",
-        ),
-        (
-            [(0, 0), (0.5, -2e-10), (1, 0), (1, 1), (0, 1)],
-            ": point 2, (0.5, -2e-10) m, is nearly straight, 2e-10 m off the line "
-            "between its neighbours; drop it or move it onto the line.",
-        ),
-        (
             [(0, 0), (1, 0), (2, 0), (1, 0.0), (1, 1), (0, 1)],
             ": the line turns back on itself at point 3, (2, 0) m; take the spike out.",
         ),
@@ -251,15 +241,18 @@ def test_an_outline_survives_a_copy_to_another_process():
         ),
         (
             [(0, 0), (1, 0)],
-            " has points of shape (2, 2); it takes at least three pairs (x, y).",
+            " has points of shape (2, 2); it takes at least three pairs (x, y), two "
+            "where a piece is an arc.",
         ),
         (
             [(0, 0, 0), (1, 0, 0), (0, 1, 0)],
-            " has points of shape (3, 3); it takes at least three pairs (x, y).",
+            " has points of shape (3, 3); it takes at least three pairs (x, y), two "
+            "where a piece is an arc.",
         ),
         (
             None,
-            " has points of shape (); it takes at least three pairs (x, y).",
+            " has points of shape (); it takes at least three pairs (x, y), two "
+            "where a piece is an arc.",
         ),
     ],
 )
@@ -292,7 +285,8 @@ def test_what_is_no_pairs_of_numbers_is_refused(points, shown):
 
 def test_a_polygon_without_points_is_refused():
     assert refusal(lambda: Outline.polygon([])) == (
-        "a polygon has points of shape (0,); it takes at least three pairs (x, y)."
+        "a polygon has points of shape (0,); it takes at least three pairs (x, y), two "
+        "where a piece is an arc."
     )
 
 
@@ -302,7 +296,6 @@ def test_a_polygon_without_points_is_refused():
     [
         lambda d: [(0, 0), (1, 0), (1, d), (0, 1)],  # points that coincide
         lambda d: [(0, 0), (1, 0), (1, 1), (0.5, d), (0, 1)],  # a neck
-        lambda d: [(0, 0), (1, 0), (1, 1), (0.5, 1 + d), (0, 1)],  # nearly straight
     ],
 )
 def test_lengths_below_the_snap_share_of_the_size_are_none(build, gap):
@@ -333,8 +326,8 @@ def test_a_tiny_chamfer_is_no_mistake():
 
 def test_names_and_pieces_must_match():
     assert refusal(lambda: Outline.polygon(SQUARE, sides=["a", "b", "c"])) == (
-        "the polygon with side 'a' has 4 points and 3 side names; name each piece, "
-        "from each point to the next."
+        "the polygon with side 'a' has 4 points and 3 side names; give one for each "
+        "piece, from each point to the next."
     )
 
 
@@ -386,40 +379,15 @@ def test_a_name_stands_on_one_line_only(holes):
     [
         ((0, 0), 0.0, "radius 0 m; it must be positive."),
         ((0, 0), -1.0, "radius -1 m; it must be positive."),
-        (
-            (0, math.nan),
-            1.0,
-            "centre (0, nan) m and radius 1 m; its numbers must be finite, no larger "
-            "than 1e+09.",
-        ),
-        (
-            (0, 0),
-            math.inf,
-            "centre (0, 0) m and radius inf m; its numbers must be finite, no larger "
-            "than 1e+09.",
-        ),
-        (
-            (0, 0, 0),
-            1.0,
-            "centre (0, 0, 0) and radius 1.0; give a pair (x, y) and a number in m.",
-        ),
-        (3.0, 1.0, "centre 3.0 and radius 1.0; give a pair (x, y) and a number in m."),
-        (
-            ("a", 0),
-            1.0,
-            "centre ('a', 0) and radius 1.0; give a pair (x, y) and a number in m.",
-        ),
-        ("12", 1, "centre '12' and radius 1; give a pair (x, y) and a number in m."),
-        (
-            (0, 0),
-            "10 mm",
-            "centre (0, 0) and radius '10 mm'; give a pair (x, y) and a number in m.",
-        ),
-        (
-            (0, 0),
-            None,
-            "centre (0, 0) and radius None; give a pair (x, y) and a number in m.",
-        ),
+        ((0, math.nan), 1.0, "centre nan; it must be finite, no larger than 1e+09."),
+        ((0, 0), math.inf, "radius inf; it must be finite, no larger than 1e+09."),
+        ((0, 0, 0), 1.0, "centre (0, 0, 0); give a pair of numbers in m."),
+        (3.0, 1.0, "centre 3.0; give a pair of numbers in m."),
+        (("a", 0), 1.0, "centre ('a', 0); give a pair of numbers in m."),
+        ("12", 1, "centre '12'; give a pair of numbers in m."),
+        ((1j, 0), 1, "centre 1j; it must be a number."),
+        ((0, 0), "10 mm", "radius '10 mm'; it must be a number."),
+        ((0, 0), None, "radius None; it must be a number."),
     ],
 )
 def test_a_circle_that_cannot_be_is_refused(centre, radius, words):
@@ -428,9 +396,13 @@ def test_a_circle_that_cannot_be_is_refused(centre, radius, words):
 
 
 def test_only_closed_lines_make_an_outline():
-    words = "'shaft' is no closed line; a rim or a hole is a Polygon or a Circle."
+    words = (
+        "'shaft' is no closed line; a rim, hole or zone is a Polygon, Circle, Slot, "
+        "Rectangle or Ellipse."
+    )
     assert refusal(lambda: Outline.polygon(SQUARE).cut("shaft")) == words
     assert refusal(lambda: Outline(rim="shaft")) == words
+    assert refusal(lambda: Outline.polygon(SQUARE).zone("shaft", name="a")) == words
 
 
 # Holes against the rim
@@ -468,32 +440,37 @@ def test_a_hole_that_is_outside_or_around_or_across_is_refused(rim, hole, x, hal
     assert words.endswith(f") m; {INSIDE}")
 
 
+def place_in(words):
+    """The place in m that a message names."""
+    x, y = re.search(r"near \((\S+), (\S+)\) m", words).groups()
+    return shapely.Point(float(x), float(y))
+
+
 @pytest.mark.parametrize(
-    ("rim", "hole", "where"),
+    ("rim", "hole"),
     [
-        ("polygon", square(0.5, 0.2, 0.5), None),
-        ("polygon", circle(0.5, 0.2, 0.5), "(1, 0.2)"),
-        ("polygon", square(0, 0, 1), "(-1, -1)"),
-        ("polygon", square(0.5, 0.2, 0.5 - 1e-6), None),
-        ("polygon", square(0.5, 0.2, 0.5 + 1e-6), None),
-        ("polygon", circle(0.5, 0.2, 0.5 - 1e-6), "(1, 0.2)"),
-        ("polygon", circle(1.5, 0.2, 0.5), "(1, 0.2)"),
-        ("circle", square(0, 0, math.sqrt(0.5)), "(-0.707107, -0.707107)"),
-        ("circle", circle(0.3, 0.4, 0.5), "(0.6, 0.8)"),
-        ("circle", circle(0.3, 0.4, 0.5 - 1e-6), "(0.599999, 0.799999)"),
-        ("circle", circle(0, 0, 1), "(1, 0)"),
+        ("polygon", square(0.5, 0.2, 0.5)),
+        ("polygon", circle(0.5, 0.2, 0.5)),
+        ("polygon", square(0, 0, 1)),
+        ("polygon", square(0.5, 0.2, 0.5 - 1e-6)),
+        ("polygon", square(0.5, 0.2, 0.5 + 1e-6)),
+        ("polygon", circle(0.5, 0.2, 0.5 - 1e-6)),
+        ("polygon", circle(1.5, 0.2, 0.5)),
+        ("circle", square(0, 0, math.sqrt(0.5))),
+        ("circle", circle(0.3, 0.4, 0.5)),
+        ("circle", circle(0.3, 0.4, 0.5 - 1e-6)),
+        ("circle", circle(0, 0, 1)),
     ],
 )
-def test_a_hole_that_touches_is_refused_where_it_touches(rim, hole, where):
+def test_a_hole_that_touches_is_refused_where_it_touches(rim, hole):
     words = refusal(lambda: Outline(rim=RIMS[rim]).cut(hole))
-    found = re.fullmatch(
-        rf"hole 1 \('hole'\) (.*) the outline near (.*) m; {re.escape(INSIDE)}", words
-    )
-    if where is not None:  # the square touches with a whole side
-        assert found.group(2) == where
     # A circle that touches from outside is no nearer to inside than one that crosses.
     outside = isinstance(hole, Circle) and hole.centre[0] > 1
-    assert found.group(1) == ("crosses or lies outside" if outside else "touches")
+    how = "crosses or lies outside" if outside else "touches"
+    assert words.startswith(f"hole 1 ('hole') {how} the outline near (")
+    assert words.endswith(f") m; {INSIDE}")
+    for line in (RIMS[rim], hole):  # chords of circles are off by up to 1e-6
+        assert region(line).exterior.distance(place_in(words)) < 1e-5
 
 
 def region(line, grow=0.0):
@@ -549,35 +526,34 @@ def test_two_holes_are_cut_where_shapely_finds_them_apart(first, second, data):
 
 
 @pytest.mark.parametrize(
-    ("a", "b", "near"),
+    ("a", "b"),
     [
-        (circle(0, 0, 0.2, "a"), circle(0.5, 0, 0.3, "b"), "(0.2, 0)"),
-        (circle(0, 0, 0.9, "a"), circle(0.9, 0, 0.01, "b"), "(0.895, 0)"),
-        (circle(0, 0, 0.2, "a"), circle(0, 0, 0.1, "b"), "(0, 0)"),
-        (circle(0, 0, 0.1, "a"), circle(0.3, 0, 0.9, "b"), "(0, 0)"),
-        (square(0, 0, 0.2, "a"), circle(0.5, 0, 0.3 - 5e-7, "b"), "(0.2, 0)"),
-        (circle(0.5, 0, 0.3, "a"), square(0, 0, 0.2, "b"), "(0.2, 0)"),
-        (circle(0, 0, 0.5, "a"), square(0.2, 0.2, 0.1, "b"), "(0.1, 0.1)"),
-        (square(0.2, 0.2, 0.1, "a"), square(0.3, 0.3, 0.5, "b"), None),
-        (square(0, 0, 0.2, "a"), square(0.4, 0, 0.2, "b"), None),
+        (circle(0, 0, 0.2, "a"), circle(0.5, 0, 0.3, "b")),
+        (circle(0, 0, 0.9, "a"), circle(0.9, 0, 0.01, "b")),
+        (circle(0, 0, 0.2, "a"), circle(0, 0, 0.1, "b")),
+        (circle(0, 0, 0.1, "a"), circle(0.3, 0, 0.9, "b")),
+        (square(0, 0, 0.2, "a"), circle(0.5, 0, 0.3 - 5e-7, "b")),
+        (circle(0.5, 0, 0.3, "a"), square(0, 0, 0.2, "b")),
+        (circle(0, 0, 0.5, "a"), square(0.2, 0.2, 0.1, "b")),
+        (square(0.2, 0.2, 0.1, "a"), square(0.3, 0.3, 0.5, "b")),
+        (square(0, 0, 0.2, "a"), square(0.4, 0, 0.2, "b")),
     ],
 )
-def test_holes_that_overlap_or_touch_are_refused_where_they_do(a, b, near):
+def test_holes_that_overlap_or_touch_are_refused_where_they_do(a, b):
     words = refusal(lambda: Outline(rim=square(0, 0, 2, "rim")).cut(a, b))
-    found = re.fullmatch(
+    assert re.fullmatch(
         r"holes 1 \('a'\) and 2 \('b'\) overlap or touch near (.*) m; move them apart, "
         r"or draw them as one hole\.",
         words,
     )
-    assert found
-    if near:
-        assert found.group(1) == near
+    for line in (a, b):
+        assert region(line).distance(place_in(words)) < 1e-5
 
 
 def test_the_hole_that_is_wrong_is_numbered():
     holes = [circle(0.2, 0.2, 0.1, "a"), circle(0.9, 0.9, 0.2, "b")]
     assert refusal(lambda: Outline.polygon(SQUARE).cut(*holes)).startswith(
-        "hole 2 ('b') crosses or lies outside the outline near (1, 0.9) m"
+        "hole 2 ('b') crosses or lies outside the outline near (1, "
     )
     later = [circle(0.5, 0.5, 0.1, "c"), circle(0.55, 0.5, 0.1, "d")]
     assert refusal(lambda: Outline.polygon(SQUARE).cut(holes[0], *later)).startswith(

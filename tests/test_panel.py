@@ -167,7 +167,9 @@ def test_loads_are_positive_up(read, stated, load):
     found = only_load(read(with_load(stated)))
     assert type(found) is type(load)
     for name, value in vars(load).items():
-        assert getattr(found, name) == pytest.approx(value, rel=1e-12), name
+        given = getattr(found, name)
+        same = value if value is None else pytest.approx(value, rel=1e-12)
+        assert given == same, name
 
 
 @pytest.mark.parametrize(
@@ -279,7 +281,8 @@ def numbers(panel: Panel) -> list[float]:
     found += [plate.outline.holes[0].radius, limits.deflection.at_most]
     found += [limits.stress.at_most, limits.hold_down, *panel.stock]
     for load in panel.cases[0].loads:
-        found += np.hstack([np.ravel(value) for value in vars(load).values()]).tolist()
+        stated = [value for value in vars(load).values() if value is not None]
+        found += np.hstack([np.ravel(value) for value in stated]).tolist()
     return found
 
 
@@ -318,23 +321,6 @@ def test_the_starter_states_every_section_and_explains_each_line():
     )
     assert len(panel.cases) == 2
     assert panel.stock
-
-
-@pytest.mark.parametrize(
-    ("old", "new"),
-    [
-        ("    # { liquid", "    { liquid"),
-        ("# triangles", "triangles"),
-        ('material = "steel S235"  ', '# material = "steel S235"  '),
-    ],
-)
-def test_what_the_starter_comments_out_is_valid(read, old, new):
-    text = STARTER.read_text(encoding="utf-8")
-    assert text.count(old) == 1
-    text = text.replace(old, new)
-    if "material" in old:
-        text = text.replace("# material = {", "material = {")
-    read(text)
 
 
 # The numbers below are those of the statements in the file's own comments; the check

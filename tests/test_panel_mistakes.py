@@ -8,7 +8,7 @@ from pathlib import Path
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
-from panel_texts import BASE, SAMPLES, changed, read_text, with_load
+from panel_texts import BASE, RICH, SAMPLES, changed, read_text, with_load
 
 from kplate.errors import InputError, KplateWarning
 from kplate.panel import Panel, read_panel
@@ -20,7 +20,7 @@ def read(tmp_path):
 
 
 LOAD_1 = "[[case]] 1 'wheel', load 1"
-SIDES = "the sides are 'south', 'east', 'north', 'west'."
+NAMES = "the names are 'south', 'east', 'north', 'west'."
 HEAD_FIELDS = (
     "name, revision, author, thickness, material, tolerance, held in plane, triangles"
 )
@@ -144,9 +144,8 @@ MISTAKES = [
     ),
     (
         changed("[800, 0]", "[800, true]"),
-        "[outline] points, item 2 = [800, true]: it must be a number, without quotes "
-        "and "
-        "unit.",
+        "[outline] points, item 2 = [800, true]: a length is a number in the "
+        'outline\'s unit, or text with a unit of its own, such as "10 mm".',
     ),
     (
         changed("[800, 0]", "[800]"),
@@ -155,16 +154,18 @@ MISTAKES = [
     ),
     (
         changed(', "west"]', "]"),
-        "[outline]: the polygon with side 'south' has 4 points and 3 side names; name "
-        "each piece, from each point to the next.",
+        "[outline]: the polygon with side 'south' has 4 points and 3 side names; give "
+        "one for each piece, from each point to the next.",
     ),
     (
         changed("sides =", "circle = { centre = [0, 0], radius = 3 }\nsides ="),
         "[outline]: circle and points exclude each other; keep one.",
     ),
     (
-        changed("sides =", 'dxf = "lid.dxf"\nsides ='),
-        "[outline] dxf is not read by this version; take it out.",
+        changed("sides =", "arcs = 3\nsides ="),
+        "[outline]: unknown field 'arcs'; the fields are unit, points, sides, chords, "
+        "snap, circle, slot, rectangle, ellipse, file, layer, fillets, reliefs, parts, "
+        "expect. Did you mean 'parts'?",
     ),
     (
         changed(
@@ -172,7 +173,7 @@ MISTAKES = [
             "[[hole]]\ncircle = { centre = [0, 300], radius = 9 }\n[supports]",
         ),
         "[[hole]]: hole 1 ('hole-1') crosses or lies outside the outline near (0, "
-        "0.3) m; "
+        "0.309) m; "
         "a hole must lie strictly inside the plate. Move or shrink it, or cut the "
         "notch "
         "into the outline.",
@@ -186,23 +187,22 @@ MISTAKES = [
     ),
     (
         changed('south = "clamped"', 'soth = "clamped"'),
-        f"[supports] 'soth' = 'clamped': there is no such side; {SIDES} Did you mean "
-        "'south'?",
+        f"[supports] 'soth' = 'clamped': there is no such side, seam or mark; {NAMES} "
+        "Did you mean 'south'?",
     ),
     (
         changed('"clamped"', '"camped"'),
         "[supports] 'south' = 'camped': it must be one of clamped, simply supported, "
-        "free. Did you mean 'clamped'?",
+        "free, guided. Did you mean 'clamped'?",
     ),
     (
-        changed('"clamped"', '"guided"'),
-        "[supports] 'south' = 'guided': such a support is not read by this version; "
-        "use "
-        "one of clamped, simply supported, free.",
+        changed('"clamped"', '"springs"'),
+        "[supports] 'south' = 'springs': such a support is not read by this version; "
+        "use one of clamped, simply supported, free, guided.",
     ),
     (
-        changed('south = "clamped"', 'points = [["0 m", "0 m"]]'),
-        "[supports] points is not read by this version; take it out.",
+        changed('south = "clamped"', 'bedding = "1 N/mm^3"'),
+        "[supports] bedding is not read by this version; take it out.",
     ),
     (
         with_load('{ pressure = "-5 kPa" }'),
@@ -248,8 +248,9 @@ MISTAKES = [
     ),
     (
         with_load('{ presure = "1 Pa up" }'),
-        f"{LOAD_1} states 'presure'; a load states one of pressure, force, liquid, "
-        'self_weight, such as { pressure = "5 kPa down" }.',
+        f"{LOAD_1} states 'presure'; a load states one of pressure, force, line, "
+        "edge_moment, moment, liquid, self_weight, such as "
+        '{ pressure = "5 kPa down" }.',
     ),
     (
         with_load('{ liquid = "1 kg/m^3", level = "1 m", pushes = "out" }'),
@@ -307,13 +308,14 @@ MISTAKES = [
         '["6 mm", "8 mm", "10 mm"].',
     ),
     (
-        BASE + '[[zone]]\nthickness = "6 mm"\n',
-        "[[zone]] is not read by this version; take it out.",
+        BASE + '[[ask]]\nname = "middle"\n',
+        "[[ask]] is not read by this version; take it out.",
     ),
     (
         changed("[limits]", "[limit]"),
         "unknown section 'limit'; the sections are [panel], [outline], [[hole]], "
-        "[supports], [[case]], [limits]. Did you mean 'limits'?",
+        "[[zone]], [[seam]], [[mark]], [supports], [[case]], [limits]. "
+        "Did you mean 'limits'?",
     ),
     ("[panel]\n", "section [outline] is missing; add it."),
 ]
@@ -373,7 +375,8 @@ def test_a_file_that_cannot_be_read(tmp_path):
 
 
 TOKEN = re.compile(r'"[^"\n]*"|[A-Za-z_-]+|[0-9.]+|[^\S\n]+|\S|\n')
-TOKENS = [TOKEN.findall(path.read_text(encoding="utf-8")) for path in SAMPLES]
+TEXTS = [RICH, *(path.read_text(encoding="utf-8") for path in SAMPLES)]
+TOKENS = [TOKEN.findall(text) for text in TEXTS]
 VALUES = [
     *("nan", "-inf", "true", "0", "-1", "1e308", "1e-308", "1e400", "9" * 5000),
     *("[]", "{}", "[[]]", "{ a = 1 }", "1979-05-27", "[" * 2000, "0x" + "f" * 5000),
@@ -392,6 +395,12 @@ VALUES = [
     "[[0, 0], [1e-300, 0], [0, 1e-300]]",
     "[[0, 0], [1e15, 0], [0, 1]]",
     "{ centre = [0, 0], radius = 1e-9 }",
+    "{ centre = [300, 300], size = [1e-3, 1e3] }",
+    "{ centre = [300, 300], length = 60, width = 59.9999999 }",
+    "{ from = [0, 0], through = [1, 1] }",
+    *('"+x"', '"top"', '"100 N m/m"', '"40 %"', '"100 %"', '"arc"', '"polygon"'),
+    *('"guided"', '"weir"', '"hinge"', '"rib"', '"pin"', '"doubler"', '"a.dxf"'),
+    '"../../x.csv"',
 ]
 
 

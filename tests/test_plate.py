@@ -13,7 +13,7 @@ from kplate.outline import Outline
 from kplate.plate import Plate
 from kplate.polygon import Polygon
 from kplate.shapes import Circle
-from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED, Support
+from kplate.supports import CLAMPED, FREE, GUIDED, SIMPLY_SUPPORTED, Support
 
 SIDES = ("south", "east", "north", "west")
 SQUARE = Outline.polygon([(0, 0), (2, 0), (2, 1), (0, 1)], sides=SIDES)
@@ -51,8 +51,8 @@ def turning(*degrees):
 def chords(where, side, support):
     return (
         f"side {side!r} is {support} and bends at three or more vertices in a row from "
-        f"{where} m: a curve drawn by chords. State a circle, or drop vertices until "
-        "each turn is a corner."
+        f"{where} m: a curve drawn by chords. State it by arcs, as an ellipse, or drop "
+        "vertices until each turn is a corner."
     )
 
 
@@ -120,18 +120,18 @@ def test_a_support_names_a_side(name, hint):
 def test_a_support_is_not_its_word():
     assert refusal(lambda: plate(supports={"south": "clamped"})) == (
         "side 'south' is held by 'clamped'; a support is one of clamped, simply "
-        "supported, free."
+        "supported, free, guided."
     )
 
 
 def test_a_support_that_no_equation_knows_is_refused():
-    """A held slope alone would go unnoticed, and the side be free."""
+    """What it holds must be what its word says."""
     sliding = Support(
         name="sliding", holds_deflection=False, holds_slope=True, words="slope held"
     )
     words = refusal(lambda: plate(supports={"south": sliding}))
     assert words.startswith("side 'south' is held by Support(name='sliding', ")
-    assert words.endswith("; a support is one of clamped, simply supported, free.")
+    assert words.endswith("; a support is one of clamped, simply supported, free, guided.")
 
 
 def test_supports_cannot_be_changed_from_outside():
@@ -160,11 +160,55 @@ def test_a_plate_survives_a_copy_to_another_process():
 # Curves drawn by chords
 
 
-@pytest.mark.parametrize("support", [SIMPLY_SUPPORTED, CLAMPED])
-def test_a_supported_48_gon_is_refused(support):
-    outline = Outline.polygon(gon(48), sides=["rim"] * 48)
-    words = refusal(lambda: plate(outline, supports={"rim": support}))
-    assert words == chords("(0.955336, 0.29552)", "rim", support.name)
+HELD = [SIMPLY_SUPPORTED, CLAMPED, GUIDED]
+
+
+def ask(n, where, side, support, first=""):
+    return (
+        f"side {side!r} is {support} and has {n} pieces from {where} m that turn by "
+        f"{360 / n:.3g} degrees each on a circle; {first}say whether they are an "
+        '"arc" or a "polygon" (chords).'
+    )
+
+
+@pytest.mark.parametrize("support", HELD)
+@pytest.mark.parametrize("n", [37, 48, 500])
+def test_a_48_gon_is_a_circle(n, support):
+    outline = Outline.polygon(gon(n), sides=["rim"] * n)
+    assert outline.area == pytest.approx(math.pi, rel=1e-12)
+    assert plate(outline, supports={"rim": support}).support("rim") is support
+
+
+@pytest.mark.parametrize("support", HELD)
+@pytest.mark.parametrize("n", [13, 24, 36])
+def test_a_supported_24_gon_asks_what_it_is(n, support):
+    held = {"supports": {"rim": support}}
+    outline = Outline.polygon(gon(n), sides=["rim"] * n)
+    words = refusal(lambda: plate(outline, **held))
+    assert words == ask(n, "(0.955336, 0.29552)", "rim", support.name)
+    arc = Outline.polygon(gon(n), sides=["rim"] * n, chords="arc")
+    assert plate(arc, **held).outline.area == pytest.approx(math.pi, rel=1e-12)
+    sharp = Outline.polygon(gon(n), sides=["rim"] * n, chords="polygon")
+    exact = 0.5 * n * math.sin(2.0 * math.pi / n)
+    assert plate(sharp, **held).outline.area == pytest.approx(exact, rel=1e-12)
+
+
+def test_a_24_gon_of_many_names_asks_as_well():
+    outline = Outline.polygon(gon(24))
+    names = dict.fromkeys(outline.side_names, CLAMPED)
+    words = ask(
+        24, "(0.955336, 0.29552)", "side-1", "clamped", "give them one name and "
+    )
+    assert refusal(lambda: plate(outline, supports=names)) == words
+    arc = Outline.polygon(gon(24), chords="arc")  # an arc of one piece each is none
+    assert refusal(lambda: plate(arc, supports=names)) == words
+    sharp = Outline.polygon(gon(24), chords="polygon")
+    assert plate(sharp, supports=names).support("side-3") is CLAMPED
+
+
+def test_a_free_24_gon_stands():
+    outline = Outline.polygon(gon(24), sides=["rim"] * 24)
+    assert plate(outline).support("rim") is FREE
 
 
 def test_the_pieces_of_a_curve_may_have_names_of_their_own():
@@ -173,16 +217,23 @@ def test_the_pieces_of_a_curve_may_have_names_of_their_own():
     assert "a curve drawn by chords" in refusal(lambda: plate(outline, supports=names))
 
 
-def test_a_supported_hole_of_48_chords_is_refused():
-    hole = Polygon(points=np.array([1.0, 0.5]) + gon(48, 0.2), sides=["shaft"] * 48)
-    outline = SQUARE.cut(hole)
-    words = refusal(lambda: plate(outline, supports={"shaft": CLAMPED}))
-    assert words == chords("(1.19107, 0.559104)", "shaft", "clamped")
+def test_a_supported_hole_of_chords_is_a_circle_or_asks():
+    def cut(n):
+        points = np.array([1.0, 0.5]) + gon(n, 0.2)
+        return SQUARE.cut(Polygon(points=points, sides=["shaft"] * n))
+
+    held = plate(cut(48), supports={"shaft": CLAMPED})
+    assert held.outline.area == pytest.approx(2.0 - 0.04 * math.pi, rel=1e-12)
+    words = refusal(lambda: plate(cut(24), supports={"shaft": CLAMPED}))
+    assert words == ask(24, "(1.19107, 0.559104)", "shaft", "clamped")
 
 
-def test_a_free_48_gon_stands():
-    outline = Outline.polygon(gon(48), sides=["rim"] * 48)
-    assert plate(outline).support("rim") is FREE
+def test_arcs_whose_tangents_were_rounded_are_no_chords():
+    """A slot of a drawing to the micrometre turns by 1e-5 rad where arcs begin."""
+    points = [(-0.1, -0.05), (0.1, -0.050001), (0.100001, 0.05), (-0.1, 0.049999)]
+    outline = Outline.polygon(points, sides=["rim"] * 4, bulges=[0, 1, 0, 1])
+    assert not outline.boundaries[0].straight.any()
+    assert plate(outline, supports={"rim": SIMPLY_SUPPORTED}).mass > 0.0
 
 
 def test_a_supported_octagon_stands():
@@ -265,7 +316,7 @@ def test_a_straight_vertex_where_the_support_changes_parts_a_run():
 
 @pytest.mark.parametrize(("n", "degrees"), [(48, 7.4), (24, 14.9)])
 def test_the_turn_of_a_bend_can_be_set(n, degrees):
-    outline = Outline.polygon(gon(n), sides=["rim"] * n)
+    outline = Outline.polygon(gon(n), sides=["rim"] * n, chords="polygon")
     held = {"outline": outline, "supports": {"rim": SIMPLY_SUPPORTED}}
     assert plate(**held, bend_turn=math.radians(degrees)).bend_turn > 0.0
     wider = math.radians(degrees + 0.2)

@@ -9,8 +9,7 @@ from typing import Any, Literal
 
 import numpy as np
 
-from kplate.arrays import Floats
-from kplate.mesh import Mesh
+from kplate.arrays import Floats, Ints
 from kplate.output.lettering import Hand, Names, Spot, halo, upright
 
 Quantity = Literal["deflection", "von Mises"]
@@ -79,14 +78,14 @@ class Bands:
         found = LinearSegmentedColormap.from_list("kplate", list(colours))
         return found.with_extremes(over=BEYOND), Normalize(low, high)
 
-    def on_triangles(self, mesh: Mesh) -> Floats:
-        """Colour of each triangle, (n_triangles, 4)."""
+    def on_triangles(self, triangles: Ints) -> Floats:
+        """Colour of each triangle (n_triangles, 3), (n_triangles, 4)."""
         from matplotlib.colors import to_rgba
 
         if not len(self.levels):
-            return np.tile(to_rgba(PLAIN), (len(mesh.triangles), 1))
+            return np.tile(to_rgba(PLAIN), (len(triangles), 1))
         colours, limits = self.colours()
-        means = self.within[mesh.triangles].mean(axis=1)
+        means = self.within[triangles].mean(axis=1)
         return np.asarray(colours(limits(means)), dtype=np.float64)
 
 
@@ -114,8 +113,8 @@ def _levels(low: float, high: float) -> Floats:
     return np.asarray(locator.tick_values(low, high), dtype=np.float64)
 
 
-def draw_bands(axes: Any, points: Floats, mesh: Mesh, drawn: Bands) -> Any:
-    """Fill the bands over a mesh with vertices at points (n_points, 2).
+def draw_bands(axes: Any, points: Floats, triangles: Ints, drawn: Bands) -> Any:
+    """Fill the bands over triangles (n_triangles, 3) of points (n_points, 2).
 
     Returns
     -------
@@ -125,7 +124,7 @@ def draw_bands(axes: Any, points: Floats, mesh: Mesh, drawn: Bands) -> Any:
     from matplotlib.colors import ListedColormap
     from matplotlib.tri import Triangulation
 
-    grid: Any = Triangulation(points[:, 0], points[:, 1], mesh.triangles)
+    grid: Any = Triangulation(points[:, 0], points[:, 1], triangles)
     levels = drawn.levels
     if not len(levels):
         axes.tripcolor(grid, drawn.values, cmap=ListedColormap([PLAIN]))
@@ -138,7 +137,7 @@ def draw_bands(axes: Any, points: Floats, mesh: Mesh, drawn: Bands) -> Any:
 
 
 def draw_levels(
-    axes: Any, names: Names, points: Floats, mesh: Mesh, drawn: Bands
+    axes: Any, names: Names, points: Floats, triangles: Ints, drawn: Bands
 ) -> None:
     """Draw the contours, and write each level on its longest line.
 
@@ -150,7 +149,7 @@ def draw_levels(
     levels = levels if len(levels) and drawn.go_beyond else levels[:-1]
     if not len(levels):
         return
-    grid: Any = Triangulation(points[:, 0], points[:, 1], mesh.triangles)
+    grid: Any = Triangulation(points[:, 0], points[:, 1], triangles)
     style = {"colors": "#1a1a1a", "linewidths": 0.5, "linestyles": "solid"}
     contours: Any = axes.tricontour(grid, drawn.within, levels, **style, alpha=0.6)
     for level, lines in zip(levels, contours.allsegs, strict=True):

@@ -13,15 +13,22 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from kplate.arrays import Floats
+from kplate.arrays import Floats, Ints
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.output.contours import Bands, Quantity, bands, draw_bands, draw_levels
+from kplate.output.inside import (
+    block_inside,
+    draw_inside,
+    is_held,
+    mark_sign,
+    write_inside_names,
+)
+from kplate.output.legend import Symbol, draw_legend
 from kplate.output.lettering import FAMILY, Hand, Names, Spot, halo, printable
 from kplate.output.plan import (
     FAINT,
     INK,
-    Piece,
     block_sides,
     draw_piece,
     pieces,
@@ -29,7 +36,6 @@ from kplate.output.plan import (
 )
 from kplate.output.shape import BACK, mean_size, project, scale_factor, surface
 from kplate.solution import Solution
-from kplate.supports import Support
 from kplate.units import DisplayUnits, Unit
 from kplate.values import Value
 
@@ -88,7 +94,7 @@ class Shown:
     units : DisplayUnits
         What lengths, deflections and stresses are shown in.
     points : ndarray, shape (n_points, 2)
-        Vertices of the mesh.
+        Field points of the solution.
     deflection : ndarray, shape (n_points,)
         Deflection in units of length.
     bands : Bands
@@ -101,6 +107,11 @@ class Shown:
     points: Floats
     deflection: Floats
     bands: Bands
+
+    @property
+    def triangles(self) -> Ints:
+        """Points of each triangle."""
+        return self.solution.field_triangles
 
     @property
     def quantity(self) -> Quantity:
@@ -235,7 +246,7 @@ def _shown(
         solution=solution,
         peak=peak,
         units=units,
-        points=solution.mesh.points / units.length.size,
+        points=solution.field_points / units.length.size,
         deflection=fields["deflection [m]"] / units.length.size,
         bands=bands(quantity, colour / size, peak.value / size),
     )
@@ -300,7 +311,7 @@ def _draw_shape(drawn: "Figure", shown: Shown, box: Box) -> None:
     """Draw the deflected shape, and where free sides were."""
     from matplotlib.collections import LineCollection
 
-    plate, mesh = shown.solution.plate, shown.solution.mesh
+    plate = shown.solution.plate
     scale = scale_factor(float(np.abs(shown.deflection).max()), mean_size(shown.points))
     bent = np.column_stack([shown.points, scale * shown.deflection])
     flat = [
@@ -315,7 +326,9 @@ def _draw_shape(drawn: "Figure", shown: Shown, box: Box) -> None:
         drawn, (box[0] + DIRECTIONS, box[1], box[2] - DIRECTIONS, box[3]), low, high
     )
     axes.set_axis_off()
-    axes.add_collection(surface(mesh, bent, shown.bands.on_triangles(mesh)))
+    faces = shown.bands.on_triangles(shown.triangles)
+    rim = shown.solution.field_edges
+    axes.add_collection(surface(bent, shown.triangles, rim=rim, faces=faces))
     axes.add_collection(
         LineCollection(flat, colors=FAINT, linewidths=1.0, linestyles="dashed")
     )
@@ -353,21 +366,24 @@ def _draw_plan(drawn: "Figure", renderer: Any, shown: Shown, box: Box) -> None:
     gap[0] = max(gap[0], 0.5 * (LEAST * per_pixel - (high - low)[0]))
     axes = _axes(drawn, box, low - gap, high + gap)
     _finish_axes(axes, length, low, high, per_pixel)
-    filled = draw_bands(axes, shown.points, shown.solution.mesh, shown.bands)
+    filled = draw_bands(axes, shown.points, shown.triangles, shown.bands)
     if filled is not None:
         _draw_bar(drawn, axes, shown, filled)
     for piece in lines:
         draw_piece(axes, piece, plate.support(piece.side), per_pixel)
+    draw_inside(axes, plate, length.size, per_pixel)
     names = Names(axes, renderer)
     block_sides(names, lines, per_pixel)
+    block_inside(names, plate.outline, length.size, per_pixel)
     _draw_marks(axes, names, shown)
     missing = write_side_names(names, lines, per_pixel)
-    draw_levels(axes, names, shown.points, shown.solution.mesh, shown.bands)
+    missing += write_inside_names(names, plate, length, per_pixel)
+    draw_levels(axes, names, shown.points, shown.triangles, shown.bands)
     caption = f"Plan, {shown.quantity}"
     if filled is not None:
         caption += f", a contour every {shown.bands.step:g} {shown.unit.symbol}"
     if missing:
-        caption += f" (no room for {missing} side name{'s' * (missing > 1)})"
+        caption += f" (no room for {missing} name{'s' * (missing > 1)})"
     _caption(drawn, box, caption)
 
 
@@ -435,47 +451,30 @@ def _draw_legend(drawn: "Figure", renderer: Any, shown: Shown) -> None:
     axes.set_axis_off()
     axes.set_xlim(0.0, WIDTH)
     axes.set_ylim(0.0, 78.0)
-    x, y = float(LEFT), 50.0
-    for symbol, text in _legend(shown):
-        wide = 22.0 if isinstance(symbol, dict) and "marker" in symbol else 44.0
-        step = wide + 8.0 + SMALL.measure(renderer, text)[0]
-        if x + step > WIDTH - LEFT:
-            x, y = float(LEFT), y - 26.0
-        _draw_symbol(axes, symbol, (x, y), wide)
-        axes.text(x + wide + 8.0, y, text, fontproperties=SMALL.font, va="center")
-        x += step + 26.0
+    start = (float(LEFT), 50.0)
+    draw_legend(axes, renderer, _legend(shown), hand=SMALL, start=start)
 
 
-def _legend(shown: Shown) -> list[tuple[Support | dict[str, Any], str]]:
+def _legend(shown: Shown) -> list[tuple[Symbol, str]]:
     """Symbols and what they mean."""
     plate = shown.solution.plate
-    supports = {plate.support(side) for side in plate.outline.side_names}
-    entries: list[tuple[Support | dict[str, Any], str]] = [
+    outline = plate.outline
+    seams = [plate.support(seam.name) for seam in outline.seams]
+    marks = {plate.support(mark.name) for mark in outline.marks}
+    sides = {plate.support(side) for side in outline.side_names}
+    supports = sides.union(filter(is_held, seams))
+    entries: list[tuple[Symbol, str]] = [
         (support, f"{support.name}: {support.words}")
         for support in sorted(supports, key=lambda s: (s.words, s.name), reverse=True)
+    ]
+    entries += [
+        (mark_sign(support), f"{support.name} point")
+        for support in sorted(marks, key=lambda s: s.name)
     ]
     entries.append((_CROSS, f"peak {shown.quantity}"))
     if shown.left_out:
         count = len(shown.left_out)
         entries.append((_RING, f"no finite moment: left out of peaks ({count})"))
-    if shown.deflection.any() and not all(s.holds_deflection for s in supports):
+    if shown.deflection.any() and not all(s.holds_deflection for s in sides):
         entries.append((_DASHED, "undeflected"))
     return entries
-
-
-def _draw_symbol(
-    axes: Any,
-    symbol: Support | dict[str, Any],
-    at: tuple[float, float],
-    wide: float,
-) -> None:
-    """Draw a sample of a support, a mark or a line."""
-    x, y = at
-    if isinstance(symbol, Support):
-        line = np.array([[x, y + 3.0], [x + wide, y + 3.0]])
-        sample = Piece(side="", points=line, away=np.array([[0.0, -1.0]]))
-        draw_piece(axes, sample, symbol, 1.0)
-    elif "marker" in symbol:
-        axes.plot(x + 0.5 * wide, y, **symbol)
-    else:
-        axes.plot([x, x + wide], [y, y], **symbol)

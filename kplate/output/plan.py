@@ -32,7 +32,7 @@ ARC_STEP = math.radians(2.0)  # from chord to chord of an arc
 
 @dataclass(frozen=True, eq=False, kw_only=True)
 class Piece:
-    """A straight piece of a side, or a whole circle.
+    """A straight piece of a side, or arcs that run on, a whole circle at most.
 
     Parameters
     ----------
@@ -47,6 +47,17 @@ class Piece:
     side: str
     points: Floats
     away: Floats
+
+    @property
+    def is_straight(self) -> bool:
+        """Whether it is a straight piece."""
+        return len(self.points) == 2
+
+    @property
+    def is_closed(self) -> bool:
+        """Whether it ends where it begins."""
+        first, last = self.points[0], self.points[-1]
+        return float(np.hypot(*(last - first))) < 1e-6 * self.length
 
     @property
     def length(self) -> float:
@@ -123,8 +134,7 @@ def _hatch(axes: Any, piece: Piece, per_pixel: float) -> None:
 
 def _beside(piece: Piece, gap: float) -> Floats:
     """A line beside a piece, not quite to its ends."""
-    is_round = len(piece.points) > 2
-    cut = 0.0 if is_round else min(gap / piece.length, 0.25)
+    cut = min(gap / piece.length, 0.25) if piece.is_straight else 0.0
     points, away = piece.at(np.linspace(cut, 1.0 - cut, len(piece.points)))
     return points + gap * away
 
@@ -150,9 +160,7 @@ def write_side_names(names: Names, lines: list[Piece], per_pixel: float) -> int:
             longest[piece.side] = piece
     missing = max(len(longest) - MOST_NAMES, 0)
     for piece in sorted(longest.values(), key=lambda p: -p.length)[:MOST_NAMES]:
-        spots = _round_spots(piece, per_pixel)
-        if len(piece.points) == 2:
-            spots = _straight_spots(piece, per_pixel)
+        spots = side_spots(piece, per_pixel)
         found = names.place(
             piece.side, spots, SIDE_NAME, gap=NAME_GAP, path_effects=halo()
         )
@@ -160,15 +168,23 @@ def write_side_names(names: Names, lines: list[Piece], per_pixel: float) -> int:
     return missing
 
 
-def _straight_spots(piece: Piece, per_pixel: float) -> list[Spot]:
-    """Along a side: outside it, else beside it on the plate."""
-    step = piece.points[1] - piece.points[0]
-    angle = upright(float(np.arctan2(step[1], step[0])))
+def side_spots(piece: Piece, per_pixel: float) -> list[Spot]:
+    """Where the name of a piece may stand."""
+    if piece.is_closed:
+        return _round_spots(piece, per_pixel)
+    return _open_spots(piece, per_pixel)
+
+
+def _open_spots(piece: Piece, per_pixel: float) -> list[Spot]:
+    """Along a piece: outside it, else beside it on the plate; level where it bends."""
     spots = []
     for way in (1.0, -1.0):
         for share in (0.5, 0.3, 0.7):
             foot, away = (array[0] for array in piece.at(np.array([share])))
-            room = piece.length / per_pixel - 2.0 * END if share == 0.5 else 0.0
+            angle, room = 0.0, 0.0
+            if piece.is_straight:
+                angle = upright(float(np.arctan2(away[0], -away[1])))
+                room = piece.length / per_pixel - 2.0 * END if share == 0.5 else 0.0
             spots.append(
                 Spot(
                     at=(float(foot[0]), float(foot[1])),
@@ -181,15 +197,18 @@ def _straight_spots(piece: Piece, per_pixel: float) -> list[Spot]:
 
 
 def _round_spots(piece: Piece, per_pixel: float) -> list[Spot]:
-    """In a round hole, or around a circle."""
-    centre = 0.5 * (piece.points.min(axis=0) + piece.points.max(axis=0))
-    radius = float(np.ptp(piece.points[:, 0])) / 2.0
+    """In a round hole, or around a closed line, outside it before inside."""
+    low, high = piece.points.min(axis=0), piece.points.max(axis=0)
+    centre = 0.5 * (low + high)
+    is_hole = float(piece.away[0] @ (piece.points[0] - centre)) < 0.0
     spots = []
-    if float(piece.away[0] @ (piece.points[0] - centre)) < 0.0:  # a hole
-        room = 2.0 * radius / per_pixel - 2.0 * NAME_GAP
+    if is_hole:
+        room = float(high[0] - low[0]) / per_pixel - 2.0 * NAME_GAP
         spots.append(Spot(at=(float(centre[0]), float(centre[1])), room=room))
-    for degrees in (45, 135, 315, 225, 90, 270, 0, 180):
-        away = (float(np.cos(np.radians(degrees))), float(np.sin(np.radians(degrees))))
-        at = centre + radius * np.array(away)
-        spots.append(Spot(at=(float(at[0]), float(at[1])), away=away))
+    eighths = np.array([1, 3, 7, 5, 2, 6, 0, 4]) / 8.0
+    outwards = -1.0 if is_hole else 1.0
+    for way in (outwards, -outwards):
+        for foot, away in zip(*piece.at(eighths), strict=True):
+            beside = (way * float(away[0]), way * float(away[1]))
+            spots.append(Spot(at=(float(foot[0]), float(foot[1])), away=beside))
     return spots

@@ -13,21 +13,26 @@ from dataclasses import fields
 from pathlib import Path
 from typing import Any
 
+from kplate.arrays import Floats
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.loads import (
     Case,
     DiscPatch,
+    EdgeMoment,
     Hydrostatic,
+    LineForce,
     Load,
     PointForce,
+    PointMoment,
     Pressure,
     PressureField,
     RectanglePatch,
     SelfWeight,
 )
+from kplate.materials import Isotropic
+from kplate.outline import Outline
 from kplate.output.vtk import array_name
-from kplate.plate import Plate
 from kplate.reactions import CornerForce, Reactions, Resultant, SideReaction
 from kplate.shapes import Circle, ClosedLine
 from kplate.solution import Solution
@@ -46,7 +51,7 @@ PEAKS = {
 }
 # Each kind of load in words, and the unit of each field; "" where it has none.
 LOADS: dict[type, tuple[str, dict[str, str]]] = {
-    Pressure: ("pressure", {"value": "Pa"}),
+    Pressure: ("pressure", {"value": "Pa", "zone": ""}),
     Hydrostatic: (
         "hydrostatic pressure",
         {"level": "m", "specific_weight": "N/m3", "up": ""},
@@ -58,6 +63,9 @@ LOADS: dict[type, tuple[str, dict[str, str]]] = {
     ),
     DiscPatch: ("disc patch", {"force": "N", "centre": "m", "radius": "m"}),
     PointForce: ("point force", {"force": "N", "at": "m"}),
+    PointMoment: ("point moment", {"moment": "N m", "at": "m"}),
+    LineForce: ("line force", {"force": "N/m", "along": ""}),
+    EdgeMoment: ("edge moment", {"moment": "N", "along": ""}),
     SelfWeight: ("self-weight", {"acceleration": "m/s2"}),
 }
 COLUMNS = (
@@ -88,10 +96,11 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
     Returns
     -------
     dict
-        "statement" (outline, thickness, material, supports, cases), "mesh", "results"
-        (case by case: peaks, energy, reactions), "excluded" (places left out of the
-        peaks of moments and stresses), and what a VTU file cannot hold: "side_names",
-        by their number in it, and "field_names", by their array in it.
+        "statement" (outline with zones, seams and marks, thickness, material, zones,
+        supports, cases), "mesh", "results" (case by case: peaks, energy, reactions),
+        "excluded" (places left out of the peaks of moments and stresses), and what a
+        VTU file cannot hold: "side_names", by their number in it, and "field_names", by
+        their array in it.
     """
     mesh, state = solution.mesh, solution.state
     return {
@@ -160,10 +169,11 @@ def write_json(record: Mapping[str, Any], path: Path) -> Path:
 def write_reactions(solution: Solution, path: Path) -> Path:
     """Write the support forces of all cases as a CSV table.
 
-    One row for each station of a supported side ("station": line reaction and clamping
-    moment), each side in all without its corners ("side"), each corner ("corner"), the
-    loads ("loads"), and the sum of sides, corners and loads ("sum": nothing but
-    round-off). The moments of forces are about the axes through the origin.
+    One row for each station of a supported side or seam ("station": line reaction and
+    clamping moment), each side or seam in all without its corners ("side"), each corner
+    ("corner"), each held mark ("point"), the loads ("loads"), and the sum of it all
+    ("sum": nothing but round-off). The moments of forces are about the axes through the
+    origin.
 
     Parameters
     ----------
@@ -203,16 +213,47 @@ def _statement(solution: Solution) -> dict[str, Any]:
             "rim": _line(outline.rim),
             "holes": [_line(hole) for hole in outline.holes],
             "area [m2]": _number(outline.area),
+            **_inside(outline),
+            "notes": list(outline.notes),
         },
         "thickness [m]": _number(plate.thickness),
-        "material": _material(plate),
+        "material": _material(plate.material),
+        "zones": [
+            {
+                "name": name,
+                "thickness [m]": _number(thickness),
+                "material": _material(material),
+            }
+            for name, (thickness, material) in zip(
+                outline.zone_names, plate.sections[1:], strict=True
+            )
+        ],
         "supports": {
-            side: {"name": plate.support(side).name, "words": plate.support(side).words}
-            for side in outline.side_names
+            name: {"name": plate.support(name).name, "words": plate.support(name).words}
+            for name in outline.names
         },
         "bend_turn [rad]": _number(plate.bend_turn),
         "mass [kg]": None if plate.mass is None else _number(plate.mass),
         "cases": [_case(case) for case in solution.state.cases],
+    }
+
+
+def _inside(outline: Outline) -> dict[str, Any]:
+    """Zones, seams and marks of an outline by name."""
+    return {
+        "zones": [
+            {"name": zone.name, **_line(zone.shape)}
+            | {"area [m2]": _number(outline.zone_area(zone.name))}
+            for zone in outline.zones
+        ],
+        "seams": [
+            {"name": seam.name, "points [m]": [_numbers(p) for p in seam.points]}
+            | _bulges(seam.bulges)
+            for seam in outline.seams
+        ],
+        "marks": [
+            {"name": mark.name, "at [m]": _numbers(mark.at)} for mark in outline.marks
+        ],
     }
 
 
@@ -226,18 +267,20 @@ def _line(shape: ClosedLine) -> dict[str, Any]:
             "sides": list(shape.sides),
         }
     line = shape.line
-    found: dict[str, Any] = {
+    return {
         "shape": type(shape).__name__.lower(),
         "points [m]": [_numbers(point) for point in line.points],
         "sides": list(line.sides),
+        **_bulges(line.bulges),
     }
-    if (line.bulges != 0.0).any():
-        found["bulges"] = _numbers(line.bulges)
-    return found
 
 
-def _material(plate: Plate) -> dict[str, Any]:
-    material = plate.material
+def _bulges(bulges: Floats) -> dict[str, Any]:
+    """Bulges of pieces, where not all are straight."""
+    return {"bulges": _numbers(bulges)} if (bulges != 0.0).any() else {}
+
+
+def _material(material: Isotropic) -> dict[str, Any]:
     density = material.density
     return {
         "name": material.name,
@@ -263,6 +306,8 @@ def _load(load: Load) -> dict[str, Any]:
             record[key] = _qualified_name(value)
         elif isinstance(value, tuple):
             record[key] = _numbers(value)
+        elif value is None or isinstance(value, str):
+            record[key] = value
         else:
             record[key] = _number(value)
     return record
@@ -304,7 +349,7 @@ def _value(value: Value) -> dict[str, Any]:
 
 
 def _reactions(reactions: Reactions) -> dict[str, Any]:
-    """Support forces by side and corner, and their balance with the loads."""
+    """Support forces by side, corner and point, and their balance with the loads."""
     return {
         "sides": [
             {"side": side.side, "support": side.support.name}
@@ -314,6 +359,12 @@ def _reactions(reactions: Reactions) -> dict[str, Any]:
         "corners": [
             {"sides": list(corner.corner.sides), "force [N]": _value(corner.force)}
             for corner in reactions.corners
+        ],
+        "points": [
+            {"mark": point.mark, "support": point.support.name}
+            | {"place [m]": _numbers(point.force.place)}
+            | _resultant(point.resultant)
+            for point in reactions.points
         ],
         "loads": _resultant(reactions.load),
         "supports": _resultant(reactions.total),
@@ -348,6 +399,12 @@ def _rows(reactions: Reactions) -> Iterator[dict[str, Any]]:
             total += force
             row |= _resultant(force)
         yield row
+    for point in reactions.points:
+        total += point.resultant
+        x, y = _numbers(point.force.place)
+        row = {"case": reactions.case, "kind": "point", "x [m]": x, "y [m]": y}
+        row["side"] = point.mark
+        yield row | _resultant(point.resultant)
     yield {"case": reactions.case, "kind": "loads"} | _resultant(reactions.load)
     yield {"case": reactions.case, "kind": "sum"} | _resultant(total)
 

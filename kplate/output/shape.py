@@ -10,7 +10,6 @@ from typing import Any
 import numpy as np
 
 from kplate.arrays import Floats, Ints
-from kplate.mesh import Mesh
 
 BACK = np.array([0.32, 0.58])  # where one unit of y goes
 RISE = 0.14  # largest deflection drawn, as a share of the plate's mean size
@@ -42,15 +41,17 @@ def scale_factor(largest: float, size: float) -> float:
     return float(decade * max(r for r in ROUND if r == 1.0 or r * decade <= wanted))
 
 
-def surface(mesh: Mesh, bent: Floats, faces: Floats) -> Any:
+def surface(bent: Floats, triangles: Ints, *, rim: Ints, faces: Floats) -> Any:
     """Coloured triangles with grid lines and the rim, those behind hidden.
 
     Parameters
     ----------
-    mesh : Mesh
-        The triangles.
     bent : ndarray, shape (n_points, 3)
-        Where their vertices are drawn.
+        Where points are drawn.
+    triangles : ndarray, shape (n_triangles, 3)
+        Points of each triangle.
+    rim : ndarray, shape (n_boundary, 2)
+        Points of each edge of the boundary.
     faces : ndarray, shape (n_triangles, 4)
         Colours, red, green, blue and opacity.
 
@@ -61,16 +62,15 @@ def surface(mesh: Mesh, bent: Floats, faces: Floats) -> Any:
     """
     from matplotlib.collections import PolyCollection
 
-    depth = bent[mesh.triangles, 1].mean(axis=1)
+    depth = bent[triangles, 1].mean(axis=1)
     nearest = np.full(len(bent), np.inf)
-    np.minimum.at(nearest, mesh.triangles.ravel(), np.repeat(depth, 3))
-    grid, grid_depth = _grid(bent, mesh.triangles, depth)
-    rim = bent[mesh.boundary_edges]
-    rim_depth = nearest[mesh.boundary_edges].min(axis=1) - RIM * mean_size(bent)
-    lines = np.concatenate([grid, rim])[:, [0, 1, 1]]  # flat triangles
+    np.minimum.at(nearest, triangles.ravel(), np.repeat(depth, 3))
+    grid, grid_depth = _grid(bent, triangles, depth)
+    rim_depth = nearest[rim].min(axis=1) - RIM * mean_size(bent)
+    lines = np.concatenate([grid, bent[rim]])[:, [0, 1, 1]]  # flat triangles
     kinds = np.repeat([0, 1], [len(grid), len(rim)])
     order = np.argsort(-np.concatenate([depth, grid_depth, rim_depth]), kind="stable")
-    shapes = np.concatenate([bent[mesh.triangles], lines])
+    shapes = np.concatenate([bent[triangles], lines])
     polygons: Any = project(shapes)[order]
     return PolyCollection(
         polygons,

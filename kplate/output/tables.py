@@ -1,11 +1,13 @@
 """What a command prints: tables that fit a screen and an e-mail."""
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from io import StringIO
 
 from kplate.limits import Judgement
-from kplate.units import Unit
+from kplate.reactions import Resultant
+from kplate.units import DisplayUnits, Unit
 from kplate.values import Value
 
 MARKS = {"bound": "", "estimate": " ~", "indicator": " ?", "none": ""}
@@ -53,15 +55,36 @@ def values_table(lines: Sequence[Line]) -> str:
     rows = []
     for line in lines:
         judgement = line.judgement
+        known = not math.isnan(line.value.value)
         limit, used = "-", "-"
         if judgement is not None:
-            limit, used = line.unit.show(judgement.limit), f"{judgement.used:.2f}"
-        shown = line.unit.show(abs(line.value.value))
+            limit = line.unit.show(judgement.limit)
+            used = f"{judgement.used:.2f}" if known else "?"
+        shown = line.unit.show(abs(line.value.value)) if known else "-"
         rows.append(
             (line.case, line.quantity, shown, band(line.value), limit, used, line.where)
         )
     header = ("case", "quantity", "value", "band", "limit", "used", "where")
     return _columns(header, rows)
+
+
+def reactions_table(
+    rows: Sequence[tuple[str, str, Resultant, float, float]],
+    units: DisplayUnits,
+) -> str:
+    """Table of what each support brings: force, and smallest and largest line reaction.
+
+    Rows hold case, support, resultant and both line reactions in N/m (nan at a point).
+    """
+    shown = []
+    for case, name, resultant, least, most in rows:
+        force = f"{resultant.force / units.force.size:+.4g} {units.force.symbol}"
+        line = "-"
+        if not math.isnan(least):
+            size, symbol = units.line_force.size, units.line_force.symbol
+            line = f"{least / size:+.3g} to {most / size:+.3g} {symbol}"
+        shown.append((case, name, force, line))
+    return _columns(("case", "support", "pushes up", "line reaction"), shown)
 
 
 def band(value: Value) -> str:

@@ -1,6 +1,7 @@
 """A solution as a VTU file, for `kplate view` and any program that reads VTK.
 
-Point data are the fields of `Solution.point_fields`; with several load cases each name
+Points and point data are those of `Solution.point_fields`, where a vertex on a step or a
+seam stands once for each side of it; with several load cases each name
 starts with its case, "CASE: NAME". The cells are the triangles, then the boundary edges
 as lines. Cell data are "zone", the zone of a triangle (-1 on lines), and "side", the
 number of a line's side (-1 on triangles). The names of the sides, and all else that a
@@ -47,12 +48,12 @@ def write_vtk(solution: Solution, path: Path) -> Path:
             "name it so."
         )
     mesh = solution.mesh
-    height = np.zeros(len(mesh.points))
+    points = solution.field_points
     write_vtu(
         path,
-        np.column_stack([mesh.points, height]),
-        mesh.triangles,
-        lines=mesh.boundary_edges,
+        np.column_stack([points, np.zeros(len(points))]),
+        solution.field_triangles,
+        lines=solution.field_edges,
         point_data=_fields(solution),
         cell_data={
             "zone": (mesh.zones, np.full(len(mesh.boundary_edges), NOTHING)),

@@ -3,12 +3,20 @@
 import pytest
 
 from kplate.adapt import solve
-from kplate.loads import Case, PointForce, Pressure, SelfWeight
-from kplate.materials import STEEL
+from kplate.loads import (
+    Case,
+    EdgeMoment,
+    LineForce,
+    PointForce,
+    PointMoment,
+    Pressure,
+    SelfWeight,
+)
+from kplate.materials import ALUMINIUM, STEEL
 from kplate.outline import Outline
-from kplate.plate import Plate
-from kplate.shapes import Circle
-from kplate.supports import CLAMPED, SIMPLY_SUPPORTED
+from kplate.plate import Plate, Section
+from kplate.shapes import Circle, Ellipse, Slot
+from kplate.supports import CLAMPED, GUIDED, SIMPLY_SUPPORTED
 
 
 @pytest.fixture(scope="session")
@@ -45,3 +53,43 @@ def lid():
         supports=dict.fromkeys(sides, SIMPLY_SUPPORTED),
     )
     return solve(plate, [Case(name="wind", loads=[Pressure(-5e3)])], triangles=800)
+
+
+@pytest.fixture(scope="session")
+def deck():
+    """A bowed plate with a zone, two seams and three marks, held inside too."""
+    outline = (
+        Outline.polygon(
+            [(0, 0), (1.2, 0), (1.2, 0.8), (0, 0.8)],
+            sides=["south", "bow", "north", "west"],
+            bulges=[0.0, 0.25, 0.0, 0.0],
+        )
+        .cut(Ellipse(centre=(0.3, 0.6), size=(0.2, 0.1), name="oval"))
+        .cut(Slot(centre=(1.0, 0.2), length=0.2, width=0.06, name="slot"))
+        .zone(Circle(centre=(0.3, 0.25), radius=0.12, name="edge"), name="pad")
+        .seam([(0.6, 0.0), (0.6, 0.8)], name="sill")
+        .seam([(0.8, 0.4), (1.0, 0.6)], name="track", bulges=[0.2])
+        .mark((0.9, 0.4), name="bolt")
+        .mark((0.45, 0.45), name="stud")
+        .mark((1.1, 0.6), name="lamp")
+    )
+    plate = Plate(
+        outline=outline,
+        thickness=0.008,
+        material=STEEL,
+        supports={
+            "bow": CLAMPED,
+            "west": GUIDED,
+            "sill": SIMPLY_SUPPORTED,
+            "bolt": SIMPLY_SUPPORTED,
+            "stud": CLAMPED,
+        },
+        zones={"pad": Section(thickness=0.012, material=ALUMINIUM)},
+    )
+    loads = [
+        Pressure(-5e3, zone="pad"),
+        LineForce(force=-1e3, along="track"),
+        EdgeMoment(moment=50.0, along="north"),
+        PointMoment(moment=(0.0, -20.0), at=(1.1, 0.6)),
+    ]
+    return solve(plate, [Case(name="winch", loads=loads)], triangles=1500)

@@ -137,7 +137,7 @@ def test_the_record_says_what_was_stated(record):
         {
             "name": "crowd",
             "loads": [
-                {"kind": "pressure", "value [Pa]": -5e3},
+                {"kind": "pressure", "value [Pa]": -5e3, "zone": None},
                 {"kind": "self-weight", "acceleration [m/s2]": -9.80665},
             ],
         },
@@ -146,6 +146,87 @@ def test_the_record_says_what_was_stated(record):
             "loads": [{"kind": "point force", "force [N]": 2e3, "at [m]": [1.35, 0.4]}],
         },
     ]
+
+
+def test_what_lies_inside_is_recorded_with_its_loads_and_supports(deck):
+    record = solution_record(deck, "0")
+    assert plain(record)
+    stated = record["statement"]
+    (pad,) = stated["outline"]["zones"]
+    area = math.pi * 0.12**2
+    assert pad.pop("area [m2]") == pytest.approx(area, rel=1e-5)
+    assert (pad["name"], pad["sides"]) == ("pad", ["edge", "edge"])
+    (section,) = stated["zones"]
+    assert (section["name"], section["thickness [m]"]) == ("pad", 0.012)
+    assert section["material"]["name"] == "aluminium 5083"
+    assert stated["outline"]["seams"] == [
+        {"name": "sill", "points [m]": [[0.6, 0.0], [0.6, 0.8]]},
+        {"name": "track", "points [m]": [[0.8, 0.4], [1.0, 0.6]], "bulges": [0.2]},
+    ]
+    assert stated["outline"]["marks"][0] == {"name": "bolt", "at [m]": [0.9, 0.4]}
+    assert stated["outline"]["rim"]["bulges"] == [0.0, 0.25, 0.0, 0.0]
+    words = {name: held["name"] for name, held in stated["supports"].items()}
+    assert words == {
+        "south": "free",
+        "bow": "clamped",
+        "north": "free",
+        "west": "guided",
+        "oval": "free",
+        "slot": "free",
+        "sill": "simply supported",
+        "track": "free",
+        "bolt": "simply supported",
+        "stud": "clamped",
+        "lamp": "free",
+    }
+    assert stated["cases"][0]["loads"] == [
+        {"kind": "pressure", "value [Pa]": -5e3, "zone": "pad"},
+        {"kind": "line force", "force [N/m]": -1e3, "along": "track"},
+        {"kind": "edge moment", "moment [N]": 50.0, "along": "north"},
+        {"kind": "point moment", "moment [N m]": [0.0, -20.0], "at [m]": [1.1, 0.6]},
+    ]
+
+
+def test_notes_of_the_outline_are_recorded():
+    angles = 2.0 * np.pi * np.arange(48) / 48
+    points = np.column_stack([np.cos(angles), np.sin(angles)])
+    plate = Plate(
+        outline=Outline.polygon(points, sides=["rim"] * 48),
+        thickness=0.01,
+        material=STEEL,
+        supports={"rim": SIMPLY_SUPPORTED},
+    )
+    record = solution_record(solve(plate, [Pressure(-1.0)], triangles=100), "0")
+    (note,) = record["statement"]["outline"]["notes"]
+    assert "48 chords of 'rim'" in note
+
+
+def test_point_supports_are_recorded_and_close_the_balance(deck, tmp_path):
+    (result,) = solution_record(deck, "0")["results"]
+    reactions = result["reactions"]
+    bolt, stud = reactions["points"]
+    assert (bolt["mark"], bolt["support"]) == ("bolt", "simply supported")
+    assert bolt["place [m]"] == [0.9, 0.4]
+    assert (stud["mark"], stud["support"]) == ("stud", "clamped")
+    # About the origin a force at (x, y) has the moments y F and -x F, and no more where
+    # slopes are free.
+    assert bolt["moment_x [N m]"] == pytest.approx(0.4 * bolt["force [N]"])
+    assert bolt["moment_y [N m]"] == pytest.approx(-0.9 * bolt["force [N]"])
+    path = write_reactions(deck, tmp_path / "reactions.csv")
+    with path.open(encoding="utf-8", newline="") as file:
+        table = list(csv.DictReader(file))
+    points = [row for row in table if row["kind"] == "point"]
+    assert [(row["side"], row["x [m]"]) for row in points] == [
+        ("bolt", "0.9"),
+        ("stud", "0.45"),
+    ]
+    assert float(points[0]["force [N]"]) == bolt["force [N]"]
+    assert "sill" in {row["side"] for row in table if row["kind"] == "side"}
+    (rest,) = (row for row in table if row["kind"] == "sum")
+    (loads,) = (row for row in table if row["kind"] == "loads")
+    for column in COLUMNS[8:]:
+        scale = abs(float(loads["force [N]"]))
+        assert float(rest[column]) == pytest.approx(0.0, abs=1e-9 * scale)
 
 
 def test_every_kind_of_load_is_known_with_all_its_fields():
