@@ -157,13 +157,12 @@ def chain(pieces: Sequence[Piece], *, unit: Unit, snap: float | None = None) -> 
     )
 
 
-def closed_lines(
-    pieces: Sequence[Piece], *, unit: Unit, snap: float | None = None
-) -> int:
+def closed_lines(pieces: Sequence[Piece], *, snap: float | None = None) -> int:
     """Number of closed lines among pieces; what does not close is left out."""
-    net = _join(pieces, _snap(pieces, snap, unit))
-    if not net.pieces:
+    size = _size(pieces)
+    if size == 0.0:
         return 0
+    net = _join(pieces, SNAP_SHARE * size if snap is None else snap)
     labels = _groups(net.nodes, len(net.places))
     bad = np.unique(labels[net.degrees != 2])
     return len(np.unique(labels)) - len(bad)
@@ -205,11 +204,17 @@ def _plain(value: float) -> str:
     return f"{0.0 if abs(value) < 1e-9 else value:.6g}"
 
 
+def _size(pieces: Sequence[Piece]) -> float:
+    """Diagonal in m of the box around all ends."""
+    starts, ends, _ = arrays(pieces)
+    return float(np.hypot(*np.ptp(np.concatenate([starts, ends]), axis=0)))
+
+
 def _snap(pieces: Sequence[Piece], snap: float | None, unit: Unit) -> float:
     """Snap distance; refuse one that cannot be meant."""
-    starts, ends, _ = arrays(pieces)
-    both = np.concatenate([starts, ends])
-    size = float(np.hypot(*np.ptp(both, axis=0)))
+    size = _size(pieces)
+    if size == 0.0:
+        raise InputError("all lines of the drawing are without length.")
     if snap is None:
         return SNAP_SHARE * size
     if not 0.0 <= snap < size:
@@ -223,7 +228,7 @@ def _snap(pieces: Sequence[Piece], snap: float | None, unit: Unit) -> float:
 def _join(pieces: Sequence[Piece], snap: float) -> _Net:
     """Join ends that coincide, then free ends within the snap distance."""
     starts, ends, bulges = arrays(pieces)
-    size = float(np.hypot(*np.ptp(np.concatenate([starts, ends]), axis=0)))
+    size = _size(pieces)
     short = np.hypot(*(ends - starts).T) <= SAME * size
     full = np.flatnonzero(~short)
     nodes, _ = _nodes(starts[full], ends[full], SAME * size)

@@ -27,7 +27,7 @@ ASK_TURN = math.radians(30.0)
 EVEN = 1 / 3
 # Vertices lie on a circle to this share of the height of the arc over its chord, or of
 # the radius: the last digit again.
-CLOSE, ROUNDED = 0.1, 5e-5
+CLOSE, ROUNDED = 0.1, 2e-4
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

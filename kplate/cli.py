@@ -49,7 +49,7 @@ def _say(text: str) -> None:
             sys.stdout.flush()
     except OSError as error:
         # Keep the interpreter from trying again, in vain, when it closes.
-        sys.stdout = None  # type: ignore[assignment]
+        sys.stdout = None
         raise InputError(
             f"the results cannot be printed ({error.strerror})."
         ) from error

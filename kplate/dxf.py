@@ -152,18 +152,19 @@ def _take(document: Any, unit: Unit) -> tuple[list[Piece], list[str]]:
     }
     for number, entity in enumerate(document.modelspace()):
         kind, layer = entity.dxftype(), str(entity.dxf.get("layer", "0"))
-        name = f"{kind} on layer {layer!r}{_its_place(entity, unit)}"
         take = TAKEN.get(kind)
         if layer.lower() in hidden:
-            ignored.append(f"{name}: its layer is {hidden[layer.lower()]}")
+            ignored.append(
+                f"{_name(entity, unit)}: its layer is {hidden[layer.lower()]}"
+            )
         elif entity.dxf.get("invisible", 0):
-            ignored.append(f"{name}: it is invisible")
+            ignored.append(f"{_name(entity, unit)}: it is invisible")
         elif take is None or (kind == "POLYLINE" and not is_line(entity)):
-            ignored.append(f"{name}: no line")
+            ignored.append(f"{_name(entity, unit)}: no line")
         else:
-            arcs = _arcs(entity, take, name)
+            arcs = _arcs(entity, take, unit)
             if not arcs:
-                ignored.append(f"{name}: without length")
+                ignored.append(f"{_name(entity, unit)}: without length")
             pieces += [
                 Piece(
                     start=_scaled(start, unit),
@@ -178,17 +179,19 @@ def _take(document: Any, unit: Unit) -> tuple[list[Piece], list[str]]:
     return pieces, ignored
 
 
-def _arcs(entity: Any, take: Callable[[Any], list[Arc]], name: str) -> list[Arc]:
+def _arcs(entity: Any, take: Callable[[Any], list[Arc]], unit: Unit) -> list[Arc]:
     """Pieces of an entity; says which it is where it is refused."""
     try:
         arcs = take(entity)
     except InputError as error:
-        raise InputError(f"{name}: {error}") from error
+        raise InputError(f"{_name(entity, unit)}: {error}") from error
     except Exception as error:  # ezdxf lets pass what its parts raise
-        raise InputError(f"{name} is damaged; draw it again.") from error
+        raise InputError(f"{_name(entity, unit)} is damaged; draw it again.") from error
     numbers = [c for start, end, bulge in arcs for c in (*start, *end, bulge)]
     if not all(math.isfinite(number) for number in numbers):
-        raise InputError(f"{name} has coordinates that are no numbers; draw it again.")
+        raise InputError(
+            f"{_name(entity, unit)} has coordinates that are no numbers; draw it again."
+        )
     return arcs
 
 
@@ -196,11 +199,12 @@ def _scaled(point: Point, unit: Unit) -> Point:
     return point[0] * unit.size, point[1] * unit.size
 
 
-def _its_place(entity: Any, unit: Unit) -> str:
-    """Where an entity lies, or the lower left corner of its box."""
+def _name(entity: Any, unit: Unit) -> str:
+    """Kind and layer of an entity, and where it or its lower left corner lies."""
     from ezdxf.bbox import extents
 
-    point = None
+    layer = str(entity.dxf.get("layer", "0"))
+    name, point = f"{entity.dxftype()} on layer {layer!r}", None
     for key in ("insert", "location", "center", "start", "defpoint", "vtx0"):
         if entity.dxf.hasattr(key):
             point = entity.dxf.get(key)
@@ -211,8 +215,8 @@ def _its_place(entity: Any, unit: Unit) -> str:
             box = extents([entity], fast=True)
             point = box.extmin if box.has_data else None
     if point is None:
-        return ""
-    return f" at {place(_scaled((point[0], point[1]), unit), unit)}"
+        return name
+    return f"{name} at {place(_scaled((point[0], point[1]), unit), unit)}"
 
 
 def _choose(
@@ -230,9 +234,7 @@ def _choose(
         return *_of_layers(pieces, layers, names), []
     if len(layers) < 2:
         return pieces, [], []
-    closed = {
-        name: closed_lines(own, unit=unit, snap=snap) for name, own in layers.items()
-    }
+    closed = {name: closed_lines(own, snap=snap) for name, own in layers.items()}
     holding = [name for name, number in closed.items() if number]
     if not holding:
         return pieces, [], []

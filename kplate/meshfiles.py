@@ -244,8 +244,9 @@ def _raw_mesh(path: Path) -> Any:
         ) from error
     except OSError as error:
         raise InputError(f"cannot read {shown}: {error.strerror or error}.") from error
-    # meshio lets pass what its parts raise, and leaves the program at arrays of text.
-    except (Exception, SystemExit) as error:
+    # The readers of meshio let pass what their parts raise; its general `read` would
+    # end the program at arrays of text.
+    except Exception as error:
         raise InputError(
             f"{shown} is damaged, of a version that cannot be read, or holds arrays of "
             "text; save it as .msh 4.1 or 2.2, or as .vtu without text."

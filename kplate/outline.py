@@ -177,8 +177,9 @@ class Outline:
 
         Parameters are those of `fillet`; material within the radius is taken off.
         """
-        line = self._line_with((first, second)).relieve((first, second), radius, name)
-        return self._replaced(line, (first, second))
+        line = self._line_with((first, second))
+        cut = line.relieve if line is self.boundaries[0] else line.relieve_around
+        return self._replaced(cut((first, second), radius, name), (first, second))
 
     def part(
         self,

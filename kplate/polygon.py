@@ -320,6 +320,15 @@ class Polygon:
         label = name or f"relief of {self.sides[i - 1]} and {self.sides[i]}"
         return self._round(i, radius, -math.tan(0.25 * inside), label, "relief")
 
+    def relieve_around(
+        self, sides: tuple[str, str], radius: float, name: str | None = None
+    ) -> "Polygon":
+        """Cut a relief as `relieve` does, where the material is outside: at a hole."""
+        i = self.corner(sides)
+        outside = math.pi + float(self.turns[i])
+        label = name or f"relief of {self.sides[i - 1]} and {self.sides[i]}"
+        return self._round(i, radius, math.tan(0.25 * outside), label, "relief")
+
     def _round(
         self, i: int, cut: float, bulge: float, label: str, what: str
     ) -> "Polygon":
@@ -336,7 +345,7 @@ class Polygon:
                 f"the corner at {at((x, y))} is not between straight pieces; a {what} "
                 "needs two."
             )
-        if cut >= self.lengths[both].min():
+        if cut > self.lengths[both].min() - SNAP * self.size:
             raise InputError(
                 f"the {what} at {at((x, y))} takes {cut:.6g} m of both sides but the "
                 f"shorter has {self.lengths[both].min():.6g} m; take a smaller radius."

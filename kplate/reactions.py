@@ -4,8 +4,7 @@ Everything comes from the discrete equations: the support forces are the stiffne
 the unknowns less the loads, so that with the loads they balance to round-off. At a
 vertex they are a force R and two couples, paired with w and its slopes. A corner force
 is the jump of m_ns there (arriving side less leaving side); the rest of R belongs to
-the sides. Along a side, R is spread over the lengths around three neighbouring
-vertices, which smooths what single vertices of a low-degree element get 50 % wrong.
+the sides. Along a side, R is spread over its stations (`kplate.stations`).
 
 Signs: forces and line reactions v_n positive when the support pushes the plate up; a
 corner that must be held down has a negative force. Moments about the x and y axes
@@ -23,6 +22,7 @@ from kplate.mesh import Mesh
 from kplate.recovery import SmoothedMoments
 from kplate.singular import Corner, Place, excluded_places, plate_corners
 from kplate.solve.static import StaticState
+from kplate.stations import along, stretches
 from kplate.supports import Support
 from kplate.values import Value
 
@@ -349,8 +349,8 @@ def _line_reaction(
     """Reaction of one side or seam from its share of what its vertices bring."""
     motions, unbounded = shared
     at = _length_at(mesh, line)
-    chains = _stretches(line.edges)
-    parts = [_along(mesh, chain, own, 0.5 * at, unbounded) for chain in chains]
+    chains = stretches(line.edges)
+    parts = [along(mesh, chain, own, 0.5 * at, unbounded) for chain in chains]
     starts = np.cumsum([0.0, *(float(part[0][-1]) for part in parts[:-1])])
     return SideReaction(
         side=line.name,
@@ -365,103 +365,6 @@ def _line_reaction(
         line_moment=np.concatenate([part[2] for part in parts])
         * line.support.holds_slope,
     )
-
-
-def _stretches(edges: Ints) -> list[Ints]:
-    """Vertices along each connected stretch of edges, in order.
-
-    Stretches follow the first edge's sense; a closed one repeats its first vertex.
-    """
-    neighbours: dict[int, list[int]] = {}
-    for a, b in edges.tolist():
-        neighbours.setdefault(a, []).append(b)
-        neighbours.setdefault(b, []).append(a)
-    left = dict.fromkeys(map(tuple, edges.tolist()))
-    ends = [v for v in edges[:, 0].tolist() if len(neighbours[v]) == 1]
-    others = [v for v in edges[:, 1].tolist() if len(neighbours[v]) == 1]
-    chains = []
-    while left:
-        heads = [v for v in (*ends, *others) if _open(v, neighbours, left)]
-        chain = [heads[0] if heads else next(iter(left))[0]]
-        while True:
-            step = next(
-                (
-                    (pair, v)
-                    for v in neighbours[chain[-1]]
-                    for pair in ((chain[-1], v), (v, chain[-1]))
-                    if pair in left
-                ),
-                None,
-            )
-            if step is None:
-                break
-            del left[step[0]]
-            chain.append(step[1])
-        chains.append(np.array(chain))
-    return chains
-
-
-def _open(
-    vertex: int,
-    neighbours: dict[int, list[int]],
-    left: dict[tuple[int, ...], None],
-) -> bool:
-    """Whether an edge at a vertex is still left."""
-    return any((vertex, v) in left or (v, vertex) in left for v in neighbours[vertex])
-
-
-def _along(
-    mesh: Mesh, chain: Ints, own: Floats, length: Floats, unbounded: Bools
-) -> tuple[Floats, Floats, Floats]:
-    """Distance, line reaction and line moment at the vertices of a stretch."""
-    step = np.diff(mesh.points[chain], axis=0)
-    distance = np.concatenate([[0.0], np.cumsum(np.hypot(*step.T))])
-    tangent = np.empty((len(chain), 2))  # mean of the edges at each vertex
-    unit = step / np.hypot(*step.T)[:, None]
-    closed = chain[0] == chain[-1]
-    tangent[1:-1] = unit[:-1] + unit[1:]
-    tangent[0] = unit[0] + unit[-1] if closed else unit[0]
-    tangent[-1] = tangent[0] if closed else unit[-1]
-    tangent /= np.hypot(*tangent.T)[:, None]
-    normal = np.column_stack([tangent[:, 1], -tangent[:, 0]])
-    across = np.einsum("kc,kc->k", normal, own[chain, 1:])
-    along = np.einsum("kc,kc->k", tangent, own[chain, 1:]) / length[chain]
-    spans = _three(_three(length[chain], closed), closed)
-    force = _three(own[chain, 0], closed) - _gain(along, closed)
-    reaction = _three(force, closed) / spans
-    moment = _three(_three(across, closed), closed) / spans
-    reaction[unbounded[chain]] = np.nan
-    return distance, reaction, moment
-
-
-def _three(values: Floats, closed: bool) -> Floats:
-    """Sum over each vertex of a stretch and its neighbours on it."""
-    if closed:
-        ring = values[:-1]
-        total = ring + np.roll(ring, 1) + np.roll(ring, -1)
-        return np.append(total, total[0])
-    total = values.copy()
-    total[1:] += values[:-1]
-    total[:-1] += values[1:]
-    return total
-
-
-def _gain(couple: Floats, closed: bool) -> Floats:
-    """Gain of a line couple along the three vertices around each of a stretch.
-
-    Couples that work on the slope along the side act as a pair of forces; it is taken
-    half-way to the next vertex, and as nothing next to the ends.
-    """
-    if closed:
-        ring = couple[:-1]
-        ahead = np.roll(ring, -1) + np.roll(ring, -2)
-        behind = np.roll(ring, 1) + np.roll(ring, 2)
-        gain = 0.5 * (ahead - behind)
-        return np.append(gain, gain[0])
-    gain = np.zeros_like(couple)
-    if len(couple) > 4:
-        gain[2:-2] = 0.5 * (couple[3:-1] + couple[4:] - couple[1:-3] - couple[:-4])
-    return gain
 
 
 def _resultant(motions: Floats, nodal: Floats) -> Resultant:

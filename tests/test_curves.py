@@ -10,9 +10,9 @@ import pytest
 import shapely
 from hypothesis import assume, given
 from hypothesis import strategies as st
+from strategies import numbers
 
 from kplate import curves
-from tests.strategies import numbers
 
 
 @st.composite
@@ -26,7 +26,7 @@ def arcs(draw):
 
 def along(arc, n=2001):
     """Points (n, 2) at even shares of an arc, from its circle alone."""
-    start, end, bulge = arc
+    start, _, bulge = arc
     sweep = 4.0 * math.atan(bulge[0])
     x, y, radius = curves.circles(*arc)[0]
     first = math.atan2(start[0, 1] - y, start[0, 0] - x)
@@ -59,10 +59,10 @@ def test_points_lie_at_their_share_of_the_length(arc):
 @given(arcs())
 def test_tangents_are_those_of_the_first_and_last_steps(arc):
     out, into = curves.tangents(*arc)
-    steps = np.diff(along(arc, 200_001), axis=0)
+    steps = np.diff(along(arc, 20_001), axis=0)
     steps /= np.hypot(*steps.T)[:, None]
-    np.testing.assert_allclose(out[0], steps[0], atol=1e-4)
-    np.testing.assert_allclose(into[0], steps[-1], atol=1e-4)
+    np.testing.assert_allclose(out[0], steps[0], atol=1e-3)
+    np.testing.assert_allclose(into[0], steps[-1], atol=1e-3)
 
 
 @given(arcs())
@@ -163,7 +163,9 @@ def test_outermost_points_give_the_box_of_the_fine_points(arc):
     found = np.vstack([curves.outermost(*arc), arc[1]])
     for end in (np.min, np.max):
         np.testing.assert_allclose(
-            end(found, axis=0), end(fine, axis=0), atol=2e-6 * curves.circles(*arc)[0, 2]
+            end(found, axis=0),
+            end(fine, axis=0),
+            atol=2e-6 * curves.circles(*arc)[0, 2],
         )
 
 
@@ -187,9 +189,9 @@ def test_an_ellipse_is_off_by_no_more_than_is_said(b):
     points, bulges = curves.ellipse((1.0, b))
     ends = np.roll(points, -1, axis=0)
     flat, _ = curves.flattened(points, ends, bulges)
-    angle = np.linspace(0.0, 2.0 * np.pi, 400_001)
+    angle = np.linspace(0.0, 2.0 * np.pi, 20_001)
     exact = shapely.LineString(np.c_[np.cos(angle), b * np.sin(angle)])
-    off = shapely.distance(exact, shapely.points(flat[::7]))
+    off = shapely.distance(exact, shapely.points(flat[::37]))
     assert off.max() < 1e-4 * max(1.0, b)
     out, into = curves.tangents(points, ends, bulges)
     np.testing.assert_allclose(out, np.roll(into, 1, axis=0), atol=1e-9)

@@ -210,7 +210,10 @@ def test_zones_seams_and_marks_are_parts_of_the_mesh():
     assert mesh.mark_vertices.tolist() == [3]
     for wrong, words in (
         ({"zones": [0, 2]}, "a triangle belongs to no named zone."),
-        ({"seam_edges": [(1, 3)]}, "a seam is not made of edges of triangles; mesh again."),
+        (
+            {"seam_edges": [(1, 3)]},
+            "a seam is not made of edges of triangles; mesh again.",
+        ),
         ({"seam_numbers": []}, "each seam edge needs the number of its seam."),
         ({"mark_vertices": [4]}, "a mark is not a vertex of the mesh; mesh again."),
         ({"mark_vertices": []}, "a mark is not a vertex of the mesh; mesh again."),

@@ -11,6 +11,7 @@ import shapely
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
+from kplate import curves
 from kplate.errors import InputError, MeshError
 from kplate.mesh import STRAIGHT_EDGE
 from kplate.meshing import (
@@ -105,7 +106,9 @@ def assert_fits(mesh, outline):
         assert angle.max() < 1.001 * 2.0 * np.pi / EDGES_ON_CIRCLE
         length = np.sum(mesh.boundary_lengths[own] / np.sinc(0.5 * angle / np.pi))
         assert length == pytest.approx(outline.side_length(name), rel=1e-9)
-        x, y, radius = mesh.circles[mesh.boundary_circles[own][angle > 0.0]].T[..., None]
+        x, y, radius = mesh.circles[mesh.boundary_circles[own][angle > 0.0]].T[
+            ..., None
+        ]
         points = ends[angle > 0.0]
         reach = np.hypot(points[..., 0] - x, points[..., 1] - y)
         np.testing.assert_allclose(reach, radius + 0.0 * reach, rtol=0.0, atol=blur)
@@ -564,3 +567,248 @@ def test_a_graded_place_takes_up_to_twice_the_triangles_foreseen(ratio):
     before = math.pi * reach**2 * len(plain.triangles)
     found = before + len(graded.triangles) - len(plain.triangles)
     assert 1.0 < found / refined_triangles(ratio) < 2.0
+
+
+# Arcs
+
+ROUND = {
+    "fillet": PLATE.fillet("south", "east", radius=0.15),
+    "relief": PLATE.relieve("south", "east", radius=0.15),
+    "slot": PLATE.cut(
+        Slot(centre=(0.5, 0.5), length=0.5, width=0.15, angle=0.4, name="hole")
+    ),
+    "rounded rectangle": PLATE.cut(
+        Rectangle(centre=(0.5, 0.5), size=(0.5, 0.3), corner_radius=0.05, name="hole")
+    ),
+    "ellipse": Outline.of(Ellipse(centre=(1, 2), size=(1.5, 0.6), name="rim")),
+    "elliptic hole": PLATE.cut(Ellipse(centre=(0.5, 0.5), size=(0.6, 0.3), name="h")),
+    "shallow arc": Outline.polygon(SQUARE, sides=SIDES, bulges=[0, 1e-3, 0, -1e-3]),
+    "most of a circle": Outline.polygon(SQUARE, sides=SIDES, bulges=[0, 2, 0, 0]),
+    "parted circle": Outline.circle((0, 0), radius=1).part(
+        "rim", name="arc", fractions=(0.1, 0.3)
+    ),
+    "one name": Outline.polygon(
+        SQUARE, sides=["rim", "rim", "north", "rim"], bulges=[0, 0.3, 0, 0]
+    ),
+}
+
+
+@pytest.mark.parametrize("size", [0.3, 0.05])
+@pytest.mark.parametrize("name", ROUND)
+def test_points_of_arcs_lie_on_the_true_arcs(name, size):
+    mesh = mesh_outline(ROUND[name], size=size)
+    assert_fits(mesh, ROUND[name])
+    assert corner_angles(mesh).min() > 20.0
+
+
+@st.composite
+def rounded_stars(draw):
+    """A star, some of its corners rounded, and perhaps a slot in its middle."""
+    n = draw(st.integers(4, 7))
+    shift = draw(st.lists(st.floats(-0.2, 0.2), min_size=n, max_size=n))
+    radii = draw(st.lists(st.floats(0.6, 1.0), min_size=n, max_size=n))
+    angles = 2.0 * np.pi * (np.arange(n) + shift) / n
+    points = np.array(radii)[:, None] * np.c_[np.cos(angles), np.sin(angles)]
+    outline = Outline.polygon(points)
+    for k in range(n):
+        own = ("side-1", f"side-{n}") if k == 0 else (f"side-{k}", f"side-{k + 1}")
+        if draw(st.booleans()):
+            turn = abs(float(Outline.polygon(points).rim.turns[k]))
+            assume(turn > 0.1)
+            # Takes less than half of the shortest side.
+            outline = outline.fillet(*own, radius=0.08 / math.tan(0.5 * turn))
+    if draw(st.booleans()):
+        slot = Slot(
+            centre=(0, 0),
+            length=0.3,
+            width=draw(st.floats(0.02, 0.2)),
+            angle=draw(st.floats(-3.0, 3.0)),
+            name="slot",
+        )
+        outline = outline.cut(slot)
+    return outline
+
+
+@settings(max_examples=15)
+@given(rounded_stars())
+def test_any_outline_with_rounded_corners_is_covered(outline):
+    mesh = mesh_outline(outline, size=0.1)
+    assert_fits(mesh, outline)
+
+
+# Aims: a plate with a small hole keeps its number of triangles and its angles.
+
+
+def test_a_small_hole_takes_few_triangles():
+    """At most a fifth more than the 20,000 asked for; angles over 25 degrees."""
+    outline = PLATE.cut(Circle(centre=(0.4, 0.5), radius=0.02, name="shaft"))
+    mesh = mesh_outline(outline, size=size_for(outline, 20_000))
+    assert 18_000 < len(mesh.triangles) < 24_000
+    coarse = mesh_outline(outline, size=size_for(outline, 1000))
+    assert corner_angles(coarse).min() > 25.0
+
+
+@pytest.mark.parametrize("triangles", [200, 1000])
+def test_a_tiny_hole_has_good_angles_in_a_coarse_mesh(triangles):
+    outline = PLATE.cut(Circle(centre=(0.5, 0.5), radius=0.5e-4, name="hole"))
+    mesh = mesh_outline(outline, size=size_for(outline, triangles))
+    assert_fits(mesh, outline)
+    assert corner_angles(mesh).min() > 20.0
+
+
+# Zones, seams and marks
+
+
+def boxed(x0, y0, x1, y1):
+    """A rectangle between two corners."""
+    return Polygon(points=[(x0, y0), (x1, y0), (x1, y1), (x0, y1)], sides=["edge"] * 4)
+
+
+def assert_parts(mesh, outline):
+    """Zones cover their areas, seams their lengths, marks their places; no cracks.
+
+    That each edge has one or two triangles, and seams are edges, `Mesh` has checked.
+    """
+    assert mesh.zone_names == ("plate", *outline.zone_names)
+    for number, zone in enumerate(outline.zones, start=1):
+        own = mesh.zones == number
+        centres = mesh.points[mesh.triangles].mean(axis=1)
+        inside = shapely.contains_xy(zone.shape.line.region, *centres.T)
+        straight = (zone.shape.line.bulges == 0.0).all() and not mesh.circles.size
+        if straight:
+            np.testing.assert_array_equal(inside, own)
+        area = outline.zone_area(zone.name)
+        slack = 1e-12 if straight else 2e-3
+        assert mesh.areas[own].sum() == pytest.approx(area, rel=slack)
+    assert mesh.seam_names == tuple(seam.name for seam in outline.seams)
+    for number, seam in enumerate(outline.seams):
+        ends = mesh.points[mesh.seam_edges[mesh.seam_numbers == number]]
+        length = np.hypot(*(ends[:, 1] - ends[:, 0]).T).sum()
+        slack = 1e-12 if (seam.bulges == 0.0).all() else 2e-3
+        exact = curves.lengths(seam.points[:-1], seam.points[1:], seam.bulges).sum()
+        assert length == pytest.approx(exact, rel=slack)
+        off = curves.distances(
+            ends.reshape(-1, 2), seam.points[:-1], seam.points[1:], seam.bulges
+        )
+        assert off.min(axis=1).max() < 1e-12
+    assert mesh.mark_names == tuple(mark.name for mark in outline.marks)
+    for vertex, mark in zip(mesh.mark_vertices, outline.marks, strict=True):
+        np.testing.assert_allclose(mesh.points[vertex], mark.at, atol=1e-15)
+
+
+DISC = Outline.circle((0, 0), radius=1.0)
+ON_RIM = (math.cos(1), math.sin(1))
+LEFT = PLATE.zone(boxed(0, 0, 0.5, 1), name="left")
+PARTS = {
+    "a zone on three sides": LEFT,
+    "zones with a common edge": LEFT.zone(boxed(0.5, 0, 1, 0.3), name="low"),
+    "zones all over": LEFT.zone(boxed(0.5, 0, 1, 1), name="right"),
+    "a zone all over": PLATE.zone(boxed(0, 0, 1, 1), name="all"),
+    "a round zone": PLATE.zone(
+        Circle(centre=(0.5, 0.5), radius=0.2, name="edge"), name="pad"
+    ),
+    "a collar": HOLED.zone(
+        Circle(centre=(0.4, 0.5), radius=0.2, name="edge"), name="collar"
+    ),
+    "a zone cut by a hole": HOLED.zone(boxed(0.4, 0.2, 0.9, 0.8), name="part"),
+    "a zone on the edge of a hole": PLATE.cut(
+        Polygon(points=0.4 + 0.2 * SQUARE, sides=["hole"] * 4)
+    ).zone(boxed(0.6, 0.4, 0.8, 0.6), name="next"),
+    "half a disc": DISC.zone(
+        Polygon(points=[(0, -1), (0, 1)], sides=["a", "b"], bulges=[1, 0]), name="half"
+    ),
+    "a segment of rounded numbers": DISC.zone(
+        Polygon(
+            points=[(0.540302, -0.841471), (0.540302, 0.841471)],
+            sides=["a", "b"],
+            bulges=[0.546302, 0],
+        ),
+        name="segment",
+    ),
+    "a zone nearly on a side": PLATE.zone(boxed(0.2, 3e-5, 0.6, 0.4), name="rib"),
+    "a zone past a bend of a side": Outline.polygon(
+        [(0, 0), (0.5, -5e-5), (1, 0), (1, 1), (0, 1)]
+    ).zone(boxed(0, 0, 1, 0.4), name="rib"),
+    "a seam from side to side": PLATE.seam([(0, 0.3), (1, 0.7)], name="weld"),
+    "seams that cross": PLATE.seam([(0, 0.3), (1, 0.7)], name="weld").seam(
+        [(0.2, 0), (0.7, 1)], name="other"
+    ),
+    "seams that end inside": PLATE.seam([(0.2, 0.3), (0.5, 0.6), (0.8, 0.4)], name="w"),
+    "a seam that closes": PLATE.seam(
+        [(0.2, 0.3), (0.5, 0.6), (0.8, 0.4), (0.2, 0.3)], name="ring"
+    ),
+    "a seam from a corner": PLATE.seam([(0, 0), (0.5, 0.6)], name="weld"),
+    "a bent seam": PLATE.seam([(0.2, 0.3), (0.8, 0.3)], bulges=[0.7], name="bend"),
+    "a seam along a side": PLATE.seam([(0.2, 0), (0.8, 0)], name="weld"),
+    "a seam along seams": PLATE.seam([(0.2, 0.5), (0.8, 0.5)], name="one").seam(
+        [(0.4, 0.5), (1, 0.5)], name="two"
+    ),
+    "a seam to a hole": HOLED.seam([(0, 0.5), (0.3, 0.5)], name="weld"),
+    "a seam from rim to rim": DISC.seam(
+        [ON_RIM, (-ON_RIM[0], -ON_RIM[1])], name="weld"
+    ),
+    "a seam across zones": LEFT.seam([(0.1, 0.5), (0.9, 0.6)], name="weld"),
+    "marks": PLATE.mark((0.3, 0.3), name="in")
+    .mark((0.5, 0), name="on")
+    .mark((0, 0), name="at"),
+    "marks on lines": LEFT.seam([(0.2, 0.5), (0.8, 0.5)], name="weld")
+    .mark((0.3, 0.5), name="seam")
+    .mark((0.2, 0.5), name="end")
+    .mark((0.5, 0.25), name="edge")
+    .mark((0.5, 0.5), name="cross"),
+    "a mark on a rim": DISC.mark(ON_RIM, name="post"),
+}
+
+
+@pytest.mark.parametrize("name", PARTS)
+def test_zones_seams_and_marks_are_parts_of_one_mesh(name):
+    mesh = mesh_outline(PARTS[name], size=0.08)
+    assert_fits(mesh, PARTS[name])
+    assert_parts(mesh, PARTS[name])
+    assert corner_angles(mesh).min() > 20.0
+
+
+@pytest.mark.parametrize("scale", [1e-2, 1e2])
+def test_parts_are_kept_at_any_scale_and_place(scale):
+    """Gmsh's own tolerance is a length: 1e-7 of whatever unit."""
+    here = np.array([1e3, 7e2]) * scale
+    outline = (
+        Outline.polygon(here + scale * SQUARE, sides=SIDES)
+        .cut(Circle(centre=tuple(here + 0.5 * scale), radius=0.1 * scale, name="shaft"))
+        .zone(
+            Polygon(points=here + scale * 0.3 * SQUARE, sides=["edge"] * 4), name="pad"
+        )
+        .seam(here + scale * np.array([(0.3, 0.3), (1.0, 0.1)]), name="weld")
+        .mark(tuple(here + scale * np.array([0.8, 0.8])), name="post")
+    )
+    mesh = mesh_outline(outline, size=0.08 * scale)
+    pad = mesh.areas[mesh.zones == 1].sum()
+    assert pad == pytest.approx(0.09 * scale**2, rel=1e-9)
+    ends = mesh.points[mesh.seam_edges]
+    length = np.hypot(*(ends[:, 1] - ends[:, 0]).T).sum()
+    assert length == pytest.approx(math.hypot(0.7, 0.2) * scale, rel=1e-9)
+    np.testing.assert_allclose(mesh.points[mesh.mark_vertices[0]], outline.marks[0].at)
+    assert corner_angles(mesh).min() > 20.0
+
+
+@st.composite
+def furnished(draw):
+    """A square with a zone, two seams and a mark anywhere on a grid of tenths."""
+    tenths = st.integers(0, 10).map(lambda k: k / 10)
+    x = sorted(draw(st.lists(tenths, min_size=2, max_size=2, unique=True)))
+    y = sorted(draw(st.lists(tenths, min_size=2, max_size=2, unique=True)))
+    outline = PLATE.zone(boxed(x[0], y[0], x[1], y[1]), name="zone")
+    for name in ("one", "two"):
+        ends = draw(
+            st.lists(st.tuples(tenths, tenths), min_size=2, max_size=2, unique=True)
+        )
+        outline = outline.seam(ends, name=name)
+    return outline.mark(draw(st.tuples(tenths, tenths)), name="post")
+
+
+@settings(max_examples=25)
+@given(furnished())
+def test_any_zone_seams_and_mark_make_one_mesh(outline):
+    mesh = mesh_outline(outline, size=0.1)
+    assert_fits(mesh, outline)
+    assert_parts(mesh, outline)

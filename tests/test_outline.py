@@ -566,3 +566,276 @@ def test_a_side_that_is_not_there_has_no_length():
     assert refusal(lambda: outline.side_length("north")) == (
         "there is no side 'north'; the sides are s, e, n, w."
     )
+
+
+# Rounded corners and parts of sides
+
+
+def test_corners_are_rounded_and_relieved_on_the_line_they_are_on():
+    hole = square(0.5, 0.5, 0.2, "unused")
+    hole = Polygon(points=hole.points, sides=["a", "b", "c", "d"])
+    outline = Outline.polygon(SQUARE).cut(hole)
+    both = outline.fillet("side-1", "side-2", radius=0.1).relieve(
+        "c", "b", radius=0.05, name="bore"
+    )
+    rim = 1.0 - (1.0 - math.pi / 4.0) * 0.01
+    # Material takes three quarters of a disc around a hole's right corner.
+    assert both.area == pytest.approx(rim - 0.16 - 0.75 * math.pi * 0.05**2)
+    assert both.side_names[1] == "fillet of side-1 and side-2"
+    assert "bore" in both.side_names
+    assert both.smallest_radius == pytest.approx(0.05)
+
+
+def test_a_part_of_a_side_is_given_by_shares_or_between_points():
+    outline = Outline.polygon(SQUARE, sides=["s", "e", "n", "w"])
+    by_share = outline.part("s", name="door", fractions=(0.25, 0.5))
+    by_points = outline.part("s", name="door", between=((0.5, -0.1), (0.25, 0)))
+    for found in (by_share, by_points):
+        assert found.side_names == ("s", "door", "e", "n", "w")
+        assert found.side_length("door") == pytest.approx(0.25)
+        assert found.side_length("s") == pytest.approx(0.75)
+    disc = Outline.circle((0, 0), radius=1).part("rim", name="a", fractions=(0, 0.25))
+    assert disc.side_length("a") == pytest.approx(math.pi / 2)
+    assert disc.area == pytest.approx(math.pi)
+    words = (
+        "a part of side 's' is given by fractions or between two points; give one of "
+        "them."
+    )
+    assert refusal(lambda: outline.part("s", name="door")) == words
+    assert refusal(
+        lambda: outline.part(
+            "s", name="door", fractions=(0, 1), between=((0, 0), (1, 0))
+        )
+    ) == (words)
+    assert refusal(lambda: outline.part("north", name="a", fractions=(0, 1))) == (
+        "there is no side 'north'; the sides are s, e, n, w."
+    )
+    holed = outline.cut(circle(0.5, 0.5, 0.1))
+    assert refusal(lambda: holed.fillet("s", "hole", radius=0.1)) == (
+        "sides 's' and 'hole' are not on one line; the sides are s, e, n, w, hole."
+    )
+
+
+# Zones
+
+
+def boxed(x0, y0, x1, y1, name="edge"):
+    """A rectangle between two corners."""
+    return polygon([(x0, y0), (x1, y0), (x1, y1), (x0, y1)], name)
+
+
+PLATE = Outline.polygon(SQUARE, sides=["s", "e", "n", "w"])
+
+
+def test_zones_may_share_edges_with_the_rim_holes_and_each_other():
+    outline = (
+        PLATE.cut(boxed(0.4, 0.4, 0.6, 0.6, "opening"))
+        .zone(boxed(0, 0, 0.4, 1), name="left")
+        .zone(boxed(0.4, 0, 1, 0.4), name="below")
+    )
+    assert outline.zone_names == ("left", "below")
+    assert outline.zone_area("left") == pytest.approx(0.4, rel=1e-14)
+    assert outline.zone_area("below") == pytest.approx(0.24, rel=1e-14)
+    assert outline.joints == ()
+
+
+def test_holes_are_no_part_of_a_zone():
+    outline = PLATE.cut(circle(0.5, 0.5, 0.1))
+    around = outline.zone(circle(0.5, 0.5, 0.2, "edge"), name="collar")
+    assert around.zone_area("collar") == pytest.approx(0.03 * math.pi, rel=1e-14)
+    half = outline.zone(boxed(0, 0, 0.5, 1), name="half")
+    assert half.zone_area("half") == pytest.approx(0.5 - 0.005 * math.pi, rel=1e-5)
+    assert refusal(lambda: half.zone_area("whole")) == (
+        "there is no zone 'whole'; the zones are half."
+    )
+
+
+@pytest.mark.parametrize(
+    ("shape", "words"),
+    [
+        (
+            boxed(0.5, 0.25, 1.5, 0.75),
+            "zone 'rib' lies outside the outline near (1.25, 0.5) m; draw it within.",
+        ),
+        (boxed(0.45, 0.45, 0.55, 0.55), "zone 'rib' lies in a hole; move it."),
+    ],
+)
+def test_a_zone_lies_on_the_plate(shape, words):
+    outline = PLATE.cut(boxed(0.4, 0.4, 0.6, 0.6, "opening"))
+    assert refusal(lambda: outline.zone(shape, name="rib")) == words
+
+
+def test_zones_do_not_overlap():
+    one = PLATE.zone(boxed(0, 0, 0.5, 0.5), name="one")
+    assert refusal(lambda: one.zone(boxed(0.25, 0.25, 0.75, 0.75), name="two")) == (
+        "zones 'one' and 'two' overlap near (0.375, 0.375) m; zones may share edges "
+        "but not areas."
+    )
+
+
+# Seams and marks
+
+
+def test_seams_may_cross_and_end_on_sides():
+    outline = PLATE.seam([(0, 0.3), (1, 0.6)], name="weld").seam(
+        [(0.5, 0), (0.5, 0.9)], name="stop"
+    )
+    assert outline.names == ("s", "e", "n", "w", "weld", "stop")
+    np.testing.assert_allclose(outline.seams[0].chords, math.hypot(1, 0.3))
+    bent = PLATE.seam([(0.2, 0.2), (0.8, 0.2), (0.8, 0.8)], name="angle")
+    np.testing.assert_allclose(bent.seams[0].turns, [math.pi / 2])
+
+
+@pytest.mark.parametrize(
+    ("points", "changes", "words"),
+    [
+        (
+            [(0.2, 0.2), (1.4, 0.2)],
+            {},
+            "seam 'weld' leaves the plate near (1.2, 0.2) m; end it on the boundary.",
+        ),
+        (
+            [(0.2, 0.5), (0.8, 0.5)],
+            {},
+            "seam 'weld' leaves the plate near (0.5, 0.5) m; end it on the boundary.",
+        ),
+        (
+            [(0.1, 0.1), (0.3, 0.3), (0.3, 0.1), (0.1, 0.3)],
+            {},
+            "seam 'weld' crosses itself; draw it as two seams.",
+        ),
+        (
+            [(0.1, 0.1)],
+            {},
+            "seam 'weld' has points of shape (1, 2); it takes at least two pairs "
+            "(x, y).",
+        ),
+        (
+            [(0.1, 0.1), (0.1, math.nan)],
+            {},
+            "seam 'weld': point 2 is (0.1, nan) m; coordinates must be numbers in m, "
+            "no larger than 1e+09.",
+        ),
+        (
+            [(0.1, 0.1), (0.2, 0.1), (0.2, 0.1)],
+            {},
+            "seam 'weld': points 2 and 3 coincide near (0.2, 0.1) m; drop one of them.",
+        ),
+        (
+            "weld",
+            {},
+            "the points of seam 'weld' are 'weld'; give pairs (x, y) of numbers in m.",
+        ),
+        (
+            [(0.1, 0.1), (0.2, 0.1)],
+            {"bulges": [0, 0]},
+            "seam 'weld' has 1 pieces and 2 bulges; give one for each.",
+        ),
+        (
+            [(0.1, 0.1), (0.2, 0.1)],
+            {"bulges": [-40]},
+            "seam 'weld': piece 1 has bulge -40; it must lie between -30 and 30.",
+        ),
+    ],
+)
+def test_a_seam_that_cannot_be_is_refused(points, changes, words):
+    outline = PLATE.cut(circle(0.5, 0.5, 0.1))
+    assert refusal(lambda: outline.seam(points, name="weld", **changes)) == words
+
+
+@pytest.mark.parametrize(
+    ("place", "words"),
+    [
+        (
+            (0.5, 0.5),
+            "mark 'post' at (0.5, 0.5) m is not on the plate; it lies outside the "
+            "outline or in a hole.",
+        ),
+        (
+            (2, 0.5),
+            "mark 'post' at (2, 0.5) m is not on the plate; it lies outside the "
+            "outline or in a hole.",
+        ),
+        (
+            (math.nan, 0.5),
+            "mark 'post' has place nan; it must be finite, no larger than 1e+09.",
+        ),
+        (3, "mark 'post' has place 3; give a pair of numbers in m."),
+        ("ab", "mark 'post' has place 'ab'; give a pair of numbers in m."),
+    ],
+)
+def test_a_mark_lies_on_the_plate(place, words):
+    outline = PLATE.cut(circle(0.5, 0.5, 0.1))
+    assert refusal(lambda: outline.mark(place, name="post")) == words
+    assert outline.mark((0.2, 0.2), name="post").marks[0].at == (0.2, 0.2)
+
+
+@pytest.mark.parametrize(
+    ("build", "words"),
+    [
+        (
+            lambda: PLATE.zone(boxed(0, 0, 0.5, 1), name="s"),
+            "zone 's' has the name of something else; sides, zones, seams and marks "
+            "need names of their own.",
+        ),
+        (
+            lambda: PLATE.mark((0.5, 0.5), name="a").seam([(0, 0), (1, 1)], name="a"),
+            "mark 'a' has the name of something else; sides, zones, seams and marks "
+            "need names of their own.",
+        ),
+        (
+            lambda: PLATE.mark((0.5, 0.5), name="a").mark((0.2, 0.5), name="a"),
+            "mark 'a' has the name of something else; sides, zones, seams and marks "
+            "need names of their own.",
+        ),
+        (
+            lambda: PLATE.zone(boxed(0, 0, 0.5, 1), name="plate"),
+            "a zone is called 'plate'; that is the name of the plate around the zones, "
+            "give it another.",
+        ),
+        (
+            lambda: PLATE.seam([(0, 0), (1, 1)], name=" a"),
+            "a seam is called ' a'; a name is text of at least one character, with no "
+            "space around it.",
+        ),
+    ],
+)
+def test_what_lies_inside_has_a_name_of_its_own(build, words):
+    assert refusal(build) == words
+
+
+# Joined to what they nearly touch
+
+
+def test_what_nearly_touches_is_joined_and_noted():
+    outline = (
+        PLATE.zone(boxed(0, 1e-5, 0.5, 1), name="rib")
+        .seam([(0.25, 0.5), (0.50001, 0.25)], name="weld")
+        .mark((0.75, -1e-4), name="post")
+    )
+    assert outline.zone_area("rib") == 0.5
+    assert outline.seams[0].points.tolist() == [[0.25, 0.5], [0.5, 0.25]]
+    assert outline.marks[0].at == (0.75, 0.0)
+    assert outline.notes == (
+        "zone 'rib': point (0, 1e-05) m moved by 1e-05 m onto side 's'",
+        "zone 'rib': point (0.5, 1e-05) m moved by 1e-05 m onto side 's'",
+        "seam 'weld': point (0.50001, 0.25) m moved by 1e-05 m onto zone 'rib'",
+        "mark 'post': point (0.75, -0.0001) m moved by 0.0001 m onto side 's'",
+    )
+    assert outline.cut(circle(0.7, 0.7, 0.1)).notes == outline.notes
+
+
+def test_the_last_digits_of_points_on_a_circle_are_no_news():
+    """Six digits: off by up to 1e-6 of the radius, moved without a word."""
+    disc = Outline.circle((0, 0), radius=1.0)
+    x, y = round(math.cos(1), 6), round(math.sin(1), 6)
+    outline = disc.seam([(x, y), (-x, -y)], name="weld").mark((-x, y), name="post")
+    for point in (*outline.seams[0].points, outline.marks[0].at):
+        assert math.hypot(*point) == pytest.approx(1.0, abs=1e-15)
+    assert outline.notes == ()
+
+
+def test_farther_off_is_meant():
+    off = 3e-4  # the size is 1.4
+    outline = PLATE.mark((0.75, off), name="post")
+    assert outline.marks[0].at == (0.75, off)

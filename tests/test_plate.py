@@ -131,7 +131,9 @@ def test_a_support_that_no_equation_knows_is_refused():
     )
     words = refusal(lambda: plate(supports={"south": sliding}))
     assert words.startswith("side 'south' is held by Support(name='sliding', ")
-    assert words.endswith("; a support is one of clamped, simply supported, free, guided.")
+    assert words.endswith(
+        "; a support is one of clamped, simply supported, free, guided."
+    )
 
 
 def test_supports_cannot_be_changed_from_outside():

@@ -1,6 +1,7 @@
 """Meshes from files: all formats read alike, groups by name, refusals in words."""
 
 import math
+from dataclasses import replace
 
 import meshio
 import numpy as np
@@ -11,7 +12,7 @@ from kplate.mesh import STRAIGHT_EDGE
 from kplate.meshfiles import read_mesh, write_vtu
 from kplate.meshing import gmsh_model, mesh_outline
 from kplate.outline import Outline
-from kplate.shapes import Circle
+from kplate.shapes import Circle, Slot
 from kplate.tracing import outline_of, with_circles
 
 FORMATS = [(2.2, 0), (2.2, 1), (4.1, 0), (4.1, 1)]
@@ -157,13 +158,7 @@ def test_a_mesh_of_our_own_is_traced_to_its_outline():
         .cut(Circle(centre=(0.5, 0.5), radius=0.2, name="eye"))
     )
     mesh = mesh_outline(outline, size=0.1)
-    bare = mesh.__class__(
-        points=mesh.points,
-        triangles=mesh.triangles,
-        boundary_edges=mesh.boundary_edges,
-        boundary_sides=mesh.boundary_sides,
-        side_names=mesh.side_names,
-    )
+    bare = replace(mesh, boundary_circles=None, circles=())
     for traced in (outline_of(mesh), outline_of(bare)):
         assert set(traced.side_names) == set(outline.side_names)
         assert traced.area == pytest.approx(outline.area, rel=1e-9)
@@ -180,6 +175,22 @@ def test_a_mesh_of_our_own_is_traced_to_its_outline():
         rtol=1e-9,
     )
     np.testing.assert_array_equal(again.boundary_circles < 0, mesh.boundary_circles < 0)
+
+
+def test_arcs_and_straight_pieces_of_one_side_are_told_apart():
+    outline = Outline.of(
+        Slot(centre=(0.0, 0.0), length=2.0, width=1.0, name="rim", angle=0.4)
+    )
+    mesh = mesh_outline(outline, size=0.1)
+    bare = replace(mesh, boundary_circles=None, circles=())
+    assert (bare.boundary_circles == STRAIGHT_EDGE).all()
+    read = with_circles(bare, outline_of(bare))
+    np.testing.assert_allclose(
+        read.circles[read.boundary_circles[read.boundary_circles >= 0]],
+        mesh.circles[mesh.boundary_circles[mesh.boundary_circles >= 0]],
+        atol=1e-9,
+    )
+    np.testing.assert_array_equal(read.boundary_circles < 0, mesh.boundary_circles < 0)
 
 
 def test_the_unit_scales_the_mesh(panels):
@@ -346,6 +357,21 @@ def test_clockwise_triangles_and_loose_points_are_put_right(tmp_path):
     read = read_mesh(written(tmp_path / "a.vtu", mesh))
     assert read.area == pytest.approx(1.0)
     assert len(read.points) == 4
+
+
+def test_groups_whose_lines_run_the_other_way_and_without_a_name(tmp_path):
+    path = tmp_path / "a.msh"
+    lines = "".join(
+        f"{k + 1} 1 2 -7 1 {a + 1} {b + 1}\n" for k, (a, b) in enumerate(EDGES)
+    )
+    path.write_text(
+        "$MeshFormat\n2.2 0 8\n$EndMeshFormat\n"
+        "$Nodes\n4\n1 0 0 0\n2 1 0 0\n3 1 1 0\n4 0 1 0\n$EndNodes\n"
+        f"$Elements\n6\n{lines}5 2 2 3 1 1 2 3\n6 2 2 3 1 1 3 4\n$EndElements\n"
+    )
+    mesh = read_mesh(path)
+    assert mesh.side_names == ("side-7",)
+    assert mesh.zone_names == ("plate", "zone-3")
 
 
 def test_two_parts_are_refused(tmp_path):

@@ -97,6 +97,26 @@ def test_a_face_turned_in_space_is_the_same_panel(tmp_path_factory, axis, angle)
     assert min(y, 0.9 - y) == pytest.approx(0.35, abs=1e-9)
 
 
+@pytest.mark.parametrize("angle", [0.3, 1.2, 2.0, 2.8])
+@pytest.mark.parametrize("axis", [(1, 0, 0), (1, 1, 0), (0.2, 1, 0.7), (-1, 0.4, 2)])
+def test_the_longest_straight_edge_lies_below(tmp_path, axis, angle):
+    def trapezoid(occ):
+        corners = [(0, 0), (1000, 0), (800, 500), (100, 500)]
+        points = [occ.addPoint(x, y, 0) for x, y in corners]
+        ends = zip(points, [*points[1:], points[0]], strict=True)
+        loop = occ.addCurveLoop([occ.addLine(a, b) for a, b in ends])
+        return [(2, occ.addPlaneSurface([loop]))]
+
+    path = write(tmp_path / "a.step", trapezoid, turn=(axis, angle))
+    rim = read_step(path).outline.rim
+    # The z component of the turned normal, by Rodrigues' formula: seen from above, a
+    # face whose normal points down is mirrored.
+    z = axis[2] ** 2 / sum(c * c for c in axis)
+    up = math.cos(angle) + (1.0 - math.cos(angle)) * z > 0.0
+    top = [(0.8, 0.5), (0.1, 0.5)] if up else [(0.9, 0.5), (0.2, 0.5)]
+    np.testing.assert_allclose(rim.points, [(0, 0), (1, 0), *top], atol=1e-9)
+
+
 def test_an_upright_disc_has_its_level_diameter_along_x(tmp_path):
     def disc(occ):
         return [(2, occ.addDisk(0, 0, 0, 250, 250))]

@@ -364,6 +364,8 @@ def test_what_lies_inside_is_named_and_explained(deck):
     for text in ("clamped point", "simply supported point", "free point"):
         assert text in written
     assert "guided: rotation held, w free: a line of symmetry" in written
+    # The seam's, as no side is simply supported.
+    assert "simply supported: w = 0, rotation free, uplift held" in written
     assert not any("no room" in text for text in written)
     assert overlaps(drawn) == []
 
