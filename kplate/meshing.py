@@ -119,7 +119,7 @@ def mesh_outline(
             "m for this outline."
         )
     _check_fine(fine)
-    with _LOCK, gmsh_model(size) as gmsh:
+    with gmsh_model(size) as gmsh:
         try:
             model = _build(gmsh, outline)
             _grade(gmsh, size, fine)
@@ -136,8 +136,14 @@ def mesh_outline(
 
 @contextmanager
 def gmsh_model(size: float) -> Iterator[Any]:
-    """A model of our own inside Gmsh; everything is put back afterwards."""
+    """A model of our own inside Gmsh, one at a time; all is put back afterwards."""
     gmsh = _import_gmsh()
+    with _LOCK, _own_model(gmsh, size):
+        yield gmsh
+
+
+@contextmanager
+def _own_model(gmsh: Any, size: float) -> Iterator[None]:
     started = not gmsh.isInitialized()
     if started:
         gmsh.initialize(
@@ -153,7 +159,7 @@ def gmsh_model(size: float) -> Iterator[Any]:
         for key, value in options.items():
             gmsh.option.setNumber(key, value)
         gmsh.model.add(name)
-        yield gmsh
+        yield
     finally:
         gmsh.model.setCurrent(name)
         gmsh.model.remove()

@@ -420,8 +420,7 @@ class Outline:
         least = SNAP * self.size
         for number, hole in enumerate(holes, start=1):
             placement.check_hole(rim, hole, number, least)
-        for (i, a), (j, b) in combinations(enumerate(holes, start=1), 2):
-            placement.check_apart(a, b, (i, j), least)
+        placement.check_apart(holes, least)
         zones = [(zone.name, zone.shape.line.region) for zone in self.zones]
         grown = rim.region.buffer(least) if zones else None
         for name, region in zones:

@@ -4,6 +4,7 @@ Regions and paths are shapely's, chords for arcs; `least` is the length in m bel
 a gap is none.
 """
 
+from collections.abc import Sequence
 from typing import Any
 
 from kplate.errors import InputError
@@ -26,20 +27,24 @@ def check_hole(rim: Polygon, hole: Polygon, number: int, least: float) -> None:
     )
 
 
-def check_apart(a: Polygon, b: Polygon, numbers: tuple[int, int], least: float) -> None:
-    """Refuse two holes that overlap or touch."""
+def check_apart(holes: Sequence[Polygon], least: float) -> None:
+    """Refuse holes that overlap or touch."""
     import shapely
 
-    gap = shapely.shortest_line(a.region, b.region)
-    if gap.length > least:
+    if len(holes) < 2:
         return
-    common = a.region.intersection(b.region)
-    place = common.representative_point() if common.area > 0.0 else gap
-    raise InputError(
-        f"holes {numbers[0]} ({a.sides[0]!r}) and {numbers[1]} ({b.sides[0]!r}) "
-        f"overlap or touch near {at(place.coords[0])}; move them apart, or draw them "
-        "as one hole."
-    )
+    regions = [hole.region for hole in holes]
+    tree = shapely.STRtree(regions)
+    pairs = tree.query(regions, predicate="dwithin", distance=least).T
+    for i, j in pairs[pairs[:, 0] < pairs[:, 1]].tolist():
+        gap = shapely.shortest_line(regions[i], regions[j])
+        common = regions[i].intersection(regions[j])
+        place = common.representative_point() if common.area > 0.0 else gap
+        raise InputError(
+            f"holes {i + 1} ({holes[i].sides[0]!r}) and {j + 1} "
+            f"({holes[j].sides[0]!r}) overlap or touch near {at(place.coords[0])}; "
+            "move them apart, or draw them as one hole."
+        )
 
 
 def check_zone(name: str, zone: Any, rim: Any, plate: Any) -> None:

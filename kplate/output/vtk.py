@@ -1,7 +1,7 @@
 """A solution as a VTU file, for `kplate view` and any program that reads VTK.
 
-Points and point data are those of `Solution.point_fields`, where a vertex on a step or a
-seam stands once for each side of it; with several load cases each name
+Points and point data are those of `Solution.point_fields`, where a vertex on a step or
+a seam stands once for each side of it; with several load cases each name
 starts with its case, "CASE: NAME". The cells are the triangles, then the boundary edges
 as lines. Cell data are "zone", the zone of a triangle (-1 on lines), and "side", the
 number of a line's side (-1 on triangles). The names of the sides, and all else that a
