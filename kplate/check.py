@@ -1,13 +1,14 @@
 """One public function for each command: solve, judge, write."""
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from importlib import metadata, resources
 from pathlib import Path
 
 import numpy as np
 
 from kplate.adapt import TRIANGLES, solve
+from kplate.describe import describe
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.limits import Outcome, Verdict, governing
@@ -173,14 +174,10 @@ def _heading(panel: Panel) -> list[str]:
     title = f"{panel.name}, {_thickness(panel)} {plate.material.name}"
     if panel.revision:
         title += f", revision {panel.revision}"
-    x0, y0, x1, y1 = plate.outline.box
-    size = f"{_short(x1 - x0, length.size)} x {_short(y1 - y0, length.size)}"
-    holes = len(plate.outline.holes)
-    panel_is = f"your panel is {size} {length.symbol}, {holes} hole{'s' * (holes != 1)}"
-    panel_is += f", area {plate.outline.area:.4g} m2"
-    if plate.mass is not None:
-        panel_is += f", mass {plate.mass:.4g} kg"
-    lines = [f"{title}   input {panel.digest}, kplate {version()}", panel_is]
+    lines = [
+        f"{title}   input {panel.digest}, kplate {version()}",
+        describe(plate.outline, mass=plate.mass, unit=length),
+    ]
     by_support: dict[Support, list[str]] = {}
     for name in plate.outline.names:
         by_support.setdefault(plate.support(name), []).append(name)
@@ -195,7 +192,7 @@ def _heading(panel: Panel) -> list[str]:
             plate.outline.zone_names, plate.sections[1:], strict=True
         )
     ]
-    lines += plate.outline.notes
+    lines += panel.notes
     bends = _bends(panel)
     if bends:
         degrees = np.degrees(plate.bend_turn)
@@ -299,6 +296,15 @@ def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
             unit=units.force,
             limit=limits.hold_down,
             where=where or "none needed",
+        )
+    points = [p for p in solution.reactions(case=case).points if p.force.value < 0.0]
+    for point in points:
+        yield Line(
+            case=case,
+            quantity=f"{point.mark} hold-down",
+            value=replace(point.force, value=-point.force.value),
+            unit=units.force,
+            where=f"{_at(point.force, panel)}",
         )
     uplift, side = solution.side_uplift(case=case)
     if uplift.value > SLIGHT * _largest_line_reaction(solution, case):

@@ -138,3 +138,18 @@ def read_text(folder: Path, text: str) -> Panel:
     path = folder / "panel.toml"
     path.write_text(text, encoding="utf-8")
     return read_panel(path)
+
+
+def write_dxf(path: Path, *, hole: float = 40.0, layer: str = "0") -> Path:
+    """A cover of 400 x 300 mm with a round hole and a text, in mm."""
+    import ezdxf
+
+    document = ezdxf.new()
+    document.header["$INSUNITS"] = 4
+    space, on = document.modelspace(), {"layer": layer}
+    rim = [(0, 0), (400, 0), (400, 300), (0, 300)]
+    space.add_lwpolyline(rim, close=True, dxfattribs=on)
+    space.add_circle((200, 150), hole, dxfattribs=on)
+    space.add_text("cover", dxfattribs=on)
+    document.saveas(path)
+    return path
