@@ -20,6 +20,7 @@ TRIANGLES = 20_000
 # Edges at a place without a finite moment, as a share of the disc that is left out, so
 # that the rim of the disc, which is judged, lies several triangles from its centre.
 RIM_SHARE = 0.25
+ENOUGH, MOST = 2_500, 100_000  # triangles at a refined place, at all of them
 # Edges at the centre of a patch, as a share of its smaller length.
 PATCH_SHARE = 0.125
 
@@ -110,7 +111,7 @@ def _fine(
     """Places to refine, with the length of the edges there in m.
 
     They are those without a finite moment, and patches. Each may take as many triangles
-    more as its share of the plate's area has.
+    more as its share of the plate's area has, or `ENOUGH` while all keep to `MOST`.
     """
     wanted = [
         (place.place, RIM_SHARE * place.radius)
@@ -122,7 +123,9 @@ def _fine(
                 wanted.append((load.centre, PATCH_SHARE * min(load.size)))
             elif isinstance(load, DiscPatch):
                 wanted.append((load.centre, 2.0 * PATCH_SHARE * load.radius))
-    most = 4.0 / math.sqrt(3.0) * plate.outline.area / (size**2 * max(len(wanted), 1))
+    n = max(len(wanted), 1)
+    share = 4.0 / math.sqrt(3.0) * plate.outline.area / (size**2 * n)
+    most = max(share, min(ENOUGH, MOST / n))
     return [(place, _allowed(least, size, most)) for place, least in wanted]
 
 

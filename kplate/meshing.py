@@ -32,6 +32,9 @@ FEW_HOLES = 12
 FRONTAL = 6
 ALIKE = 2.0**0.25  # edges that differ by no more share one size
 GROWTH = 0.35  # of the edges with the distance from a refined place
+# Radius of the disc around a refined place in which all edges are fine, in edges: what
+# is judged on the rim of an excluded disc lies inside.
+WITHIN = 12.0
 LARGEST = 5_000_000  # triangles; beyond, 24 GiB of memory do not hold the factor
 # An arc of more is parted, since a circle is given by its centre and two points.
 MOST_SWEEP = 0.9 * math.pi
@@ -76,13 +79,14 @@ def size_for(outline: Outline, triangles: int) -> float:
 def refined_triangles(ratio: float) -> float:
     """About how many triangles a place takes whose edges are finer by this ratio.
 
-    The integral of triangles per area, ``4 / (sqrt(3) s^2)``, over the whole disc on
-    which the size s grows from the least to the mesh's own.
+    The integral of triangles per area, ``4 / (sqrt(3) s^2)``, over the disc of the
+    least size s and the ring on which it grows to the mesh's own.
     """
     if ratio <= 1.0:
         return 0.0
-    whole = 8.0 * math.pi / math.sqrt(3.0) / GROWTH**2
-    return whole * (math.log(ratio) + 1.0 / ratio - 1.0)
+    start = WITHIN - 1.0 / GROWTH  # of the ring, from where the size would vanish
+    ring = math.log(ratio) / GROWTH**2 + start / GROWTH * (1.0 - 1.0 / ratio)
+    return 8.0 * math.pi / math.sqrt(3.0) * (0.5 * WITHIN**2 + ring)
 
 
 def mesh_outline(
@@ -295,7 +299,7 @@ def _grade(
             for key, value in {
                 "XCenter": x,
                 "YCenter": y,
-                "Radius": least,
+                "Radius": WITHIN * least,
                 "VIn": least,
                 "VOut": size,
                 "Thickness": (size - least) / GROWTH,

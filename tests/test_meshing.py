@@ -18,6 +18,7 @@ from kplate.meshing import (
     EDGES_ON_CIRCLE,
     GROWTH,
     LARGEST,
+    WITHIN,
     mesh_outline,
     refined_triangles,
     size_for,
@@ -547,9 +548,14 @@ def test_two_threads_at_once_make_the_right_meshes():
 
 @pytest.mark.parametrize("ratio", [1.5, 10.0, 1e4])
 def test_refined_triangles_are_the_integral_over_the_graded_disc(ratio):
-    """Equilateral triangles of edge s = 1 + GROWTH r: 4 / (sqrt(3) s^2) per area."""
-    r, step = np.linspace(0.0, (ratio - 1.0) / GROWTH, 2_000_001, retstep=True)
-    density = 2.0 * np.pi * r * 4.0 / (math.sqrt(3.0) * (1.0 + GROWTH * r) ** 2)
+    """Equilateral triangles: 4 / (sqrt(3) s^2) per area.
+
+    Their edge s is 1 up to r = WITHIN and grows by GROWTH from there.
+    """
+    most = WITHIN + (ratio - 1.0) / GROWTH
+    r, step = np.linspace(0.0, most, 2_000_001, retstep=True)
+    edge = 1.0 + GROWTH * np.maximum(r - WITHIN, 0.0)
+    density = 2.0 * np.pi * r * 4.0 / (math.sqrt(3.0) * edge**2)
     integral = step * (density.sum() - 0.5 * (density[0] + density[-1]))
     assert refined_triangles(ratio) == pytest.approx(integral, rel=1e-4)
 
@@ -563,7 +569,7 @@ def test_a_place_no_finer_than_the_mesh_takes_no_triangles(ratio):
 def test_a_graded_place_takes_up_to_twice_the_triangles_foreseen(ratio):
     plain = mesh_outline(PLATE, size=0.04)
     graded = mesh_outline(PLATE, size=0.04, fine=[((0.5, 0.5), 0.04 / ratio)])
-    reach = 0.04 * (1.0 - 1.0 / ratio) / GROWTH
+    reach = 0.04 * (WITHIN / ratio + (1.0 - 1.0 / ratio) / GROWTH)
     before = math.pi * reach**2 * len(plain.triangles)
     found = before + len(graded.triangles) - len(plain.triangles)
     assert 1.0 < found / refined_triangles(ratio) < 2.0
