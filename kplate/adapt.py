@@ -18,8 +18,10 @@ from kplate.solve.static import Progress, solve_static
 
 TRIANGLES = 20_000
 # Edges at a place without a finite moment, as a share of the disc that is left out, so
-# that the rim of the disc, which is judged, lies several triangles from its centre.
-RIM_SHARE = 0.25
+# that the rim of the disc, which is judged, lies several triangles from its centre: at
+# 0.25 the stress there comes out 5 % high, at 0.125 it stays within 0.2 % from 5,000 to
+# 80,000 triangles.
+RIM_SHARE = 0.125
 ENOUGH, MOST = 2_500, 100_000  # triangles at a refined place, at all of them
 # Edges at the centre of a patch, as a share of its smaller length.
 PATCH_SHARE = 0.125

@@ -190,8 +190,8 @@ def _joined_zone(zone: Zone, lines: joining.Lines) -> tuple[Zone, list[str]]:
     line = zone.shape.line
     points, notes = joining.moved(line.points, lines, f"zone {zone.name!r}")
     ends = np.roll(points, -1, axis=0)
-    bulges = joining.followed(points, ends, line.bulges, lines)
-    points, bulges, owners = joining.threaded(points, ends, bulges, lines)
+    points, bulges, owners = joining.threaded(points, ends, line.bulges, lines)
+    bulges = joining.followed(points, np.roll(points, -1, axis=0), bulges, lines)
     if np.array_equal(points, line.points) and np.array_equal(bulges, line.bulges):
         return zone, []
     sides = tuple(line.sides[i] for i in owners)
@@ -203,7 +203,7 @@ def _joined_zone(zone: Zone, lines: joining.Lines) -> tuple[Zone, list[str]]:
 def _joined_seam(seam: Seam, lines: joining.Lines) -> tuple[Seam, list[str]]:
     """Join a seam to lines."""
     points, notes = joining.moved(seam.points, lines, f"seam {seam.name!r}")
-    bulges = joining.followed(points[:-1], points[1:], seam.bulges, lines)
-    starts, bulges, _ = joining.threaded(points[:-1], points[1:], bulges, lines)
+    starts, bulges, _ = joining.threaded(points[:-1], points[1:], seam.bulges, lines)
     points = np.concatenate([starts, points[-1:]])
+    bulges = joining.followed(points[:-1], points[1:], bulges, lines)
     return replace(seam, points=points, bulges=bulges), notes

@@ -186,6 +186,12 @@ def test_the_edges_around_a_circle_are_alike():
     np.testing.assert_allclose(round_edges, round_edges[0], rtol=1e-5)
 
 
+def test_circles_of_other_sizes_do_not_get_each_others_edges():
+    small = Circle(centre=(0.8, 0.8), radius=0.01, name="small")
+    mesh = mesh_outline(HOLED.cut(small), size=0.3)
+    assert np.bincount(mesh.boundary_sides)[4:].tolist() == [EDGES_ON_CIRCLE] * 2
+
+
 # Size and number
 
 
@@ -727,13 +733,20 @@ PARTS = {
         Polygon(
             points=[(0.540302, -0.841471), (0.540302, 0.841471)],
             sides=["a", "b"],
-            bulges=[0.546302, 0],
+            bulges=[0.5462, 0],  # tan(1/2) is 0.5463
         ),
         name="segment",
     ),
     "a zone nearly on a side": PLATE.zone(boxed(0.2, 3e-5, 0.6, 0.4), name="rib"),
     "a zone past a bend of a side": Outline.polygon(
         [(0, 0), (0.5, -5e-5), (1, 0), (1, 1), (0, 1)]
+    ).zone(boxed(0, 0, 1, 0.4), name="rib"),
+    "a zone past a hardly visible bend": Outline.of(
+        Polygon(
+            points=[(0, 0), (0.5, -5e-7), (1, 0), (1, 1), (0, 1)],
+            sides=["s", "s", *SIDES[1:]],
+            snap=0.0,
+        )
     ).zone(boxed(0, 0, 1, 0.4), name="rib"),
     "a seam from side to side": PLATE.seam([(0, 0.3), (1, 0.7)], name="weld"),
     "seams that cross": PLATE.seam([(0, 0.3), (1, 0.7)], name="weld").seam(
