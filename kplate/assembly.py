@@ -109,7 +109,7 @@ def internal_forces(
     for block, K in element_stiffness(plate, mesh, element, triangles):
         table = numbering.table[block]
         vertices = mesh.points[mesh.triangles[block]]
-        bent = _without_rigid(unknowns[table], vertices, numbering.per_vertex)
+        bent = without_rigid_motion(unknowns[table], vertices, numbering.per_vertex)
         _add(result, table, K @ bent)
     return result
 
@@ -224,7 +224,7 @@ def _turn(K: Floats, frame_of: Ints, frames: Floats) -> None:
             K[some, :, own] = K[some, :, own] @ Q
 
 
-def _without_rigid(own: Floats, vertices: Floats, p: int) -> Floats:
+def without_rigid_motion(own: Floats, vertices: Floats, p: int) -> Floats:
     """Take the mean deflection and slope off the vertex unknowns (n, 3 p, c)."""
     parted = own.reshape(len(own), 3, p, -1).copy()
     slope = parted[:, :, 1:3].mean(axis=1)  # (n, 2, c)

@@ -26,6 +26,7 @@ import numpy as np
 import scipy.sparse as sp
 from numpy.typing import ArrayLike
 
+from kplate import assembly
 from kplate.arrays import Floats, Ints
 from kplate.errors import InputError
 from kplate.mesh import Mesh
@@ -131,9 +132,13 @@ def element_moments(state: StaticState, barycentrics: Floats) -> Floats:
     result = np.empty((len(mesh.triangles), len(barycentrics), 3, len(state.cases)))
     for start in range(0, len(mesh.triangles), _BLOCK):
         block = slice(start, start + _BLOCK)
-        B = state.element.curvature(mesh.points[mesh.triangles[block]], barycentrics)
+        vertices = mesh.points[mesh.triangles[block]]
+        B = state.element.curvature(vertices, barycentrics)
         n, q, _, d = B.shape
-        strain = B.reshape(n, 3 * q, d) @ state.unknowns[table[block]]
+        bent = assembly.without_rigid_motion(
+            state.unknowns[table[block]], vertices, state.element.per_vertex
+        )
+        strain = B.reshape(n, 3 * q, d) @ bent
         rigidity = state.plate.rigidities[mesh.zones[block]]
         result[block] = rigidity[:, None] @ strain.reshape(n, q, 3, -1)
     return result
