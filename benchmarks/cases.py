@@ -6,6 +6,7 @@ the published figure where one is known. Everything is scaled to D = 1, p = 1, F
 """
 
 import json
+import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cache
@@ -61,8 +62,9 @@ class Row:
 
     @property
     def deviation(self) -> float:
-        """Computed less reference, over the value or, if larger, 2 % of the scale."""
-        return (self.computed - self.value) / max(abs(self.value), 0.02 * self.scale)
+        """Share by which the magnitude is too large, of value or 2 % of the scale."""
+        larger = max(abs(self.value), 0.02 * self.scale)
+        return math.copysign(1.0, self.value) * (self.computed - self.value) / larger
 
 
 @cache

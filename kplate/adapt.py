@@ -12,7 +12,7 @@ from kplate.guard import mesh_guarded
 from kplate.loads import Case, DiscPatch, Load, RectanglePatch
 from kplate.meshing import mesh_outline, refined_triangles, size_for
 from kplate.plate import Plate
-from kplate.singular import excluded_places
+from kplate.singular import excluded_places, plate_corners
 from kplate.solution import Solution
 from kplate.solve.static import Progress, solve_static
 
@@ -22,6 +22,9 @@ TRIANGLES = 20_000
 # 0.25 the stress there comes out 5 % high, at 0.125 it stays within 0.2 % from 5,000 to
 # 80,000 triangles.
 RIM_SHARE = 0.125
+# Error wanted from the very point of an unbounded corner; no edge is shorter than this
+# share of the span, below which round-off would spoil the equations.
+CORNER_ERROR, LEAST_SHARE = 1e-3, 1e-6
 ENOUGH, MOST = 2_500, 100_000  # triangles at a refined place, at all of them
 # Edges at the centre of a patch, as a share of its smaller length.
 PATCH_SHARE = 0.125
@@ -62,7 +65,8 @@ def solve(
     ------
     InputError
         If loads and cases are mixed, there are none, both `triangles` and `size` are
-        given, or a load does not fit the plate.
+        given or one of them or `excluded_radius` is out of range, or a load does not
+        fit the plate.
     MeshError
         If the outline cannot be meshed.
     SolveError
@@ -94,6 +98,8 @@ def solve(
         raise InputError(
             f"excluded_radius is {excluded_radius:g} m; it must be positive."
         )
+    if size is not None and not (math.isfinite(size) and size > 0.0):
+        raise InputError(f"the mesh size is {size:g} m; it must be a positive number.")
     cases = _as_cases(loads)
     if size is None:
         size = size_for(plate.outline, TRIANGLES if triangles is None else triangles)
@@ -102,7 +108,9 @@ def solve(
     fine = _fine(plate, cases, size, excluded_radius)
     outline = plate.outline
     inside = outline.zones or outline.seams or outline.marks
-    mesh = (mesh_guarded if inside else mesh_outline)(outline, size=size, fine=fine)
+    mesh = (mesh_guarded if inside else mesh_outline)(
+        outline, size=size, fine=fine, graded=_graded(plate)
+    )
     state = solve_static(plate, mesh, cases, progress=progress)
     return Solution(state=state, excluded_radius=excluded_radius)
 
@@ -129,6 +137,21 @@ def _fine(
     share = 4.0 / math.sqrt(3.0) * plate.outline.area / (size**2 * n)
     most = max(share, min(ENOUGH, MOST / n))
     return [(place, _allowed(least, size, most)) for place, least in wanted]
+
+
+def _graded(plate: Plate) -> list[tuple[tuple[float, float], float]]:
+    """Unbounded corners, with the length of the edges at their very point in m.
+
+    The error of the deflection goes with (h/L)^(2 lambda): on a rhombus of 30 degrees
+    this grading takes it from 4.4 % to 0.2 %, on a 12-gon from 15 % to 0.7 %.
+    """
+    found = []
+    for corner in plate_corners(plate):
+        if corner.unbounded:
+            share = CORNER_ERROR ** (0.5 / corner.exponent.real)
+            least = max(share, LEAST_SHARE) * plate.outline.span
+            found.append((corner.place, least))
+    return found
 
 
 def _allowed(least: float, size: float, most: float) -> float:

@@ -162,7 +162,7 @@ def _seam_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
     for number, name in enumerate(mesh.seam_names):
         support = plate.support(name)
         edges = mesh.seam_edges[mesh.seam_numbers == number]
-        if not (support.holds_deflection or support.holds_slope) or not len(edges):
+        if not support.holds or not len(edges):
             continue
         # Both ends of each edge, as steps away from the vertex.
         vertices = np.concatenate([edges[:, 0], edges[:, 1]])
@@ -245,7 +245,11 @@ def _name_motions(loose: Floats, centre: Floats, size: float) -> list[str]:
         ]
     if m == 2:
         a, b, c = np.linalg.svd(loose.T)[2][2]  # w = 0 at one point in all of them
-        x, y = centre + size * np.array([b, c]) / a if abs(a) > 1e-12 else (np.nan,) * 2
+        if abs(a) < 1e-9 * np.hypot(b, c):  # far away: all lines of one direction
+            axis = "x" if abs(c) < 1e-9 else "y" if abs(b) < 1e-9 else ""
+            way = f"parallel to {axis}" if axis else f"along ({b:.3g}, {c:.3g})"
+            return ["move up and down", f"tilt about any line {way}"]
+        x, y = centre + size * np.array([b, c]) / a
         return [f"tilt about any line through ({x:.6g}, {y:.6g}) m"] * 2
     a, b, c = loose[:, 0]
     slope = np.array([b, c])

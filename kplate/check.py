@@ -28,6 +28,7 @@ CAUTION = (
     "Not checked: welds, bolts, the frame, fatigue, impact, buckling. Results are for "
     "a qualified\nengineer's judgement; local codes and licensed practice decide."
 )
+ROUND_OFF = 1e-9  # share of the sum of magnitudes below which a total is none
 SLIGHT = 0.01  # share of the largest line reaction below which uplift is not listed
 
 
@@ -192,6 +193,12 @@ def _heading(panel: Panel) -> list[str]:
             plate.outline.zone_names, plate.sections[1:], strict=True
         )
     ]
+    others = {m.name for _, m in plate.sections} - {plate.material.name}
+    if others and panel.limits.stress is not None:
+        lines.append(
+            f"the stress limit is that of {plate.material.name}; it is held against "
+            f"zones of {', '.join(sorted(others))} alike"
+        )
     lines += panel.notes
     bends = _bends(panel)
     if bends:
@@ -275,15 +282,18 @@ def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
         value=stress,
         unit=units.stress,
         limit=limits.stress.at_most if limits.stress is not None else None,
-        where=f"{_at(stress, panel)}, {stress.face}",
+        where=_at(stress, panel) + (f", {stress.face}" if stress.face else ""),
     )
-    total = solution.reactions(case=case).total.force
+    reactions = solution.reactions(case=case)
+    total = reactions.total.force
+    if abs(total) < ROUND_OFF * reactions.magnitude:
+        total = 0.0
     yield Line(
         case=case,
         quantity="total reaction",
         value=Value(value=total, case=case),
         unit=units.force,
-        where="supports push " + ("up" if total > 0.0 else "down"),
+        where=f"supports push {'up' if total > 0.0 else 'down'}" if total else "",
     )
     pull, forces = solution.hold_down(case=case)
     if forces or pull.reason or limits.hold_down is not None:
@@ -304,6 +314,7 @@ def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
             quantity=f"{point.mark} hold-down",
             value=replace(point.force, value=-point.force.value),
             unit=units.force,
+            limit=limits.hold_down,
             where=f"{_at(point.force, panel)}",
         )
     uplift, side = solution.side_uplift(case=case)
@@ -372,10 +383,13 @@ def _closing(checked: Checked) -> list[str]:
         )
     for excluded in solution.excluded:
         only = f", case {excluded.case}" if excluded.case else ""
+        place, radius = (
+            _place(excluded.place, length.size),
+            _short(excluded.radius, length.size),
+        )
         lines.append(
-            f"left out of peak stress: {_place(excluded.place, length.size)} "
-            f"{length.symbol}{only}, radius {_short(excluded.radius, length.size)} "
-            f"{length.symbol}: {excluded.reason}"
+            f"left out of peaks and line reactions: {place} {length.symbol}{only}, "
+            f"radius {radius} {length.symbol}: {excluded.reason}"
         )
     for case, forces in zip(solution.cases, solution.state.forces.T, strict=True):
         reactions = solution.reactions(case=case)
@@ -465,7 +479,8 @@ def _thickness(panel: Panel) -> str:
 
 
 def _at(value: Value, panel: Panel) -> str:
-    assert value.place is not None
+    if value.place is None:
+        return value.reason
     return f"{_place(value.place, panel.units.length.size)} {panel.units.length.symbol}"
 
 

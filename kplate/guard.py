@@ -25,13 +25,14 @@ def mesh_guarded(
     *,
     size: float,
     fine: Sequence[tuple[Place, float]] = (),
+    graded: Sequence[tuple[Place, float]] = (),
     seconds: float = SECONDS,
 ) -> Mesh:
     """Mesh an outline in a second process.
 
     Parameters
     ----------
-    outline, size, fine
+    outline, size, fine, graded
         As in `kplate.meshing.mesh_outline`.
     seconds : float
         How long it may take.
@@ -45,7 +46,7 @@ def mesh_guarded(
     InputError, MeshError
         As in `mesh_outline`; MeshError too where the time is up or the process dies.
     """
-    job = pickle.dumps((outline, size, tuple(fine)))
+    job = pickle.dumps((outline, size, tuple(fine), tuple(graded)))
     command = [sys.executable, "-c", "from kplate.guard import work; work()"]
     pipe, nothing = subprocess.PIPE, subprocess.DEVNULL
     with subprocess.Popen(command, stdin=pipe, stdout=pipe, stderr=nothing) as worker:
@@ -73,10 +74,10 @@ def mesh_guarded(
 
 def work() -> None:
     """Do the second process's part: a job from stdin, the answer to stdout."""
-    outline, size, fine = pickle.load(sys.stdin.buffer)
+    outline, size, fine, graded = pickle.load(sys.stdin.buffer)
     answer: tuple[str, object]
     try:
-        answer = ("mesh", mesh_outline(outline, size=size, fine=fine))
+        answer = ("mesh", mesh_outline(outline, size=size, fine=fine, graded=graded))
     except KplateError as error:
         answer = (type(error).__name__, str(error))
     sys.stdout.buffer.write(pickle.dumps(answer))

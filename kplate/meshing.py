@@ -90,7 +90,11 @@ def refined_triangles(ratio: float) -> float:
 
 
 def mesh_outline(
-    outline: Outline, *, size: float, fine: Sequence[tuple[Place, float]] = ()
+    outline: Outline,
+    *,
+    size: float,
+    fine: Sequence[tuple[Place, float]] = (),
+    graded: Sequence[tuple[Place, float]] = (),
 ) -> Mesh:
     """Mesh an outline with triangles of one size, finer around some places.
 
@@ -102,7 +106,10 @@ def mesh_outline(
         Length of the edges in m; shorter on arcs, of which a full circle gets 96 edges
         at least (48 where there are more than twelve holes).
     fine : sequence of (place, size)
-        Places in m and the length of the edges there; it grows with the distance.
+        Places in m and the length of the edges around them, as far as twelve edges
+        reach; from there it grows with the distance.
+    graded : sequence of (place, size)
+        Places from which the length grows at once.
 
     Returns
     -------
@@ -124,12 +131,14 @@ def mesh_outline(
             f"the mesh size is {size:g} m; it must be finite and at least {least:.3g} "
             "m for this outline."
         )
-    _check_fine(fine)
+    _check_fine([*fine, *graded])
     with gmsh_model(size) as gmsh:
         try:
             model = _build(gmsh, outline)
             few = len(outline.holes) <= FEW_HOLES
-            _grade(gmsh, size, fine, EDGES_ON_CIRCLE if few else EDGES_ON_MANY)
+            discs = [(*place, WITHIN) for place in fine]
+            discs += [(*place, 1.0) for place in graded]
+            _grade(gmsh, size, discs, EDGES_ON_CIRCLE if few else EDGES_ON_MANY)
             gmsh.model.mesh.generate(2)
         except Exception as error:
             raise MeshError(
@@ -283,7 +292,7 @@ def _add_pieces(occ: Any, points: Floats, bulges: Floats, *, closed: bool) -> li
 
 
 def _grade(
-    gmsh: Any, size: float, fine: Sequence[tuple[Place, float]], around: int
+    gmsh: Any, size: float, discs: Sequence[tuple[Place, float, float]], around: int
 ) -> None:
     """Let edges grow from arcs, short curves and refined places by one field."""
     field = gmsh.model.mesh.field
@@ -293,13 +302,13 @@ def _grade(
         field.setNumbers(distance, "CurvesList", group)
         field.setNumber(distance, "Sampling", around)
         tags.append(_growing(field, distance, least, size))
-    for (x, y), least in fine:
+    for (x, y), least, within in discs:
         if least < size:
             ball = field.add("Ball")
             for key, value in {
                 "XCenter": x,
                 "YCenter": y,
-                "Radius": WITHIN * least,
+                "Radius": within * least,
                 "VIn": least,
                 "VOut": size,
                 "Thickness": (size - least) / GROWTH,

@@ -14,7 +14,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike
 
-from kplate import placement
+from kplate import placement, rounding
 from kplate.errors import InputError
 from kplate.given import as_bulges, as_names, as_points
 from kplate.interior import Mark, Seam, Zone, joined
@@ -167,8 +167,9 @@ class Outline:
         name : str, optional
             Name of the arc's side; "fillet of A and B" if left out.
         """
-        line = self._line_with((first, second)).fillet((first, second), radius, name)
-        return self._replaced(line, (first, second))
+        sides = (first, second)
+        line = rounding.filleted(self._line_with(sides), sides, radius, name)
+        return self._replaced(line, sides)
 
     def relieve(
         self, first: str, second: str, *, radius: float, name: str | None = None
@@ -177,9 +178,11 @@ class Outline:
 
         Parameters are those of `fillet`; material within the radius is taken off.
         """
-        line = self._line_with((first, second))
-        cut = line.relieve if line is self.boundaries[0] else line.relieve_around
-        return self._replaced(cut((first, second), radius, name), (first, second))
+        sides = (first, second)
+        line = self._line_with(sides)
+        hole = line is not self.boundaries[0]
+        cut = rounding.relieved(line, sides, radius, name, around_hole=hole)
+        return self._replaced(cut, sides)
 
     def part(
         self,

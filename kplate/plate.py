@@ -15,7 +15,7 @@ from kplate.arrays import Floats
 from kplate.errors import InputError
 from kplate.materials import Isotropic
 from kplate.outline import Outline
-from kplate.polygon import Polygon, at
+from kplate.polygon import SNAP, Polygon, at
 from kplate.supports import FREE, SUPPORTS, Support
 
 # Between sides held alike, a smaller turn is a bend of a curve, not a corner (a simply
@@ -112,6 +112,8 @@ class Plate:
                     f"{', '.join(self.outline.zone_names) or 'none'}."
                 )
         object.__setattr__(self, "zones", MappingProxyType(zones))
+        self._check_points()
+        self._check_overlaps()
         for line in self.outline.boundaries:
             self._check_chords(line)
 
@@ -183,6 +185,35 @@ class Plate:
                 f"side {name!r} is held by {support!r}; a support is one of "
                 f"{', '.join(SUPPORTS)}."
             )
+
+    def _check_points(self) -> None:
+        """Refuse what a point cannot hold: a slope."""
+        for mark in self.outline.marks:
+            support = self.support(mark.name)
+            if support.holds_slope:
+                raise InputError(
+                    f"mark {mark.name!r} is {support.name}; a point of a thin plate "
+                    "can only be simply supported. Hold a slope along a seam or a side."
+                )
+
+    def _check_overlaps(self) -> None:
+        """Refuse held seams that run along what is held already."""
+        held = [seam for seam in self.outline.seams if self.support(seam.name).holds]
+        least = SNAP * self.outline.size
+        for number, seam in enumerate(held):
+            paths = [(other.name, other.path) for other in held[:number]]
+            for line in self.outline.boundaries if held else ():
+                paths += [
+                    (name, line.path(name))
+                    for name in dict.fromkeys(line.sides)
+                    if self.support(name).holds
+                ]
+            for name, path in paths:
+                if path.buffer(least).intersection(seam.path).length > 1e3 * least:
+                    raise InputError(
+                        f"seam {seam.name!r} runs along {name!r}, which is held too; "
+                        "hold one of them there."
+                    )
 
     def _check_chords(self, line: Polygon) -> None:
         """Refuse chords that may stand for a curve where supports would clamp it."""

@@ -27,6 +27,8 @@ STRAIGHT = 1e-12
 LAST_PLACES = 4.0 * float(np.finfo(float).eps)
 # Pieces that meet an arc with less than this turn (rad) have one tangent with it.
 SMOOTH = 1e-6
+# How far a point may be from the side it stands for, as a share of the size.
+ASIDE = 0.01
 # An arc of 352 degrees; more has ends that nearly meet.
 MOST_BULGE = 30.0
 MOST_LISTED = 5  # merged vertices that a note lists one by one
@@ -182,12 +184,18 @@ class Polygon:
         parts = [curves.part(bulge, share), curves.part(bulge, 1.0 - share)]
         bulges = np.concatenate([self.bulges[:piece], parts, self.bulges[piece + 1 :]])
         sides = (*self.sides[:piece], *names, *self.sides[piece + 1 :])
-        return self._changed(points=points, sides=sides, bulges=bulges)
+        return self.changed(points=points, sides=sides, bulges=bulges)
 
     def fractions(
         self, side: str, between: tuple[tuple[float, float], tuple[float, float]]
     ) -> tuple[float, float]:
-        """Shares of a side's length at its points nearest to two given ones."""
+        """Shares of a side's length at its points nearest to two given ones.
+
+        Raises
+        ------
+        InputError
+            If a point is farther from the side than a hundredth of the line's size.
+        """
         pieces = self._stretch(side)
         starts = np.concatenate([[0.0], np.cumsum(self.lengths[pieces])])
         shares = []
@@ -196,6 +204,11 @@ class Polygon:
                 point[None], self.points[pieces], self.ends[pieces], self.bulges[pieces]
             )[0]
             k = int(np.argmin(off))
+            if off[k] > ASIDE * self.size:
+                raise InputError(
+                    f"{at(point)} is {off[k]:.3g} m away from side {side!r}; give a "
+                    "point on it."
+                )
             own = pieces[k : k + 1]
             share = curves.nearest_share(
                 point,
@@ -225,7 +238,21 @@ class Polygon:
         sides = list(line.sides)
         for piece in own:
             sides[piece] = name
-        return line._changed(sides=tuple(sides))
+        return line.changed(sides=tuple(sides))
+
+    def path(self, side: str) -> Any:
+        """Pieces of a side as shapely lines, chords for arcs."""
+        import shapely
+
+        own = [i for i, name in enumerate(self.sides) if name == side]
+        lines = []
+        for i in own:
+            one = slice(i, i + 1)
+            flat, _ = curves.flattened(
+                self.points[one], self.ends[one], self.bulges[one]
+            )
+            lines.append(shapely.LineString(np.vstack([flat, self.ends[one]])))
+        return shapely.MultiLineString(lines)
 
     def _cut_side(self, side: str, share: float) -> "Polygon":
         """Put a vertex at a share of a side's length, where none is yet."""
@@ -253,129 +280,11 @@ class Polygon:
             )
         return (heads[0] + np.arange(int(own.sum()))) % n
 
-    def corner(self, sides: tuple[str, str]) -> int:
-        """Find the vertex at which two sides meet, in either order.
-
-        Raises
-        ------
-        InputError
-            If they meet nowhere, or more than once.
-        """
-        wanted = set(sides)
-        n = len(self.sides)
-        found = [
-            i
-            for i in range(n)
-            if {self.sides[i - 1], self.sides[i]} == wanted and not self.straight[i]
-        ]
-        if len(found) != 1:
-            how = "do not meet at a corner" if not found else "meet more than once"
-            raise InputError(
-                f"sides {sides[0]!r} and {sides[1]!r} {how}; the corners are "
-                f"{', '.join(self._corner_words())}."
-            )
-        return found[0]
-
-    def fillet(
-        self, sides: tuple[str, str], radius: float, name: str | None = None
-    ) -> "Polygon":
-        """Round the corner between two sides by an arc that touches both.
-
-        Parameters
-        ----------
-        sides : tuple of str
-            The two sides, straight where they meet.
-        radius : float
-            Radius of the arc in m.
-        name : str, optional
-            Name of the arc's side; "fillet of A and B" if left out.
-
-        Returns
-        -------
-        Polygon
-
-        Raises
-        ------
-        InputError
-            If they do not meet once, or the arc is longer than a side allows.
-        """
-        i = self.corner(sides)
-        turn = float(self.turns[i])
-        cut = radius * math.tan(0.5 * abs(turn))
-        label = name or f"fillet of {self.sides[i - 1]} and {self.sides[i]}"
-        return self._round(i, cut, math.tan(0.25 * turn), label, "fillet")
-
-    def relieve(
-        self, sides: tuple[str, str], radius: float, name: str | None = None
-    ) -> "Polygon":
-        """Cut a relief of this radius around the corner between two sides.
-
-        The material within the radius of the corner is taken off, so that a re-entrant
-        corner becomes the rim of a hole.
-
-        Parameters and errors are those of `fillet`.
-        """
-        i = self.corner(sides)
-        inside = math.pi - float(self.turns[i])
-        label = name or f"relief of {self.sides[i - 1]} and {self.sides[i]}"
-        return self._round(i, radius, -math.tan(0.25 * inside), label, "relief")
-
-    def relieve_around(
-        self, sides: tuple[str, str], radius: float, name: str | None = None
-    ) -> "Polygon":
-        """Cut a relief as `relieve` does, where the material is outside: at a hole."""
-        i = self.corner(sides)
-        outside = math.pi + float(self.turns[i])
-        label = name or f"relief of {self.sides[i - 1]} and {self.sides[i]}"
-        return self._round(i, radius, math.tan(0.25 * outside), label, "relief")
-
-    def _round(
-        self, i: int, cut: float, bulge: float, label: str, what: str
-    ) -> "Polygon":
-        """Replace vertex i by a piece between the points a cut away on both sides."""
-        before = i - 1
-        both = [before % len(self.sides), i]
-        x, y = self.points[i]
-        if not math.isfinite(cut) or cut <= 0.0:
-            raise InputError(
-                f"the radius of the {what} at {at((x, y))} must be positive and finite."
-            )
-        if (self.bulges[both] != 0.0).any():
-            raise InputError(
-                f"the corner at {at((x, y))} is not between straight pieces; a {what} "
-                "needs two."
-            )
-        if cut > self.lengths[both].min() - SNAP * self.size:
-            raise InputError(
-                f"the {what} at {at((x, y))} takes {cut:.6g} m of both sides but the "
-                f"shorter has {self.lengths[both].min():.6g} m; take a smaller radius."
-            )
-        into, out = (
-            (self.points[i] - self.points[before]),
-            self.ends[i] - self.points[i],
-        )
-        first = self.points[i] - cut * into / np.hypot(*into)
-        second = self.points[i] + cut * out / np.hypot(*out)
-        points = np.insert(self.points, i + 1, second, axis=0)
-        points[i] = first
-        return self._changed(
-            points=points,
-            sides=(*self.sides[:i], label, *self.sides[i:]),
-            bulges=np.insert(self.bulges, i, bulge),
-        )
-
-    def _changed(self, **changes: Any) -> "Polygon":
-        """Variant that keeps the notes."""
+    def changed(self, **changes: Any) -> "Polygon":
+        """Return a variant that keeps the notes."""
         line = replace(self, **changes)
         object.__setattr__(line, "notes", (*self.notes, *line.notes))
         return line
-
-    def _corner_words(self) -> list[str]:
-        return [
-            f"{self.sides[i - 1]}/{self.sides[i]}"
-            for i in range(len(self.sides))
-            if not self.straight[i]
-        ]
 
     @property
     def _label(self) -> str:

@@ -18,9 +18,11 @@ import numpy as np
 
 from kplate.arrays import Bools, Floats, Ints
 from kplate.boundary import rigid_motions
+from kplate.loads import PointForce
 from kplate.mesh import Mesh
+from kplate.polygon import SNAP
 from kplate.recovery import SmoothedMoments
-from kplate.singular import Corner, Place, excluded_places, plate_corners
+from kplate.singular import Corner, Excluded, Place, moment_ends, plate_corners
 from kplate.solve.static import StaticState
 from kplate.stations import along, stretches
 from kplate.supports import Support
@@ -141,6 +143,8 @@ class Reactions:
         The loads as integrated.
     total : Resultant
         All support forces.
+    magnitude : float
+        Sum of the magnitudes of all vertex forces, loads and supports, in N.
     imbalance : float
         Largest of the three sums of loads and support forces, as a share of the sum of
         magnitudes (moments over the size of the plate).
@@ -152,11 +156,33 @@ class Reactions:
     points: tuple[PointReaction, ...]
     load: Resultant
     total: Resultant
+    magnitude: float
     imbalance: float
 
 
-def reactions(state: StaticState, smoothed: SmoothedMoments, index: int) -> Reactions:
-    """Support forces of case number `index`."""
+def reactions(
+    state: StaticState,
+    smoothed: SmoothedMoments,
+    index: int,
+    excluded: Sequence[Excluded] = (),
+) -> Reactions:
+    """Support forces of case number `index`.
+
+    Parameters
+    ----------
+    state : StaticState
+        The solved plate.
+    smoothed : SmoothedMoments
+        Its moments, for the corner forces.
+    index : int
+        Which case.
+    excluded : sequence of Excluded
+        Discs in which line reactions have no finite value.
+
+    Returns
+    -------
+    Reactions
+    """
     numbering, mesh = state.constraints.numbering, state.mesh
     nodal = numbering.by_vertex(state.support_forces)[:, :, index]  # (n_points, 3)
     loads = numbering.by_vertex(state.forces)[:, :, index]
@@ -166,13 +192,16 @@ def reactions(state: StaticState, smoothed: SmoothedMoments, index: int) -> Reac
     for corner_force, vertex in found:
         rest[vertex, 0] -= np.nan_to_num(corner_force.force.value)
     points = _point_reactions(state, rest, motions, index)
+    case = state.cases[index].name
+    discs = [disc for disc in excluded if disc.case in ("", case)]
     return Reactions(
         case=state.cases[index].name,
-        sides=tuple(_side_reactions(state, rest, motions)),
+        sides=tuple(_side_reactions(state, rest, motions, discs)),
         corners=tuple(corner_force for corner_force, _ in found),
         points=points,
         load=_resultant(motions, loads),
         total=_resultant(motions, nodal),
+        magnitude=float(np.abs(nodal[:, 0]).sum() + np.abs(loads[:, 0]).sum()),
         imbalance=_imbalance(mesh, motions, nodal, loads),
     )
 
@@ -181,7 +210,9 @@ def _corner_forces(
     state: StaticState, smoothed: SmoothedMoments, index: int
 ) -> list[tuple[CornerForce, int]]:
     """Forces at the corners and their vertices."""
-    mesh = state.mesh
+    mesh, case = state.mesh, state.cases[index]
+    ends = moment_ends(state.plate, case)
+    corner_size = state.plate.outline.size
     found = []
     for corner in plate_corners(state.plate):
         if not corner.carries_force:
@@ -189,14 +220,23 @@ def _corner_forces(
         joint = _joint_at(mesh, corner)
         vertex = int(mesh.boundary_edges[joint, 1])
         jump, reason = np.nan, f"no finite value: {corner.words}"
-        if not corner.unbounded:
+        if corner.place in ends:
+            reason = "no finite value: end of an edge moment"
+        elif not corner.unbounded:
             edges = mesh.boundary_joints[joint]
             tangents = mesh.tangents(edges, np.full(2, vertex))
             # The arriving edge ends at the corner, the leaving one begins there.
-            ends = smoothed.nodes.of_edges(mesh, mesh.boundary_edges[edges])
-            nodes = [ends[0, 1], ends[1, 0]]
+            pairs = smoothed.nodes.of_edges(mesh, mesh.boundary_edges[edges])
+            nodes = [pairs[0, 1], pairs[1, 0]]
             m_ns = _twist(smoothed.moments[nodes, :, index], tangents)
             jump, reason = float(m_ns[0] - m_ns[1]), ""
+            # A force that acts at the corner itself goes straight into the support.
+            jump -= sum(
+                load.force
+                for load in case.loads
+                if isinstance(load, PointForce)
+                and np.hypot(*np.subtract(load.at, corner.place)) < SNAP * corner_size
+            )
         force = Value(
             value=jump, place=corner.place, case=state.cases[index].name, reason=reason
         )
@@ -223,9 +263,12 @@ def _point_reactions(
 ) -> tuple[PointReaction, ...]:
     """Reactions of held marks, which are taken off what vertices bring."""
     mesh, found = state.mesh, []
+    lined = np.zeros(len(mesh.points), dtype=bool)  # held by a line already
+    for line in _held_lines(state):
+        lined[line.edges] = True
     for name, vertex in zip(mesh.mark_names, mesh.mark_vertices, strict=True):
         support = state.plate.support(name)
-        if not (support.holds_deflection or support.holds_slope):
+        if not support.holds or lined[vertex]:
             continue
         own = np.zeros_like(rest)
         own[vertex], rest[vertex] = rest[vertex], 0.0
@@ -270,7 +313,7 @@ def _held_lines(state: StaticState) -> list[_Line]:
     found = []
     for name, edges in [*sides, *seams]:
         support = plate.support(name)
-        if support.holds_deflection or support.holds_slope:
+        if support.holds:
             start, end = np.moveaxis(mesh.points[edges], 1, 0)
             lengths = np.hypot(*(end - start).T)
             found.append(
@@ -280,12 +323,11 @@ def _held_lines(state: StaticState) -> list[_Line]:
 
 
 def _side_reactions(
-    state: StaticState, rest: Floats, motions: Floats
+    state: StaticState, rest: Floats, motions: Floats, discs: Sequence[Excluded]
 ) -> list[SideReaction]:
     """Reactions of held sides and seams from vertex forces less corner forces."""
     mesh = state.mesh
     lines = _held_lines(state)
-    discs = excluded_places(state.plate, ())
     unbounded = np.zeros(len(mesh.points), dtype=bool)
     for disc in discs:
         reach = np.hypot(*(mesh.points - disc.place).T)

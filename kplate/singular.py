@@ -19,6 +19,7 @@ from kplate.arrays import Bools
 from kplate.loads import (
     Case,
     DiscPatch,
+    EdgeMoment,
     Load,
     PointForce,
     PointMoment,
@@ -106,6 +107,23 @@ class Excluded:
     case: str = ""
 
 
+def shear_places(plate: Plate, radius: float) -> tuple[Excluded, ...]:
+    """Corners at which moments are finite and the effective shear is not.
+
+    It goes with r^(lambda - 2). At lambda = 1 (a hinged right angle, a line of symmetry
+    square to a clamped side) the field is a quadratic, which has no shear.
+    """
+    found = []
+    for corner in plate_corners(plate):
+        exponent = corner.exponent.real
+        quadratic = abs(exponent - 1.0) <= corners.UNBOUNDED
+        if exponent < 2.0 - corners.UNBOUNDED and not quadratic:
+            found.append(
+                Excluded(place=corner.place, radius=radius, reason=corner.words)
+            )
+    return tuple(found)
+
+
 def plate_corners(plate: Plate) -> tuple[Corner, ...]:
     """Corners and changes of support, rim first."""
     found: list[Corner] = []
@@ -141,6 +159,10 @@ def excluded_places(
     inside = [*_held_inside(plate), *_steps(plate)]
     found += [Excluded(place=p, radius=r, reason=why) for p, why in inside]
     for case in cases:
+        found += [
+            Excluded(place=p, radius=r, reason="end of an edge moment", case=case.name)
+            for p in moment_ends(plate, case)
+        ]
         for load in case.loads:
             what, place = _concentrated(load, plate)
             if what:
@@ -148,6 +170,29 @@ def excluded_places(
                     Excluded(place=place, radius=r, reason=what, case=case.name)
                 )
     return tuple(found)
+
+
+def moment_ends(plate: Plate, case: Case) -> list[Place]:
+    """Places where an applied edge moment begins or ends.
+
+    Around such a place m_xy grows with the logarithm of the distance, unless the side
+    goes on with the same moment, or two free sides meet at a corner.
+    """
+    applied: dict[str, float] = {}
+    for load in case.loads:
+        if isinstance(load, EdgeMoment):
+            applied[load.along] = applied.get(load.along, 0.0) + load.moment
+    found: list[Place] = []
+    for line in plate.outline.boundaries if applied else ():
+        for i, point in enumerate(line.points):
+            sides = (line.sides[i - 1], line.sides[i])
+            moments = [applied.get(side, 0.0) for side in sides]
+            smooth = line.straight[i] or abs(line.turns[i]) < plate.bend_turn
+            free = not any(plate.support(side).holds for side in sides)
+            bounded = moments[0] == moments[1] if smooth else free
+            if any(moments) and not bounded:
+                found.append(_pair(point))
+    return found
 
 
 def _concentrated(load: Load, plate: Plate) -> tuple[str, Place]:
@@ -170,15 +215,9 @@ def _held_inside(plate: Plate) -> list[tuple[Place, str]]:
     """Point supports, and ends, corners and crossings of held seams."""
     found: list[tuple[Place, str]] = []
     for mark in plate.outline.marks:
-        support = plate.support(mark.name)
-        if support.holds_deflection or support.holds_slope:
+        if plate.support(mark.name).holds:
             found.append((mark.at, f"point support {mark.name}"))
-    held = [
-        seam
-        for seam in plate.outline.seams
-        if plate.support(seam.name).holds_deflection
-        or plate.support(seam.name).holds_slope
-    ]
+    held = [seam for seam in plate.outline.seams if plate.support(seam.name).holds]
     for seam in held:
         ends = (seam.points[0], seam.points[-1])
         if not np.array_equal(*ends):
@@ -251,7 +290,7 @@ def _line_corners(plate: Plate, line: Polygon, *, hole: bool) -> list[Corner]:
                 sides=sides,
                 supports=held,
                 exponent=exponent,
-                unbounded=bool(1.0 - np.real(exponent) > corners.UNBOUNDED),
+                unbounded=corners.is_unbounded(angle, names, nu),
             )
         )
     return found

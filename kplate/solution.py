@@ -27,7 +27,7 @@ from kplate.recovery import (
     surface_stress,
     von_mises,
 )
-from kplate.singular import Excluded, excluded_places
+from kplate.singular import Excluded, excluded_places, shear_places
 from kplate.solve.static import StaticState
 from kplate.values import Face, Value
 
@@ -198,8 +198,9 @@ class Solution:
             )
         indices = range(len(self.cases)) if case is None else [self._index(case)]
         values = [_PEAKS[quantity](self, index) for index in indices]
+        lost = [value for value in values if math.isnan(value.value)]
         key = _largest if quantity in _BY_VALUE else _magnitude
-        return max(values, key=key)
+        return lost[0] if lost else max(values, key=key)
 
     def point_fields(self, *, case: str | None = None) -> dict[str, Floats]:
         """Fields at `field_points`, for files and pictures.
@@ -277,8 +278,10 @@ class Solution:
     def _reactions(self, index: int) -> Reactions:
         known = self._known_reactions
         if index not in known:
+            radius = self.excluded_radius or self.plate.thickness
+            discs = (*self.excluded, *shear_places(self.plate, radius))
             known[index] = support_reactions.reactions(
-                self.state, self._smoothed, index
+                self.state, self._smoothed, index, discs
             )
         return known[index]
 
@@ -332,6 +335,9 @@ class Solution:
         kept = _outside(places, discs, 1.0)
         rims = np.concatenate([_rim(self.mesh, disc) for disc in discs])
         rims = rims[_outside(rims, discs, 1.0 - 1e-9)]
+        if not (kept.any() or len(rims)):
+            nothing = np.empty((0, 3))
+            return _Candidates(nothing[:, :2], nothing, nothing[:, :2], nothing[:, 0])
         triangles, barycentrics = self.mesh.locate(rims)
         own = nodes.triangles[triangles]
         return _Candidates(
@@ -348,6 +354,14 @@ class Solution:
                     self.plate.thicknesses[self.mesh.zones[triangles]],
                 ]
             ),
+        )
+
+    def _unknown(self, index: int) -> Value:
+        """No value, where the discs that are left out cover the plate."""
+        return Value(
+            value=math.nan,
+            case=self.cases[index],
+            reason="is not known: the places left out cover the plate",
         )
 
     def _value(self, value: float, place: ArrayLike, index: int) -> Value:
@@ -402,6 +416,8 @@ def _stationary(places: Floats, values: Floats) -> Floats | None:
 
 def _peak_von_mises(solution: Solution, index: int) -> Value:
     at = solution._candidates(index)
+    if not len(at.places):
+        return solution._unknown(index)
     stress = von_mises(surface_stress(at.moments, at.thickness, "bottom"))
     best = int(np.argmax(stress))
     principal = principal_moments(at.moments[best])[0]
@@ -412,6 +428,8 @@ def _peak_von_mises(solution: Solution, index: int) -> Value:
 
 def _peak_principal(solution: Solution, index: int, sign: float) -> Value:
     at = solution._candidates(index)
+    if not len(at.places):
+        return solution._unknown(index)
     values = []
     for face in _FACES:
         stress = surface_stress(at.moments, at.thickness, face)
@@ -424,12 +442,16 @@ def _peak_principal(solution: Solution, index: int, sign: float) -> Value:
 
 def _peak_moment(solution: Solution, index: int, component: int) -> Value:
     at = solution._candidates(index)
+    if not len(at.places):
+        return solution._unknown(index)
     best = int(np.argmax(np.abs(at.moments[:, component])))
     return solution._value(at.moments[best, component], at.places[best], index)
 
 
 def _peak_shear_stress(solution: Solution, index: int) -> Value:
     at = solution._candidates(index)
+    if not len(at.places):
+        return solution._unknown(index)
     stress = 1.5 * np.hypot(*at.shears.T) / at.thickness
     best = int(np.argmax(stress))
     return solution._value(stress[best], at.places[best], index)

@@ -28,6 +28,11 @@ class Support:
     holds_slope: bool
     words: str
 
+    @property
+    def holds(self) -> bool:
+        """Whether it holds anything."""
+        return self.holds_deflection or self.holds_slope
+
 
 CLAMPED = Support(
     name="clamped",

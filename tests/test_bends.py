@@ -51,10 +51,14 @@ def test_a_vertex_off_a_side_is_a_bend_with_one_tangent(exact_square, out, chang
 
 @pytest.mark.parametrize("out", [1e-4, 1e-3, 1e-2])
 def test_taken_sharp_the_same_vertex_clamps_the_plate(exact_square, out):
-    """Two tangents hold both slopes: measured -48 % with this element at 0.1 mm."""
+    """Two tangents hold both slopes, and no mesh finds out that they need not.
+
+    Exact for hinged corners, by two Poisson problems: +0.06 to +5.6 %. Measured here
+    -14, -14 and -7 % with the mesh graded to the vertex; -48 % at 0.1 mm without.
+    """
     sharp = square_with_vertices(out, bend_turn=0.0)
     found = centre_deflection(sharp) / exact_square - 1.0
-    assert -0.55 < found < -0.2
+    assert -0.55 < found < -0.05
 
 
 def test_a_vertex_within_the_snap_distance_is_merged():

@@ -287,7 +287,7 @@ def test_a_part_of_a_side_is_held_by_itself():
     ends = {tuple(np.round(e.place, 9)) for e in held.excluded}
     assert ends == {(0.6, 1.0), (0.4, 1.0)}
     by_points = square().part(
-        "north", name="bracket", between=((0.4, 1.2), (0.6, 1.01))
+        "north", name="bracket", between=((0.4, 1.001), (0.6, 1.0))
     )
     assert by_points.side_length("bracket") == pytest.approx(0.2)
     np.testing.assert_allclose(

@@ -16,7 +16,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"quantities"},
     {"fields"},
     {"polygon"},
-    {"shapes", "placement", "joining", "chaining"},
+    {"shapes", "placement", "joining", "chaining", "rounding"},
     {"interior"},
     {"outline", "cutting", "entities"},
     {"mesh"},

@@ -228,7 +228,7 @@ def test_notes_outlive_what_is_done_to_corners(read):
     [
         'from = "10 %", to = "35 %"',
         "from = [720, 600], to = [520, 600]",
-        'from = ["520 mm", 610], to = ["72 cm", 590]',
+        'from = ["520 mm", 601], to = ["72 cm", 599]',
     ],
 )
 def test_a_part_of_a_side_by_shares_or_places(read, ends):

@@ -16,7 +16,7 @@ Quantity = Literal["deflection", "von Mises"]
 
 MOST_BANDS = 9
 TINY = 0.01  # deflections the other way below this share do not change the colours
-# Colours go up to the stress that all but this share of the vertices stays below, if
+# Colours go up to the stress that all but this share of the plate stays below, if
 # that is less than half the peak; or a corner would leave the plate in one colour.
 RARE = 0.02
 LEVEL = Hand(size=8.0)
@@ -89,8 +89,13 @@ class Bands:
         return np.asarray(colours(limits(means)), dtype=np.float64)
 
 
-def bands(quantity: Quantity, values: Floats, peak: float) -> Bands:
-    """Choose levels for vertex values, and for a peak that may lie between vertices."""
+def bands(
+    quantity: Quantity, values: Floats, peak: float, areas: Floats | None = None
+) -> Bands:
+    """Choose levels for vertex values, and for a peak that may lie between vertices.
+
+    `areas` says how much of the plate each value stands for; alike if left out.
+    """
     low, high = 0.0, peak
     if quantity == "deflection":
         low = min(0.0, peak, float(values.min()))
@@ -98,7 +103,10 @@ def bands(quantity: Quantity, values: Floats, peak: float) -> Bands:
         low = 0.0 if -low < TINY * high else low
         high = 0.0 if high < -TINY * low else high
     else:
-        usual = float(np.quantile(values, 1.0 - RARE))
+        order = np.argsort(values)
+        shares = np.ones(len(values)) if areas is None else areas
+        below = np.cumsum(shares[order])
+        usual = float(values[order][np.searchsorted(below, (1.0 - RARE) * below[-1])])
         high = usual if usual < 0.5 * peak else peak
     return Bands(quantity=quantity, values=values, levels=_levels(low, high))
 

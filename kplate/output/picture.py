@@ -242,13 +242,15 @@ def _shown(
     fields = solution.point_fields(case=peak.case)
     size = _unit(quantity, units).size
     colour = fields["deflection [m]" if quantity == "deflection" else "von Mises [Pa]"]
+    corners = solution.field_triangles.ravel()
+    areas = np.bincount(corners, np.repeat(solution.mesh.areas, 3)).astype(np.float64)
     return Shown(
         solution=solution,
         peak=peak,
         units=units,
         points=solution.field_points / units.length.size,
         deflection=fields["deflection [m]"] / units.length.size,
-        bands=bands(quantity, colour / size, peak.value / size),
+        bands=bands(quantity, colour / size, peak.value / size, areas),
     )
 
 

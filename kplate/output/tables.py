@@ -72,9 +72,10 @@ def reactions_table(
     rows: Sequence[tuple[str, str, Resultant, float, float]],
     units: DisplayUnits,
 ) -> str:
-    """Table of what each support brings: force, and smallest and largest line reaction.
+    """Table of what each support brings: force, and largest push and pull along it.
 
-    Rows hold case, support, resultant and both line reactions in N/m (nan at a point).
+    Rows hold case, support, resultant, and the largest pull (0 or less) and push (0 or
+    more) in N/m; nan at a point.
     """
     shown = []
     for case, name, resultant, least, most in rows:
@@ -82,9 +83,13 @@ def reactions_table(
         line = "-"
         if not math.isnan(least):
             size, symbol = units.line_force.size, units.line_force.symbol
-            line = f"{least / size:+.3g} to {most / size:+.3g} {symbol}"
+            # What is a hundredth of the other is the mesh's own unevenness.
+            largest = max(most, -least)
+            ends = [end for end in (least, most) if abs(end) > 0.01 * largest]
+            line = " and ".join(f"{end / size:+.3g}" for end in ends) or "0"
+            line = f"{line} {symbol}"
         shown.append((case, name, force, line))
-    return _columns(("case", "support", "pushes up", "line reaction"), shown)
+    return _columns(("case", "support", "pushes up", "largest line reaction"), shown)
 
 
 def band(value: Value) -> str:

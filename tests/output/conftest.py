@@ -82,7 +82,7 @@ def deck():
             "west": GUIDED,
             "sill": SIMPLY_SUPPORTED,
             "bolt": SIMPLY_SUPPORTED,
-            "stud": CLAMPED,
+            "stud": SIMPLY_SUPPORTED,
         },
         zones={"pad": Section(thickness=0.012, material=ALUMINIUM)},
     )
