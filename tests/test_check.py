@@ -361,3 +361,18 @@ def test_a_full_disk_behind_stdout_is_one_line(tmp_path):
     assert run.returncode == 2
     assert "the results cannot be printed" in run.stderr
     assert run.stderr.count("\n") == 1
+
+
+def test_a_bolt_that_is_pulled_is_held_against_the_limit(tmp_path):
+    text = (MESHES / "pit-cover.toml").read_text("utf-8")
+    text = text.replace("kPa down", "kPa up")
+    bolt = '[[mark]]\nname = "bolt"\nat = [400, 300]\n\n[supports]\n'
+    text = text.replace("[supports]\n", bolt + 'bolt = "simply supported"\n')
+    text = text.replace("[limits]", '[limits]\nhold_down = "100 N"')
+    panel = tmp_path / "bolted.toml"
+    panel.write_text(text, "utf-8")
+    checked = check(panel)
+    line = found(checked, "uniform", "bolt hold-down")
+    assert line.value.value > 100.0
+    assert line.judgement.outcome is Outcome.FAILS
+    assert checked.status == 1

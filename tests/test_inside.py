@@ -9,7 +9,7 @@ import pytest
 from plates import SIDES, unit_material
 
 from kplate.adapt import solve
-from kplate.errors import InputError
+from kplate.errors import InputError, SolveError
 from kplate.loads import (
     Case,
     EdgeMoment,
@@ -354,3 +354,133 @@ def test_supports_inside_are_excluded_where_they_end_and_cross():
     w = solution.deflection([(0.3, 0.5), (0.5, 0.3), (0.7, 0.8), (0.9, 0.1)])
     np.testing.assert_allclose(w, 0.0, atol=1e-12)
     assert solution.reactions().imbalance < 1e-12
+
+
+def test_where_an_edge_moment_ends_nothing_finite_is_reported():
+    """Moments grow with the logarithm of the distance there, corner forces with them.
+
+    Beside the corners they settle: the peak on the rims of the discs keeps to 2 %.
+    """
+    held = plate(square(), dict.fromkeys(SIDES, SIMPLY_SUPPORTED))
+    loads = [EdgeMoment(moment=1.0, along="south")]
+    peaks = []
+    for triangles in (2000, 8000):
+        solution = solve(held, loads, triangles=triangles)
+        assert [e.place for e in solution.excluded] == [(0.0, 0.0), (1.0, 0.0)]
+        assert {e.reason for e in solution.excluded} == {"end of an edge moment"}
+        forces = {c.corner.place: c.force.value for c in solution.reactions().corners}
+        assert np.isnan(forces[0.0, 0.0])
+        assert np.isnan(forces[1.0, 0.0])
+        assert np.isfinite(forces[0.0, 1.0])
+        peaks.append(solution.peak("von Mises").value)
+    assert peaks[1] == pytest.approx(peaks[0], rel=0.02)
+
+
+@pytest.mark.parametrize(
+    ("supports", "ends"),
+    [
+        ({"south": CLAMPED}, {(0.7, 1.0), (0.3, 1.0)}),
+        ({"west": CLAMPED}, {(0.7, 1.0), (0.3, 1.0)}),
+    ],
+)
+def test_a_moment_on_a_part_of_a_free_side_ends_too(supports, ends):
+    outline = square().part("north", name="part", fractions=(0.3, 0.7))
+    loads = [EdgeMoment(moment=1.0, along="part")]
+    solution = solve(plate(outline, supports), loads, triangles=500)
+    found = {tuple(np.round(e.place, 9)) for e in solution.excluded}
+    assert ends <= found
+
+
+def test_a_moment_all_round_a_free_plate_ends_nowhere(on_three_points):
+    loads = [EdgeMoment(moment=1.0, along=side) for side in SIDES]
+    solution = solve(on_three_points, loads, size=0.2)
+    assert {e.reason.split()[0] for e in solution.excluded} == {"point"}
+
+
+def test_a_force_on_a_corner_goes_straight_into_its_support():
+    held = plate(square(), dict.fromkeys(SIDES, SIMPLY_SUPPORTED))
+    cases = [
+        Case(name="both", loads=[Pressure(-1.0), PointForce(force=7.0, at=(0, 0))]),
+        Case(name="pressure", loads=[Pressure(-1.0)]),
+    ]
+    solution = solve(held, cases, triangles=1500)
+    forces = [
+        {c.corner.place: c.force.value for c in solution.reactions(case=name).corners}
+        for name in solution.cases
+    ]
+    assert forces[0][0.0, 0.0] == pytest.approx(forces[1][0.0, 0.0] - 7.0)
+    assert solution.hold_down(case="both")[0].value == pytest.approx(7.065, rel=0.01)
+
+
+def test_line_reactions_under_a_force_on_the_side_are_left_out():
+    held = plate(square(), dict.fromkeys(SIDES, SIMPLY_SUPPORTED))
+    loads = [PointForce(force=-5.0, at=(0.5, 0.0))]
+    solution = solve(held, loads, triangles=2000)
+    south = solution.reactions().sides[0]
+    near = np.abs(south.stations[:, 0] - 0.5) < 0.01
+    assert np.isnan(south.line_reaction[near]).all()
+    assert south.resultant.force == pytest.approx(5.0, rel=1e-6)
+    known = south.line_reaction[~np.isnan(south.line_reaction)]
+    assert np.abs(known).max() < 1.0
+
+
+def test_shears_without_a_finite_value_are_left_out_and_others_kept():
+    """At 90 degrees a clamped side beside a free one: v_n grows, moments do not."""
+    solution = solve(
+        plate(square(), {"west": CLAMPED}), [Pressure(-1.0)], triangles=2000
+    )
+    assert solution.excluded == ()
+    (root,) = solution.reactions().sides
+    assert np.isnan(root.line_reaction[[0, -1]]).all()
+    hinged = plate(square(), dict.fromkeys(SIDES, SIMPLY_SUPPORTED))
+    for side in solve(hinged, [Pressure(-1.0)], triangles=500).reactions().sides:
+        assert not np.isnan(side.line_reaction).any()
+
+
+def test_what_cannot_be_held_is_refused():
+    outline = (
+        square().mark((0.5, 0.5), name="post").seam([(0.2, 0), (0.8, 0)], name="a")
+    )
+    with pytest.raises(InputError, match="mark 'post' is clamped; a point of a thin"):
+        plate(outline, {"post": CLAMPED})
+    with pytest.raises(InputError, match="seam 'a' runs along 'south', which is held"):
+        plate(outline, {"a": SIMPLY_SUPPORTED, "south": CLAMPED})
+    twice = outline.seam([(0.3, 0.5), (0.9, 0.5)], name="b")
+    twice = twice.seam([(0.1, 0.5), (0.6, 0.5)], name="c")
+    with pytest.raises(InputError, match="seam 'c' runs along 'b', which is held too"):
+        plate(twice, {"b": SIMPLY_SUPPORTED, "c": SIMPLY_SUPPORTED})
+
+
+def test_a_mark_on_a_held_side_adds_nothing_of_its_own():
+    outline = square().mark((0.4, 0.0), name="bolt")
+    held = dict.fromkeys((*SIDES, "bolt"), SIMPLY_SUPPORTED)
+    reactions = solve(plate(outline, held), [Pressure(-1.0)], triangles=800).reactions()
+    assert reactions.points == ()
+    total = sum(side.resultant.force for side in reactions.sides)
+    total += sum(corner.force.value for corner in reactions.corners)
+    assert total == pytest.approx(1.0, rel=1e-9)
+
+
+@pytest.mark.parametrize(
+    ("side", "axis"), [("west", "parallel to x"), ("south", "parallel to y")]
+)
+def test_a_guided_side_alone_leaves_two_motions(side, axis):
+    with pytest.raises(SolveError) as caught:
+        solve(plate(square(), {side: GUIDED}), [Pressure(1.0)], triangles=100)
+    assert str(caught.value) == (
+        "the plate can still move as a rigid body (2 free motions: move up and down, "
+        f"tilt about any line {axis}); add a support."
+    )
+
+
+def test_discs_that_cover_the_plate_leave_no_number():
+    held = plate(square(), dict.fromkeys(SIDES, SIMPLY_SUPPORTED))
+    loads = [PointForce(force=-1.0, at=(0.5, 0.5))]
+    solution = solve(held, loads, triangles=200, excluded_radius=5.0)
+    for quantity in ("von Mises", "largest principal", "m_xx", "shear stress"):
+        value = solution.peak(quantity)
+        assert np.isnan(value.value)
+        assert value.reason == "is not known: the places left out cover the plate"
+    assert np.isfinite(solution.peak("deflection").value)
+    with pytest.raises(InputError, match="the mesh size is 0 m; it must be a positive"):
+        solve(held, loads, size=0.0)

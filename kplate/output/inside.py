@@ -110,14 +110,18 @@ def is_held(support: Support) -> bool:
 
 
 def mark_sign(support: Support) -> dict[str, Any]:
-    """Sign of a mark: what it holds is filled, slopes make it square."""
-    sign = {"linestyle": "none", "color": INK, "zorder": 5, "markeredgewidth": 1.3}
+    """Sign of a mark: a triangle where it is held, a faint cross where it is free."""
+    sign = {"linestyle": "none", "color": INK, "zorder": 5}
     if not is_held(support):
-        return {**sign, "marker": "x", "markersize": 5, "color": FAINT}
-    shape = {"marker": "s" if support.holds_slope else "^", "markersize": 7}
-    if support.holds_deflection:
-        return {**sign, **shape, "markeredgecolor": "white", "markeredgewidth": 0.8}
-    return {**sign, **shape, "markerfacecolor": "white"}
+        return {
+            **sign,
+            "marker": "x",
+            "markersize": 5,
+            "markeredgewidth": 1.3,
+            "color": FAINT,
+        }
+    edge = {"markeredgecolor": "white", "markeredgewidth": 0.8}
+    return {**sign, **edge, "marker": "^", "markersize": 7}
 
 
 def _write(names: Names, name: str, spots: list[Spot], gap: float) -> bool:
