@@ -12,7 +12,6 @@ from typing import Any
 
 import numpy as np
 from scipy.sparse import coo_array
-from scipy.sparse.csgraph import connected_components
 
 from kplate import curves
 from kplate.arrays import Floats, Ints
@@ -269,6 +268,8 @@ def _pairs(points: Floats, reach: float) -> Ints:
 
 def _groups(pairs: Ints, n: int) -> Ints:
     """Number the groups of things that pairs connect, (n,)."""
+    from scipy.sparse.csgraph import connected_components
+
     graph = coo_array((np.ones(len(pairs)), (pairs[:, 0], pairs[:, 1])), shape=(n, n))
     return connected_components(graph, directed=False)[1].astype(np.int64)
 

@@ -2,7 +2,6 @@
 
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
-from importlib import metadata, resources
 from pathlib import Path
 
 import numpy as np
@@ -158,6 +157,8 @@ def new_panel(path: Path) -> Path:
         raise InputError(
             f"{path} exists already; choose another name, or remove it first."
         )
+    from importlib import resources
+
     text = resources.files("kplate").joinpath("starter.toml").read_text("utf-8")
     with replacing(path) as temporary:
         temporary.write_text(text, encoding="utf-8")
@@ -166,6 +167,8 @@ def new_panel(path: Path) -> Path:
 
 def version() -> str:
     """Version of the installed package."""
+    from importlib import metadata  # which takes long to import
+
     return metadata.version("kplate")
 
 

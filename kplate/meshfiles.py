@@ -15,7 +15,6 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
-from xml.sax.saxutils import escape
 
 import numpy as np
 from numpy.typing import NDArray
@@ -362,6 +361,8 @@ def _marks_a_group(name: str, data: Any) -> bool:
 
 def _xml(name: str) -> str:
     """Spell a name as an XML attribute in ASCII; meshio writes it as it is."""
+    from xml.sax.saxutils import escape  # which takes long to import
+
     if not name.isprintable():
         raise InputError(
             f"the name {name!r} cannot stand in a VTU file; use letters, digits and "
