@@ -134,15 +134,7 @@ def check(
     )
     if out is None:
         return checked
-    files = _write(checked, out)
-    return Checked(
-        panel=panel,
-        solution=solution,
-        lines=lines,
-        verdict=verdict,
-        validity=checked.validity,
-        files=files,
-    )
+    return replace(checked, files=_write(checked, out))
 
 
 def new_panel(path: Path) -> Path:

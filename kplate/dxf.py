@@ -160,7 +160,9 @@ def _take(document: Any, unit: Unit) -> tuple[list[Piece], list[str]]:
         elif entity.dxf.get("invisible", 0):
             ignored.append(f"{_name(entity, unit)}: it is invisible")
         elif take is None or (kind == "POLYLINE" and not is_line(entity)):
-            ignored.append(f"{_name(entity, unit)}: no line")
+            block = "a block, not taken apart; explode it if it is part of the panel"
+            why = block if kind == "INSERT" else "no line"
+            ignored.append(f"{_name(entity, unit)}: {why}")
         else:
             arcs = _arcs(entity, take, unit)
             if not arcs:

@@ -5,6 +5,7 @@ fragmented, or a drawing is read, nobody can prove that Gmsh comes back; it then
 in a second process, which is killed by its number when its time is up.
 """
 
+import os
 import pickle
 import subprocess
 import sys
@@ -48,10 +49,13 @@ def mesh_guarded(
     """
     job = pickle.dumps((outline, size, tuple(fine), tuple(graded)))
     command = [sys.executable, "-c", "from kplate.guard import work; work()"]
-    pipe, nothing = subprocess.PIPE, subprocess.DEVNULL
-    with subprocess.Popen(command, stdin=pipe, stdout=pipe, stderr=nothing) as worker:
+    pipe = subprocess.PIPE
+    own = {**os.environ, "PYTHONPATH": os.pathsep.join(filter(None, sys.path))}
+    with subprocess.Popen(
+        command, stdin=pipe, stdout=pipe, stderr=pipe, env=own
+    ) as worker:
         try:
-            answer, _ = worker.communicate(job, timeout=seconds)
+            answer, complaint = worker.communicate(job, timeout=seconds)
         except subprocess.TimeoutExpired as error:
             raise MeshError(
                 f"Gmsh did not come back within {seconds:g} s at size {size:g} m; draw "
@@ -62,9 +66,10 @@ def mesh_guarded(
     try:
         kind, content = pickle.loads(answer)
     except (pickle.UnpicklingError, EOFError) as error:
+        last = complaint.decode(errors="replace").strip().rpartition("\n")[2]
         raise MeshError(
-            f"Gmsh ended without a mesh (status {worker.returncode}) at size "
-            f"{size:g} m; please report the outline."
+            f"the second process ended without a mesh at size {size:g} m (status "
+            f"{worker.returncode}{': ' * bool(last)}{last}); please report the outline."
         ) from error
     if kind != "mesh":
         raise _ERRORS.get(kind, MeshError)(content)

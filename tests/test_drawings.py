@@ -341,7 +341,8 @@ def test_everything_ignored_is_listed(drawn):
         "MTEXT on layer 'NOTES' at (30, 40) mm: no line",
         "POINT on layer 'NOTES' at (5, 6) mm: no line",
         "HATCH on layer 'NOTES' at (0, 0) mm: no line",
-        "INSERT on layer 'NOTES' at (70, 80) mm: no line",
+        "INSERT on layer 'NOTES' at (70, 80) mm: a block, not taken apart; explode it "
+        "if it is part of the panel",
         "DIMENSION on layer 'NOTES' at (0, -50) mm: no line",
         "SOLID on layer 'NOTES' at (1, 2) mm: no line",
         "LEADER on layer 'NOTES' at (0, 0) mm: no line",

@@ -33,19 +33,27 @@ def test_the_panel_file_shown_is_read_and_passes(tmp_path):
     assert checked.status == 0
 
 
+NUMBER = re.compile(r"[-+]?\d[\d.,e+-]*")
+
+
 def test_the_output_shown_is_what_is_printed():
-    """Numbers may move with the mesh in their last digits; words and units may not."""
+    """Numbers may move with the mesh by a few per cent; words and units may not."""
     shown = block_after("<!-- pit-cover -->").splitlines()
     printed = check(ROOT / "meshes" / "pit-cover.toml").text.splitlines()
     assert shown[0] == printed[0].replace(version(), "0.1.0")
 
-    def words(line):
-        return re.sub(r"[-+]?\d[\d.,e+-]*", "#", " ".join(line.split()))
+    def parted(line):
+        flat = " ".join(line.split())
+        numbers = [float(n.rstrip(".,-+e")) for n in NUMBER.findall(flat)]
+        return NUMBER.sub("#", flat), numbers
 
-    kept = [words(line) for line in printed]
-    for line in shown:
-        if not line.startswith("written:"):
-            assert words(line) in kept, line
+    known = [parted(line) for line in printed[1:]]
+    for line in shown[1:]:
+        if not line.startswith("written:") and "force and moments to" not in line:
+            words, numbers = parted(line)
+            near = pytest.approx(numbers, rel=0.05, abs=0.05)
+            found = [other for text, other in known if text == words]
+            assert any(other == near for other in found), line
 
 
 def test_every_command_is_in_the_table():
