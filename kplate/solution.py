@@ -27,11 +27,11 @@ from kplate.recovery import (
     surface_stress,
     von_mises,
 )
+from kplate.rims import outside, rim, stationary
 from kplate.singular import Excluded, excluded_places, shear_places
 from kplate.solve.static import StaticState
 from kplate.values import Face, Value
 
-RIM_SAMPLES = 64  # points on the rim of an excluded disc
 # Steps along each edge of the triangles around the highest vertex of a deflection.
 _STEPS = 4
 _FACES: tuple[Face, Face] = ("top", "bottom")
@@ -332,9 +332,9 @@ class Solution:
         discs = [e for e in self.excluded if e.case in ("", case)]
         if not discs:
             return _Candidates(places, moments, shears, self._node_thickness)
-        kept = _outside(places, discs, 1.0)
-        rims = np.concatenate([_rim(self.mesh, disc) for disc in discs])
-        rims = rims[_outside(rims, discs, 1.0 - 1e-9)]
+        kept = outside(places, discs, 1.0)
+        rims = np.concatenate([rim(self.mesh, disc) for disc in discs])
+        rims = rims[outside(rims, discs, 1.0 - 1e-9)]
         if not (kept.any() or len(rims)):
             nothing = np.empty((0, 3))
             return _Candidates(nothing[:, :2], nothing, nothing[:, :2], nothing[:, 0])
@@ -392,26 +392,13 @@ def _peak_deflection(solution: Solution, index: int) -> Value:
     places = np.einsum("kv,kvc->kc", barycentrics, corners)
     best = int(np.argmax(np.abs(deflection)))
     place, value = places[best], deflection[best]
-    summit = _stationary(places, deflection)
+    summit = stationary(places, deflection)
     if summit is not None and mesh.covers(summit[None])[0]:
         there = float(solution.deflection(summit[None], case=solution.cases[index])[0])
         # The parabola says where the top is; it may not lower what was found.
         if abs(there) >= abs(value) * (1.0 - 1e-4):
             place, value = summit, max(there, value, key=abs)
     return solution._value(value, place, index)
-
-
-def _stationary(places: Floats, values: Floats) -> Floats | None:
-    """Top of the parabola through some values, if it lies among their places."""
-    centre, size = places.mean(axis=0), float(np.ptp(places, axis=0).max())
-    x, y = ((places - centre) / size).T
-    terms = np.column_stack([np.ones_like(x), x, y, x * x, x * y, y * y])
-    _, gx, gy, xx, xy, yy = np.linalg.lstsq(terms, values, rcond=None)[0]
-    curvature = np.array([[2 * xx, xy], [xy, 2 * yy]])
-    if np.linalg.det(curvature) <= 1e-6 * np.abs(curvature).max() ** 2:
-        return None
-    step = np.linalg.solve(curvature, [-gx, -gy])
-    return centre + size * step if np.abs(step).max() < 0.5 else None
 
 
 def _peak_von_mises(solution: Solution, index: int) -> Value:
@@ -476,29 +463,3 @@ def _largest(value: Value) -> float:
 
 def _magnitude(value: Value) -> float:
     return abs(value.value)
-
-
-def _outside(points: Floats, discs: list[Excluded], share: float) -> Floats:
-    """Points outside all discs shrunk to a share of their radius."""
-    out = np.ones(len(points), dtype=bool)
-    for disc in discs:
-        out &= np.hypot(*(points - disc.place).T) >= share * disc.radius
-    return out
-
-
-def _rim(mesh: Mesh, disc: Excluded) -> Floats:
-    """Points of a disc's rim on the plate, its ends on boundary edges included."""
-    angle = np.linspace(0.0, 2.0 * np.pi, RIM_SAMPLES, endpoint=False)
-    rim = disc.place + disc.radius * np.column_stack([np.cos(angle), np.sin(angle)])
-    start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
-    arm, step = start - disc.place, end - start
-    a = np.einsum("kc,kc->k", step, step)
-    b = np.einsum("kc,kc->k", arm, step)
-    c = np.einsum("kc,kc->k", arm, arm) - disc.radius**2
-    root = np.sqrt(np.maximum(b * b - a * c, 0.0))
-    ends = []
-    for t in ((-b - root) / a, (-b + root) / a):
-        hit = (b * b > a * c) & (t >= 0.0) & (t <= 1.0)
-        ends.append(start[hit] + t[hit, None] * step[hit])
-    points = np.concatenate([rim, *ends])
-    return points[mesh.covers(points)]

@@ -30,7 +30,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"assembly"},
     {"solve"},
     {"recovery"},
-    {"stations"},
+    {"stations", "rims"},
     {"reactions"},
     {"solution"},
     {"adapt"},
