@@ -12,7 +12,7 @@ RIM_SAMPLES = 64  # points on the rim of an excluded disc
 
 
 def outside(points: Floats, discs: Sequence[Excluded], share: float) -> Bools:
-    """Which points (k, 2) lie outside all discs shrunk to a share of their radius, (k,)."""
+    """Tell which points (k, 2) lie outside all discs, shrunk by a share, (k,)."""
     out = np.ones(len(points), dtype=bool)
     for disc in discs:
         out &= np.hypot(*(points - disc.place).T) >= share * disc.radius
