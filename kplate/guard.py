@@ -1,7 +1,7 @@
-"""Meshing in a process of its own, with a limit of time.
+"""Gmsh in a process of its own, with a limit of time.
 
 Plain outlines are proven clean before Gmsh sees them. Where zones, seams and marks are
-fragmented, or a drawing is read, nobody can prove that Gmsh comes back; it then works
+fragmented, or a STEP file is read, nobody can prove that Gmsh comes back; it then works
 in a second process, which is killed by its number when its time is up.
 """
 
@@ -9,16 +9,22 @@ import os
 import pickle
 import subprocess
 import sys
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
+from pathlib import Path
+from typing import Any
 
+from kplate.drawings import Drawing
 from kplate.errors import InputError, KplateError, MeshError
 from kplate.mesh import Mesh
 from kplate.meshing import Place, mesh_outline
 from kplate.outline import Outline
+from kplate.polygon import Chords
+from kplate.step import read_step
 
 # Gmsh makes a million triangles in about 40 s; what takes longer than this is stuck.
 SECONDS = 300.0
 _ERRORS = {"InputError": InputError, "MeshError": MeshError}
+_JOBS: dict[str, Callable[..., Any]] = {"mesh": mesh_outline, "step": read_step}
 
 
 def mesh_guarded(
@@ -47,7 +53,45 @@ def mesh_guarded(
     InputError, MeshError
         As in `mesh_outline`; MeshError too where the time is up or the process dies.
     """
-    job = pickle.dumps((outline, size, tuple(fine), tuple(graded)))
+    options = {"size": size, "fine": tuple(fine), "graded": tuple(graded)}
+    what = f"meshing at size {size:g} m"
+    mesh: Mesh = _guarded("mesh", (outline, options), seconds, what)
+    return mesh
+
+
+def read_step_guarded(
+    path: Path,
+    *,
+    unit: str | None = None,
+    snap: float | None = None,
+    chords: Chords = "ask",
+    seconds: float = SECONDS,
+) -> Drawing:
+    """Read a STEP file in a second process.
+
+    Parameters
+    ----------
+    path, unit, snap, chords
+        As in `kplate.step.read_step`.
+    seconds : float
+        How long it may take.
+
+    Returns
+    -------
+    Drawing
+
+    Raises
+    ------
+    InputError, MeshError
+        As in `read_step`; MeshError too where the time is up or the process dies.
+    """
+    options = {"unit": unit, "snap": snap, "chords": chords}
+    drawing: Drawing = _guarded("step", (path, options), seconds, f"reading {path}")
+    return drawing
+
+
+def _guarded(job: str, given: tuple[Any, Any], seconds: float, what: str) -> Any:
+    """Have a job done by a second process."""
     command = [sys.executable, "-c", "from kplate.guard import work; work()"]
     pipe = subprocess.PIPE
     own = {**os.environ, "PYTHONPATH": os.pathsep.join(filter(None, sys.path))}
@@ -55,34 +99,36 @@ def mesh_guarded(
         command, stdin=pipe, stdout=pipe, stderr=pipe, env=own
     ) as worker:
         try:
-            answer, complaint = worker.communicate(job, timeout=seconds)
+            answer, said = worker.communicate(pickle.dumps((job, given)), seconds)
         except subprocess.TimeoutExpired as error:
             raise MeshError(
-                f"Gmsh did not come back within {seconds:g} s at size {size:g} m; draw "
-                "what nearly touches apart, or ask for fewer triangles."
+                f"Gmsh did not come back within {seconds:g} s, {what}; draw what "
+                "nearly touches apart, or ask for fewer triangles."
             ) from error
         finally:
             worker.kill()
     try:
         kind, content = pickle.loads(answer)
     except (pickle.UnpicklingError, EOFError) as error:
-        last = complaint.decode(errors="replace").strip().rpartition("\n")[2]
+        last = said.decode(errors="replace").strip().rpartition("\n")[2]
         raise MeshError(
-            f"the second process ended without a mesh at size {size:g} m (status "
+            f"the second process ended without an answer, {what} (status "
             f"{worker.returncode}{': ' * bool(last)}{last}); please report the outline."
         ) from error
-    if kind != "mesh":
+    if kind != "done":
         raise _ERRORS.get(kind, MeshError)(content)
-    mesh: Mesh = content
-    return mesh
+    return content
 
 
 def work() -> None:
     """Do the second process's part: a job from stdin, the answer to stdout."""
-    outline, size, fine, graded = pickle.load(sys.stdin.buffer)
-    answer: tuple[str, object]
+    # What Gmsh's own libraries print must not get between the bytes of the answer.
+    out = os.fdopen(os.dup(1), "wb")
+    os.dup2(2, 1)
+    job, (subject, options) = pickle.load(sys.stdin.buffer)
     try:
-        answer = ("mesh", mesh_outline(outline, size=size, fine=fine, graded=graded))
+        answer: tuple[str, object] = ("done", _JOBS[job](subject, **options))
     except KplateError as error:
         answer = (type(error).__name__, str(error))
-    sys.stdout.buffer.write(pickle.dumps(answer))
+    with out:
+        out.write(pickle.dumps(answer))

@@ -8,11 +8,11 @@ from typing import Any, cast
 from kplate.drawings import Drawing
 from kplate.dxf import read_dxf
 from kplate.fields import Fields, within
+from kplate.guard import read_step_guarded
 from kplate.meshfiles import read_mesh
 from kplate.outline import Outline
 from kplate.polygon import Chords
 from kplate.shapes import Circle
-from kplate.step import read_step
 from kplate.tracing import outline_of
 from kplate.vertices import read_csv
 
@@ -102,8 +102,8 @@ def _mesh_drawing(path: Path, unit: str, **options: Any) -> Drawing:
 
 _READERS: dict[str, Callable[..., Drawing]] = {
     ".dxf": read_dxf,
-    ".step": read_step,
-    ".stp": read_step,
+    ".step": read_step_guarded,
+    ".stp": read_step_guarded,
     ".csv": read_csv,
     ".msh": _mesh_drawing,
 }

@@ -7,7 +7,7 @@ import pytest
 
 from kplate.arrays import read_only_floats
 from kplate.errors import InputError, MeshError
-from kplate.guard import mesh_guarded
+from kplate.guard import mesh_guarded, read_step_guarded
 from kplate.meshing import mesh_outline
 from kplate.outline import Outline
 from kplate.shapes import Circle
@@ -37,8 +37,8 @@ def test_the_time_limit_is_said():
     with pytest.raises(MeshError) as caught:
         mesh_guarded(outline, size=0.05, seconds=0.01)
     assert str(caught.value) == (
-        "Gmsh did not come back within 0.01 s at size 0.05 m; draw what nearly touches "
-        "apart, or ask for fewer triangles."
+        "Gmsh did not come back within 0.01 s, meshing at size 0.05 m; draw what "
+        "nearly touches apart, or ask for fewer triangles."
     )
 
 
@@ -61,3 +61,15 @@ def test_errors_come_back_as_they_were_raised():
     outline = Outline.polygon([(0, 0), (1, 0), (1, 1), (0, 1)])
     with pytest.raises(InputError, match="the mesh size is -1 m"):
         mesh_guarded(outline, size=-1.0)
+
+
+def test_a_step_file_is_read_by_the_second_process(tmp_path):
+    path = tmp_path / "nowhere.step"
+    with pytest.raises(InputError, match=r"nowhere\.step"):
+        read_step_guarded(path)
+    damaged = tmp_path / "damaged.step"
+    damaged.write_text("ISO-10303-21; HEADER; ENDSEC; DATA; #1=; ENDSEC;", "utf-8")
+    with pytest.raises(InputError, match=r"damaged\.step"):
+        read_step_guarded(damaged)
+    with pytest.raises(MeshError, match=r"back within 0\.01 s, reading"):
+        read_step_guarded(damaged, seconds=0.01)
