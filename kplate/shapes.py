@@ -151,10 +151,7 @@ class Rectangle(Shape):
     def __post_init__(self) -> None:
         """Check the numbers."""
         what = f"rectangle {self.name!r}"
-        _put(self, "centre", as_pair(what, "centre", self.centre))
-        a, b = as_pair(what, "size", self.size)
-        _put(self, "size", (as_positive(what, "size", a), as_positive(what, "size", b)))
-        _put(self, "angle", as_number(what, "angle", self.angle))
+        a, b = _check_box(self, what)
         r = as_number(what, "corner radius", self.corner_radius)
         _put(self, "corner_radius", r)
         if not 0.0 <= r < 0.5 * min(a, b):
@@ -199,11 +196,7 @@ class Ellipse(Shape):
 
     def __post_init__(self) -> None:
         """Check the numbers."""
-        what = f"ellipse {self.name!r}"
-        _put(self, "centre", as_pair(what, "centre", self.centre))
-        a, b = as_pair(what, "size", self.size)
-        _put(self, "size", (as_positive(what, "size", a), as_positive(what, "size", b)))
-        _put(self, "angle", as_number(what, "angle", self.angle))
+        _check_box(self, f"ellipse {self.name!r}")
 
     @cached_property
     def line(self) -> Polygon:
@@ -228,6 +221,15 @@ def _placed(
         bulges=read_only_floats(bulges),
         chords="polygon",
     )
+
+
+def _check_box(shape: Rectangle | Ellipse, what: str) -> tuple[float, float]:
+    """Check centre, size and angle of a shape; return its two lengths."""
+    _put(shape, "centre", as_pair(what, "centre", shape.centre))
+    a, b = (as_positive(what, "size", c) for c in as_pair(what, "size", shape.size))
+    _put(shape, "size", (a, b))
+    _put(shape, "angle", as_number(what, "angle", shape.angle))
+    return a, b
 
 
 def _put(shape: object, key: str, value: object) -> None:

@@ -2,7 +2,6 @@
 
 import math
 
-import ezdxf
 import pytest
 
 from kplate.dxf import read_dxf
@@ -20,20 +19,6 @@ def lines(space, points, *, close=True, **attributes):
 
 def square(space, **attributes):
     lines(space, SQUARE, **attributes)
-
-
-@pytest.fixture
-def drawn(tmp_path):
-    """Make a DXF file by a function that draws in the model space; return its path."""
-
-    def make(draw, *, unit=4, version="R2010"):
-        document = ezdxf.new(version, units=unit)
-        draw(document.modelspace())
-        path = tmp_path / "drawing.dxf"
-        document.saveas(path)
-        return path
-
-    return make
 
 
 def refusal(read):

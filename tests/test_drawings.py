@@ -39,20 +39,6 @@ def square(space, **attributes):
     lines(space, SQUARE, **attributes)
 
 
-@pytest.fixture
-def drawn(tmp_path):
-    """Make a DXF file by a function that draws in the model space; return its path."""
-
-    def make(draw, *, unit=4, version="R2010"):
-        document = ezdxf.new(version, units=unit)
-        draw(document.modelspace())
-        path = tmp_path / "drawing.dxf"
-        document.saveas(path)
-        return path
-
-    return make
-
-
 def refusal(read):
     """The message with which something is refused."""
     with pytest.raises(InputError) as caught:
