@@ -1,10 +1,13 @@
 """Where a support word becomes held unknowns.
 
 At each vertex the supported edges that meet there hold directions in the space of the
-vertex's unknowns ``w, dw/dx, dw/dy``: w itself, the slope along the edge's tangent t,
-and on a clamped edge the slope along its normal n. The unknowns are turned into an
-orthonormal frame whose first directions are the held ones, and those are left out of
-the equations: no penalty numbers.
+vertex's unknowns, w and its slopes: w itself, the slope along the edge's tangent t, and
+where the slope is held that along its normal n. An element whose second derivatives are
+unknowns too holds ``w,tt`` and ``w,tn`` likewise: what is held along an edge has held
+derivatives along it. The unknowns are turned into a frame, orthonormal among those of
+one order, whose first directions are the held ones, and those are left out of the
+equations: no penalty numbers. Unknowns on the edges themselves are deflections, held
+where w is, and slopes along the normal, held where the slope is.
 
 Between sides held alike, a turn smaller than the plate's `bend_turn` is a bend with ONE
 tangent: two tangents there would hold both slopes and clamp a plate that is free to
@@ -18,6 +21,7 @@ import numpy as np
 
 from kplate.arrays import Bools, Floats, Ints
 from kplate.dofs import Numbering
+from kplate.elements.triangle import edge_normals
 from kplate.mesh import Mesh
 from kplate.plate import Plate
 
@@ -40,19 +44,29 @@ class Constraints:
         Columns: the orthonormal directions of each vertex's turned unknowns.
     held : ndarray, shape (k, p)
         Which of them are held at zero.
+    on_edges : ndarray, shape (m,)
+        Unknowns on edges that are held.
     """
 
     numbering: Numbering
     vertices: Ints
     frames: Floats
     held: Bools
+    on_edges: Ints
 
     @cached_property
     def free(self) -> Bools:
         """Which turned unknowns are free, (count,)."""
         free = np.ones(self.numbering.count, dtype=bool)
         free[self.numbering.at_vertices(self.vertices)] = ~self.held
+        free[self.on_edges] = False
         return free
+
+    @cached_property
+    def supported(self) -> Ints:
+        """Unknowns that supports may work on."""
+        own = self.numbering.at_vertices(self.vertices).ravel()
+        return np.concatenate([own, self.on_edges])
 
     def turn(self, values: Floats) -> Floats:
         """Turn forces or values (count, c) of the unknowns into the frames."""
@@ -77,7 +91,8 @@ def constrain(plate: Plate, numbering: Numbering) -> Constraints:
     plate : Plate
         The statement.
     numbering : Numbering
-        Unknowns, three at each vertex, on a mesh of the plate's outline.
+        Unknowns on a mesh of the plate's outline: at each vertex w alone, or w and its
+        slopes, or those and ``w,xx, w,xy, w,yy``.
 
     Returns
     -------
@@ -92,8 +107,20 @@ def constrain(plate: Plate, numbering: Numbering) -> Constraints:
     vertices = np.concatenate([own for own, _ in found])
     rows = np.concatenate([own for _, own in found])
     at, stacked = _stacked(vertices, rows)
-    frames, held = _frames(stacked)
-    return Constraints(numbering=numbering, vertices=at, frames=frames, held=held)
+    parts = [_frames(own) for own in _by_order(stacked, numbering.per_vertex)]
+    frames = np.zeros((len(at), numbering.per_vertex, numbering.per_vertex))
+    first = 0
+    for part, _ in parts:
+        own = slice(first, first + part.shape[-1])
+        frames[:, own, own] = part
+        first = own.stop
+    return Constraints(
+        numbering=numbering,
+        vertices=at,
+        frames=frames,
+        held=np.concatenate([held for _, held in parts], axis=1),
+        on_edges=_on_edges(plate, numbering),
+    )
 
 
 def turns(tangents: Floats) -> Floats:
@@ -115,7 +142,7 @@ def free_motions(constraints: Constraints) -> list[str]:
     mesh = constraints.numbering.mesh
     centre, size = mesh.points.mean(axis=0), float(np.ptp(mesh.points, axis=0).max())
     motions = _rigid(mesh, constraints.vertices, centre, size)  # (k, 3, motion)
-    frames = constraints.frames * constraints.held[:, None, :]
+    frames = (constraints.frames * constraints.held[:, None, :])[:, :3]
     held = frames @ frames.swapaxes(-1, -2) @ motions  # what the supports see of them
     held[:, 1:] *= size  # slopes count as much as deflections, whatever the size
     held = held.reshape(-1, 3)
@@ -124,9 +151,22 @@ def free_motions(constraints: Constraints) -> list[str]:
     return _name_motions(loose, centre, size)
 
 
-def rigid_motions(mesh: Mesh) -> Floats:
-    """Unknowns of the motions w = 1, x and y at every vertex, (n_points, 3, 3)."""
-    return _rigid(mesh, np.arange(len(mesh.points)), np.zeros(2), 1.0)
+def rigid_motions(numbering: Numbering) -> Floats:
+    """Unknowns of the motions w = 1, x and y, (count, 3).
+
+    For unknowns at vertices that are w, slopes and second derivatives, and slopes in
+    the middle of edges.
+    """
+    mesh = numbering.mesh
+    motions = np.zeros((numbering.count, 3))
+    own = _rigid(mesh, np.arange(len(mesh.points)), np.zeros(2), 1.0)
+    by_vertex = numbering.by_vertex(motions)  # a view
+    by_vertex[:, :3] = own
+    if numbering.per_edge:
+        normals = np.empty((len(mesh.edges), 2))
+        normals[mesh.triangle_edges] = edge_normals(mesh.points[mesh.triangles])
+        motions[numbering.on_edges(np.arange(len(normals)))[:, 0], 1:] = normals
+    return motions
 
 
 def _rigid(mesh: Mesh, vertices: Ints, centre: Floats, size: float) -> Floats:
@@ -185,7 +225,7 @@ def _seam_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
 
 def _mark_rows(plate: Plate, mesh: Mesh) -> tuple[Ints, Floats]:
     """Marked vertices and what is held there: w, or both slopes, or all."""
-    rows = np.zeros((len(mesh.mark_names), 3, 3))
+    rows = np.zeros((len(mesh.mark_names), 5, 6))
     for number, name in enumerate(mesh.mark_names):
         support = plate.support(name)
         rows[number, 0, 0] = support.holds_deflection
@@ -202,33 +242,81 @@ def _one_tangent(tangents: Floats, alike: Bools, limit: float) -> Floats:
 
 
 def _rows(tangent: Floats, holds: Bools, clamps: Bools) -> Floats:
-    """Directions one edge each holds at k vertices, zero where none, (k, 3, 3)."""
-    rows = np.zeros((len(tangent), 3, 3))
-    rows[:, 0, 0] = holds
-    rows[:, 1, 1:] = tangent * holds[:, None]
+    """Directions one edge each holds at k vertices, zero where none, (k, 5, 6).
+
+    They act on ``w, w,x, w,y, w,xx, w,xy, w,yy``.
+    """
+    rows = np.zeros((len(tangent), 5, 6))
     normal = np.column_stack([tangent[:, 1], -tangent[:, 0]])
-    rows[:, 2, 1:] = normal * clamps[:, None]
+    rows[:, 0, 0] = holds
+    rows[:, 1, 1:3] = tangent * holds[:, None]
+    rows[:, 2, 1:3] = normal * clamps[:, None]
+    rows[:, 3, 3:] = second_derivative(tangent, tangent) * holds[:, None]
+    rows[:, 4, 3:] = second_derivative(tangent, normal) * clamps[:, None]
     return rows
 
 
+def second_derivative(a: Floats, b: Floats) -> Floats:
+    """Row of ``w,xx, w,xy, w,yy`` that is the derivative along a and b, (k, 3)."""
+    return np.column_stack(
+        [a[:, 0] * b[:, 0], a[:, 0] * b[:, 1] + a[:, 1] * b[:, 0], a[:, 1] * b[:, 1]]
+    )
+
+
+def _on_edges(plate: Plate, numbering: Numbering) -> Ints:
+    """Unknowns on held edges that are held."""
+    mesh, deflections = numbering.mesh, numbering.edge_deflections
+    if not numbering.per_edge:
+        return np.empty(0, dtype=np.int64)
+    lines = [
+        (plate.support(name), mesh.boundary_edges[mesh.boundary_sides == number])
+        for number, name in enumerate(mesh.side_names)
+    ]
+    lines += [
+        (plate.support(name), mesh.seam_edges[mesh.seam_numbers == number])
+        for number, name in enumerate(mesh.seam_names)
+    ]
+    found = [np.empty(0, dtype=np.int64)]
+    for support, edges in lines:
+        own = numbering.on_edges(mesh.edge_numbers(edges))
+        if support.holds_deflection:
+            found.append(own[:, :deflections].ravel())
+        if support.holds_slope:
+            found.append(own[:, deflections:].ravel())
+    return np.unique(np.concatenate(found))
+
+
 def _stacked(vertices: Ints, rows: Floats) -> tuple[Ints, Floats]:
-    """Held vertices, each once, and all that is held there, (k, most rows, 3)."""
-    owners, flat = np.repeat(vertices, rows.shape[1]), rows.reshape(-1, 3)
+    """Held vertices, each once, and all that is held there, (k, most rows, 6)."""
+    owners, flat = np.repeat(vertices, rows.shape[1]), rows.reshape(-1, rows.shape[2])
     some = (flat != 0.0).any(axis=1)
     owners, flat = owners[some], flat[some]
     order = np.argsort(owners, kind="stable")
     owners, flat = owners[order], flat[order]
     at, first, counts = np.unique(owners, return_index=True, return_counts=True)
-    stacked = np.zeros((len(at), max(3, int(counts.max(initial=3))), 3))
+    stacked = np.zeros((len(at), int(counts.max(initial=1)), rows.shape[2]))
     within = np.arange(len(owners)) - np.repeat(first, counts)
     stacked[np.repeat(np.arange(len(at)), counts), within] = flat
     return at, stacked
 
 
+def _by_order(rows: Floats, count: int) -> list[Floats]:
+    """Rows cut into deflection, slopes and second derivatives, as far as they count.
+
+    No row mixes orders, whose units differ.
+    """
+    ends = (0, 1, 3, 6)
+    return [
+        rows[:, :, a:b] for a, b in zip(ends[:-1], ends[1:], strict=True) if b <= count
+    ]
+
+
 def _frames(rows: Floats) -> tuple[Floats, Bools]:
     """Orthonormal frames that begin with the row space, and what of them is held."""
-    _, strength, right = np.linalg.svd(rows)
-    held = strength > RANK_CUT * strength[:, :1]
+    k, _, p = rows.shape
+    padded = np.concatenate([rows, np.zeros((k, p, p))], axis=1)
+    _, strength, right = np.linalg.svd(padded, full_matrices=False)
+    held = strength > RANK_CUT * np.maximum(strength[:, :1], np.finfo(float).tiny)
     return right.swapaxes(-1, -2), held
 
 

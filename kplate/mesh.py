@@ -157,15 +157,18 @@ class Mesh:
 
     def triangles_at(self, edges: Ints) -> Ints:
         """One triangle at each edge (k, 2) given by its vertices, (k,)."""
-        n = len(self.points)
-        given = np.sort(edges, axis=1)
-        key = self.edges[:, 0] * n + self.edges[:, 1]
-        number = np.searchsorted(key, given[:, 0] * n + given[:, 1])
         owner = np.empty(len(self.edges), dtype=np.int64)
         owner[self.triangle_edges.ravel()] = np.repeat(
             np.arange(len(self.triangles)), 3
         )
-        return owner[number]
+        return owner[self.edge_numbers(edges)]
+
+    def edge_numbers(self, edges: Ints) -> Ints:
+        """Numbers in `edges` of edges (k, 2) given by their vertices, (k,)."""
+        n = len(self.points)
+        given = np.sort(edges, axis=1)
+        key = self.edges[:, 0] * n + self.edges[:, 1]
+        return np.searchsorted(key, given[:, 0] * n + given[:, 1])
 
     @cached_property
     def boundary_joints(self) -> Ints:

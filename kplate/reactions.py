@@ -186,7 +186,7 @@ def reactions(
     numbering, mesh = state.constraints.numbering, state.mesh
     nodal = numbering.by_vertex(state.support_forces)[:, :, index]  # (n_points, 3)
     loads = numbering.by_vertex(state.forces)[:, :, index]
-    motions = rigid_motions(mesh)
+    motions = numbering.by_vertex(rigid_motions(numbering))
     found = _corner_forces(state, smoothed, index)
     rest = nodal.copy()
     for corner_force, vertex in found:

@@ -136,7 +136,7 @@ def element_moments(state: StaticState, barycentrics: Floats) -> Floats:
         B = state.element.curvature(vertices, barycentrics)
         n, q, _, d = B.shape
         bent = assembly.without_rigid_motion(
-            state.unknowns[table[block]], vertices, state.element.per_vertex
+            state.unknowns[table[block]], vertices, state.constraints.numbering
         )
         strain = B.reshape(n, 3 * q, d) @ bent
         rigidity = state.plate.rigidities[mesh.zones[block]]

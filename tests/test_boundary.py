@@ -11,6 +11,7 @@ from plates import SIDES, grid, rectangle
 
 from kplate.boundary import Constraints, constrain, free_motions, rigid_motions, turns
 from kplate.dofs import Numbering
+from kplate.elements.triangle import edge_normals
 from kplate.materials import STEEL
 from kplate.mesh import Mesh
 from kplate.outline import Outline
@@ -369,6 +370,7 @@ def test_a_single_point_leaves_the_tilts_about_it():
         vertices=np.array([5]),
         frames=np.eye(3)[None],
         held=np.array([[True, False, False]]),
+        on_edges=np.empty(0, dtype=int),
     )
     x, y = mesh.points[5]
     assert (
@@ -380,7 +382,13 @@ def test_a_single_point_leaves_the_tilts_about_it():
 def test_rigid_motions_have_the_unknowns_of_their_plane(plane):
     """A plane a + b x + c y has the slopes b and c everywhere."""
     mesh = grid(2, a=3.0)
-    found = rigid_motions(mesh) @ plane
+    numbering = Numbering(mesh=mesh, per_vertex=6, per_edge=1)
+    motions = rigid_motions(numbering) @ plane
     a, b, c = plane
+    found = numbering.by_vertex(motions)[..., 0]
     np.testing.assert_allclose(found[:, 0], a + mesh.points @ (b, c), atol=1e-14)
-    np.testing.assert_allclose(found[:, 1:], np.tile((b, c), (9, 1)), atol=1e-14)
+    np.testing.assert_allclose(found[:, 1:3], np.tile((b, c), (9, 1)), atol=1e-14)
+    np.testing.assert_allclose(found[:, 3:], 0.0, atol=1e-14)
+    normals = edge_normals(mesh.points[mesh.triangles])
+    own = numbering.on_edges(mesh.triangle_edges)[..., 0]
+    np.testing.assert_allclose(motions[own], normals @ (b, c), atol=1e-14)

@@ -6,9 +6,11 @@ new one is one file and one line here, and must pass the contract tests.
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from typing import Any
 
 from kplate.arrays import Floats
-from kplate.elements import dkt, hct
+from kplate.elements import dkt, hct, quintic
+from kplate.elements.piecewise import Piecewise
 from kplate.elements.triangle import Geometry
 from kplate.quadrature import Rule
 
@@ -22,37 +24,72 @@ class Element:
     name : str
         Its name in words.
     per_vertex, per_edge : int
-        Unknowns at each vertex (w and its derivatives first) and on each edge.
+        Unknowns at each vertex (w and its slopes, then ``w,xx, w,xy, w,yy``) and on
+        each edge (the slope at its middle along `triangle.edge_normals`).
     degree : int
         Polynomials up to this degree are in its space on any mesh.
+    curvature_degree : int
+        Degree of the curvatures on each piece.
     conforming : bool
         Whether w is C1, so that its energy is a bound.
     rule, load_rule : Rule
-        Quadrature of the stiffness and of loads.
+        Quadrature of the stiffness; of loads, mass and geometric stiffness.
     pieces : ndarray, shape (s, 3, 3)
         Barycentric vertices of the pieces on which w is one polynomial.
     stiffness : callable
         (geometry with `rule`, rigidity (n, q, 3, 3)) to (n, d, d).
     load : callable
         (geometry with `load_rule`, pressure (n, q)) to (n, d).
+    mass : callable
+        (geometry with `load_rule`, mass per area (n, q)) to (n, d, d).
+    geometric : callable
+        (geometry with `load_rule`, in-plane forces (n, q, 3)) to (n, d, d).
     evaluate : callable
-        (vertices, barycentrics (n, q, 3)) to the rows of w and slopes (n, q, 3, d).
+        (vertices, barycentrics (q, 3) or (n, q, 3)) to the rows of w and slopes
+        (n, q, 3, d).
     curvature : callable
         (vertices, barycentrics (q, 3) or (n, q, 3)) to (n, q, 3, d).
+    third_derivatives : callable
+        The same to the derivatives of the curvatures by x and y, (n, q, 2, 3, d); of
+        those of the deflection where the element is not conforming.
     """
 
     name: str
     per_vertex: int
     per_edge: int
     degree: int
+    curvature_degree: int
     conforming: bool
     rule: Rule
     load_rule: Rule
     pieces: Floats
     stiffness: Callable[[Geometry, Floats], Floats]
     load: Callable[[Geometry, Floats], Floats]
+    mass: Callable[[Geometry, Floats], Floats]
+    geometric: Callable[[Geometry, Floats], Floats]
     evaluate: Callable[[Floats, Floats], Floats]
     curvature: Callable[[Floats, Floats], Floats]
+    third_derivatives: Callable[[Floats, Floats], Floats]
+
+
+def _conforming(shape: Piecewise, **named: Any) -> Element:
+    """An element of C1 polynomials, all of whose parts follow from them."""
+    return Element(
+        degree=shape.degree,
+        curvature_degree=shape.degree - 2,
+        conforming=True,
+        rule=shape.rule,
+        load_rule=shape.load_rule,
+        pieces=shape.pieces,
+        stiffness=shape.stiffness,
+        load=shape.load,
+        mass=shape.mass,
+        geometric=shape.geometric,
+        evaluate=shape.evaluate,
+        curvature=shape.curvature,
+        third_derivatives=shape.third_derivatives,
+        **named,
+    )
 
 
 ELEMENTS = {
@@ -61,13 +98,23 @@ ELEMENTS = {
         per_vertex=3,
         per_edge=0,
         degree=2,
+        curvature_degree=1,
         conforming=False,
         rule=dkt.RULE,
-        load_rule=hct.LOAD_RULE,
+        load_rule=hct.REDUCED.load_rule,
         pieces=hct.PIECES,
         stiffness=dkt.stiffness,
-        load=hct.load,
-        evaluate=hct.evaluate,
+        load=hct.REDUCED.load,
+        mass=hct.REDUCED.mass,
+        geometric=hct.REDUCED.geometric,
+        evaluate=hct.REDUCED.evaluate,
         curvature=dkt.curvature,
+        third_derivatives=hct.REDUCED.third_derivatives,
+    ),
+    "hct": _conforming(
+        hct.HCT, name="Hsieh-Clough-Tocher triangle", per_vertex=3, per_edge=1
+    ),
+    "quintic": _conforming(
+        quintic.QUINTIC, name="C1 quintic triangle of Argyris", per_vertex=6, per_edge=1
     ),
 }

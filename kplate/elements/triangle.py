@@ -50,3 +50,27 @@ def barycentric_gradients(vertices: Floats) -> Floats:
         gradients[:, k, 0] = -edge[:, 1]
         gradients[:, k, 1] = edge[:, 0]
     return gradients / (2.0 * area(vertices))[:, None, None]
+
+
+def edge_senses(vertices: Floats) -> Floats:
+    """Sense in which each edge's own unknowns count, (n, 3), 1 or -1.
+
+    An edge runs from its end of smaller x, or of smaller y where x is the same: so do
+    both triangles that share it see it, whatever their own numbers are. The sense is 1
+    where edge k of the triangle runs that way from vertex k + 1 to vertex k + 2.
+    """
+    senses = np.empty(vertices.shape[:2])
+    for k, (i, j) in enumerate(EDGES):
+        x, y = (vertices[:, j] - vertices[:, i]).T
+        senses[:, k] = np.where((x > 0.0) | ((x == 0.0) & (y > 0.0)), 1.0, -1.0)
+    return senses
+
+
+def edge_normals(vertices: Floats) -> Floats:
+    """Unit normals (n, 3, 2) on the right of each edge, run as `edge_senses` says."""
+    normals = np.empty(vertices.shape)
+    for k, (i, j) in enumerate(EDGES):
+        edge = vertices[:, j] - vertices[:, i]
+        normals[:, k, 0], normals[:, k, 1] = edge[:, 1], -edge[:, 0]
+    lengths = np.hypot(normals[..., 0], normals[..., 1])
+    return normals * (edge_senses(vertices) / lengths)[..., None]

@@ -6,7 +6,7 @@ from functools import cached_property
 
 import numpy as np
 
-from kplate import assembly
+from kplate import assembly, loading
 from kplate.arrays import Floats
 from kplate.boundary import Constraints, constrain, free_motions
 from kplate.dofs import Numbering
@@ -125,7 +125,7 @@ def solve_static(
         )
     report("loads", 0.1)
     forces = np.column_stack(
-        [assembly.load_vector(plate, chosen, numbering, case.loads) for case in cases]
+        [loading.load_vector(plate, chosen, numbering, case.loads) for case in cases]
     )
     report("stiffness", 0.2)
     matrix = assembly.stiffness(plate, chosen, constraints)
@@ -180,15 +180,14 @@ def _support_forces(
     unknowns: Floats,
     forces: Floats,
 ) -> Floats:
-    """Residual at the supported vertices, zero elsewhere, (count, c)."""
+    """Residual at the supported unknowns, zero elsewhere, (count, c)."""
     numbering = constraints.numbering
-    supported = np.zeros(len(numbering.mesh.points), dtype=bool)
-    supported[constraints.vertices] = True
-    near = np.flatnonzero(supported[numbering.mesh.triangles].any(axis=1))
+    supported = np.zeros(numbering.count, dtype=bool)
+    supported[constraints.supported] = True
+    near = np.flatnonzero(supported[numbering.table].any(axis=1))
     inner = assembly.internal_forces(plate, element, numbering, unknowns, near)
-    own = numbering.at_vertices(constraints.vertices).ravel()
     result = np.zeros_like(forces)
-    result[own] = inner[own] - forces[own]
+    result[supported] = inner[supported] - forces[supported]
     return result
 
 

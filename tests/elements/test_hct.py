@@ -32,7 +32,7 @@ def between(start, end):
 
 def jet(X, barycentrics, u):
     """Deflection, and slopes times the size, at points (q, 3)."""
-    rows = hct.evaluate(X[None], barycentrics[None])[0]
+    rows = hct.REDUCED.evaluate(X[None], barycentrics[None])[0]
     return rows @ u * [1.0, size_of(X), size_of(X)]
 
 
@@ -40,7 +40,7 @@ def piece_jet(X, k, barycentrics, u):
     """The same from the ordinates of piece k, wherever the points (q, 3) lie."""
     corners = hct.PIECES[k] @ X
     local = barycentrics @ np.linalg.inv(hct.PIECES[k])
-    ordinates = hct.ordinates(X[None])[0, k] @ u
+    ordinates = hct.reduced_ordinates(X[None])[0, k] @ u
     slopes = (
         bernstein.gradients(3, local)
         @ ordinates
@@ -116,8 +116,10 @@ def test_uniform_pressure_on_an_equilateral_triangle_loads_its_vertices_evenly()
     """By symmetry a third each, with equal couples towards the centroid."""
     angles = 2.0 * np.pi * np.arange(3) / 3.0
     X = np.column_stack([np.cos(angles), np.sin(angles)])
-    geometry = Geometry(vertices=X[None], rule=hct.LOAD_RULE)
-    f = hct.load(geometry, np.ones((1, len(hct.LOAD_RULE.weights))))[0].reshape(3, 3)
+    geometry = Geometry(vertices=X[None], rule=hct.REDUCED.load_rule)
+    f = hct.REDUCED.load(geometry, np.ones((1, len(hct.REDUCED.load_rule.weights))))[
+        0
+    ].reshape(3, 3)
     np.testing.assert_allclose(f[:, 0], area(X[None])[0] / 3.0, rtol=1e-13)
     inward, around = -X, np.column_stack([X[:, 1], -X[:, 0]])
     couples = np.einsum("vc,vc->v", f[:, 1:], inward)

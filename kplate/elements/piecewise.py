@@ -1,0 +1,226 @@
+"""Elements whose deflection is one Bernstein polynomial on each piece of a triangle.
+
+The element says which pieces there are and how its unknowns give the ordinates on each;
+everything else follows: values and slopes, curvatures, and the integrals of stiffness,
+loads, mass and geometric stiffness.
+
+Axes: n triangles, s pieces, k ordinates, d unknowns, q points.
+"""
+
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from kplate.arrays import Bools, Floats
+from kplate.elements import bernstein
+from kplate.elements.triangle import Geometry, area, barycentric_gradients
+from kplate.quadrature import Rule, composite, triangle_rule
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Piecewise:
+    """A deflection of one polynomial a piece.
+
+    Parameters
+    ----------
+    degree : int
+        Of the polynomials.
+    pieces : ndarray, shape (s, 3, 3)
+        Barycentric vertices of the pieces in the triangle.
+    ordinates : callable
+        Vertices (n, 3, 2) to the matrices (n, s, k, d) that turn unknowns into the
+        ordinates of each piece.
+    """
+
+    degree: int
+    pieces: Floats
+    ordinates: Callable[[Floats], Floats]
+
+    @cached_property
+    def rule(self) -> Rule:
+        """Quadrature of the stiffness, exact where the rigidity is constant."""
+        return composite(self.pieces, triangle_rule(2 * self.degree - 4))
+
+    @cached_property
+    def load_rule(self) -> Rule:
+        """Quadrature of loads and masses: exact for two deflections multiplied."""
+        return composite(self.pieces, triangle_rule(2 * self.degree))
+
+    def evaluate(self, vertices: Floats, barycentrics: Floats) -> Floats:
+        """Deflection and slopes at points (q, 3) or (n, q, 3) of triangles (n, 3, 2).
+
+        Returns (n, q, 3, d): the rows that turn unknowns into w, dw/dx, dw/dy.
+        """
+        C = self.ordinates(vertices)
+        shape = np.broadcast_shapes(barycentrics.shape, (len(C), 1, 1))
+        result = np.zeros((*shape[:-1], 3, C.shape[-1]))
+        for k, local, own in self._parts(barycentrics):
+            g = self._gradients(vertices, k)
+            by = bernstein.gradients(self.degree, local)
+            rows = np.empty((*shape[:-1], 3, C.shape[2]))
+            rows[:, :, 0] = bernstein.values(self.degree, local)
+            rows[:, :, 1:] = g.swapaxes(-1, -2)[:, None] @ by
+            result += (rows * own[..., None, None]) @ C[:, None, k]
+        return result
+
+    def curvature(self, vertices: Floats, barycentrics: Floats) -> Floats:
+        """Curvatures ``w,xx, w,yy, 2 w,xy`` at points of triangles (n, 3, 2).
+
+        Barycentrics (q, 3), the same in every triangle, or (n, q, 3); returns
+        (n, q, 3, d).
+        """
+        C = self.ordinates(vertices)
+        shape = np.broadcast_shapes(barycentrics.shape, (len(C), 1, 1))
+        result = np.zeros((*shape[:-1], 3, C.shape[-1]))
+        for k, local, own in self._parts(barycentrics):
+            bends = curvature_of_pairs(self._gradients(vertices, k))
+            by = bernstein.hessians(self.degree, local) * own[..., None, None]
+            result += (bends[:, None] @ by) @ C[:, None, k]
+        return result
+
+    def third_derivatives(self, vertices: Floats, barycentrics: Floats) -> Floats:
+        """Derivatives of the curvatures by x and y at points of triangles (n, 3, 2).
+
+        Barycentrics (q, 3) or (n, q, 3); returns (n, q, 2, 3, d): by x, then by y, of
+        ``w,xx, w,yy, 2 w,xy``.
+        """
+        C = self.ordinates(vertices)
+        shape = np.broadcast_shapes(barycentrics.shape, (len(C), 1, 1))
+        result = np.zeros((*shape[:-1], 2, 3, C.shape[-1]))
+        for k, local, own in self._parts(barycentrics):
+            g = self._gradients(vertices, k)
+            bends = curvature_of_pairs(g)
+            by = bernstein.hessian_gradients(self.degree, local)
+            by = by * own[..., None, None, None]  # (n, q, 3, 6, k)
+            bent = bends[:, None, None] @ by
+            rows = np.einsum("nvc,...nqvak->nqcak", g, _whole(bent, shape))
+            result += rows @ C[:, None, None, k]
+        return result
+
+    def stiffness(self, geometry: Geometry, rigidity: Floats) -> Floats:
+        """Element stiffness matrices.
+
+        `geometry` has the rule `rule`; rigidity (n, q, 3, 3) in N m; returns (n, d, d).
+        A rigidity that is one array broadcast over the points takes the closed form.
+        """
+        vertices = geometry.vertices
+        if rigidity.strides[1] == 0:
+            return self._uniform_stiffness(vertices, rigidity[:, 0])
+        B = self.curvature(vertices, geometry.rule.points)
+        n, q, _, d = B.shape
+        weights = area(vertices)[:, None] * geometry.rule.weights
+        weighted = (rigidity @ B) * weights[..., None, None]
+        return B.reshape(n, 3 * q, d).swapaxes(1, 2) @ weighted.reshape(n, 3 * q, d)
+
+    def _uniform_stiffness(self, vertices: Floats, rigidity: Floats) -> Floats:
+        """Stiffness for a rigidity (n, 3, 3) through the table of products."""
+        C, n = self.ordinates(vertices), len(vertices)
+        count = C.shape[2]
+        areas = area(vertices)
+        total = np.zeros((n, C.shape[-1], C.shape[-1]))
+        for k, share in enumerate(self._shares):
+            T = curvature_of_pairs(self._gradients(vertices, k))
+            S = T.swapaxes(1, 2) @ rigidity @ T * (share * areas)[:, None, None]
+            own = S.reshape(n, 36) @ bernstein.bendings(self.degree)
+            own = own.reshape(n, count, count)
+            total += C[:, k].swapaxes(1, 2) @ own @ C[:, k]
+        return total
+
+    def load(self, geometry: Geometry, pressure: Floats) -> Floats:
+        """Consistent loads of a pressure.
+
+        `geometry` has the rule `load_rule`; pressure (n, q) in Pa at its points,
+        positive up; returns (n, d): what works on each unknown.
+        """
+        rule, C = geometry.rule, self.ordinates(geometry.vertices)
+        forces = pressure * area(geometry.vertices)[:, None] * rule.weights
+        total = np.zeros((len(C), C.shape[-1]))
+        for k, local, own in self._parts(rule.points):
+            shape = bernstein.values(self.degree, local) * own[:, None]
+            total += np.einsum("nk,nkd->nd", forces @ shape, C[:, k], optimize=True)
+        return total
+
+    def mass(self, geometry: Geometry, density: Floats) -> Floats:
+        """Consistent masses of w alone; rotary inertia is left out.
+
+        `geometry` has the rule `load_rule`; density (n, q) in kg/m2 at its points;
+        returns (n, d, d).
+        """
+        rule, C = geometry.rule, self.ordinates(geometry.vertices)
+        weighted = density * area(geometry.vertices)[:, None] * rule.weights
+        total = np.zeros((len(C), C.shape[-1], C.shape[-1]))
+        for k, local, own in self._parts(rule.points):
+            shape = bernstein.values(self.degree, local) * own[:, None]
+            total += _congruent(weighted, shape[:, :, None] * shape[:, None], C[:, k])
+        return total
+
+    def geometric(self, geometry: Geometry, forces: Floats) -> Floats:
+        """Geometric stiffness of in-plane forces: the work of their pull on the slopes.
+
+        `geometry` has the rule `load_rule`; forces n_xx, n_yy, n_xy (n, q, 3) in N/m at
+        its points, tension positive; returns (n, d, d), the integral of
+        ``n_xx w,x v,x + n_yy w,y v,y + n_xy (w,x v,y + w,y v,x)``.
+        """
+        rule, vertices = geometry.rule, geometry.vertices
+        C = self.ordinates(vertices)
+        weights = area(vertices)[:, None] * rule.weights
+        tensor = forces[..., [0, 2, 2, 1]].reshape(*forces.shape[:2], 2, 2)
+        total = np.zeros((len(C), C.shape[-1], C.shape[-1]))
+        for k, local, own in self._parts(rule.points):
+            g = self._gradients(vertices, k)[:, None]
+            pulls = g @ tensor @ g.swapaxes(-1, -2) * weights[..., None, None]
+            by = bernstein.gradients(self.degree, local) * own[:, None, None]
+            products = by[:, :, None, :, None] * by[:, None, :, None, :]
+            total += _congruent(
+                pulls.reshape(len(C), -1),
+                products.reshape(-1, *products.shape[-2:]),
+                C[:, k],
+            )
+        return total
+
+    @cached_property
+    def _shares(self) -> Floats:
+        """Share of the area that each piece has."""
+        shares: Floats = np.abs(np.linalg.det(self.pieces))
+        return shares
+
+    def _gradients(self, vertices: Floats, k: int) -> Floats:
+        """Gradients (n, 3, 2) of the barycentrics of piece k."""
+        if len(self.pieces) == 1:
+            return barycentric_gradients(vertices)
+        return barycentric_gradients(self.pieces[k] @ vertices)
+
+    def _parts(self, barycentrics: Floats) -> Iterator[tuple[int, Floats, Bools]]:
+        """Each piece, the points' barycentrics in it, and which of them it holds."""
+        if len(self.pieces) == 1:
+            yield 0, barycentrics, np.ones(barycentrics.shape[:-1], dtype=bool)
+            return
+        local = [barycentrics @ np.linalg.inv(piece) for piece in self.pieces]
+        holder = np.argmax([own.min(axis=-1) for own in local], axis=0)
+        for k, own in enumerate(local):
+            yield k, own, holder == k
+
+
+def curvature_of_pairs(gradients: Floats) -> Floats:
+    """Turn derivatives by `bernstein.PAIRS` into ``w,xx, w,yy, 2 w,xy``, (n, 3, 6)."""
+    T = np.empty((len(gradients), 3, len(bernstein.PAIRS)))
+    for pair, (a, b) in enumerate(bernstein.PAIRS):
+        (ax, ay), (bx, by) = gradients[:, a].T, gradients[:, b].T
+        twice = 1.0 if a == b else 2.0  # each mixed pair stands for two
+        T[:, 0, pair], T[:, 1, pair] = twice * ax * bx, twice * ay * by
+        T[:, 2, pair] = twice * (ax * by + ay * bx)
+    return T
+
+
+def _whole(rows: Floats, shape: tuple[int, ...]) -> Floats:
+    """Rows (n or 1, q, ...) for every triangle and point of a shape (n, q, 3)."""
+    return np.broadcast_to(rows, (*shape[:2], *rows.shape[2:]))
+
+
+def _congruent(weights: Floats, products: Floats, C: Floats) -> Floats:
+    """``C^T (sum over q of weights (n, q) times products (q, k, k)) C``."""
+    q, count, _ = products.shape
+    own = (weights @ products.reshape(q, -1)).reshape(-1, count, count)
+    return C.swapaxes(1, 2) @ own @ C

@@ -1,0 +1,304 @@
+"""Load vectors: what loads bring to the unknowns, through the shape functions.
+
+A pressure is integrated by the element's own rule, a patch over the parts of triangles
+it covers, a line along edges, a point where it is. Triangles go through in blocks,
+which bounds the memory.
+"""
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from kplate import cutting
+from kplate.arrays import Floats, Ints
+from kplate.dofs import Numbering, add_up
+from kplate.elements import Element
+from kplate.elements.triangle import Geometry
+from kplate.errors import InputError
+from kplate.loads import (
+    DiscPatch,
+    EdgeMoment,
+    Hydrostatic,
+    LineForce,
+    Load,
+    PointForce,
+    PointMoment,
+    Pressure,
+    PressureField,
+    RectanglePatch,
+    SelfWeight,
+)
+from kplate.mesh import Mesh
+from kplate.plate import Plate
+from kplate.quadrature import gauss
+
+BLOCK = 1024  # triangles
+# Share of a patch that may be missing, as round-off, before it is off the plate.
+MISSING = 1e-9
+
+
+def load_vector(
+    plate: Plate, element: Element, numbering: Numbering, loads: Sequence[Load]
+) -> Floats:
+    """Consistent forces on all unknowns, (count,).
+
+    Raises
+    ------
+    InputError
+        If a patch or point force is not on the plate, a self-weight has no density, or
+        a pressure function does not return finite numbers of the right shape.
+    """
+    forces = np.zeros((numbering.count, 1))
+    for load in loads:
+        match load:
+            case RectanglePatch() | DiscPatch():
+                _add_patch(forces, element, numbering, load)
+            case PointForce() | PointMoment():
+                _add_point(forces, element, numbering, load)
+            case LineForce() | EdgeMoment():
+                _add_line(forces, element, numbering, load)
+            case _:
+                _add_pressure(forces, element, numbering, plate, load)
+    return forces[:, 0]
+
+
+def _add_pressure(
+    forces: Floats, element: Element, numbering: Numbering, plate: Plate, load: Load
+) -> None:
+    mesh = numbering.mesh
+    rule = element.load_rule
+    chosen = np.arange(len(mesh.triangles))
+    if isinstance(load, Pressure) and load.zone is not None:
+        chosen = _zone_triangles(mesh, load.zone)
+    if isinstance(load, Hydrostatic):
+        chosen = _add_waterline(forces, element, numbering, load)
+    for start in range(0, len(chosen), BLOCK):
+        block = chosen[start : start + BLOCK]
+        vertices = mesh.points[mesh.triangles[block]]
+        points = rule.points @ vertices
+        pressure = _pressure(load, plate, points, mesh.zones[block])
+        own = element.load(Geometry(vertices=vertices, rule=rule), pressure)
+        add_up(forces, numbering.table[block], own[..., None])
+
+
+def _pressure(load: Load, plate: Plate, points: Floats, zones: Ints) -> Floats:
+    """Pressure in Pa at points (n, q, 2) of triangles in these zones (n,)."""
+    match load:
+        case Pressure(value=value):
+            return np.full(points.shape[:-1], value)
+        case SelfWeight(acceleration=acceleration):
+            weights = np.array([_mass_per_area(plate, k) for k in np.unique(zones)])
+            own = weights[np.searchsorted(np.unique(zones), zones)] * acceleration
+            return np.broadcast_to(own[:, None], points.shape[:-1])
+        case Hydrostatic():
+            depth = _depth(load, points)
+            return np.where(depth > 0.0, load.specific_weight * depth, 0.0)
+        case PressureField(function=function):
+            return _field_pressure(function(points[..., 0], points[..., 1]), points)
+    raise AssertionError(load)
+
+
+def _mass_per_area(plate: Plate, section: int) -> float:
+    """Mass per area in kg/m2 of a section."""
+    h, material = plate.sections[section]
+    if material.density is None:
+        raise InputError(
+            f"material {material.name!r} states no density; a self-weight needs one."
+        )
+    return material.density * h
+
+
+def _zone_triangles(mesh: Mesh, zone: str) -> Ints:
+    """Triangles of a zone that a load names."""
+    if zone not in mesh.zone_names:
+        raise InputError(
+            f"a pressure acts on zone {zone!r}; the zones are "
+            f"{', '.join(mesh.zone_names[1:]) or 'none'}."
+        )
+    return np.flatnonzero(mesh.zones == mesh.zone_names.index(zone))
+
+
+def _field_pressure(value: Floats, points: Floats) -> Floats:
+    """Check what a user's function returned."""
+    result = np.asarray(value, dtype=float)
+    if result.shape not in ((), points.shape[:-1]):
+        raise InputError(
+            f"a pressure function returned shape {result.shape} for points of shape "
+            f"{points.shape[:-1]}; it must return one pressure a point."
+        )
+    result = np.broadcast_to(result, points.shape[:-1])
+    bad = ~np.isfinite(result)
+    if bad.any():
+        x, y = points[bad][0]
+        raise InputError(
+            f"a pressure function returned {result[bad][0]} at ({x:.6g}, {y:.6g}) m; "
+            "it must be finite all over the plate."
+        )
+    return result
+
+
+def _depth(load: Hydrostatic, points: Floats) -> Floats:
+    """Depth in m below the liquid's surface."""
+    up = np.asarray(load.up, dtype=float)
+    return load.level - points @ (up / np.hypot(*up))
+
+
+def _add_waterline(
+    forces: Floats, element: Element, numbering: Numbering, load: Hydrostatic
+) -> Ints:
+    """Add the triangles that the liquid's surface cuts; return those wholly wet."""
+    mesh = numbering.mesh
+    depth = _depth(load, mesh.points[mesh.triangles])
+    cut = np.flatnonzero((depth.min(axis=1) < 0.0) & (depth.max(axis=1) > 0.0))
+    if cut.size:
+        up = np.asarray(load.up, dtype=float)
+        up /= np.hypot(*up)
+        along = np.array([-up[1], up[0]])
+        reach = 2.0 * float(np.abs(mesh.points).max() + abs(load.level))
+        corners = [
+            load.level * up - reach * along,
+            load.level * up - reach * along - 2.0 * reach * up,
+            load.level * up + reach * along - 2.0 * reach * up,
+            load.level * up + reach * along,
+        ]
+
+        def pressure(points: Floats) -> Floats:
+            return load.specific_weight * _depth(load, points)
+
+        pieces, owner = _pieces(mesh, element, cut)
+        for parts in cutting.inside_polygon(pieces, corners):
+            _add_parts(forces, element, numbering, parts, owner, pressure)
+    return np.flatnonzero(depth.min(axis=1) >= 0.0)
+
+
+def _add_patch(
+    forces: Floats,
+    element: Element,
+    numbering: Numbering,
+    load: RectanglePatch | DiscPatch,
+) -> None:
+    pieces, owner = _pieces(numbering.mesh, element)
+    if isinstance(load, RectanglePatch):
+        groups = cutting.inside_polygon(pieces, load.corners)
+        area = load.size[0] * load.size[1]
+    else:
+        groups = cutting.inside_disc(pieces, load.centre, load.radius)
+        area = np.pi * load.radius**2
+    covered = sum(float(parts.weights.sum()) for parts in groups)
+    if covered < (1.0 - MISSING) * area:
+        x, y = load.centre
+        raise InputError(
+            f"only {100.0 * covered / area:.4g} % of the patch at ({x:.6g}, {y:.6g}) m "
+            "lies on the plate; move or shrink it until it does not reach over an edge "
+            "or a hole."
+        )
+
+    def pressure(points: Floats) -> Floats:
+        return np.full(points.shape[:-1], load.force / area)
+
+    for parts in groups:
+        _add_parts(forces, element, numbering, parts, owner, pressure)
+
+
+def _pieces(
+    mesh: Mesh, element: Element, triangles: Ints | None = None
+) -> tuple[Floats, Ints]:
+    """Pieces on which w is one polynomial, (m, 3, 2), and their triangles, (m,)."""
+    chosen = np.arange(len(mesh.triangles)) if triangles is None else triangles
+    corners = mesh.points[mesh.triangles[chosen]]
+    pieces = np.einsum("skv,nvc->nskc", element.pieces, corners)
+    return pieces.reshape(-1, 3, 2), np.repeat(chosen, len(element.pieces))
+
+
+def _add_parts(
+    forces: Floats,
+    element: Element,
+    numbering: Numbering,
+    parts: cutting.Parts,
+    owner: Ints,
+    pressure: object,
+) -> None:
+    """Add a pressure over parts of triangles."""
+    assert callable(pressure)
+    mesh = numbering.mesh
+    q = parts.points.shape[1]
+    step = max(1, 8 * BLOCK // q)
+    for start in range(0, len(parts.triangles), step):
+        block = slice(start, start + step)
+        triangles = owner[parts.triangles[block]]
+        points = parts.points[block]
+        flat = mesh.barycentrics(np.repeat(triangles, q), points.reshape(-1, 2))
+        rows = element.evaluate(
+            mesh.points[mesh.triangles[triangles]], flat.reshape(-1, q, 3)
+        )[:, :, 0]
+        weighted = pressure(points) * parts.weights[block]
+        own = np.einsum("nq,nqd->nd", weighted, rows)
+        add_up(forces, numbering.table[triangles], own[..., None])
+
+
+def _add_point(
+    forces: Floats,
+    element: Element,
+    numbering: Numbering,
+    load: PointForce | PointMoment,
+) -> None:
+    mesh = numbering.mesh
+    what = (
+        f"a point force of {load.force:g} N"
+        if isinstance(load, PointForce)
+        else f"a couple of ({load.moment[0]:g}, {load.moment[1]:g}) N m"
+    )
+    try:
+        triangle, barycentrics = mesh.locate([load.at])
+    except InputError as error:
+        raise InputError(f"{what}: {error}") from error
+    rows = element.evaluate(
+        mesh.points[mesh.triangles[triangle]], barycentrics[:, None]
+    )
+    if isinstance(load, PointForce):
+        own = load.force * rows[:, 0, 0]
+    else:
+        # A couple about x turns the plate by dw/dy, one about y by -dw/dx.
+        own = load.moment[0] * rows[:, 0, 2] - load.moment[1] * rows[:, 0, 1]
+    add_up(forces, numbering.table[triangle], own[..., None])
+
+
+def _add_line(
+    forces: Floats,
+    element: Element,
+    numbering: Numbering,
+    load: LineForce | EdgeMoment,
+) -> None:
+    """Add a force or a moment along the edges of a side or a seam."""
+    mesh = numbering.mesh
+    seam = isinstance(load, LineForce) and load.along in mesh.seam_names
+    if seam:
+        edges = mesh.seam_edges[mesh.seam_numbers == mesh.seam_names.index(load.along)]
+        stretch = np.ones(len(edges))
+    elif load.along in mesh.side_names:
+        own = np.flatnonzero(mesh.boundary_sides == mesh.side_names.index(load.along))
+        edges, stretch = mesh.boundary_edges[own], mesh.boundary_stretch[own]
+    else:
+        names = [*mesh.side_names, *(mesh.seam_names if not seam else ())]
+        raise InputError(
+            f"a load acts along {load.along!r}; the sides and seams are "
+            f"{', '.join(names)}."
+        )
+    share, weights = gauss(3)
+    start, end = np.moveaxis(mesh.points[edges], 1, 0)
+    step = end - start
+    lengths = np.hypot(*step.T)
+    triangles = mesh.triangles_at(edges)
+    points = start[:, None] + share[:, None] * step[:, None]
+    flat = mesh.barycentrics(
+        np.repeat(triangles, len(share)), points.reshape(-1, 2)
+    ).reshape(len(edges), len(share), 3)
+    rows = element.evaluate(mesh.points[mesh.triangles[triangles]], flat)
+    amount = (lengths * stretch)[:, None] * weights
+    if isinstance(load, LineForce):
+        own_forces = load.force * np.einsum("eq,eqd->ed", amount, rows[:, :, 0])
+    else:
+        normal = np.column_stack([step[:, 1], -step[:, 0]]) / lengths[:, None]
+        turning = np.einsum("ec,eqcd->eqd", normal, rows[:, :, 1:])
+        own_forces = load.moment * np.einsum("eq,eqd->ed", amount, turning)
+    add_up(forces, numbering.table[triangles], own_forces[..., None])
