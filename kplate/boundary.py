@@ -16,6 +16,7 @@ turn. Chords of a circle take the circle's tangent.
 
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 
 import numpy as np
 
@@ -178,18 +179,64 @@ def _rigid(mesh: Mesh, vertices: Ints, centre: Floats, size: float) -> Floats:
     return motions
 
 
-def _side_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
-    """Vertices of the boundary and what the sides that meet there hold."""
+def side_tangents(plate: Plate, mesh: Mesh) -> Floats:
+    """Tangents of the arriving and the leaving edge at boundary joints, (k, 2, 2).
+
+    In the order of `mesh.boundary_joints`; at a bend they are one and the same.
+    """
     joints = mesh.boundary_joints
+    holds, clamps = _side_supports(plate, mesh)
     vertices = mesh.boundary_edges[:, 1]
-    supports = [plate.support(name) for name in mesh.side_names]
-    holds = np.array([s.holds_deflection for s in supports])[mesh.boundary_sides]
-    clamps = np.array([s.holds_slope for s in supports])[mesh.boundary_sides]
     tangents = np.stack([mesh.tangents(joints[:, k], vertices) for k in (0, 1)], axis=1)
     alike = (holds[joints[:, 0]] == holds[joints[:, 1]]) & (
         clamps[joints[:, 0]] == clamps[joints[:, 1]]
     )
-    tangents = _one_tangent(tangents, alike, plate.bend_turn)
+    return _one_tangent(tangents, alike, plate.bend_turn)
+
+
+def seam_tangents(plate: Plate, mesh: Mesh, seam: int) -> tuple[Ints, Ints, Floats]:
+    """Ends of the edges of a seam, and the tangents away from each.
+
+    Returns
+    -------
+    vertices : ndarray, shape (k,)
+        Vertices at which the edges end, those of one vertex together.
+    edges : ndarray, shape (k,)
+        Which of the seam's edges each is an end of.
+    away : ndarray, shape (k, 2)
+        Unit vectors along the edges away from the vertex; at a bend of just two edges
+        one the reverse of the other.
+    """
+    edges = mesh.seam_edges[mesh.seam_numbers == seam]
+    number = np.tile(np.arange(len(edges)), 2)
+    vertices = np.concatenate([edges[:, 0], edges[:, 1]])
+    others = np.concatenate([edges[:, 1], edges[:, 0]])
+    order = np.argsort(vertices, kind="stable")
+    vertices, others, number = vertices[order], others[order], number[order]
+    away = mesh.points[others] - mesh.points[vertices]
+    away /= np.hypot(*away.T)[:, None]
+    twice = np.flatnonzero(
+        (vertices[1:] == vertices[:-1]) & (np.bincount(vertices)[vertices[1:]] == 2)
+    )
+    pairs = np.stack([-away[twice], away[twice + 1]], axis=1)
+    pairs = _one_tangent(pairs, np.ones(len(twice), dtype=bool), plate.bend_turn)
+    away[twice], away[twice + 1] = -pairs[:, 0], pairs[:, 1]
+    return vertices, number, away
+
+
+def _side_supports(plate: Plate, mesh: Mesh) -> tuple[Bools, Bools]:
+    """Whether each boundary edge holds the deflection, and the slope, (k,) each."""
+    supports = [plate.support(name) for name in mesh.side_names]
+    holds = np.array([s.holds_deflection for s in supports])[mesh.boundary_sides]
+    clamps = np.array([s.holds_slope for s in supports])[mesh.boundary_sides]
+    return holds, clamps
+
+
+def _side_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
+    """Vertices of the boundary and what the sides that meet there hold."""
+    joints, tangents = mesh.boundary_joints, side_tangents(plate, mesh)
+    holds, clamps = _side_supports(plate, mesh)
+    vertices = mesh.boundary_edges[:, 1]
     return [
         (vertices, _rows(tangents[:, k], holds[joints[:, k]], clamps[joints[:, k]]))
         for k in (0, 1)
@@ -201,22 +248,9 @@ def _seam_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
     found = []
     for number, name in enumerate(mesh.seam_names):
         support = plate.support(name)
-        edges = mesh.seam_edges[mesh.seam_numbers == number]
-        if not support.holds or not len(edges):
+        if not support.holds:
             continue
-        # Both ends of each edge, as steps away from the vertex.
-        vertices = np.concatenate([edges[:, 0], edges[:, 1]])
-        others = np.concatenate([edges[:, 1], edges[:, 0]])
-        order = np.argsort(vertices, kind="stable")
-        vertices, others = vertices[order], others[order]
-        away = mesh.points[others] - mesh.points[vertices]
-        away /= np.hypot(*away.T)[:, None]
-        twice = np.flatnonzero(
-            (vertices[1:] == vertices[:-1]) & (np.bincount(vertices)[vertices[1:]] == 2)
-        )
-        pairs = np.stack([-away[twice], away[twice + 1]], axis=1)
-        pairs = _one_tangent(pairs, np.ones(len(twice), dtype=bool), plate.bend_turn)
-        away[twice], away[twice + 1] = pairs[:, 0], pairs[:, 1]
+        vertices, _, away = seam_tangents(plate, mesh, number)
         holds = np.full(len(vertices), support.holds_deflection)
         clamps = np.full(len(vertices), support.holds_slope)
         found.append((vertices, _rows(away, holds, clamps)))
@@ -306,9 +340,7 @@ def _by_order(rows: Floats, count: int) -> list[Floats]:
     No row mixes orders, whose units differ.
     """
     ends = (0, 1, 3, 6)
-    return [
-        rows[:, :, a:b] for a, b in zip(ends[:-1], ends[1:], strict=True) if b <= count
-    ]
+    return [rows[:, :, a:b] for a, b in pairwise(ends) if b <= count]
 
 
 def _frames(rows: Floats) -> tuple[Floats, Bools]:

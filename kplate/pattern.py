@@ -143,7 +143,8 @@ def _summed(at: list[Ints], values: list[Floats], size: int) -> Floats:
     """Sum of values at places, (size,)."""
     if not at:
         return np.zeros(size)
-    return np.bincount(np.concatenate(at), np.concatenate(values), minlength=size)
+    weights = np.concatenate(values)
+    return np.bincount(np.concatenate(at), weights, size).astype(np.float64)
 
 
 def _entries(place: Ints, stride: Ints, p: int, q: int) -> Ints:

@@ -4,7 +4,8 @@ Everything comes from the discrete equations: the support forces are the stiffne
 the unknowns less the loads, so that with the loads they balance to round-off. At a
 vertex they are a force R and two couples, paired with w and its slopes. A corner force
 is the jump of m_ns there (arriving side less leaving side); the rest of R belongs to
-the sides. Along a side, R is spread over its stations (`kplate.stations`).
+the sides. Line reactions of C1 elements are found in the space of their edge traces
+(`kplate.traces`), those of DKT from windows of vertices (`kplate.stations`).
 
 Signs: forces and line reactions v_n positive when the support pushes the plate up; a
 corner that must be held down has a negative force. Moments about the x and y axes
@@ -16,16 +17,18 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from kplate.arrays import Bools, Floats, Ints
+from kplate.arrays import Floats
 from kplate.boundary import rigid_motions
 from kplate.loads import PointForce
 from kplate.mesh import Mesh
 from kplate.polygon import SNAP
+from kplate.raw import RawMoments
 from kplate.recovery import SmoothedMoments
 from kplate.singular import Corner, Excluded, Place, moment_ends, plate_corners
 from kplate.solve.static import StaticState
-from kplate.stations import along, stretches
+from kplate.stations import held_lines, windowed
 from kplate.supports import Support
+from kplate.traces import traced
 from kplate.values import Value
 
 
@@ -67,7 +70,7 @@ class SideReaction:
     resultant : Resultant
         Of the side without its corner forces, clamping couples included.
     stations : ndarray, shape (k, 2)
-        Vertices along the side in m, in order along each of its stretches.
+        Places along the side in m, in order along each of its stretches.
     distance : ndarray, shape (k,)
         Distance in m along the side's stretches, one after the other.
     line_reaction : ndarray, shape (k,)
@@ -162,7 +165,7 @@ class Reactions:
 
 def reactions(
     state: StaticState,
-    smoothed: SmoothedMoments,
+    recovered: SmoothedMoments | RawMoments,
     index: int,
     excluded: Sequence[Excluded] = (),
 ) -> Reactions:
@@ -172,7 +175,7 @@ def reactions(
     ----------
     state : StaticState
         The solved plate.
-    smoothed : SmoothedMoments
+    recovered : SmoothedMoments or RawMoments
         Its moments, for the corner forces.
     index : int
         Which case.
@@ -183,31 +186,23 @@ def reactions(
     -------
     Reactions
     """
-    numbering, mesh = state.constraints.numbering, state.mesh
-    nodal = numbering.by_vertex(state.support_forces)[:, :, index]  # (n_points, 3)
-    loads = numbering.by_vertex(state.forces)[:, :, index]
-    motions = numbering.by_vertex(rigid_motions(numbering))
-    found = _corner_forces(state, smoothed, index)
-    rest = nodal.copy()
-    for corner_force, vertex in found:
-        rest[vertex, 0] -= np.nan_to_num(corner_force.force.value)
-    points = _point_reactions(state, rest, motions, index)
+    motions = rigid_motions(state.constraints.numbering)
+    found = _corner_forces(state, recovered, index)
+    brought, loads = state.support_forces[:, index], state.forces[:, index]
     case = state.cases[index].name
-    discs = [disc for disc in excluded if disc.case in ("", case)]
     return Reactions(
-        case=state.cases[index].name,
-        sides=tuple(_side_reactions(state, rest, motions, discs)),
+        case=case,
+        sides=tuple(_side_reactions(state, recovered, index, (found, excluded))),
         corners=tuple(corner_force for corner_force, _ in found),
-        points=points,
-        load=_resultant(motions, loads),
-        total=_resultant(motions, nodal),
-        magnitude=float(np.abs(nodal[:, 0]).sum() + np.abs(loads[:, 0]).sum()),
-        imbalance=_imbalance(mesh, motions, nodal, loads),
+        points=_point_reactions(state, motions, index),
+        load=_resultant(motions.T @ loads),
+        total=_resultant(motions.T @ brought),
+        **_balance(state, motions, brought, loads),
     )
 
 
 def _corner_forces(
-    state: StaticState, smoothed: SmoothedMoments, index: int
+    state: StaticState, recovered: SmoothedMoments | RawMoments, index: int
 ) -> list[tuple[CornerForce, int]]:
     """Forces at the corners and their vertices."""
     mesh, case = state.mesh, state.cases[index]
@@ -226,9 +221,8 @@ def _corner_forces(
             edges = mesh.boundary_joints[joint]
             tangents = mesh.tangents(edges, np.full(2, vertex))
             # The arriving edge ends at the corner, the leaving one begins there.
-            pairs = smoothed.nodes.of_edges(mesh, mesh.boundary_edges[edges])
-            nodes = [pairs[0, 1], pairs[1, 0]]
-            m_ns = _twist(smoothed.moments[nodes, :, index], tangents)
+            moments = recovered.corner_moments(edges, np.array([1, 0]))[:, :, index]
+            m_ns = _twist(moments, tangents)
             jump, reason = float(m_ns[0] - m_ns[1]), ""
             # A force that acts at the corner itself goes straight into the support.
             jump -= sum(
@@ -259,22 +253,24 @@ def _twist(moments: Floats, tangents: Floats) -> Floats:
 
 
 def _point_reactions(
-    state: StaticState, rest: Floats, motions: Floats, index: int
+    state: StaticState, motions: Floats, index: int
 ) -> tuple[PointReaction, ...]:
-    """Reactions of held marks, which are taken off what vertices bring."""
-    mesh, found = state.mesh, []
-    lined = np.zeros(len(mesh.points), dtype=bool)  # held by a line already
-    for line in _held_lines(state):
-        lined[line.edges] = True
+    """Reactions of held marks that lie on no held line."""
+    mesh, numbering = state.mesh, state.constraints.numbering
+    lines = held_lines(state.plate, mesh)
+    lined = np.concatenate(
+        [np.empty(0, dtype=np.int64), *(e.edges.ravel() for e in lines)]
+    )
+    found = []
     for name, vertex in zip(mesh.mark_names, mesh.mark_vertices, strict=True):
         support = state.plate.support(name)
-        if not support.holds or lined[vertex]:
+        if not support.holds or vertex in lined:
             continue
-        own = np.zeros_like(rest)
-        own[vertex], rest[vertex] = rest[vertex], 0.0
+        own = numbering.at_vertices(np.array(vertex))
+        brought = state.support_forces[own, index]
         x, y = mesh.points[vertex]
         force = Value(
-            value=float(own[vertex, 0]),
+            value=float(brought[0]),
             place=(float(x), float(y)),
             case=state.cases[index].name,
         )
@@ -283,145 +279,81 @@ def _point_reactions(
                 mark=name,
                 support=support,
                 force=force,
-                resultant=_resultant(motions, own),
+                resultant=_resultant(motions[own].T @ brought),
             )
         )
     return tuple(found)
 
 
-@dataclass(frozen=True, eq=False, kw_only=True)
-class _Line:
-    """Edges of a held side or seam, with their lengths."""
-
-    name: str
-    support: Support
-    edges: Ints
-    lengths: Floats
-
-
-def _held_lines(state: StaticState) -> list[_Line]:
-    """Held sides, then held seams."""
-    mesh, plate = state.mesh, state.plate
-    sides = [
-        (name, mesh.boundary_edges[mesh.boundary_sides == number])
-        for number, name in enumerate(mesh.side_names)
-    ]
-    seams = [
-        (name, mesh.seam_edges[mesh.seam_numbers == number])
-        for number, name in enumerate(mesh.seam_names)
-    ]
-    found = []
-    for name, edges in [*sides, *seams]:
-        support = plate.support(name)
-        if support.holds:
-            start, end = np.moveaxis(mesh.points[edges], 1, 0)
-            lengths = np.hypot(*(end - start).T)
-            found.append(
-                _Line(name=name, support=support, edges=edges, lengths=lengths)
-            )
-    return found
-
-
 def _side_reactions(
-    state: StaticState, rest: Floats, motions: Floats, discs: Sequence[Excluded]
+    state: StaticState,
+    recovered: SmoothedMoments | RawMoments,
+    index: int,
+    corners_and_discs: tuple[list[tuple[CornerForce, int]], Sequence[Excluded]],
 ) -> list[SideReaction]:
-    """Reactions of held sides and seams from vertex forces less corner forces."""
-    mesh = state.mesh
-    lines = _held_lines(state)
-    unbounded = np.zeros(len(mesh.points), dtype=bool)
-    for disc in discs:
-        reach = np.hypot(*(mesh.points - disc.place).T)
-        unbounded |= reach <= disc.radius * (1.0 + 1e-9)
-    owns = _shared(mesh, lines, rest)
+    """Reactions of held sides and seams, less the corner forces."""
+    mesh, (corners, excluded) = state.mesh, corners_and_discs
+    lines = held_lines(state.plate, mesh)
+    at_corners = np.zeros(len(mesh.points))
+    for corner_force, vertex in corners:
+        at_corners[vertex] += np.nan_to_num(corner_force.force.value)
+    if isinstance(recovered, RawMoments):
+        parts = traced(recovered.traces, lines, at_corners, index)
+    else:
+        parts = windowed(mesh, lines, *_at_vertices(state, at_corners, index))
+    case = state.cases[index].name
+    discs = [disc for disc in excluded if disc.case in ("", case)]
+    for part in parts:
+        for disc in discs:
+            reach = np.hypot(*(part.stations - disc.place).T)
+            part.reaction[reach <= disc.radius * (1.0 + 1e-9)] = np.nan
     return [
-        _line_reaction(mesh, line, own, (motions, unbounded))
-        for line, own in zip(lines, owns, strict=True)
+        SideReaction(
+            side=line.name,
+            support=line.support,
+            resultant=_resultant(part.resultant),
+            stations=part.stations,
+            distance=part.distance,
+            line_reaction=part.reaction,
+            line_moment=part.moment,
+        )
+        for line, part in zip(lines, parts, strict=True)
     ]
 
 
-def _shared(mesh: Mesh, lines: list[_Line], rest: Floats) -> list[Floats]:
-    """What vertices bring, shared among the lines that hold them, (n_points, 3) each.
-
-    Forces go by the length of the lines that hold w. Of couples, lines that hold the
-    slope take the parts along their normals; what is left goes by length.
-    """
-    lengths = np.array([_length_at(mesh, line) for line in lines])
-    carries = np.array([line.support.holds_deflection for line in lines])
-    total = np.maximum(lengths.sum(axis=0), np.finfo(float).tiny)
-    pushing = lengths * carries[:, None]
-    by_force = pushing / np.maximum(pushing.sum(axis=0), np.finfo(float).tiny)
-    owns = [np.zeros_like(rest) for _ in lines]
-    for k, own in enumerate(owns):
-        own[:, 0] = by_force[k] * rest[:, 0]
-        own[:, 1:] = (lengths[k] / total)[:, None] * rest[:, 1:]
-    for vertex in np.flatnonzero((lengths > 0.0).sum(axis=0) > 1).tolist():
-        at = np.flatnonzero(lengths[:, vertex] > 0.0).tolist()
-        turning = [k for k in at if lines[k].support.holds_slope]
-        normals = np.array([_normal_at(mesh, lines[k], vertex) for k in turning])
-        if not len(normals):
-            continue
-        parts = np.linalg.pinv(normals.T) @ rest[vertex, 1:]
-        left = rest[vertex, 1:] - normals.T @ parts
-        for k in at:
-            owns[k][vertex, 1:] = lengths[k, vertex] / total[vertex] * left
-        for k, normal, part in zip(turning, normals, parts, strict=True):
-            owns[k][vertex, 1:] += part * normal
-    return owns
+def _at_vertices(
+    state: StaticState, at_corners: Floats, index: int
+) -> tuple[Floats, Floats]:
+    """What lines bring at vertices, (n_points, 3), and the rigid motions there."""
+    numbering, mesh = state.constraints.numbering, state.mesh
+    rest = numbering.by_vertex(state.support_forces)[:, :3, index].copy()
+    rest[:, 0] -= at_corners
+    lined = np.zeros(len(mesh.points), dtype=bool)
+    for line in held_lines(state.plate, mesh):
+        lined[line.edges] = True
+    rest[~lined] = 0.0  # what point supports bring
+    return rest, numbering.by_vertex(rigid_motions(numbering))[:, :3]
 
 
-def _normal_at(mesh: Mesh, line: _Line, vertex: int) -> Floats:
-    """Unit normal on the right of a line at one of its vertices, (2,)."""
-    own = line.edges[(line.edges == vertex).any(axis=1)]
-    step = (mesh.points[own[:, 1]] - mesh.points[own[:, 0]]).sum(axis=0)
-    normal: Floats = np.array([step[1], -step[0]]) / np.hypot(*step)
-    return normal
-
-
-def _length_at(mesh: Mesh, line: _Line) -> Floats:
-    """Length of a line's edges at each vertex, (n_points,)."""
-    ends = line.edges.ravel()
-    return np.bincount(
-        ends, np.repeat(line.lengths, 2), minlength=len(mesh.points)
-    ).astype(np.float64)
-
-
-def _line_reaction(
-    mesh: Mesh, line: _Line, own: Floats, shared: tuple[Floats, Bools]
-) -> SideReaction:
-    """Reaction of one side or seam from its share of what its vertices bring."""
-    motions, unbounded = shared
-    at = _length_at(mesh, line)
-    chains = stretches(line.edges)
-    parts = [along(mesh, chain, own, 0.5 * at, unbounded) for chain in chains]
-    starts = np.cumsum([0.0, *(float(part[0][-1]) for part in parts[:-1])])
-    return SideReaction(
-        side=line.name,
-        support=line.support,
-        resultant=_resultant(motions, own),
-        stations=mesh.points[np.concatenate(chains)],
-        distance=np.concatenate(
-            [part[0] + s for part, s in zip(parts, starts, strict=True)]
-        ),
-        line_reaction=np.concatenate([part[1] for part in parts])
-        * line.support.holds_deflection,
-        line_moment=np.concatenate([part[2] for part in parts])
-        * line.support.holds_slope,
-    )
-
-
-def _resultant(motions: Floats, nodal: Floats) -> Resultant:
-    force, by_x, by_y = np.einsum("vum,vu->m", motions, nodal)
+def _resultant(work: Floats) -> Resultant:
+    """Resultant that does this work on w = 1, x and y."""
+    force, by_x, by_y = work
     return Resultant(force=float(force), moment_x=float(by_y), moment_y=float(-by_x))
 
 
-def _imbalance(mesh: Mesh, motions: Floats, nodal: Floats, loads: Floats) -> float:
-    """Largest sum of loads and support forces over the sum of their magnitudes."""
-    size = float(np.ptp(mesh.points, axis=0).max())
-    sums = np.einsum("vum,vu->m", motions, nodal + loads)
-    magnitude = np.abs(nodal).sum(axis=0) + np.abs(loads).sum(axis=0)
-    scale = float(magnitude[0] + magnitude[1:].sum() / size)
-    reach = np.array([1.0, size, size])
-    return float(np.max(np.abs(sums) / reach) / scale) if scale > 0.0 else 0.0
+def _balance(
+    state: StaticState, motions: Floats, brought: Floats, loads: Floats
+) -> dict[str, float]:
+    """Sum of magnitudes of all forces, and the largest sum of all as a share of it."""
+    numbering = state.constraints.numbering
+    size = float(np.ptp(state.mesh.points, axis=0).max())
+    magnitudes = numbering.by_vertex(np.abs(brought) + np.abs(loads))[:, :3, 0].sum(0)
+    scale = float(magnitudes[0] + magnitudes[1:].sum() / size)
+    sums = np.abs(motions.T @ (brought + loads)) / [1.0, size, size]
+    return {
+        "magnitude": float(magnitudes[0]),
+        "imbalance": float(sums.max()) / scale if scale > 0.0 else 0.0,
+    }
 
 
 def hold_down(forces: Sequence[CornerForce]) -> tuple[float, list[CornerForce]]:

@@ -21,6 +21,7 @@ superconvergent points.
 """
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 import scipy.sparse as sp
@@ -32,6 +33,7 @@ from kplate.errors import InputError
 from kplate.mesh import Mesh
 from kplate.plate import Plate
 from kplate.quadrature import triangle_rule
+from kplate.samples import Samples
 from kplate.solve.static import StaticState
 from kplate.values import Face
 
@@ -93,6 +95,8 @@ class SmoothedMoments:
 
     Parameters
     ----------
+    state : StaticState
+        The solved plate.
     nodes : Nodes
         Where.
     moments : ndarray, shape (n, 3, c)
@@ -101,9 +105,43 @@ class SmoothedMoments:
         q_x, q_y in N/m.
     """
 
+    state: StaticState
     nodes: Nodes
     moments: Floats
     shears: Floats
+
+    def moments_at(self, triangles: Ints, barycentrics: Floats) -> Floats:
+        """Moments in N at one point in each triangle, (k, 3, c)."""
+        own = self.moments[self.nodes.triangles[triangles]]
+        return np.einsum("kv,kvac->kac", barycentrics, own)
+
+    def shears_at(self, triangles: Ints, barycentrics: Floats) -> Floats:
+        """Transverse shears in N/m at one point in each triangle, (k, 2, c)."""
+        own = self.shears[self.nodes.triangles[triangles]]
+        return np.einsum("kv,kvac->kac", barycentrics, own)
+
+    def corner_moments(self, edges: Ints, ends: Ints) -> Floats:
+        """Moments at one end (0 or 1) of boundary edges (k,), (k, 3, c)."""
+        mesh = self.state.mesh
+        nodes = self.nodes.of_edges(mesh, mesh.boundary_edges[edges])
+        return self.moments[nodes[np.arange(len(nodes)), ends]]
+
+    @cached_property
+    def samples(self) -> Samples:
+        """The fields at the nodes themselves."""
+        mesh, nodes = self.state.mesh, self.nodes
+        bent = self.state.constraints.numbering.by_vertex(self.state.unknowns)
+        return Samples(
+            points=mesh.points[nodes.vertices],
+            triangles=nodes.triangles,
+            owners=np.arange(len(mesh.triangles)),
+            rim=nodes.of_edges(mesh, mesh.boundary_edges),
+            rim_owners=np.arange(len(mesh.boundary_edges)),
+            sections=nodes.sections,
+            bent=bent[nodes.vertices, :3],
+            moments=self.moments,
+            shears=self.shears,
+        )
 
 
 def smoothed_moments(state: StaticState) -> SmoothedMoments:
@@ -123,7 +161,7 @@ def smoothed_moments(state: StaticState) -> SmoothedMoments:
     by = _fit((at, radius), patches, (at[:, None], fitted[:, :1]), _LINEAR)[:, 1:]
     by_x, by_y = by.reshape(-1, 2, 3, cases).swapaxes(0, 1)
     shears = -np.stack([by_x[:, 0] + by_y[:, 2], by_x[:, 2] + by_y[:, 1]], axis=1)
-    return SmoothedMoments(nodes=nodes, moments=moments, shears=shears)
+    return SmoothedMoments(state=state, nodes=nodes, moments=moments, shears=shears)
 
 
 def element_moments(state: StaticState, barycentrics: Floats) -> Floats:

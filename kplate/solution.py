@@ -19,6 +19,7 @@ from kplate.arrays import Floats, Ints
 from kplate.errors import InputError
 from kplate.mesh import Mesh
 from kplate.plate import Plate
+from kplate.raw import RawMoments
 from kplate.reactions import CornerForce, Reactions
 from kplate.recovery import (
     SmoothedMoments,
@@ -28,12 +29,14 @@ from kplate.recovery import (
     von_mises,
 )
 from kplate.rims import outside, rim, stationary
+from kplate.samples import Samples
 from kplate.singular import Excluded, excluded_places, shear_places
 from kplate.solve.static import StaticState
 from kplate.values import Face, Value
 
-# Steps along each edge of the triangles around the highest vertex of a deflection.
-_STEPS = 4
+# A summit is sought on stencils of 3 x 3 points, each a third of the last in size.
+_STENCIL = np.array([(i, j) for i in (-1, 0, 1) for j in (-1, 0, 1)]) / 2.0
+_ZOOMS = 8
 _FACES: tuple[Face, Face] = ("top", "bottom")
 
 
@@ -91,8 +94,12 @@ class Solution:
         return self._bent(points, case)[:, 1:]
 
     def moments(self, points: ArrayLike, *, case: str | None = None) -> Floats:
-        """Smoothed moments m_xx, m_yy, m_xy in N at points (k, 2) in m, (k, 3)."""
-        return self._interpolate(self._smoothed.moments, points, case)
+        """Moments m_xx, m_yy, m_xy in N at points (k, 2) in m, (k, 3).
+
+        Of a C1 element those of the triangle itself, of DKT smoothed ones.
+        """
+        found = self._recovered.moments_at(*self.mesh.locate(points))
+        return found[:, :, self._index(case)]
 
     def principal_moments(
         self, points: ArrayLike, *, case: str | None = None
@@ -102,7 +109,8 @@ class Solution:
 
     def shears(self, points: ArrayLike, *, case: str | None = None) -> Floats:
         """Transverse shears q_x, q_y in N/m at points (k, 2) in m, (k, 2)."""
-        return self._interpolate(self._smoothed.shears, points, case)
+        found = self._recovered.shears_at(*self.mesh.locate(points))
+        return found[:, :, self._index(case)]
 
     def shear_stress(self, points: ArrayLike, *, case: str | None = None) -> Floats:
         """Largest transverse shear stress 3 q / 2h in Pa, at mid-depth, (k,)."""
@@ -211,16 +219,13 @@ class Solution:
             Keys carry the SI unit, such as "deflection [m]"; shapes (n,) or (n, k).
             Components are listed xx, yy, xy.
         """
-        index = self._index(case)
-        nodes = self._smoothed.nodes
-        moments = self._smoothed.moments[:, :, index]
-        shears = self._smoothed.shears[:, :, index]
-        bent = self.state.constraints.numbering.by_vertex(self.state.unknowns)
-        bent = bent[nodes.vertices]
-        h = self._node_thickness
+        index, samples = self._index(case), self.samples
+        bent = samples.bent[:, :, index]
+        moments, shears = samples.moments[:, :, index], samples.shears[:, :, index]
+        h = self.plate.thicknesses[samples.sections]
         fields = {
-            "deflection [m]": bent[:, 0, index],
-            "slopes [rad]": bent[:, 1:3, index],
+            "deflection [m]": bent[:, 0],
+            "slopes [rad]": bent[:, 1:],
             "moments [N]": moments,
             "principal moments [N]": principal_moments(moments)[0],
             "shears [N per m]": shears,
@@ -236,39 +241,37 @@ class Solution:
         return fields
 
     @property
-    def field_points(self) -> Floats:
-        """Places of the fields in m, (n, 2).
+    def samples(self) -> Samples:
+        """Places of the fields, what they are there, and the triangles between.
 
-        The vertices of the mesh, once for each part of the plate that meets there: a
-        step of thickness or a seam has a value on either side.
+        Of a C1 element a lattice on each triangle of the mesh; of DKT the vertices,
+        once for each part of the plate that meets there.
         """
-        return self.mesh.points[self._smoothed.nodes.vertices]
+        return self._recovered.samples
+
+    @property
+    def field_points(self) -> Floats:
+        """Places of the fields in m, (n, 2)."""
+        return self.samples.points
 
     @property
     def field_triangles(self) -> Ints:
-        """Numbers of the field points of each triangle, (n_triangles, 3)."""
-        return self._smoothed.nodes.triangles
+        """Numbers of the field points of each small triangle, (m, 3)."""
+        return self.samples.triangles
 
     @property
     def field_edges(self) -> Ints:
-        """Numbers of the field points of each boundary edge, (n_boundary, 2)."""
-        return self._smoothed.nodes.of_edges(self.mesh, self.mesh.boundary_edges)
-
-    @property
-    def field_vertices(self) -> Ints:
-        """Vertex of the mesh at each field point, (n,)."""
-        return self._smoothed.nodes.vertices
-
-    @cached_property
-    def _node_thickness(self) -> Floats:
-        return self.plate.thicknesses[self._smoothed.nodes.sections]
+        """Numbers of the field points of each piece of the boundary, (k, 2)."""
+        return self.samples.rim
 
     def _thickness_at(self, points: ArrayLike) -> Floats:
         triangles, _ = self.mesh.locate(points)
         return self.plate.thicknesses[self.mesh.zones[triangles]]
 
     @cached_property
-    def _smoothed(self) -> SmoothedMoments:
+    def _recovered(self) -> SmoothedMoments | RawMoments:
+        if self.state.element.conforming:
+            return RawMoments(state=self.state, excluded=self.excluded)
         return smoothed_moments(self.state)
 
     @cached_property
@@ -281,7 +284,7 @@ class Solution:
             radius = self.excluded_radius or self.plate.thickness
             discs = (*self.excluded, *shear_places(self.plate, radius))
             known[index] = support_reactions.reactions(
-                self.state, self._smoothed, index, discs
+                self.state, self._recovered, index, discs
             )
         return known[index]
 
@@ -312,49 +315,34 @@ class Solution:
         table = self.state.constraints.numbering.table[triangles]
         return np.einsum("krd,kd->kr", rows, self.state.unknowns[table, index])
 
-    def _interpolate(
-        self, at_nodes: Floats, points: ArrayLike, case: str | None
-    ) -> Floats:
-        triangles, barycentrics = self.mesh.locate(points)
-        own = at_nodes[self._smoothed.nodes.triangles[triangles], :, self._index(case)]
-        return np.einsum("kv,kvc->kc", barycentrics, own)
-
     def _candidates(self, index: int) -> "_Candidates":
         """Places at which moments may peak, with moments, shears and thickness there.
 
-        They are linear in each triangle and what is asked of them is convex, so that it
-        peaks at a node; where a disc is left out, on its rim.
+        They are taken as linear between the samples and what is asked of them is
+        convex, so that it peaks at a sample; where a disc is left out, on its rim.
         """
-        case, nodes = self.cases[index], self._smoothed.nodes
-        places = self.mesh.points[nodes.vertices]
-        moments = self._smoothed.moments[:, :, index]
-        shears = self._smoothed.shears[:, :, index]
+        case, samples = self.cases[index], self.samples
+        moments, shears = samples.moments[:, :, index], samples.shears[:, :, index]
+        thickness = self.plate.thicknesses[samples.sections]
+        found = _Candidates(samples.points, moments, shears, thickness)
         discs = [e for e in self.excluded if e.case in ("", case)]
         if not discs:
-            return _Candidates(places, moments, shears, self._node_thickness)
-        kept = outside(places, discs, 1.0)
+            return found
+        kept = outside(samples.points, discs, 1.0)
         rims = np.concatenate([rim(self.mesh, disc) for disc in discs])
         rims = rims[outside(rims, discs, 1.0 - 1e-9)]
         if not (kept.any() or len(rims)):
             nothing = np.empty((0, 3))
             return _Candidates(nothing[:, :2], nothing, nothing[:, :2], nothing[:, 0])
         triangles, barycentrics = self.mesh.locate(rims)
-        own = nodes.triangles[triangles]
-        return _Candidates(
-            np.concatenate([places[kept], rims]),
-            np.concatenate(
-                [moments[kept], np.einsum("kv,kvc->kc", barycentrics, moments[own])]
-            ),
-            np.concatenate(
-                [shears[kept], np.einsum("kv,kvc->kc", barycentrics, shears[own])]
-            ),
-            np.concatenate(
-                [
-                    self._node_thickness[kept],
-                    self.plate.thicknesses[self.mesh.zones[triangles]],
-                ]
-            ),
+        on_rims = _Candidates(
+            rims,
+            self._recovered.moments_at(triangles, barycentrics)[:, :, index],
+            self._recovered.shears_at(triangles, barycentrics)[:, :, index],
+            self.plate.thicknesses[self.mesh.zones[triangles]],
         )
+        both = zip(found, on_rims, strict=True)
+        return _Candidates(*(np.concatenate([a[kept], b]) for a, b in both))
 
     def _unknown(self, index: int) -> Value:
         """No value, where the discs that are left out cover the plate."""
@@ -372,32 +360,26 @@ class Solution:
 
 
 def _peak_deflection(solution: Solution, index: int) -> Value:
-    """Search the triangles around the vertex that deflects most."""
-    mesh = solution.mesh
-    numbering = solution.state.constraints.numbering
-    w = numbering.by_vertex(solution.state.unknowns)[:, 0, index]
-    vertex = int(np.argmax(np.abs(w)))
-    around = np.flatnonzero((mesh.triangles == vertex).any(axis=1))
-    lattice = np.array(
-        [
-            (i, j, _STEPS - i - j)
-            for i in range(_STEPS + 1)
-            for j in range(_STEPS + 1 - i)
-        ]
-    ) / float(_STEPS)
-    triangles = np.repeat(around, len(lattice))
-    barycentrics = np.tile(lattice, (len(around), 1))
-    deflection = solution._bent_at(triangles, barycentrics, index)[:, 0]
-    corners = mesh.points[mesh.triangles[triangles]]
-    places = np.einsum("kv,kvc->kc", barycentrics, corners)
-    best = int(np.argmax(np.abs(deflection)))
-    place, value = places[best], deflection[best]
-    summit = stationary(places, deflection)
-    if summit is not None and mesh.covers(summit[None])[0]:
-        there = float(solution.deflection(summit[None], case=solution.cases[index])[0])
-        # The parabola says where the top is; it may not lower what was found.
-        if abs(there) >= abs(value) * (1.0 - 1e-4):
-            place, value = summit, max(there, value, key=abs)
+    """Climb from the sample that deflects most to the summit beside it."""
+    samples, case = solution.samples, solution.cases[index]
+    w = samples.bent[:, 0, index]
+    best = int(np.argmax(np.abs(w)))
+    place, value = samples.points[best], float(w[best])
+    owner = int(samples.owners[np.flatnonzero((samples.triangles == best).any(1))[0]])
+    size = float(np.sqrt(2.0 * solution.mesh.areas[owner]))
+    for _ in range(_ZOOMS):
+        stencil = place + size * _STENCIL
+        stencil = stencil[solution.mesh.covers(stencil)]
+        size /= 3.0
+        if len(stencil) < len(_STENCIL):
+            continue
+        found = solution.deflection(stencil, case=case)
+        summit = stationary(stencil, found)
+        there = stencil if summit is None else np.concatenate([stencil, summit[None]])
+        found = solution.deflection(there, case=case)
+        top = int(np.argmax(np.abs(found)))
+        if abs(found[top]) > abs(value):
+            place, value = there[top], float(found[top])
     return solution._value(value, place, index)
 
 

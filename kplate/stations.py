@@ -1,4 +1,4 @@
-"""Stations along a held side or seam, and what comes to each metre of it.
+"""Line reactions of elements of low degree, from the forces at their vertices.
 
 The force R at a vertex is spread over the lengths around three neighbouring vertices,
 twice over, with the gain of the couples along the side. That smooths what single
@@ -6,10 +6,119 @@ vertices of a low-degree element get 50 % wrong: line reactions then scatter by 
 1 % around their mean on straight sides and discs, 3 % on a small clamped rim.
 """
 
+from dataclasses import dataclass
+
 import numpy as np
 
-from kplate.arrays import Bools, Floats, Ints
+from kplate.arrays import Floats, Ints
 from kplate.mesh import Mesh
+from kplate.plate import Plate
+from kplate.supports import Support
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class HeldLine:
+    """A held side or seam.
+
+    Parameters
+    ----------
+    name : str
+        Its name.
+    number : int
+        Its number among sides, then seams.
+    support : Support
+        How it is held.
+    edges : ndarray, shape (m, 2)
+        Vertices of its edges.
+    lengths : ndarray, shape (m,)
+        Their lengths in m.
+    """
+
+    name: str
+    number: int
+    support: Support
+    edges: Ints
+    lengths: Floats
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class LinePart:
+    """What a held line brings.
+
+    Parameters
+    ----------
+    stations : ndarray, shape (k, 2)
+        Places along it in m.
+    distance : ndarray, shape (k,)
+        Distance in m along its stretches, one after the other.
+    reaction, moment : ndarray, shape (k,)
+        v_n in N/m and m_nn in N there.
+    resultant : ndarray, shape (3,)
+        Work of all it brings on w = 1, x and y, in N and N m.
+    """
+
+    stations: Floats
+    distance: Floats
+    reaction: Floats
+    moment: Floats
+    resultant: Floats
+
+
+def held_lines(plate: Plate, mesh: Mesh) -> list[HeldLine]:
+    """Held sides, then held seams."""
+    sides = [
+        (name, mesh.boundary_edges[mesh.boundary_sides == number])
+        for number, name in enumerate(mesh.side_names)
+    ]
+    seams = [
+        (name, mesh.seam_edges[mesh.seam_numbers == number])
+        for number, name in enumerate(mesh.seam_names)
+    ]
+    found = []
+    for number, (name, edges) in enumerate([*sides, *seams]):
+        support = plate.support(name)
+        if support.holds:
+            start, end = np.moveaxis(mesh.points[edges], 1, 0)
+            found.append(
+                HeldLine(
+                    name=name,
+                    number=number,
+                    support=support,
+                    edges=edges,
+                    lengths=np.hypot(*(end - start).T),
+                )
+            )
+    return found
+
+
+def windowed(
+    mesh: Mesh, lines: list[HeldLine], rest: Floats, motions: Floats
+) -> list[LinePart]:
+    """What lines bring, from what their vertices bring without the corner forces.
+
+    `rest` (n_points, 3) are forces and couples, `motions` (n_points, 3, 3) the
+    vertices' unknowns of w = 1, x and y.
+    """
+    parts = []
+    for line, own in zip(lines, _shared(mesh, lines, rest), strict=True):
+        at = 0.5 * _length_at(mesh, line)
+        chains = stretches(line.edges)
+        found = [along(mesh, chain, own, at) for chain in chains]
+        starts = np.cumsum([0.0, *(float(part[0][-1]) for part in found[:-1])])
+        parts.append(
+            LinePart(
+                stations=mesh.points[np.concatenate(chains)],
+                distance=np.concatenate(
+                    [part[0] + s for part, s in zip(found, starts, strict=True)]
+                ),
+                reaction=np.concatenate([part[1] for part in found])
+                * line.support.holds_deflection,
+                moment=np.concatenate([part[2] for part in found])
+                * line.support.holds_slope,
+                resultant=np.einsum("vum,vu->m", motions, own),
+            )
+        )
+    return parts
 
 
 def stretches(edges: Ints) -> list[Ints]:
@@ -56,7 +165,7 @@ def _open(
 
 
 def along(
-    mesh: Mesh, chain: Ints, own: Floats, length: Floats, unbounded: Bools
+    mesh: Mesh, chain: Ints, own: Floats, length: Floats
 ) -> tuple[Floats, Floats, Floats]:
     """Distance, line reaction and line moment at the vertices of a stretch."""
     step = np.diff(mesh.points[chain], axis=0)
@@ -75,7 +184,6 @@ def along(
     force = _three(own[chain, 0], closed) - _gain(lengthwise, closed)
     reaction = _three(force, closed) / spans
     moment = _three(_three(across, closed), closed) / spans
-    reaction[unbounded[chain]] = np.nan
     return distance, reaction, moment
 
 
@@ -107,3 +215,49 @@ def _gain(couple: Floats, closed: bool) -> Floats:
     if len(couple) > 4:
         gain[2:-2] = 0.5 * (couple[3:-1] + couple[4:] - couple[1:-3] - couple[:-4])
     return gain
+
+
+def _shared(mesh: Mesh, lines: list[HeldLine], rest: Floats) -> list[Floats]:
+    """What vertices bring, shared among the lines that hold them, (n_points, 3) each.
+
+    Forces go by the length of the lines that hold w. Of couples, lines that hold the
+    slope take the parts along their normals; what is left goes by length.
+    """
+    lengths = np.array([_length_at(mesh, line) for line in lines])
+    carries = np.array([line.support.holds_deflection for line in lines])
+    total = np.maximum(lengths.sum(axis=0), np.finfo(float).tiny)
+    pushing = lengths * carries[:, None]
+    by_force = pushing / np.maximum(pushing.sum(axis=0), np.finfo(float).tiny)
+    owns = [np.zeros_like(rest) for _ in lines]
+    for k, own in enumerate(owns):
+        own[:, 0] = by_force[k] * rest[:, 0]
+        own[:, 1:] = (lengths[k] / total)[:, None] * rest[:, 1:]
+    for vertex in np.flatnonzero((lengths > 0.0).sum(axis=0) > 1).tolist():
+        at = np.flatnonzero(lengths[:, vertex] > 0.0).tolist()
+        turning = [k for k in at if lines[k].support.holds_slope]
+        normals = np.array([_normal_at(mesh, lines[k], vertex) for k in turning])
+        if not len(normals):
+            continue
+        parts = np.linalg.pinv(normals.T) @ rest[vertex, 1:]
+        left = rest[vertex, 1:] - normals.T @ parts
+        for k in at:
+            owns[k][vertex, 1:] = lengths[k, vertex] / total[vertex] * left
+        for k, normal, part in zip(turning, normals, parts, strict=True):
+            owns[k][vertex, 1:] += part * normal
+    return owns
+
+
+def _normal_at(mesh: Mesh, line: HeldLine, vertex: int) -> Floats:
+    """Unit normal on the right of a line at one of its vertices, (2,)."""
+    own = line.edges[(line.edges == vertex).any(axis=1)]
+    step = (mesh.points[own[:, 1]] - mesh.points[own[:, 0]]).sum(axis=0)
+    normal: Floats = np.array([step[1], -step[0]]) / np.hypot(*step)
+    return normal
+
+
+def _length_at(mesh: Mesh, line: HeldLine) -> Floats:
+    """Length of a line's edges at each vertex, (n_points,)."""
+    ends = line.edges.ravel()
+    return np.bincount(
+        ends, np.repeat(line.lengths, 2), minlength=len(mesh.points)
+    ).astype(np.float64)

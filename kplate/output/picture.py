@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from kplate.arrays import Floats, Ints
+from kplate.elements.triangle import area
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.output.contours import Bands, Quantity, bands, draw_bands, draw_levels
@@ -243,7 +244,8 @@ def _shown(
     size = _unit(quantity, units).size
     colour = fields["deflection [m]" if quantity == "deflection" else "von Mises [Pa]"]
     corners = solution.field_triangles.ravel()
-    areas = np.bincount(corners, np.repeat(solution.mesh.areas, 3)).astype(np.float64)
+    small = area(solution.field_points[solution.field_triangles])
+    areas = np.bincount(corners, np.repeat(small, 3)).astype(np.float64)
     return Shown(
         solution=solution,
         peak=peak,

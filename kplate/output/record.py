@@ -109,6 +109,8 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
         "mesh": {
             "triangles": len(mesh.triangles),
             "points": len(mesh.points),
+            "field triangles": len(solution.samples.triangles),
+            "field points": len(solution.samples.points),
             "unknowns": state.constraints.numbering.count,
             "element": state.element.name,
         },

@@ -173,7 +173,7 @@ def _with_record(result: Result, record: Any) -> Result:
     """Add what the record of a result tells; raises where it is of something else."""
     fields = result.fields
     mesh = record["mesh"]
-    if (mesh["triangles"], mesh["points"]) != (
+    if (mesh["field triangles"], mesh["field points"]) != (
         len(fields.triangles),
         len(fields.points),
     ):

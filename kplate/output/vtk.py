@@ -1,9 +1,10 @@
 """A solution as a VTU file, for `kplate view` and any program that reads VTK.
 
-Points and point data are those of `Solution.point_fields`, where a vertex on a step or
-a seam stands once for each side of it; with several load cases each name
-starts with its case, "CASE: NAME". The cells are the triangles, then the boundary edges
-as lines. Cell data are "zone", the zone of a triangle (-1 on lines), and "side", the
+Points and point data are those of `Solution.point_fields`, where a place on a step or
+a seam stands once for each side of it, and on the edge of a C1 element once for each
+triangle; with several load cases each name starts with its case, "CASE: NAME". The
+cells are the small triangles between the points, then the pieces of the boundary as
+lines. Cell data are "zone", the zone of a triangle (-1 on lines), and "side", the
 number of a line's side (-1 on triangles). The names of the sides, and all else that a
 VTU file cannot hold, stand in the record (`kplate.output.record`).
 """
@@ -47,17 +48,20 @@ def write_vtk(solution: Solution, path: Path) -> Path:
             f"{str(path)!r} does not end in .vtu, which tells programs its format; "
             "name it so."
         )
-    mesh = solution.mesh
-    points = solution.field_points
+    mesh, samples = solution.mesh, solution.samples
+    points = samples.points
     write_vtu(
         path,
         np.column_stack([points, np.zeros(len(points))]),
-        solution.field_triangles,
-        lines=solution.field_edges,
+        samples.triangles,
+        lines=samples.rim,
         point_data=_fields(solution),
         cell_data={
-            "zone": (mesh.zones, np.full(len(mesh.boundary_edges), NOTHING)),
-            "side": (np.full(len(mesh.triangles), NOTHING), mesh.boundary_sides),
+            "zone": (mesh.zones[samples.owners], np.full(len(samples.rim), NOTHING)),
+            "side": (
+                np.full(len(samples.triangles), NOTHING),
+                mesh.boundary_sides[samples.rim_owners],
+            ),
         },
     )
     return path

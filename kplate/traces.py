@@ -1,0 +1,486 @@
+"""Line reactions of C1 elements, found in the space of their own edge traces.
+
+What a support brings to the discrete plate, the residual r, works on every virtual
+deflection v as an effective shear v_n on v, a clamping moment m_nn on the slope v,n,
+and a force R at the end of a run of edges on v there:
+
+    r(v) = sum over held edges of (v_n, v) + (m_nn, v,n) + sum over ends of R v.
+
+v_n is sought among the functions that v itself can be along the held edges, which are
+Hermite polynomials of jets (values and derivatives along the edge) at the vertices;
+m_nn among those that v,n can be. Runs are edges that go on smoothly; where one ends,
+the highest jet of v_n is dropped. At plain vertices there are as many unknowns as
+equations; where supports meet, the smallest solution is taken. The equations then hold
+to round-off, so that the resultants balance the loads.
+
+Signs: n on the right of an edge as it is listed; v_n and R positive up.
+"""
+
+from dataclasses import dataclass
+from functools import cached_property, lru_cache
+from itertools import pairwise
+from math import perm
+
+import numpy as np
+import scipy.sparse as sp
+
+from kplate.arrays import Bools, Floats, Ints, read_only_floats
+from kplate.boundary import (
+    rigid_motions,
+    seam_tangents,
+    second_derivative,
+    side_tangents,
+)
+from kplate.dofs import Numbering
+from kplate.elements.triangle import edge_normals
+from kplate.mesh import Mesh
+from kplate.plate import Plate
+from kplate.quadrature import gauss
+from kplate.solve.static import StaticState
+from kplate.stations import HeldLine, LinePart, stretches
+
+# A force at an end that no corner carries is used only where nothing else will do.
+RELUCTANCE = 1e-4
+# Added to the equations, scaled to one, in case two of them say the same.
+SLACK = 1e-13
+STATIONS = 4  # on each edge
+# Tangents that differ by less than this are one.
+ONE = 1e-12
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class HeldEdges:
+    """Edges along which supports hold the plate.
+
+    Parameters
+    ----------
+    lines : ndarray, shape (m,)
+        Number of the side of each, or the number of sides and that of its seam.
+    edges : ndarray, shape (m, 2)
+        Their vertices.
+    holds, clamps : ndarray, shape (m,)
+        Whether w, and the slope along the normal, are held.
+    joints : ndarray, shape (m, 2)
+        Joint at which each edge begins and ends: the same one for two edges that go on
+        smoothly.
+    senses : ndarray, shape (m, 2)
+        1, or -1 where the joint counts against the edge's sense.
+    ends : ndarray, shape (m, 2)
+        Whether a run of edges ends there.
+    """
+
+    lines: Ints
+    edges: Ints
+    holds: Bools
+    clamps: Bools
+    joints: Ints
+    senses: Floats
+    ends: Bools
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Traces:
+    """What supports bring along held edges, in all cases.
+
+    Parameters
+    ----------
+    numbering : Numbering
+        The unknowns.
+    held : HeldEdges
+        The edges.
+    shears : ndarray, shape (m, 2 j, c)
+        v_n in N/m and its derivatives by the share of the edge's length, at the
+        beginning, then at the end.
+    couples : ndarray, shape (m, 2 j - 1, c)
+        m_nn in N and such derivatives of it, one fewer, then m_nn halfway.
+    unknowns : ndarray, shape (m, d)
+        Unknowns at the beginning, at the end and on the edge.
+    nodal : ndarray, shape (m, d, c)
+        What each edge brings to them.
+    vertices : ndarray, shape (k,)
+        Vertices with a force of their own.
+    forces : ndarray, shape (k, c)
+        Those forces R in N.
+    """
+
+    numbering: Numbering
+    held: HeldEdges
+    shears: Floats
+    couples: Floats
+    unknowns: Ints
+    nodal: Floats
+    vertices: Ints
+    forces: Floats
+
+    @cached_property
+    def motions(self) -> Floats:
+        """Unknowns of w = 1, x and y, (count, 3)."""
+        return rigid_motions(self.numbering)
+
+    def line_reaction(self, edges: Ints, shares: Floats) -> Floats:
+        """v_n in N/m at shares (q,) of the lengths of edges (k,), (k, q, c)."""
+        basis = _basis(self.shears.shape[1] // 2, halfway=False)
+        return _values(basis, shares) @ self.shears[edges]
+
+    def line_moment(self, edges: Ints, shares: Floats) -> Floats:
+        """m_nn in N at shares (q,) of the lengths of edges (k,), (k, q, c)."""
+        basis = _basis(self.couples.shape[1] // 2, halfway=True)
+        return _values(basis, shares) @ self.couples[edges]
+
+
+def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
+    """Held edges of sides, then of seams, and how they join."""
+    sides, seams = len(mesh.side_names), len(mesh.seam_names)
+    edges = np.concatenate([mesh.boundary_edges, mesh.seam_edges])
+    lines = np.concatenate([mesh.boundary_sides, sides + mesh.seam_numbers])
+    names = [*mesh.side_names, *mesh.seam_names]
+    holds = np.array([plate.support(name).holds_deflection for name in names])
+    clamps = np.array([plate.support(name).holds_slope for name in names])
+    joints = np.arange(2 * len(edges)).reshape(-1, 2)
+    senses, ends = np.ones(joints.shape), np.ones(joints.shape, dtype=bool)
+    arriving, leaving = mesh.boundary_joints.T
+    tangents = side_tangents(plate, mesh)
+    one = np.abs(tangents[:, 0] - tangents[:, 1]).max(axis=1) < ONE
+    first, second = lines[arriving], lines[leaving]
+    one &= (holds[first] == holds[second]) & (clamps[first] == clamps[second])
+    joints[leaving[one], 0] = joints[arriving[one], 1]
+    ends[arriving[one], 1] = ends[leaving[one], 0] = False
+    for seam in range(seams):
+        vertices, number, away = seam_tangents(plate, mesh, seam)
+        own = len(mesh.boundary_edges) + np.flatnonzero(mesh.seam_numbers == seam)
+        number = own[number]
+        at = (edges[number, 1] == vertices).astype(np.int64)
+        pairs = np.flatnonzero(
+            (np.bincount(vertices)[vertices[1:]] == 2)
+            & (vertices[1:] == vertices[:-1])
+            & (np.abs(away[1:] + away[:-1]).max(axis=1) < ONE)
+        )
+        a, b = (number[pairs], at[pairs]), (number[pairs + 1], at[pairs + 1])
+        joints[b] = joints[a]
+        senses[b] = np.where(a[1] == b[1], -1.0, 1.0)
+        ends[a] = ends[b] = False
+    kept = (holds | clamps)[lines]
+    return HeldEdges(
+        lines=lines[kept],
+        edges=edges[kept],
+        holds=holds[lines[kept]],
+        clamps=clamps[lines[kept]],
+        joints=joints[kept],
+        senses=senses[kept],
+        ends=ends[kept],
+    )
+
+
+def solve_traces(state: StaticState, carrying: Ints) -> Traces:
+    """Find what the supports bring along held edges.
+
+    Parameters
+    ----------
+    state : StaticState
+        The solved plate, of a C1 element.
+    carrying : ndarray, shape (k,)
+        Vertices at which a corner force can act.
+
+    Returns
+    -------
+    Traces
+    """
+    numbering, mesh = state.constraints.numbering, state.mesh
+    held = held_edges(state.plate, mesh)
+    jets = numbering.per_vertex // 3 + 1  # w along an edge is a cubic or a quintic
+    lengths, on_w, on_slope = _virtual(state, held, jets)
+    own = numbering.at_vertices(held.edges).reshape(len(held.edges), -1)
+    on_edge = numbering.on_edges(mesh.edge_numbers(held.edges))
+    unknowns = np.concatenate([own, on_edge], axis=1)
+    by_length = lengths[:, None, None]
+    shear_work = on_w.swapaxes(1, 2) @ (by_length * _products(jets, halfway=False))
+    couple_work = on_slope.swapaxes(1, 2) @ (
+        by_length * _products(jets - 1, halfway=True)
+    )
+    shear_map, couple_map = _maps(held, lengths, jets)
+    vertices, sizes = _ends(state, held, lengths, carrying)
+    count = shear_map[0].max(initial=-1) + 1
+    A = sp.hstack(
+        [
+            _spread(unknowns, shear_work, shear_map, numbering.count),
+            _spread(unknowns, couple_work, couple_map, numbering.count),
+            sp.csr_array(
+                (
+                    sizes,
+                    (numbering.at_vertices(vertices)[:, 0], np.arange(len(vertices))),
+                ),
+                shape=(numbering.count, len(vertices)),
+            ),
+        ],
+        format="csr",
+    )
+    found = _smallest(state, held, A)
+    shears = _gathered(found[:count], shear_map)
+    couples = _gathered(found[count : len(found) - len(vertices)], couple_map)
+    return Traces(
+        numbering=numbering,
+        held=held,
+        shears=shears,
+        couples=couples,
+        unknowns=unknowns,
+        nodal=shear_work @ shears + couple_work @ couples,
+        vertices=vertices,
+        forces=sizes[:, None] * found[len(found) - len(vertices) :],
+    )
+
+
+def traced(
+    found: Traces, lines: list[HeldLine], at_corners: Floats, index: int
+) -> list[LinePart]:
+    """What held lines bring in case number `index`, without the corner forces.
+
+    `at_corners` (n_points,) are those forces in N. What else acts at the end of a run
+    goes to the lines that meet there in even shares.
+    """
+    left = found.forces[:, index] - at_corners[found.vertices]
+    meeting = np.zeros((len(lines), len(found.vertices)), dtype=bool)
+    for k, line in enumerate(lines):
+        if line.support.holds_deflection:
+            meeting[k] = np.isin(found.vertices, line.edges)
+    shares = left / np.maximum(meeting.sum(axis=0), 1)
+    parts = []
+    for k, line in enumerate(lines):
+        own = np.flatnonzero(found.held.lines == line.number)
+        brought = np.einsum(
+            "edm,ed->m", found.motions[found.unknowns[own]], found.nodal[own, :, index]
+        )
+        at = found.numbering.at_vertices(found.vertices)[:, 0]
+        brought = brought + (shares * meeting[k]) @ found.motions[at]
+        parts.append(_along_line(found, line, own, brought, index))
+    return parts
+
+
+def _along_line(
+    found: Traces, line: HeldLine, own: Ints, brought: Floats, index: int
+) -> LinePart:
+    """Stations of a line, several on each edge, and what it brings there."""
+    number = {tuple(pair): k for k, pair in zip(own, line.edges.tolist(), strict=True)}
+    points = found.numbering.mesh.points
+    share = np.arange(STATIONS + 1) / STATIONS
+    places: list[Floats] = []
+    distances: list[Floats] = []
+    reactions: list[Floats] = []
+    moments: list[Floats] = []
+    start = 0.0
+    for chain in stretches(line.edges):
+        pairs = list(pairwise(chain.tolist()))
+        forward = np.array([pair in number for pair in pairs])
+        edges = np.array(
+            [number[p if f else p[::-1]] for p, f in zip(pairs, forward, strict=True)]
+        )
+        ahead, behind = points[chain[:-1]], points[chain[1:]]
+        v = found.line_reaction(edges, share)[:, :, index]
+        m = found.line_moment(edges, share)[:, :, index]
+        v[~forward], m[~forward] = v[~forward, ::-1], m[~forward, ::-1]
+        step = behind - ahead
+        lengths = np.hypot(*step.T)
+        first = start + np.concatenate([[0.0], np.cumsum(lengths)[:-1]])
+        at = ahead[:, None] + share[:, None] * step[:, None]
+        along = first[:, None] + share * lengths[:, None]
+        # The end of each edge is the start of the next.
+        for values, to in ((along, distances), (v, reactions), (m, moments)):
+            to += [values[:, :-1].ravel(), values[-1:, -1]]
+        places += [at[:, :-1].reshape(-1, 2), at[-1:, -1]]
+        start = float(along[-1, -1])
+    return LinePart(
+        stations=np.concatenate(places),
+        distance=np.concatenate(distances),
+        reaction=np.concatenate(reactions) * line.support.holds_deflection,
+        moment=np.concatenate(moments) * line.support.holds_slope,
+        resultant=brought,
+    )
+
+
+def _virtual(
+    state: StaticState, held: HeldEdges, jets: int
+) -> tuple[Floats, Floats, Floats]:
+    """Lengths, and what unknowns are to w and to the slope along held edges.
+
+    Returns
+    -------
+    lengths : ndarray, shape (m,)
+        In m.
+    on_w : ndarray, shape (m, 2 j, d)
+        Rows of w and its derivatives by the share of the length, at both ends.
+    on_slope : ndarray, shape (m, 2 j - 1, d)
+        Rows of the slope along the normal and of such derivatives, one fewer, at both
+        ends; then that halfway.
+    """
+    mesh, p = state.mesh, state.constraints.numbering.per_vertex
+    m = len(held.edges)
+    step = mesh.points[held.edges[:, 1]] - mesh.points[held.edges[:, 0]]
+    lengths = np.hypot(*step.T)
+    tangent = step / lengths[:, None]
+    normal = np.column_stack([tangent[:, 1], -tangent[:, 0]])
+    w, slope = np.zeros((m, jets, p)), np.zeros((m, jets - 1, p))
+    w[:, 0, 0] = 1.0
+    w[:, 1, 1:3] = step
+    slope[:, 0, 1:3] = normal
+    if jets == 3:
+        w[:, 2, 3:] = second_derivative(step, step)
+        slope[:, 1, 3:] = second_derivative(step, normal)
+    on_w = np.zeros((m, 2 * jets, 2 * p + 1))
+    on_w[:, :jets, :p], on_w[:, jets:, p : 2 * p] = w, w
+    on_slope = np.zeros((m, 2 * jets - 1, 2 * p + 1))
+    on_slope[:, : jets - 1, :p], on_slope[:, jets - 1 : -1, p : 2 * p] = slope, slope
+    triangles = mesh.triangles_at(held.edges)
+    corners = mesh.triangles[triangles]
+    on = (corners[:, :, None] == held.edges[:, None]).any(axis=2)
+    own = edge_normals(mesh.points[corners])[np.arange(m), np.argmin(on, axis=1)]
+    on_slope[:, -1, -1] = np.sign(np.einsum("mc,mc->m", own, normal))
+    return lengths, on_w, on_slope
+
+
+_Map = tuple[Ints, Floats]
+
+
+def _maps(held: HeldEdges, lengths: Floats, jets: int) -> tuple[_Map, _Map]:
+    """Columns of the jets of v_n and m_nn on each edge, -1 for none, and factors."""
+    size = np.zeros(int(held.joints.max(initial=0)) + 1)
+    np.maximum.at(size, held.joints, lengths[:, None])
+    ratio = lengths[:, None] / size[held.joints] * held.senses  # (m, 2)
+    order = np.arange(jets)
+    factors = ratio[:, :, None] ** order
+    kept = np.broadcast_to(held.holds[:, None, None], factors.shape)
+    kept = kept & ~(held.ends[:, :, None] & (order == jets - 1))
+    shears = _numbered(held.joints[:, :, None] * jets + order, kept)
+    order = np.arange(jets - 1)
+    turned = ratio[:, :, None] ** order * held.senses[:, :, None]
+    turned = turned * size[held.joints][:, :, None]
+    kept = np.broadcast_to(held.clamps[:, None, None], turned.shape)
+    m = len(lengths)
+    keys = held.joints[:, :, None] * (jets - 1) + order
+    halfway = keys.max(initial=0) + 1 + np.arange(m)
+    couples = _numbered(
+        np.concatenate([keys.reshape(m, -1), halfway[:, None]], axis=1),
+        np.concatenate([kept.reshape(m, -1), held.clamps[:, None]], axis=1),
+    )
+    turned = np.concatenate([turned.reshape(m, -1), lengths[:, None]], axis=1)
+    return (shears.reshape(m, -1), factors.reshape(m, -1)), (couples, turned)
+
+
+def _numbered(keys: Ints, kept: Bools) -> Ints:
+    """Numbers from 0 for the different keys that are kept, -1 for the others."""
+    result = np.full(keys.shape, -1)
+    result[kept] = np.unique(keys[kept], return_inverse=True)[1]
+    return result
+
+
+def _ends(
+    state: StaticState, held: HeldEdges, lengths: Floats, carrying: Ints
+) -> tuple[Ints, Floats]:
+    """Vertices that may have a force of their own, and the size of its unit.
+
+    They are the ends of runs and the marks along them; a force that is no corner force
+    has a small unit, lest it take what belongs to the line.
+    """
+    ends = held.edges[held.ends & held.holds[:, None]]
+    marks = np.intersect1d(state.mesh.mark_vertices, held.edges)
+    vertices = np.union1d(ends, marks)
+    size = np.zeros(len(state.mesh.points))
+    np.maximum.at(size, held.edges, lengths[:, None])
+    share = np.where(np.isin(vertices, carrying), 1.0, RELUCTANCE)
+    return vertices, size[vertices] * share
+
+
+def _spread(unknowns: Ints, work: Floats, place: _Map, count: int) -> sp.csr_array:
+    """Matrix (count, columns) of what the columns bring to the unknowns."""
+    columns, factors = place
+    some = columns >= 0
+    edge, jet = np.nonzero(some)
+    values = work[edge, :, jet] * factors[some][:, None]
+    rows = unknowns[edge]
+    across = np.broadcast_to(columns[some][:, None], rows.shape)
+    shape = (count, int(columns.max(initial=-1)) + 1)
+    return sp.coo_array(
+        (values.ravel(), (rows.ravel(), across.ravel())), shape=shape
+    ).tocsr()
+
+
+def _gathered(found: Floats, place: _Map) -> Floats:
+    """Jets on each edge (m, j, c) from the columns' values."""
+    columns, factors = place
+    values = np.concatenate([found, np.zeros((1, found.shape[1]))])  # -1: none
+    return values[columns] * factors[..., None]
+
+
+def _smallest(state: StaticState, held: HeldEdges, A: sp.csr_array) -> Floats:
+    """Smallest x with A x equal to the residual in all held directions."""
+    from scipy.sparse.linalg import splu
+
+    B = _held_directions(state, held)
+    right = B @ state.support_forces
+    E = (B @ A).tocsr()
+    size = np.maximum(abs(E).max(axis=1).toarray().ravel(), np.finfo(float).tiny)
+    E, right = (sp.diags_array(1.0 / size) @ E).tocsr(), right / size[:, None]
+    n, k = E.shape[1], E.shape[0]
+    whole = sp.block_array(
+        [[sp.eye_array(n), E.T], [E, -SLACK * sp.eye_array(k)]], format="csc"
+    )
+    factor = splu(whole)
+    x = np.zeros((n, right.shape[1]))
+    for _ in range(3):
+        rest = np.concatenate([np.zeros_like(x), right - E @ x])
+        x += factor.solve(rest)[:n]
+    return x
+
+
+def _held_directions(state: StaticState, held: HeldEdges) -> sp.csr_array:
+    """Rows: directions held at vertices of held edges, and held unknowns of edges."""
+    constraints, numbering = state.constraints, state.constraints.numbering
+    own = np.isin(constraints.vertices, held.edges)
+    frames, fixed = constraints.frames[own], constraints.held[own]
+    at, which = np.nonzero(fixed)
+    columns = numbering.at_vertices(constraints.vertices[own])[at]
+    values = frames[at, :, which]
+    rows = np.broadcast_to(np.arange(len(at))[:, None], columns.shape)
+    vertices = sp.coo_array(
+        (values.ravel(), (rows.ravel(), columns.ravel())),
+        shape=(len(at), numbering.count),
+    )
+    m = len(constraints.on_edges)
+    edges = sp.coo_array(
+        (np.ones(m), (np.arange(m), constraints.on_edges)), shape=(m, numbering.count)
+    )
+    return sp.vstack([vertices, edges], format="csr")
+
+
+@lru_cache
+def _basis(jets: int, *, halfway: bool) -> Floats:
+    """Polynomials on [0, 1] of jets at 0, at 1 and, if so, the value at 1/2.
+
+    Returns
+    -------
+    ndarray, shape (k, k)
+        Coefficients of rising powers, one polynomial a row.
+    """
+    count = 2 * jets + halfway
+    power = np.arange(count)
+    rows: list[Floats] = []
+    for place in (0.0, 1.0):
+        for j in range(jets):
+            falling = np.array([float(perm(k, j)) for k in power.tolist()])
+            steep = falling * place ** np.maximum(power - j, 0)
+            rows.append(steep.astype(np.float64))
+    if halfway:
+        rows.append((0.5**power).astype(np.float64))
+    return read_only_floats(np.linalg.inv(np.array(rows)).T)
+
+
+@lru_cache
+def _products(jets: int, *, halfway: bool) -> Floats:
+    """Integrals over [0, 1] of products of the basis, (k, k)."""
+    basis = _basis(jets, halfway=halfway)
+    s, weights = gauss(len(basis))
+    values = _values(basis, s)
+    return read_only_floats(values.T @ (weights[:, None] * values))
+
+
+def _values(basis: Floats, shares: Floats) -> Floats:
+    """Values of the basis at shares (q,), (q, k)."""
+    return shares[:, None] ** np.arange(len(basis)) @ basis.T
