@@ -1,9 +1,9 @@
-"""Print the handbook cases, or the timings: ``python -m benchmarks [timing]``."""
+"""Print handbook cases, what elements need, or timings: ``python -m benchmarks``."""
 
 import argparse
 import sys
 
-from benchmarks import cases, timing
+from benchmarks import cases, elements, timing
 
 # What a handbook prints, beside what kplate finds: one line for each figure.
 SHOWN = (
@@ -26,10 +26,13 @@ def main() -> int:
         one.add_argument(
             "--all", action="store_true", help="every number of the reference file"
         )
+    commands.add_parser("elements", help="unknowns and seconds to an error")
     commands.add_parser("timing", help="ratios measured on this machine")
     args = parser.parse_args()
     if args.command == "timing":
         timing.main()
+    elif args.command == "elements":
+        elements.main()
     else:
         handbook(args.triangles, every=args.all)
     return 0

@@ -7,6 +7,7 @@ the places that have no finite moment; bands are not estimated.
 import math
 from collections.abc import Sequence
 
+from kplate.choice import AUTO, TRIANGLES, choose
 from kplate.errors import InputError
 from kplate.guard import mesh_guarded
 from kplate.loads import Case, DiscPatch, Load, RectanglePatch
@@ -16,7 +17,6 @@ from kplate.singular import excluded_places, plate_corners
 from kplate.solution import Solution
 from kplate.solve.static import Progress, solve_static
 
-TRIANGLES = 20_000
 # Edges at a place without a finite moment, as a share of the disc that is left out, so
 # that the rim of the disc, which is judged, lies several triangles from its centre: at
 # 0.25 the stress there comes out 5 % high, at 0.125 it stays within 0.2 % from 5,000 to
@@ -36,6 +36,7 @@ def solve(
     *,
     triangles: int | None = None,
     size: float | None = None,
+    element: str = AUTO,
     excluded_radius: float | None = None,
     progress: Progress | None = None,
 ) -> Solution:
@@ -48,9 +49,13 @@ def solve(
     loads : sequence of loads or of Case
         Loads that act together, or cases of them, each solved for itself.
     triangles : int, optional
-        About how many triangles to use; 20,000 if neither this nor `size` is given.
+        About how many triangles to use; if neither this nor `size` is given, as many
+        as suit the element (`kplate.choice.TRIANGLES`).
     size : float, optional
         Length of the triangles' edges in m, instead.
+    element : str, optional
+        "quintic", "hct" or "dkt"; "auto" takes the one that suits the plate
+        (`kplate.choice`).
     excluded_radius : float, optional
         Radius in m of the discs left out of the peaks around places without a finite
         moment; the plate's thickness if left out.
@@ -65,8 +70,8 @@ def solve(
     ------
     InputError
         If loads and cases are mixed, there are none, both `triangles` and `size` are
-        given or one of them or `excluded_radius` is out of range, or a load does not
-        fit the plate.
+        given or one of them or `excluded_radius` is out of range, the element does not
+        suit the plate, or a load does not fit it.
     MeshError
         If the outline cannot be meshed.
     SolveError
@@ -101,17 +106,21 @@ def solve(
     if size is not None and not (math.isfinite(size) and size > 0.0):
         raise InputError(f"the mesh size is {size:g} m; it must be a positive number.")
     cases = _as_cases(loads)
+    if size is not None:
+        triangles = math.ceil(plate.outline.area / (math.sqrt(3.0) / 4.0 * size**2))
+    chosen = choose(plate, element, triangles)
     if size is None:
-        size = size_for(plate.outline, TRIANGLES if triangles is None else triangles)
+        wanted = TRIANGLES[chosen.element] if triangles is None else triangles
+        size = size_for(plate.outline, wanted)
     if progress is not None:
         progress("mesh", 0.0)
     fine = _fine(plate, cases, size, excluded_radius)
     outline = plate.outline
     inside = outline.zones or outline.seams or outline.marks
     mesh = (mesh_guarded if inside else mesh_outline)(
-        outline, size=size, fine=fine, graded=_graded(plate)
+        outline, size=size, fine=fine, graded=corner_grading(plate)
     )
-    state = solve_static(plate, mesh, cases, progress=progress)
+    state = solve_static(plate, mesh, cases, element=chosen.element, progress=progress)
     return Solution(state=state, excluded_radius=excluded_radius)
 
 
@@ -139,7 +148,9 @@ def _fine(
     return [(place, _allowed(least, size, most)) for place, least in wanted]
 
 
-def _graded(plate: Plate) -> list[tuple[tuple[float, float], float]]:
+def corner_grading(
+    plate: Plate, error: float = CORNER_ERROR
+) -> list[tuple[tuple[float, float], float]]:
     """Unbounded corners, with the length of the edges at their very point in m.
 
     The error of the deflection goes with (h/L)^(2 lambda): on a rhombus of 30 degrees
@@ -148,7 +159,7 @@ def _graded(plate: Plate) -> list[tuple[tuple[float, float], float]]:
     found = []
     for corner in plate_corners(plate):
         if corner.unbounded:
-            share = CORNER_ERROR ** (0.5 / corner.exponent.real)
+            share = error ** (0.5 / corner.exponent.real)
             least = max(share, LEAST_SHARE) * plate.outline.span
             found.append((corner.place, least))
     return found

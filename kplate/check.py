@@ -6,7 +6,8 @@ from pathlib import Path
 
 import numpy as np
 
-from kplate.adapt import TRIANGLES, solve
+from kplate.adapt import solve
+from kplate.choice import TRIANGLES, choose
 from kplate.describe import describe
 from kplate.errors import InputError
 from kplate.files import replacing
@@ -105,7 +106,11 @@ def check(
     """
     panel = read_panel(path)
     solution = solve(
-        panel.plate, panel.cases, triangles=panel.triangles, progress=progress
+        panel.plate,
+        panel.cases,
+        triangles=panel.triangles,
+        element=panel.element,
+        progress=progress,
     )
     lines = tuple(_lines(panel, solution))
     judgements = tuple(j for line in lines if (j := line.judgement) is not None)
@@ -398,9 +403,12 @@ def _closing(checked: Checked) -> list[str]:
         )
     mark = legend(checked.lines)
     triangles = len(solution.mesh.triangles)
-    asked = TRIANGLES if panel.triangles is None else panel.triangles
+    chosen = choose(panel.plate, panel.element, panel.triangles)
+    asked = panel.triangles or TRIANGLES[chosen.element]
+    because = f", as {chosen.reason}" if chosen.reason else ""
     lines.append(
-        f"{triangles} triangles ({asked} asked for).{'   ' * bool(mark)}{mark}"
+        f"{triangles} triangles ({asked} asked for): {solution.state.element.name}"
+        f"{because}.{'   ' * bool(mark)}{mark}"
     )
     return [*lines, CAUTION]
 

@@ -13,6 +13,8 @@ from pathlib import Path
 from typing import Any
 
 from kplate.caseloads import read_cases
+from kplate.choice import AUTO
+from kplate.elements import ELEMENTS
 from kplate.errors import InputError
 from kplate.fields import Fields, closest, shown, within
 from kplate.limits import Limits
@@ -59,6 +61,7 @@ PANEL = {
     "tolerance": '"1 %"',
     "held in plane": '"no"',
     "triangles": "20000",
+    "element": '"auto"',
 }
 
 
@@ -82,6 +85,8 @@ class Panel:
         Whether the edges are held in the plane of the plate.
     triangles : int, optional
         How many triangles to mesh with, instead of meshing to the tolerance.
+    element : str
+        Name of the element, or "auto".
     stock : tuple of float
         Thicknesses to choose from in m, as listed; empty where none are stated.
     units : DisplayUnits
@@ -104,6 +109,7 @@ class Panel:
     tolerance: float | None
     held_in_plane: bool | None
     triangles: int | None
+    element: str
     stock: tuple[float, ...]
     units: DisplayUnits
     notes: tuple[str, ...]
@@ -152,6 +158,7 @@ def read_panel(path: Path) -> Panel:
         tolerance=_tolerance(head),
         held_in_plane=_held_in_plane(head),
         triangles=_triangles(head),
+        element=_element(head),
         stock=stock,
         units=_display_units(stated.length, stress),
         notes=stated.notes,
@@ -275,6 +282,13 @@ def _triangles(head: Fields) -> int | None:
     if not 1 <= count <= MOST_TRIANGLES:
         raise head.refuse("triangles", f"it must lie between 1 and {MOST_TRIANGLES}.")
     return count
+
+
+def _element(head: Fields) -> str:
+    """Name of the element; the one that suits the plate where the file has none."""
+    if "element" not in head:
+        return AUTO
+    return head.choice("element", (AUTO, *ELEMENTS))
 
 
 def _display_units(length: Unit, stress: Unit | None) -> DisplayUnits:

@@ -5,7 +5,8 @@ the unknowns less the loads, so that with the loads they balance to round-off. A
 vertex they are a force R and two couples, paired with w and its slopes. A corner force
 is the jump of m_ns there (arriving side less leaving side); the rest of R belongs to
 the sides. Line reactions of C1 elements are found in the space of their edge traces
-(`kplate.traces`), those of DKT from windows of vertices (`kplate.stations`).
+(`kplate.traces`); those of DKT, and of all where a held side is round, from windows of
+vertices (`kplate.stations`).
 
 Signs: forces and line reactions v_n positive when the support pushes the plate up; a
 corner that must be held down has a negative force. Moments about the x and y axes
@@ -20,7 +21,7 @@ import numpy as np
 from kplate.arrays import Floats
 from kplate.boundary import rigid_motions
 from kplate.loads import PointForce
-from kplate.mesh import Mesh
+from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.polygon import SNAP
 from kplate.raw import RawMoments
 from kplate.recovery import SmoothedMoments
@@ -294,10 +295,12 @@ def _side_reactions(
     """Reactions of held sides and seams, less the corner forces."""
     mesh, (corners, excluded) = state.mesh, corners_and_discs
     lines = held_lines(state.plate, mesh)
+    if not lines:
+        return []
     at_corners = np.zeros(len(mesh.points))
     for corner_force, vertex in corners:
         at_corners[vertex] += np.nan_to_num(corner_force.force.value)
-    if isinstance(recovered, RawMoments):
+    if isinstance(recovered, RawMoments) and _straight(state):
         parts = traced(recovered.traces, lines, at_corners, index)
     else:
         parts = windowed(mesh, lines, *_at_vertices(state, at_corners, index))
@@ -321,6 +324,15 @@ def _side_reactions(
     ]
 
 
+def _straight(state: StaticState) -> bool:
+    """Whether no held side is round: on chords, traces swing beside a round one."""
+    mesh = state.mesh
+    curved = mesh.boundary_sides[mesh.boundary_circles != STRAIGHT_EDGE]
+    return not any(
+        state.plate.support(mesh.side_names[side]).holds for side in np.unique(curved)
+    )
+
+
 def _at_vertices(
     state: StaticState, at_corners: Floats, index: int
 ) -> tuple[Floats, Floats]:
@@ -328,11 +340,18 @@ def _at_vertices(
     numbering, mesh = state.constraints.numbering, state.mesh
     rest = numbering.by_vertex(state.support_forces)[:, :3, index].copy()
     rest[:, 0] -= at_corners
+    motions = numbering.by_vertex(rigid_motions(numbering))[:, :3]
+    if numbering.per_edge:  # couples in the middle of edges, to both their ends
+        own = numbering.on_edges(np.arange(len(mesh.edges)))[:, 0]
+        normals = rigid_motions(numbering)[own, 1:]
+        couples = 0.5 * state.support_forces[own, index, None] * normals
+        for end in (0, 1):
+            np.add.at(rest[:, 1:], mesh.edges[:, end], couples)
     lined = np.zeros(len(mesh.points), dtype=bool)
     for line in held_lines(state.plate, mesh):
         lined[line.edges] = True
     rest[~lined] = 0.0  # what point supports bring
-    return rest, numbering.by_vertex(rigid_motions(numbering))[:, :3]
+    return rest, motions
 
 
 def _resultant(work: Floats) -> Resultant:

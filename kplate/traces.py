@@ -189,7 +189,8 @@ def solve_traces(state: StaticState, carrying: Ints) -> Traces:
     held = held_edges(state.plate, mesh)
     jets = numbering.per_vertex // 3 + 1  # w along an edge is a cubic or a quintic
     lengths, on_w, on_slope = _virtual(state, held, jets)
-    own = numbering.at_vertices(held.edges).reshape(len(held.edges), -1)
+    own = numbering.at_vertices(held.edges)
+    own = own.reshape(len(own), 2 * numbering.per_vertex)
     on_edge = numbering.on_edges(mesh.edge_numbers(held.edges))
     unknowns = np.concatenate([own, on_edge], axis=1)
     by_length = lengths[:, None, None]

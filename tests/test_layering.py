@@ -26,7 +26,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"guard"},
     {"outlinefiles"},
     {"plate"},
-    {"dofs"},
+    {"dofs", "choice"},
     {"boundary", "singular", "pattern"},
     {"assembly", "loading"},
     {"solve"},

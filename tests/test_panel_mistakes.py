@@ -22,7 +22,8 @@ def read(tmp_path):
 LOAD_1 = "[[case]] 1 'wheel', load 1"
 NAMES = "the names are 'south', 'east', 'north', 'west'."
 HEAD_FIELDS = (
-    "name, revision, author, thickness, material, tolerance, held in plane, triangles"
+    "name, revision, author, thickness, material, tolerance, held in plane, triangles, "
+    "element"
 )
 MISTAKES = [
     (

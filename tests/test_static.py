@@ -71,7 +71,7 @@ def test_supports_balance_every_kind_of_load(all_loads):
     loads = nodal_resultant(all_loads, all_loads.forces)
     supports = nodal_resultant(all_loads, all_loads.support_forces)
     scale = np.abs(loads).max(axis=0)
-    assert (np.abs(loads + supports) < 1e-12 * scale).all()
+    assert (np.abs(loads + supports) < 1e-11 * scale).all()
 
 
 def test_work_of_the_loads_is_twice_the_energy(all_loads):

@@ -200,7 +200,9 @@ class Piecewise:
         local = [barycentrics @ np.linalg.inv(piece) for piece in self.pieces]
         holder = np.argmax([own.min(axis=-1) for own in local], axis=0)
         for k, own in enumerate(local):
-            yield k, own, holder == k
+            held = holder == k
+            if held.any():
+                yield k, own, held
 
 
 def curvature_of_pairs(gradients: Floats) -> Floats:

@@ -14,6 +14,7 @@ from matplotlib.colors import to_rgba
 from matplotlib.figure import Figure
 
 from kplate.adapt import solve
+from kplate.elements.triangle import area
 from kplate.errors import InputError
 from kplate.loads import Case, Pressure
 from kplate.materials import ALUMINIUM
@@ -168,7 +169,7 @@ def test_colours_of_the_shape_run_from_pale_at_zero_to_dark_at_the_peak(lid):
     w = 1e3 * lid.point_fields()["deflection [m]"]
     drawn = bands("deflection", w, 1e3 * lid.peak("deflection").value)
     colours = drawn.on_triangles(lid.field_triangles)
-    means = w[lid.mesh.triangles].mean(axis=1)
+    means = w[lid.field_triangles].mean(axis=1)
     brightness = colours[:, :3] @ (0.299, 0.587, 0.114)
     order = np.argsort(means)
     assert np.corrcoef(means, brightness)[0, 1] > 0.97
@@ -196,7 +197,7 @@ def test_the_shape_has_the_stated_scale(lid):
     caption = next(t for t in words(drawn) if t.startswith("Deflected shape"))
     scale = float(caption.rpartition(" x ")[2])
     w = 1e3 * lid.point_fields()["deflection [m]"]
-    bent = np.c_[1e3 * lid.mesh.points, scale * w]
+    bent = np.c_[1e3 * lid.field_points, scale * w]
     corners = {
         tuple(np.round(p, 6))
         for path in surface_of(drawn).get_paths()
@@ -209,12 +210,12 @@ def test_the_shape_has_the_stated_scale(lid):
 def test_round_off_above_zero_is_zero_on_plan_and_shape(lid):
     """Clamped corners lift by some 1e-6 of the peak; they keep the colour of zero."""
     w = 1e3 * lid.point_fields()["deflection [m]"]
-    corner = np.hypot(*(lid.mesh.points - (0.8, 0.6)).T) < 0.1
+    corner = np.hypot(*(lid.field_points - (0.8, 0.6)).T) < 0.1
     lifted = np.where(corner, 1e-6, w)
     drawn = bands("deflection", lifted, w.min())
     assert drawn.levels[-1] == 0.0
     pale = drawn.colours()[0](0.9999999)
-    inside = corner[lid.mesh.triangles].all(axis=1)
+    inside = corner[lid.field_triangles].all(axis=1)
     assert inside.any()
     np.testing.assert_allclose(
         drawn.on_triangles(lid.field_triangles)[inside],
@@ -272,7 +273,9 @@ def test_stress_beyond_rare_corners_does_not_set_the_colours(cover):
     _, bar = plan_of(drawn)
     top = bar.get_yticks()[-1]
     corners = cover.field_triangles
-    areas = np.bincount(corners.ravel(), np.repeat(cover.mesh.areas, 3))
+    areas = np.bincount(
+        corners.ravel(), np.repeat(area(cover.field_points[cover.field_triangles]), 3)
+    )
     assert areas[stress > top].sum() < 0.02 * areas.sum()
     assert top < 0.6 * peak
     assert bar.get_yticks()[0] == 0.0
@@ -433,7 +436,9 @@ def test_stress_jumps_at_the_edge_of_a_thicker_zone(deck):
     stress = deck.point_fields()["von Mises [Pa]"] / 1e6
     peak = deck.peak("von Mises").value / 1e6
     corners = deck.field_triangles.ravel()
-    areas = np.bincount(corners, np.repeat(deck.mesh.areas, 3))
+    areas = np.bincount(
+        corners, np.repeat(area(deck.field_points[deck.field_triangles]), 3)
+    )
     colours = bands("von Mises", stress, peak, areas).on_triangles(deck.field_triangles)
     found = surface_of(drawn).get_facecolors()
     found = found[found[:, 3] > 0.0]

@@ -364,7 +364,9 @@ def test_the_record_names_what_the_vtu_file_cannot(cover, record, tmp_path):
     south = written.cell_data["side"] == names.index("south")
     assert not written.extract_cells(south).points[:, 1].any()
     assert record["mesh"]["triangles"] == len(cover.mesh.triangles)
-    assert record["mesh"]["unknowns"] == 3 * len(cover.mesh.points)
+    assert record["mesh"]["unknowns"] == cover.state.constraints.numbering.count
+    assert record["mesh"]["field triangles"] == len(cover.field_triangles)
+    assert record["mesh"]["field points"] == len(cover.field_points)
 
 
 @pytest.mark.parametrize("value", [math.nan, math.inf, np.ones(2), object()])

@@ -108,7 +108,7 @@ def test_the_plate_is_bent_by_the_scale_times_the_deflection(stage, cover):
     for scale in (0.0, 1.0, 123.0):
         stage.set_scale(scale)
         for surface in (stage.plate, stage.rim):
-            np.testing.assert_array_equal(surface.points[:, :2], cover.mesh.points)
+            np.testing.assert_array_equal(surface.points[:, :2], cover.field_points)
             np.testing.assert_allclose(surface.points[:, 2], scale * w, atol=1e-15)
     assert not stage.result.fields.points[:, 2].any()  # the nodes themselves stay
 
@@ -165,7 +165,7 @@ def test_places_without_a_finite_moment_do_not_set_the_colours(stage, cover):
     stage.shade = next(s for s in stage.shades if s.name == "von Mises")
     stage.refresh()
     stress = cover.point_fields(case="crowd")["von Mises [Pa]"] / 1e6
-    far = np.hypot(*(cover.mesh.points - (1.0, 0.8)).T) >= cover.plate.thickness
+    far = np.hypot(*(cover.field_points - (1.0, 0.8)).T) >= cover.plate.thickness
     _, high = stage.plotter.actors["plate"].mapper.scalar_range
     assert high == pytest.approx(stress[far].max())
     assert high < stress.max()

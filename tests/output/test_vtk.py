@@ -23,17 +23,17 @@ def renamed(solution, *names):
 
 
 def test_points_and_cells_come_back_as_they_are(cover, tmp_path):
-    mesh, path = cover.mesh, tmp_path / "cover.vtu"
+    samples, path = cover.samples, tmp_path / "cover.vtu"
     assert write_vtk(cover, path) == path
     found = pyvista.read(path)
     assert found.points.dtype == np.float64
-    np.testing.assert_array_equal(found.points[:, :2], mesh.points)
+    np.testing.assert_array_equal(found.points[:, :2], samples.points)
     assert not found.points[:, 2].any()
-    n, m = len(mesh.triangles), len(mesh.boundary_edges)
+    n, m = len(samples.triangles), len(samples.rim)
     kinds = np.repeat([pyvista.CellType.TRIANGLE, pyvista.CellType.LINE], [n, m])
     np.testing.assert_array_equal(found.celltypes, kinds)
-    triangles = np.c_[np.full(n, 3), mesh.triangles].ravel()
-    lines = np.c_[np.full(m, 2), mesh.boundary_edges].ravel()
+    triangles = np.c_[np.full(n, 3), samples.triangles].ravel()
+    lines = np.c_[np.full(m, 2), samples.rim].ravel()
     np.testing.assert_array_equal(found.cells, np.concatenate([triangles, lines]))
 
 
@@ -60,15 +60,16 @@ def test_one_case_keeps_the_names_of_its_fields(lid, tmp_path):
 
 
 def test_cells_carry_zone_and_side(cover, tmp_path):
-    mesh = cover.mesh
+    mesh, samples = cover.mesh, cover.samples
     found = pyvista.read(write_vtk(cover, tmp_path / "cover.vtu"))
-    n, m = len(mesh.triangles), len(mesh.boundary_edges)
+    n, m = len(samples.triangles), len(samples.rim)
     assert sorted(found.cell_data.keys()) == ["side", "zone"]
     np.testing.assert_array_equal(
-        found.cell_data["zone"], np.r_[mesh.zones, np.full(m, -1)]
+        found.cell_data["zone"], np.r_[mesh.zones[samples.owners], np.full(m, -1)]
     )
     np.testing.assert_array_equal(
-        found.cell_data["side"], np.r_[np.full(n, -1), mesh.boundary_sides]
+        found.cell_data["side"],
+        np.r_[np.full(n, -1), mesh.boundary_sides[samples.rim_owners]],
     )
     # The lines of a side lie on it: those of the shaft on its circle.
     shaft = found.cell_data["side"][n:] == mesh.side_names.index("shaft")
@@ -125,13 +126,14 @@ def test_a_failing_writer_leaves_the_old_file(lid, tmp_path, monkeypatch):
 
 
 def test_what_is_written_is_read_back(cover, tmp_path):
-    mesh = cover.mesh
+    mesh, samples = cover.mesh, cover.samples
     found = read_vtu(write_vtk(cover, tmp_path / "cover.vtu"))
-    np.testing.assert_array_equal(found.points[:, :2], mesh.points)
-    np.testing.assert_array_equal(found.triangles, mesh.triangles)
-    np.testing.assert_array_equal(found.lines, mesh.boundary_edges)
-    np.testing.assert_array_equal(found.cell_data["zone"][0], mesh.zones)
-    np.testing.assert_array_equal(found.cell_data["side"][1], mesh.boundary_sides)
+    np.testing.assert_array_equal(found.points[:, :2], samples.points)
+    np.testing.assert_array_equal(found.triangles, samples.triangles)
+    np.testing.assert_array_equal(found.lines, samples.rim)
+    zones, sides = found.cell_data["zone"][0], found.cell_data["side"][1]
+    np.testing.assert_array_equal(zones, mesh.zones[samples.owners])
+    np.testing.assert_array_equal(sides, mesh.boundary_sides[samples.rim_owners])
     for name, values in cover.point_fields(case="jack").items():
         np.testing.assert_array_equal(found.point_data[f"jack: {name}"], values)
 
