@@ -15,6 +15,7 @@ from kplate.meshing import mesh_outline, refined_triangles, size_for
 from kplate.plate import Plate
 from kplate.singular import excluded_places, plate_corners
 from kplate.solution import Solution
+from kplate.solve.dual import solve_dual
 from kplate.solve.static import Progress, solve_static
 
 # Edges at a place without a finite moment, as a share of the disc that is left out, so
@@ -25,6 +26,8 @@ RIM_SHARE = 0.125
 # Error wanted from the very point of an unbounded corner; no edge is shorter than this
 # share of the span, below which round-off would spoil the equations.
 CORNER_ERROR, LEAST_SHARE = 1e-3, 1e-6
+# The same for corners where only the shear is unbounded: it costs few triangles there.
+SHEAR_ERROR = 1e-6
 ENOUGH, MOST = 2_500, 100_000  # triangles at a refined place, at all of them
 # Edges at the centre of a patch, as a share of its smaller length.
 PATCH_SHARE = 0.125
@@ -38,6 +41,7 @@ def solve(
     size: float | None = None,
     element: str = AUTO,
     excluded_radius: float | None = None,
+    balanced: bool = False,
     progress: Progress | None = None,
 ) -> Solution:
     """Solve the bending of a plate under its loads.
@@ -59,6 +63,9 @@ def solve(
     excluded_radius : float, optional
         Radius in m of the discs left out of the peaks around places without a finite
         moment; the plate's thickness if left out.
+    balanced : bool, optional
+        Whether to find balanced moments too (`Solution.balanced_moments`), on the same
+        mesh; they take several times as long.
     progress : callable, optional
         Called with a stage and the fraction done.
 
@@ -121,7 +128,8 @@ def solve(
         outline, size=size, fine=fine, graded=corner_grading(plate)
     )
     state = solve_static(plate, mesh, cases, element=chosen.element, progress=progress)
-    return Solution(state=state, excluded_radius=excluded_radius)
+    dual = solve_dual(plate, mesh, cases) if balanced else None
+    return Solution(state=state, excluded_radius=excluded_radius, dual=dual)
 
 
 def _fine(
@@ -151,15 +159,16 @@ def _fine(
 def corner_grading(
     plate: Plate, error: float = CORNER_ERROR
 ) -> list[tuple[tuple[float, float], float]]:
-    """Unbounded corners, with the length of the edges at their very point in m.
+    """Corners with unbounded shear, with the length of the edges there in m.
 
     The error of the deflection goes with (h/L)^(2 lambda): on a rhombus of 30 degrees
     this grading takes it from 4.4 % to 0.2 %, on a 12-gon from 15 % to 0.7 %.
     """
     found = []
     for corner in plate_corners(plate):
-        if corner.unbounded:
-            share = error ** (0.5 / corner.exponent.real)
+        if corner.unbounded or corner.shear_unbounded:
+            wanted = error if corner.unbounded else min(error, SHEAR_ERROR)
+            share = wanted ** (0.5 / corner.exponent.real)
             least = max(share, LEAST_SHARE) * plate.outline.span
             found.append((corner.place, least))
     return found

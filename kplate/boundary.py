@@ -23,6 +23,7 @@ import numpy as np
 from kplate.arrays import Bools, Floats, Ints
 from kplate.dofs import Numbering
 from kplate.elements.triangle import edge_normals
+from kplate.errors import SolveError
 from kplate.mesh import Mesh
 from kplate.plate import Plate
 
@@ -150,6 +151,25 @@ def free_motions(constraints: Constraints) -> list[str]:
     values, vectors = np.linalg.eigh(held.T @ held)
     loose = vectors[:, values <= RANK_CUT * float(values[-1])]
     return _name_motions(loose, centre, size)
+
+
+def check_held(plate: Plate, mesh: Mesh) -> None:
+    """Refuse a plate that can still move as a rigid body.
+
+    Raises
+    ------
+    SolveError
+        Naming the motions.
+    """
+    loose = free_motions(
+        constrain(plate, Numbering(mesh=mesh, per_vertex=3, per_edge=0))
+    )
+    if loose:
+        plural = "s" if len(loose) > 1 else ""
+        raise SolveError(
+            f"the plate can still move as a rigid body ({len(loose)} free "
+            f"motion{plural}: {', '.join(dict.fromkeys(loose))}); add a support."
+        )
 
 
 def rigid_motions(numbering: Numbering) -> Floats:

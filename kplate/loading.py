@@ -5,14 +5,14 @@ it covers, a line along edges, a point where it is. Triangles go through in bloc
 which bounds the memory.
 """
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
+from typing import Protocol
 
 import numpy as np
 
 from kplate import cutting
 from kplate.arrays import Floats, Ints
 from kplate.dofs import Numbering, add_up
-from kplate.elements import Element
 from kplate.elements.triangle import Geometry
 from kplate.errors import InputError
 from kplate.loads import (
@@ -30,15 +30,35 @@ from kplate.loads import (
 )
 from kplate.mesh import Mesh
 from kplate.plate import Plate
-from kplate.quadrature import gauss
+from kplate.quadrature import Rule, gauss
 
 BLOCK = 1024  # triangles
 # Share of a patch that may be missing, as round-off, before it is off the plate.
 MISSING = 1e-9
 
 
+class Shape(Protocol):
+    """What loads ask of an element or a dual; `elements.Element` says what it is."""
+
+    @property
+    def load_rule(self) -> Rule:
+        """Quadrature of loads."""
+
+    @property
+    def pieces(self) -> Floats:
+        """Pieces on which w is one polynomial."""
+
+    @property
+    def load(self) -> Callable[[Geometry, Floats], Floats]:
+        """Consistent loads of a pressure."""
+
+    @property
+    def evaluate(self) -> Callable[[Floats, Floats], Floats]:
+        """Rows of w and slopes."""
+
+
 def load_vector(
-    plate: Plate, element: Element, numbering: Numbering, loads: Sequence[Load]
+    plate: Plate, element: Shape, numbering: Numbering, loads: Sequence[Load]
 ) -> Floats:
     """Consistent forces on all unknowns, (count,).
 
@@ -63,7 +83,7 @@ def load_vector(
 
 
 def _add_pressure(
-    forces: Floats, element: Element, numbering: Numbering, plate: Plate, load: Load
+    forces: Floats, element: Shape, numbering: Numbering, plate: Plate, load: Load
 ) -> None:
     mesh = numbering.mesh
     rule = element.load_rule
@@ -144,7 +164,7 @@ def _depth(load: Hydrostatic, points: Floats) -> Floats:
 
 
 def _add_waterline(
-    forces: Floats, element: Element, numbering: Numbering, load: Hydrostatic
+    forces: Floats, element: Shape, numbering: Numbering, load: Hydrostatic
 ) -> Ints:
     """Add the triangles that the liquid's surface cuts; return those wholly wet."""
     mesh = numbering.mesh
@@ -173,7 +193,7 @@ def _add_waterline(
 
 def _add_patch(
     forces: Floats,
-    element: Element,
+    element: Shape,
     numbering: Numbering,
     load: RectanglePatch | DiscPatch,
 ) -> None:
@@ -201,7 +221,7 @@ def _add_patch(
 
 
 def _pieces(
-    mesh: Mesh, element: Element, triangles: Ints | None = None
+    mesh: Mesh, element: Shape, triangles: Ints | None = None
 ) -> tuple[Floats, Ints]:
     """Pieces on which w is one polynomial, (m, 3, 2), and their triangles, (m,)."""
     chosen = np.arange(len(mesh.triangles)) if triangles is None else triangles
@@ -212,7 +232,7 @@ def _pieces(
 
 def _add_parts(
     forces: Floats,
-    element: Element,
+    element: Shape,
     numbering: Numbering,
     parts: cutting.Parts,
     owner: Ints,
@@ -238,7 +258,7 @@ def _add_parts(
 
 def _add_point(
     forces: Floats,
-    element: Element,
+    element: Shape,
     numbering: Numbering,
     load: PointForce | PointMoment,
 ) -> None:
@@ -265,7 +285,7 @@ def _add_point(
 
 def _add_line(
     forces: Floats,
-    element: Element,
+    element: Shape,
     numbering: Numbering,
     load: LineForce | EdgeMoment,
 ) -> None:

@@ -83,6 +83,7 @@ class RawMoments:
                 [p.rim + o for p, o in zip(parts, offsets, strict=False)]
             ),
             rim_owners=np.concatenate([part.rim_owners for part in parts]),
+            holders=np.concatenate([part.holders for part in parts]),
             sections=np.concatenate([part.sections for part in parts]),
             bent=np.concatenate([part.bent for part in parts]),
             moments=np.concatenate([part.moments for part in parts]),
@@ -192,6 +193,7 @@ class RawMoments:
             owners=np.concatenate(owners),
             rim=rim,
             rim_owners=rim_owners,
+            holders=every,
             sections=mesh.zones[every],
             bent=values[:, _BENT],
             moments=values[:, _MOMENTS],

@@ -32,6 +32,9 @@ from kplate.supports import Support
 from kplate.traces import traced
 from kplate.values import Value
 
+# Beside a place without a finite shear the reaction swings over two edges.
+UNRESOLVED = 2.0
+
 
 @dataclass(frozen=True, kw_only=True)
 class Resultant:
@@ -306,10 +309,11 @@ def _side_reactions(
         parts = windowed(mesh, lines, *_at_vertices(state, at_corners, index))
     case = state.cases[index].name
     discs = [disc for disc in excluded if disc.case in ("", case)]
-    for part in parts:
-        for disc in discs:
+    for disc in discs:
+        radius = max(disc.radius * (1.0 + 1e-9), UNRESOLVED * _edge_at(mesh, disc))
+        for part in parts:
             reach = np.hypot(*(part.stations - disc.place).T)
-            part.reaction[reach <= disc.radius * (1.0 + 1e-9)] = np.nan
+            part.reaction[reach <= radius] = np.nan
     return [
         SideReaction(
             side=line.name,
@@ -322,6 +326,14 @@ def _side_reactions(
         )
         for line, part in zip(lines, parts, strict=True)
     ]
+
+
+def _edge_at(mesh: Mesh, disc: Excluded) -> float:
+    """Length of the longest boundary edge at the centre of a disc, or 0."""
+    start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
+    off = [np.hypot(*(ends - disc.place).T) for ends in (start, end)]
+    at = np.minimum(*off) < SNAP * np.sqrt(mesh.area)
+    return float(mesh.boundary_lengths[at].max(initial=0.0))
 
 
 def _straight(state: StaticState) -> bool:

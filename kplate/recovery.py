@@ -131,12 +131,15 @@ class SmoothedMoments:
         """The fields at the nodes themselves."""
         mesh, nodes = self.state.mesh, self.nodes
         bent = self.state.constraints.numbering.by_vertex(self.state.unknowns)
+        holders = np.empty(len(nodes.vertices), dtype=np.int64)
+        holders[nodes.triangles] = np.arange(len(mesh.triangles))[:, None]
         return Samples(
             points=mesh.points[nodes.vertices],
             triangles=nodes.triangles,
             owners=np.arange(len(mesh.triangles)),
             rim=nodes.of_edges(mesh, mesh.boundary_edges),
             rim_owners=np.arange(len(mesh.boundary_edges)),
+            holders=holders,
             sections=nodes.sections,
             bent=bent[nodes.vertices, :3],
             moments=self.moments,

@@ -29,6 +29,8 @@ class Samples:
         Numbers of the points of each piece of the boundary.
     rim_owners : ndarray, shape (k,)
         Boundary edge of the mesh that each such piece is a part of.
+    holders : ndarray, shape (n,)
+        A triangle of the mesh that holds each point.
     sections : ndarray, shape (n,)
         Section of the plate at each point.
     bent : ndarray, shape (n, 3, c)
@@ -44,6 +46,7 @@ class Samples:
     owners: Ints
     rim: Ints
     rim_owners: Ints
+    holders: Ints
     sections: Ints
     bent: Floats
     moments: Floats

@@ -67,6 +67,17 @@ class Corner:
         )
 
     @property
+    def shear_unbounded(self) -> bool:
+        """Whether the effective shear grows without bound towards it.
+
+        It goes with r^(lambda - 2). At lambda = 1 (a hinged right angle, a line of
+        symmetry square to a clamped side) the field is a quadratic, without shear.
+        """
+        exponent = self.exponent.real
+        quadratic = abs(exponent - 1.0) <= corners.UNBOUNDED
+        return exponent < 2.0 - corners.UNBOUNDED and not quadratic
+
+    @property
     def both_held(self) -> bool:
         """Whether both sides hold the deflection."""
         return all(s.holds_deflection for s in self.supports)
@@ -108,20 +119,12 @@ class Excluded:
 
 
 def shear_places(plate: Plate, radius: float) -> tuple[Excluded, ...]:
-    """Corners at which moments are finite and the effective shear is not.
-
-    It goes with r^(lambda - 2). At lambda = 1 (a hinged right angle, a line of symmetry
-    square to a clamped side) the field is a quadratic, which has no shear.
-    """
-    found = []
-    for corner in plate_corners(plate):
-        exponent = corner.exponent.real
-        quadratic = abs(exponent - 1.0) <= corners.UNBOUNDED
-        if exponent < 2.0 - corners.UNBOUNDED and not quadratic:
-            found.append(
-                Excluded(place=corner.place, radius=radius, reason=corner.words)
-            )
-    return tuple(found)
+    """Corners at which moments are finite and the effective shear is not."""
+    return tuple(
+        Excluded(place=corner.place, radius=radius, reason=corner.words)
+        for corner in plate_corners(plate)
+        if corner.shear_unbounded
+    )
 
 
 def plate_corners(plate: Plate) -> tuple[Corner, ...]:

@@ -31,6 +31,7 @@ from kplate.recovery import (
 from kplate.rims import outside, rim, stationary
 from kplate.samples import Samples
 from kplate.singular import Excluded, excluded_places, shear_places
+from kplate.solve.dual import DualState
 from kplate.solve.static import StaticState
 from kplate.values import Face, Value
 
@@ -60,10 +61,13 @@ class Solution:
     excluded_radius : float, optional
         Radius in m of the discs left out of the peaks of moments and stresses; the
         plate's thickness if left out.
+    dual : DualState, optional
+        Balanced moments on the same mesh.
     """
 
     state: StaticState
     excluded_radius: float | None = None
+    dual: DualState | None = None
 
     @property
     def plate(self) -> Plate:
@@ -100,6 +104,26 @@ class Solution:
         """
         found = self._recovered.moments_at(*self.mesh.locate(points))
         return found[:, :, self._index(case)]
+
+    def balanced_moments(self, points: ArrayLike, *, case: str | None = None) -> Floats:
+        """Moments of the dual in N at points (k, 2) in m, (k, 3): the safe field.
+
+        They balance the loads in every triangle and across every edge, wherever the
+        loads are no more than linear there, so that they may be designed for by the
+        lower-bound theorem of plasticity. They are less smooth than `moments`.
+
+        Raises
+        ------
+        InputError
+            If the plate was solved without them, or a point is not on the plate.
+        """
+        if self.dual is None:
+            raise InputError(
+                "balanced moments were not asked for; call solve(..., balanced=True)."
+            )
+        triangles, barycentrics = self.mesh.locate(points)
+        found = self.dual.moments_at(triangles, barycentrics[:, None])
+        return found[:, 0, :, self._index(case)]
 
     def principal_moments(
         self, points: ArrayLike, *, case: str | None = None
@@ -238,6 +262,10 @@ class Solution:
                 :, 0
             ]
         fields["von Mises [Pa]"] = von_mises(surface_stress(moments, h, "bottom"))
+        if self.dual is not None:
+            at = self.mesh.barycentrics(samples.holders, samples.points)
+            own = self.dual.moments_at(samples.holders, at[:, None])
+            fields["balanced moments [N]"] = own[:, 0, :, index]
         return fields
 
     @property

@@ -8,7 +8,7 @@ import numpy as np
 
 from kplate import assembly, loading
 from kplate.arrays import Floats
-from kplate.boundary import Constraints, constrain, free_motions
+from kplate.boundary import Constraints, check_held, constrain
 from kplate.dofs import Numbering
 from kplate.elements import ELEMENTS, Element
 from kplate.errors import InputError, SolveError
@@ -61,8 +61,12 @@ class StaticState:
         """Strain energy of each case in J, summed over the triangles, (c,)."""
         numbering, total = self.constraints.numbering, np.zeros(len(self.cases))
         for block, K in assembly.element_stiffness(self.plate, self.mesh, self.element):
-            u = self.unknowns[numbering.table[block]]
-            total += 0.5 * np.einsum("nic,nic->c", u, K @ u)
+            bent = assembly.without_rigid_motion(
+                self.unknowns[numbering.table[block]],
+                self.mesh.points[self.mesh.triangles[block]],
+                numbering,
+            )
+            total += 0.5 * np.einsum("nic,nic->c", bent, K @ bent)
         return total
 
     @property
@@ -115,14 +119,8 @@ def solve_static(
     numbering = Numbering(
         mesh=mesh, per_vertex=chosen.per_vertex, per_edge=chosen.per_edge
     )
+    check_held(plate, mesh)
     constraints = constrain(plate, numbering)
-    loose = free_motions(constraints)
-    if loose:
-        plural = "s" if len(loose) > 1 else ""
-        raise SolveError(
-            f"the plate can still move as a rigid body ({len(loose)} free "
-            f"motion{plural}: {', '.join(dict.fromkeys(loose))}); add a support."
-        )
     report("loads", 0.1)
     forces = np.column_stack(
         [loading.load_vector(plate, chosen, numbering, case.loads) for case in cases]
