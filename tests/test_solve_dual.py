@@ -362,7 +362,12 @@ def test_unknown_orders_are_refused():
     with pytest.raises(
         InputError, match=r"^order = 4; the dual has the orders 2 and 3\.$"
     ):
-        solve_dual(rectangle(CLAMPED), grid(2), [], order=4)
+        solve_dual(
+            rectangle(CLAMPED),
+            grid(2),
+            [Case(name="p", loads=[Pressure(1.0)])],
+            order=4,
+        )
 
 
 def test_couples_at_points_are_refused():

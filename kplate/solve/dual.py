@@ -32,6 +32,7 @@ from kplate.mesh import Mesh
 from kplate.pattern import Pattern
 from kplate.plate import Plate
 from kplate.quadrature import gauss
+from kplate.solve.static import check_cases
 
 # Corrections end when one is this small a share of the first solution, in the norm of
 # the energy; a next one would be smaller by as much as this was than that before. On
@@ -137,6 +138,132 @@ class DualState:
         return self.mesh.points[self.mesh.triangles[triangles]]
 
 
+@dataclass(frozen=True, eq=False, kw_only=True)
+class DualSystem:
+    """The dual of a plate on a mesh, factored: any number of loads, one by one.
+
+    Parameters
+    ----------
+    plate : Plate
+        The statement.
+    dual : Dual
+        What the unknowns belong to.
+    constraints : Constraints
+        Their numbering and what the supports hold.
+    factor : Factor
+        Of the condensed stiffness of the free unknowns.
+    """
+
+    plate: Plate
+    dual: Dual
+    constraints: Constraints
+    factor: Factor
+
+    @classmethod
+    def of(cls, plate: Plate, mesh: Mesh, order: int = 3) -> "DualSystem":
+        """Assemble and factor.
+
+        Raises
+        ------
+        InputError
+            If there is no dual of that order.
+        SolveError
+            If the plate can still move as a rigid body.
+        """
+        if order not in DUALS:
+            raise InputError(f"order = {order}; the dual has the orders 2 and 3.")
+        dual = DUALS[order]
+        check_held(plate, mesh)
+        numbering = Numbering(
+            mesh=mesh,
+            per_vertex=dual.per_vertex,
+            per_edge=dual.per_edge,
+            edge_deflections=dual.edge_deflections,
+        )
+        constraints = constrain(plate, numbering)
+        stiffnesses = (
+            (block, parts.stiffness) for block, parts in _condensed(plate, mesh, dual)
+        )
+        matrix = Pattern(numbering=numbering).matrix(stiffnesses, constraints.free)
+        return cls(
+            plate=plate, dual=dual, constraints=constraints, factor=Factor(matrix)
+        )
+
+    @property
+    def mesh(self) -> Mesh:
+        """The triangles."""
+        return self.constraints.numbering.mesh
+
+    def forces(self, loads: Sequence[Load]) -> Floats:
+        """Consistent forces of each triangle under loads that act together, (n, whole).
+
+        Raises
+        ------
+        InputError
+            If a load is a couple at a point, whose moments have no finite energy.
+        """
+        return _loads(self.plate, self.mesh, self.dual, loads)
+
+    def state(self, cases: Sequence[Case], forces: Floats) -> DualState:
+        """Balance the forces (n, whole, c) of load cases."""
+        unknowns, inside, moments, defect = self.balance(forces)
+        return DualState(
+            plate=self.plate,
+            cases=tuple(cases),
+            order=self.dual.order,
+            constraints=self.constraints,
+            unknowns=unknowns,
+            inside=inside,
+            moments=moments,
+            forces=forces,
+            support_forces=np.where(self.constraints.free[:, None], 0.0, -defect),
+        )
+
+    def balance(
+        self, forces: Floats, settled: Floats | None = None
+    ) -> tuple[Floats, Floats, Floats, Floats]:
+        """Solve, and correct until the moments balance the forces (n, whole, c).
+
+        `settled` (count, c), if given, are unknowns that have the values wanted of the
+        held ones.
+
+        Returns
+        -------
+        unknowns, inside, moments : ndarray
+            As in `DualState`.
+        defect : ndarray, shape (count, c)
+            Forces that remain: round-off, and what the supports take.
+
+        Raises
+        ------
+        SolveError
+            If triangles are so small beside the plate that round-off leaves the moments
+            unbalanced.
+        """
+        numbering, free = self.constraints.numbering, self.constraints.free
+        n, _, c = forces.shape
+        unknowns = np.zeros((numbering.count, c)) if settled is None else settled.copy()
+        moments = np.zeros((n, self.dual.ordinates, 3, c))
+        given = (self.plate, numbering, self.dual)
+        inside, moments, defect = _follow(*given, unknowns, forces, moments)
+        first = np.zeros(c)
+        for correction in range(1 + MOST):
+            step = np.zeros_like(unknowns)
+            step[free] = self.factor.solve(defect[free])
+            size = np.sqrt(np.abs(np.einsum("ic,ic->c", step, defect)))
+            if not np.isfinite(size).all():
+                raise SolveError(
+                    "the moments are not finite; check the loads and the material."
+                )
+            moved, moments, defect = _follow(*given, step, forces, moments)
+            unknowns, inside = unknowns + step, inside + moved
+            if correction == 0:
+                first = size
+            elif (size <= SMALL * first).all():
+                return unknowns, inside, moments, defect
+        raise _unbalanced(numbering.mesh)
+
+
 def solve_dual(
     plate: Plate, mesh: Mesh, cases: Sequence[Case], *, order: int = 3
 ) -> DualState:
@@ -166,78 +293,10 @@ def solve_dual(
         If the plate can still move as a rigid body, or triangles are so small beside
         it that round-off leaves the moments unbalanced.
     """
-    if order not in DUALS:
-        raise InputError(f"order = {order}; the dual has the orders 2 and 3.")
-    dual = DUALS[order]
-    check_held(plate, mesh)
-    numbering = Numbering(
-        mesh=mesh,
-        per_vertex=dual.per_vertex,
-        per_edge=dual.per_edge,
-        edge_deflections=dual.edge_deflections,
-    )
-    constraints = constrain(plate, numbering)
-    forces = np.stack(
-        [_loads(plate, mesh, dual, case.loads) for case in cases], axis=-1
-    )
-    stiffnesses = (
-        (block, parts.stiffness) for block, parts in _condensed(plate, mesh, dual)
-    )
-    pattern = Pattern(numbering=numbering)
-    factor = Factor(pattern.matrix(stiffnesses, constraints.free))
-    unknowns, inside, moments, defect = _balance(
-        plate, constraints, dual, factor, forces
-    )
-    return DualState(
-        plate=plate,
-        cases=tuple(cases),
-        order=order,
-        constraints=constraints,
-        unknowns=unknowns,
-        inside=inside,
-        moments=moments,
-        forces=forces,
-        support_forces=np.where(constraints.free[:, None], 0.0, -defect),
-    )
-
-
-def _balance(
-    plate: Plate,
-    constraints: Constraints,
-    dual: Dual,
-    factor: Factor,
-    forces: Floats,
-) -> tuple[Floats, Floats, Floats, Floats]:
-    """Solve, and correct until the moments balance the forces (n, whole, c).
-
-    Returns
-    -------
-    unknowns, inside, moments : ndarray
-        As in `DualState`.
-    defect : ndarray, shape (count, c)
-        Forces that remain: round-off, and what the supports take.
-    """
-    numbering, free = constraints.numbering, constraints.free
-    n, _, c = forces.shape
-    unknowns = np.zeros((numbering.count, c))
-    moments = np.zeros((n, dual.ordinates, 3, c))
-    inside, moments, defect = _follow(plate, numbering, dual, unknowns, forces, moments)
-    first = np.zeros(c)
-    for correction in range(1 + MOST):
-        step = np.zeros_like(unknowns)
-        step[free] = factor.solve(defect[free])
-        size = np.sqrt(np.abs(np.einsum("ic,ic->c", step, defect)))
-        if not np.isfinite(size).all():
-            raise SolveError(
-                "the moments are not finite; check the loads and the material."
-            )
-        moved, moments, defect = _follow(plate, numbering, dual, step, forces, moments)
-        unknowns, inside = unknowns + step, inside + moved
-        if correction == 0:
-            first = size
-        elif (size <= SMALL * first).all():
-            return unknowns, inside, moments, defect
-    raise _unbalanced(numbering.mesh)
+    check_cases(cases)
+    system = DualSystem.of(plate, mesh, order)
+    forces = np.stack([system.forces(case.loads) for case in cases], axis=-1)
+    return system.state(cases, forces)
 
 
 def _follow(

@@ -7,13 +7,13 @@ from functools import cached_property
 import numpy as np
 
 from kplate import assembly, loading
-from kplate.arrays import Floats
+from kplate.arrays import Floats, Ints
 from kplate.boundary import Constraints, check_held, constrain
 from kplate.dofs import Numbering
 from kplate.elements import ELEMENTS, Element
 from kplate.errors import InputError, SolveError
 from kplate.linalg import Factor
-from kplate.loads import Case
+from kplate.loads import Case, Load
 from kplate.mesh import Mesh
 from kplate.plate import Plate
 
@@ -75,6 +75,120 @@ class StaticState:
         return np.einsum("ic,ic->c", self.unknowns, self.forces)
 
 
+@dataclass(frozen=True, eq=False, kw_only=True)
+class StaticSystem:
+    """A plate's stiffness on a mesh, factored: any number of loads, one by one.
+
+    Parameters
+    ----------
+    plate : Plate
+        The statement.
+    element : Element
+        What the unknowns belong to.
+    constraints : Constraints
+        Their numbering and what the supports hold.
+    factor : Factor
+        Of the stiffness of the free unknowns.
+    """
+
+    plate: Plate
+    element: Element
+    constraints: Constraints
+    factor: Factor
+
+    @classmethod
+    def of(cls, plate: Plate, mesh: Mesh, element: str) -> "StaticSystem":
+        """Assemble and factor.
+
+        Raises
+        ------
+        InputError
+            If there is no such element.
+        SolveError
+            If the plate can still move as a rigid body.
+        """
+        if element not in ELEMENTS:
+            raise InputError(
+                f"there is no element {element!r}; the elements are "
+                f"{', '.join(ELEMENTS)}."
+            )
+        chosen = ELEMENTS[element]
+        numbering = Numbering(
+            mesh=mesh, per_vertex=chosen.per_vertex, per_edge=chosen.per_edge
+        )
+        check_held(plate, mesh)
+        constraints = constrain(plate, numbering)
+        matrix = assembly.stiffness(plate, chosen, constraints)
+        return cls(
+            plate=plate, element=chosen, constraints=constraints, factor=Factor(matrix)
+        )
+
+    @property
+    def numbering(self) -> Numbering:
+        """The unknowns."""
+        return self.constraints.numbering
+
+    def forces(self, loads: Sequence[Load]) -> Floats:
+        """Consistent forces of loads that act together, (count,)."""
+        return loading.load_vector(self.plate, self.element, self.numbering, loads)
+
+    def solve(self, forces: Floats, settled: Floats | None = None) -> Floats:
+        """Unknowns (count, c) under forces (count, c).
+
+        Solves, and refines once with a residual summed element by element: that of the
+        matrix is spoilt by the round-off of its entries where small triangles meet a
+        large deflection; the elements' own, free of rigid motion, is not. It takes
+        loads and support forces into balance to round-off.
+
+        `settled` (count, c), if given, are unknowns that have the values wanted of the
+        held ones.
+        """
+        unknowns = self._back(forces) if settled is None else settled.copy()
+        for _ in range(1 if settled is None else 2):
+            unknowns = unknowns + self._back(forces - self._inner(unknowns))
+        if not np.isfinite(unknowns).all():
+            raise SolveError(
+                "the solution is not finite; check the loads and the material."
+            )
+        return unknowns
+
+    def state(self, cases: Sequence[Case], forces: Floats) -> StaticState:
+        """Solve for the forces (count, c) of load cases."""
+        unknowns = self.solve(forces)
+        return StaticState(
+            plate=self.plate,
+            cases=tuple(cases),
+            element=self.element,
+            constraints=self.constraints,
+            unknowns=unknowns,
+            forces=forces,
+            support_forces=self._support_forces(unknowns, forces),
+        )
+
+    def _back(self, right: Floats) -> Floats:
+        constraints = self.constraints
+        turned = np.zeros_like(right)
+        turned[constraints.free] = self.factor.solve(
+            constraints.turn(right)[constraints.free]
+        )
+        return constraints.turn_back(turned)
+
+    def _inner(self, unknowns: Floats, triangles: Ints | None = None) -> Floats:
+        return assembly.internal_forces(
+            self.plate, self.element, self.numbering, unknowns, triangles
+        )
+
+    def _support_forces(self, unknowns: Floats, forces: Floats) -> Floats:
+        """Residual at the supported unknowns, zero elsewhere, (count, c)."""
+        supported = np.zeros(self.numbering.count, dtype=bool)
+        supported[self.constraints.supported] = True
+        near = np.flatnonzero(supported[self.numbering.table].any(axis=1))
+        inner = self._inner(unknowns, near)
+        result = np.zeros_like(forces)
+        result[supported] = inner[supported] - forces[supported]
+        return result
+
+
 def solve_static(
     plate: Plate,
     mesh: Mesh,
@@ -109,87 +223,18 @@ def solve_static(
     SolveError
         If the plate can still move as a rigid body.
     """
-    if element not in ELEMENTS:
-        raise InputError(
-            f"there is no element {element!r}; the elements are {', '.join(ELEMENTS)}."
-        )
-    _check_cases(cases)
+    check_cases(cases)
     report = progress or _silent
-    chosen = ELEMENTS[element]
-    numbering = Numbering(
-        mesh=mesh, per_vertex=chosen.per_vertex, per_edge=chosen.per_edge
-    )
-    check_held(plate, mesh)
-    constraints = constrain(plate, numbering)
-    report("loads", 0.1)
-    forces = np.column_stack(
-        [loading.load_vector(plate, chosen, numbering, case.loads) for case in cases]
-    )
-    report("stiffness", 0.2)
-    matrix = assembly.stiffness(plate, chosen, constraints)
-    report("factorisation", 0.4)
-    unknowns = _solve(plate, chosen, constraints, Factor(matrix), forces)
-    if not np.isfinite(unknowns).all():
-        raise SolveError(
-            "the solution is not finite; check the loads and the material."
-        )
-    report("support forces", 0.9)
-    return StaticState(
-        plate=plate,
-        cases=tuple(cases),
-        element=chosen,
-        constraints=constraints,
-        unknowns=unknowns,
-        forces=forces,
-        support_forces=_support_forces(plate, chosen, constraints, unknowns, forces),
-    )
+    report("stiffness", 0.1)
+    system = StaticSystem.of(plate, mesh, element)
+    report("loads", 0.6)
+    forces = np.column_stack([system.forces(case.loads) for case in cases])
+    report("solution", 0.7)
+    return system.state(cases, forces)
 
 
-def _solve(
-    plate: Plate,
-    element: Element,
-    constraints: Constraints,
-    factor: Factor,
-    forces: Floats,
-) -> Floats:
-    """Solve, and refine once with a residual summed element by element.
-
-    The residual of the matrix is spoilt by the round-off of its entries where small
-    triangles meet a large deflection; the elements' own, free of rigid motion, is not.
-    It takes loads and support forces into balance to round-off.
-    """
-
-    def back(right: Floats) -> Floats:
-        turned = np.zeros_like(right)
-        turned[constraints.free] = factor.solve(
-            constraints.turn(right)[constraints.free]
-        )
-        return constraints.turn_back(turned)
-
-    unknowns = back(forces)
-    inner = assembly.internal_forces(plate, element, constraints.numbering, unknowns)
-    return unknowns + back(forces - inner)
-
-
-def _support_forces(
-    plate: Plate,
-    element: Element,
-    constraints: Constraints,
-    unknowns: Floats,
-    forces: Floats,
-) -> Floats:
-    """Residual at the supported unknowns, zero elsewhere, (count, c)."""
-    numbering = constraints.numbering
-    supported = np.zeros(numbering.count, dtype=bool)
-    supported[constraints.supported] = True
-    near = np.flatnonzero(supported[numbering.table].any(axis=1))
-    inner = assembly.internal_forces(plate, element, numbering, unknowns, near)
-    result = np.zeros_like(forces)
-    result[supported] = inner[supported] - forces[supported]
-    return result
-
-
-def _check_cases(cases: Sequence[Case]) -> None:
+def check_cases(cases: Sequence[Case]) -> None:
+    """Refuse no case, or two of one name."""
     if not cases:
         raise InputError("there is no load case; give at least one.")
     names = [case.name for case in cases]
