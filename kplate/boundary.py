@@ -28,7 +28,8 @@ from kplate.mesh import Mesh
 from kplate.plate import Plate
 
 # Directions held to less than this share of the strongest are round-off. Two tangents
-# that differ by a turn t hold a second direction to about t.
+# that differ by a turn t hold a second direction to about t, and a clamped one beside a
+# simply supported one w,nn to t^2.
 RANK_CUT = 1e-9
 
 
@@ -214,23 +215,24 @@ def side_tangents(plate: Plate, mesh: Mesh) -> Floats:
     return _one_tangent(tangents, alike, plate.bend_turn)
 
 
-def seam_tangents(plate: Plate, mesh: Mesh, seam: int) -> tuple[Ints, Ints, Floats]:
-    """Ends of the edges of a seam, and the tangents away from each.
+def seam_tangents(plate: Plate, mesh: Mesh) -> tuple[Ints, Ints, Floats]:
+    """Ends of the edges of held seams, and the tangents away from each.
 
     Returns
     -------
     vertices : ndarray, shape (k,)
         Vertices at which the edges end, those of one vertex together.
     edges : ndarray, shape (k,)
-        Which of the seam's edges each is an end of.
+        Which of `mesh.seam_edges` each is an end of.
     away : ndarray, shape (k, 2)
-        Unit vectors along the edges away from the vertex; at a bend of just two edges
-        one the reverse of the other.
+        Unit vectors along the edges away from the vertex; at a bend, where just two
+        edges held alike end, one the reverse of the other.
     """
-    edges = mesh.seam_edges[mesh.seam_numbers == seam]
-    number = np.tile(np.arange(len(edges)), 2)
-    vertices = np.concatenate([edges[:, 0], edges[:, 1]])
-    others = np.concatenate([edges[:, 1], edges[:, 0]])
+    holds, clamps = _seam_supports(plate, mesh)
+    number = np.tile(np.flatnonzero(holds | clamps), 2)
+    m = len(number) // 2
+    vertices = mesh.seam_edges[number, np.repeat([0, 1], m)]
+    others = mesh.seam_edges[number, np.repeat([1, 0], m)]
     order = np.argsort(vertices, kind="stable")
     vertices, others, number = vertices[order], others[order], number[order]
     away = mesh.points[others] - mesh.points[vertices]
@@ -238,10 +240,20 @@ def seam_tangents(plate: Plate, mesh: Mesh, seam: int) -> tuple[Ints, Ints, Floa
     twice = np.flatnonzero(
         (vertices[1:] == vertices[:-1]) & (np.bincount(vertices)[vertices[1:]] == 2)
     )
+    first, second = number[twice], number[twice + 1]
+    alike = (holds[first] == holds[second]) & (clamps[first] == clamps[second])
     pairs = np.stack([-away[twice], away[twice + 1]], axis=1)
-    pairs = _one_tangent(pairs, np.ones(len(twice), dtype=bool), plate.bend_turn)
+    pairs = _one_tangent(pairs, alike, plate.bend_turn)
     away[twice], away[twice + 1] = -pairs[:, 0], pairs[:, 1]
     return vertices, number, away
+
+
+def _seam_supports(plate: Plate, mesh: Mesh) -> tuple[Bools, Bools]:
+    """Whether each seam edge holds the deflection, and the slope, (k,) each."""
+    supports = [plate.support(name) for name in mesh.seam_names]
+    holds = np.array([s.holds_deflection for s in supports], dtype=bool)
+    clamps = np.array([s.holds_slope for s in supports], dtype=bool)
+    return holds[mesh.seam_numbers], clamps[mesh.seam_numbers]
 
 
 def _side_supports(plate: Plate, mesh: Mesh) -> tuple[Bools, Bools]:
@@ -265,16 +277,9 @@ def _side_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
 
 def _seam_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
     """Vertices of held seams and what they hold there."""
-    found = []
-    for number, name in enumerate(mesh.seam_names):
-        support = plate.support(name)
-        if not support.holds:
-            continue
-        vertices, _, away = seam_tangents(plate, mesh, number)
-        holds = np.full(len(vertices), support.holds_deflection)
-        clamps = np.full(len(vertices), support.holds_slope)
-        found.append((vertices, _rows(away, holds, clamps)))
-    return found
+    holds, clamps = _seam_supports(plate, mesh)
+    vertices, edges, away = seam_tangents(plate, mesh)
+    return [(vertices, _rows(away, holds[edges], clamps[edges]))]
 
 
 def _mark_rows(plate: Plate, mesh: Mesh) -> tuple[Ints, Floats]:

@@ -130,7 +130,7 @@ class Traces:
 
 def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
     """Held edges of sides, then of seams, and how they join."""
-    sides, seams = len(mesh.side_names), len(mesh.seam_names)
+    sides = len(mesh.side_names)
     edges = np.concatenate([mesh.boundary_edges, mesh.seam_edges])
     lines = np.concatenate([mesh.boundary_sides, sides + mesh.seam_numbers])
     names = [*mesh.side_names, *mesh.seam_names]
@@ -145,20 +145,21 @@ def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
     one &= (holds[first] == holds[second]) & (clamps[first] == clamps[second])
     joints[leaving[one], 0] = joints[arriving[one], 1]
     ends[arriving[one], 1] = ends[leaving[one], 0] = False
-    for seam in range(seams):
-        vertices, number, away = seam_tangents(plate, mesh, seam)
-        own = len(mesh.boundary_edges) + np.flatnonzero(mesh.seam_numbers == seam)
-        number = own[number]
-        at = (edges[number, 1] == vertices).astype(np.int64)
-        pairs = np.flatnonzero(
-            (np.bincount(vertices)[vertices[1:]] == 2)
-            & (vertices[1:] == vertices[:-1])
-            & (np.abs(away[1:] + away[:-1]).max(axis=1) < ONE)
-        )
-        a, b = (number[pairs], at[pairs]), (number[pairs + 1], at[pairs + 1])
-        joints[b] = joints[a]
-        senses[b] = np.where(a[1] == b[1], -1.0, 1.0)
-        ends[a] = ends[b] = False
+    vertices, number, away = seam_tangents(plate, mesh)
+    at = (mesh.seam_edges[number, 1] == vertices).astype(np.int64)
+    number = len(mesh.boundary_edges) + number
+    first, second = lines[number[:-1]], lines[number[1:]]
+    pairs = np.flatnonzero(
+        (vertices[1:] == vertices[:-1])
+        & (holds[first] == holds[second])
+        & (clamps[first] == clamps[second])
+        & (np.bincount(vertices)[vertices[1:]] == 2)
+        & (np.abs(away[1:] + away[:-1]).max(axis=1) < ONE)
+    )
+    a, b = (number[pairs], at[pairs]), (number[pairs + 1], at[pairs + 1])
+    joints[b] = joints[a]
+    senses[b] = np.where(a[1] == b[1], -1.0, 1.0)
+    ends[a] = ends[b] = False
     kept = (holds | clamps)[lines]
     return HeldEdges(
         lines=lines[kept],

@@ -1,7 +1,9 @@
 """What supports hold at a vertex, and the rigid motions they leave."""
 
+import itertools
 import math
 import re
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -11,15 +13,16 @@ from plates import SIDES, grid, rectangle
 
 from kplate.boundary import Constraints, constrain, free_motions, rigid_motions, turns
 from kplate.dofs import Numbering
+from kplate.elements import ELEMENTS
 from kplate.elements.triangle import edge_normals
 from kplate.materials import STEEL
 from kplate.mesh import Mesh
 from kplate.outline import Outline
 from kplate.plate import Plate
 from kplate.shapes import Circle
-from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED
+from kplate.supports import CLAMPED, FREE, GUIDED, SIMPLY_SUPPORTED
 
-C, S, F = CLAMPED, SIMPLY_SUPPORTED, FREE
+C, S, F, G = CLAMPED, SIMPLY_SUPPORTED, FREE, GUIDED
 ANGLES = (45.0, 90.0, 135.0, 225.0, 270.0, 315.0)
 SIZES = (1e-6, 1e-3, 1.0, 1e3, 1e6)
 
@@ -68,18 +71,21 @@ def ring(n, inner, outer):
     return Outline.circle((0, 0), radius=outer).cut(hole), mesh
 
 
-def hold(outline, mesh, supports, **changes):
+def hold(outline, mesh, supports, *, unknowns=(3, 0), **changes):
+    """Constraints for so many unknowns per vertex, per edge and deflections there."""
     plate = Plate(
         outline=outline, thickness=0.01, material=STEEL, supports=supports, **changes
     )
-    return constrain(plate, Numbering(mesh=mesh, per_vertex=3, per_edge=0))
+    names = ("per_vertex", "per_edge", "edge_deflections")
+    numbering = Numbering(mesh=mesh, **dict(zip(names, unknowns, strict=False)))
+    return constrain(plate, numbering)
 
 
 def held_at(constraints, vertex):
-    """Projector on the directions held at a vertex, (3, 3); 0 where nothing is."""
+    """Projector on the directions held at a vertex, (p, p); 0 where nothing is."""
     found = np.flatnonzero(constraints.vertices == vertex)
     if not found.size:
-        return np.zeros((3, 3))
+        return np.zeros((constraints.numbering.per_vertex,) * 2)
     i = int(found[0])
     directions = constraints.frames[i][:, constraints.held[i]]
     return directions @ directions.T
@@ -218,6 +224,378 @@ def test_what_is_held_does_not_depend_on_the_size(size):
         np.testing.assert_allclose(held_at(small, 0), expected, atol=1e-9)
 
 
+# Six unknowns at a vertex
+
+SIX = (6, 1)
+TURNED = (45.0, 90.0, 135.0, 180.0, 225.0, 270.0, 330.0)
+SLIGHT = (0.01, 0.1, 1.0, 10.0, -0.01, -0.1, -1.0, -10.0)
+PAIRS = list(itertools.product([C, S, F, G], repeat=2))
+# Directions that stay free at an angle, at a right angle and on a straight side. A
+# guided side is a line of symmetry, where at a right angle another can start.
+STAY_FREE = {
+    (C, C): (0, 0, 1),  # w,nn
+    (C, S): (0, 0, 1),
+    (S, S): (1, 1, 3),  # w,xy, which makes the corner force; w,n, w,nn, w,tn
+    (C, F): (1, 1, 1),
+    (S, F): (3, 3, 3),
+    (F, F): (6, 6, 6),
+    (G, F): (4, 4, 4),  # w, w,t, w,tt, w,nn
+    (G, G): (2, 3, 4),  # w and one curvature all round; both, at a right angle
+    (G, S): (1, 2, 1),
+    (G, C): (0, 1, 1),
+}
+
+
+def stay_free(pair, degrees):
+    """How many of the six, by the table."""
+    kind = 2 if degrees == 180.0 else int(degrees in (90.0, 270.0))
+    return STAY_FREE.get(pair, STAY_FREE.get(pair[::-1]))[kind]
+
+
+def held_along(*rays):
+    """Projector on what a quadratic w must not have, (6, 6).
+
+    Along each ray, a unit vector and its support, it vanishes, or its slope across the
+    ray does, or both do: at three points, which is everywhere.
+    """
+    rows = [np.zeros(6)]
+    for (a, b), support in rays:
+        for x, y in np.outer((0.4, 1.0, 1.6), (a, b)):
+            w = np.array([1.0, x, y, 0.5 * x * x, x * y, 0.5 * y * y])
+            slopes = np.array([[0.0, 1.0, 0.0, x, y, 0.0], [0.0, 0.0, 1.0, 0.0, x, y]])
+            rows.append(support.holds_deflection * w)
+            rows.append(support.holds_slope * (b * slopes[0] - a * slopes[1]))
+    _, strength, right = np.linalg.svd(np.array(rows), full_matrices=False)
+    directions = right[strength > 1e-10 * max(strength[0], 1e-10)]
+    return directions.T @ directions
+
+
+def at_six(degrees, arriving, leaving, **changes):
+    """What is held of six at the corner of a sector."""
+    return at_corner(degrees, arriving, leaving, unknowns=SIX, **changes)
+
+
+def corner_rays(degrees, arriving, leaving):
+    return (arriving_tangent(degrees), arriving), (LEAVING, leaving)
+
+
+@pytest.mark.parametrize("degrees", TURNED)
+@pytest.mark.parametrize("pair", PAIRS, ids=lambda p: f"{p[0].name}-{p[1].name}")
+def test_of_six_unknowns_just_so_many_stay_free(pair, degrees):
+    """Those of the quadratics that do along both sides what their supports ask."""
+    found = at_six(degrees, *pair)
+    np.testing.assert_allclose(
+        found, held_along(*corner_rays(degrees, *pair)), atol=1e-11
+    )
+    assert 6 - np.trace(found) == pytest.approx(stay_free(pair, degrees))
+
+
+@pytest.mark.parametrize("turn", SLIGHT)
+@pytest.mark.parametrize("pair", PAIRS, ids=lambda p: f"{p[0].name}-{p[1].name}")
+def test_a_slight_turn_is_a_corner_where_bends_are_smaller(pair, turn):
+    """What a small angle holds is held, though by as little as the angle squared."""
+    found = at_six(180.0 - turn, *pair, bend_turn=1e-5)
+    expected = held_along(*corner_rays(180.0 - turn, *pair))
+    np.testing.assert_allclose(found, expected, atol=1e-9)
+    assert 6 - np.trace(found) == pytest.approx(stay_free(pair, 180.0 - turn))
+
+
+@pytest.mark.parametrize("turn", [1e-13, -1e-13])
+@pytest.mark.parametrize("pair", PAIRS, ids=lambda p: f"{p[0].name}-{p[1].name}")
+def test_a_turn_of_round_off_is_none(pair, turn):
+    found = at_six(180.0 - turn, *pair, bend_turn=0.0)
+    np.testing.assert_allclose(found, at_six(180.0, *pair), atol=1e-11)
+    assert 6 - np.trace(found) == pytest.approx(stay_free(pair, 180.0))
+
+
+@pytest.mark.parametrize("turn", [0.01, 1.0, 9.9, -0.01, -1.0, -9.9])
+@pytest.mark.parametrize("support", [C, S, F, G], ids=lambda s: s.name)
+def test_a_bend_holds_what_a_straight_side_along_its_mean_does(support, turn):
+    expected = held_along((unit(20.0 - 0.5 * turn), support))
+    found = at_six(180.0 - turn, support, support)
+    np.testing.assert_allclose(found, expected, atol=1e-12)
+
+
+def test_what_stays_free_at_the_edges_of_a_rectangle():
+    """South along x: the names of what the table counts."""
+    plate, mesh = rectangle({"south": S, "east": S, "north": C, "west": G}), grid(2)
+    held = constrain(plate, Numbering(mesh=mesh, per_vertex=6, per_edge=1))
+    #                      w  x  y xx xy yy
+    for place, expected in {
+        (0.5, 0.0): (1, 1, 0, 1, 0, 0),  # simply supported
+        (1.0, 0.5): (1, 0, 1, 0, 0, 1),
+        (0.5, 1.0): (1, 1, 1, 1, 1, 0),  # clamped
+        (0.0, 0.5): (0, 1, 0, 0, 1, 0),  # guided
+        (1.0, 0.0): (1, 1, 1, 1, 0, 1),  # the twist of a corner on two supports
+        (1.0, 1.0): (1, 1, 1, 1, 1, 1),
+        (0.0, 0.0): (1, 1, 0, 1, 1, 0),  # symmetric about x = 0
+        (0.0, 1.0): (1, 1, 1, 1, 1, 0),
+    }.items():
+        (vertex,) = np.flatnonzero((mesh.points == place).all(axis=1))
+        np.testing.assert_allclose(held_at(held, vertex), np.diag(expected), atol=1e-12)
+
+
+@pytest.mark.parametrize("pair", [(C, C), (S, F), (G, G), (S, S)])
+@pytest.mark.parametrize("size", SIZES)
+def test_what_is_held_of_six_does_not_depend_on_the_size(size, pair):
+    supports = dict(zip(("arriving", "leaving"), pair, strict=True))
+    for degrees in (90.0, 160.0, 180.0, 300.0):
+        outline, mesh = sector(degrees, size)
+        found = held_at(hold(outline, mesh, supports, unknowns=SIX), 0)
+        np.testing.assert_allclose(found, at_six(degrees, *pair), atol=1e-9)
+
+
+@given(st.floats(20.0, 340.0), st.sampled_from(PAIRS))
+def test_frames_of_six_are_orthonormal_order_by_order(degrees, pair):
+    """Neither w nor slopes nor second derivatives mix, whose units differ."""
+    outline, mesh = sector(degrees)
+    supports = dict(zip(("arriving", "leaving"), pair, strict=True))
+    frames = hold(outline, mesh, supports, unknowns=SIX).frames
+    np.testing.assert_allclose(
+        frames.swapaxes(-1, -2) @ frames,
+        np.broadcast_to(np.eye(6), frames.shape),
+        atol=1e-12,
+    )
+    order = np.repeat([0, 1, 2], [1, 2, 3])
+    mixed = order[:, None] != order
+    np.testing.assert_array_equal(frames[:, mixed], 0.0)
+
+
+# Seams that meet inside
+
+
+def wheel(spokes, rim=()):
+    """Outline and mesh of a polygon about vertex 0, seams along lines from there.
+
+    Parameters
+    ----------
+    spokes : dict of str to tuple
+        Angles in degrees at which each seam leaves vertex 0: one, or two for a seam
+        that runs through it.
+    rim : tuple
+        Angles of more vertices of the rim.
+    """
+    inside = [angle % 360.0 for own in spokes.values() for angle in own]
+    angles = sorted({*np.arange(15.0, 375.0, 45.0), *rim, *inside})
+    n = len(angles)
+    points = np.vstack([(0.0, 0.0), unit(np.array(angles))])
+    around = np.arange(1, n + 1)
+    ends = {angle: 1 + k for k, angle in enumerate(angles)}
+    outline = Outline.polygon(points[1:], sides=["rim"] * n)
+    edges, of = [], []
+    for number, (name, own) in enumerate(spokes.items()):
+        far = [ends[angle % 360.0] for angle in own]
+        outline = outline.seam(points[[far[0], 0, *far[1:]]], name=name)
+        edges += [(far[0], 0), *[(0, end) for end in far[1:]]]
+        of += [number] * len(own)
+    mesh = Mesh(
+        points=points,
+        triangles=np.c_[0 * around, around, np.roll(around, -1)],
+        boundary_edges=np.c_[around, np.roll(around, -1)],
+        boundary_sides=np.zeros(n, dtype=int),
+        side_names=("rim",),
+        seam_edges=edges,
+        seam_numbers=of,
+        seam_names=tuple(spokes),
+    )
+    return outline, mesh
+
+
+MEETINGS = {
+    "a wall that ends inside": ({"a": (S, 20)}, 3),
+    "a rail that ends inside": ({"a": (C, 20)}, 1),
+    "a wall straight through": ({"a": (S, 20, 200)}, 3),
+    "a wall with a corner": ({"a": (S, 20, 150)}, 1),
+    "two walls in one line": ({"a": (S, 20), "b": (S, 200)}, 3),
+    "two walls at a right angle": ({"a": (S, 20), "b": (S, 110)}, 1),
+    "two walls that cross": ({"a": (S, 20, 200), "b": (S, 110, 290)}, 1),
+    "three walls": ({"a": (S, 20), "b": (S, 140), "c": (S, 260)}, 0),
+    "three walls, two in line": ({"a": (S, 20, 200), "b": (S, 75)}, 1),
+    "a wall and a rail": ({"a": (S, 20), "b": (C, 75)}, 0),
+    "a wall that goes on as a rail": ({"a": (S, 20), "b": (C, 200)}, 1),
+    "a wall across a line of symmetry": ({"a": (S, 20, 200), "b": (G, 110)}, 2),
+    "a wall askew to a line of symmetry": ({"a": (S, 20), "b": (G, 75)}, 1),
+    "lines of symmetry of a hexagon": ({"a": (G, 0), "b": (G, 60), "c": (G, 120)}, 2),
+    "a wall and a free seam": ({"a": (S, 20), "b": (F, 110)}, 3),
+}
+
+
+@pytest.mark.parametrize("name", MEETINGS)
+def test_seams_that_meet_inside_hold_what_each_of_them_does(name):
+    stated, free = MEETINGS[name]
+    supports = {key: support for key, (support, *_) in stated.items()}
+    spokes = {key: tuple(map(float, angles)) for key, (_, *angles) in stated.items()}
+    held = hold(*wheel(spokes), supports, unknowns=SIX)
+    rays = [(unit(a), supports[key]) for key, own in spokes.items() for a in own]
+    found = held_at(held, 0)
+    np.testing.assert_allclose(found, held_along(*rays), atol=1e-11)
+    assert 6 - np.trace(found) == pytest.approx(free)
+
+
+@pytest.mark.parametrize("support", [C, S, G], ids=lambda s: s.name)
+@pytest.mark.parametrize("turn", [0.01, 5.0, 9.9])
+def test_a_seam_bends_as_a_side_does(support, turn):
+    """With its mean tangent, where the turn is less than the plate's own limit."""
+    outline, mesh = wheel({"a": (20.0, 200.0 - turn)})
+    found = held_at(hold(outline, mesh, {"a": support}, unknowns=SIX), 0)
+    expected = held_along((unit(20.0 - 0.5 * turn), support))
+    np.testing.assert_allclose(found, expected, atol=1e-11)
+    sharp = hold(outline, mesh, {"a": support}, unknowns=SIX, bend_turn=1e-5)
+    expected = held_along((unit(20.0), support), (unit(200.0 - turn), support))
+    np.testing.assert_allclose(held_at(sharp, 0), expected, atol=1e-9)
+
+
+def test_a_mark_holds_w_alone_whatever_else_is_held_there():
+    for spokes, supports, free in (
+        ({}, {}, 5),
+        ({"a": (20.0,)}, {"a": G}, 3),
+        ({"a": (20.0, 200.0)}, {"a": S}, 3),
+    ):
+        outline, mesh = wheel(spokes)
+        outline = outline.mark((0.0, 0.0), name="post")
+        mesh = replace(mesh, mark_vertices=[0], mark_names=("post",))
+        found = held_at(hold(outline, mesh, {"post": S, **supports}, unknowns=SIX), 0)
+        rays = [(unit(a), supports["a"]) for own in spokes.values() for a in own]
+        expected = held_along(*rays)
+        expected[0, 0] = 1.0
+        np.testing.assert_allclose(found, expected, atol=1e-12)
+        assert 6 - np.trace(found) == pytest.approx(free)
+
+
+# Unknowns on edges
+
+
+@pytest.mark.parametrize(
+    ("unknowns", "deflections"), [((3, 1), 0), ((6, 1), 0), ((1, 7, 3), 3)]
+)
+def test_on_edges_deflections_and_slopes_are_held_as_the_support_says(
+    unknowns, deflections
+):
+    """Those of supported sides and seams, and no others."""
+    outline = Outline.polygon([(0, 0), (1, 0), (1, 1), (0, 1)], sides=SIDES)
+    outline = outline.seam([(0.25, 0.5), (0.75, 0.5)], name="wall")
+    outline = outline.seam([(0.5, 0.75), (0.5, 0.5)], name="rail")
+    regular = grid(4)
+    number = {tuple(p): k for k, p in enumerate(regular.points.tolist())}
+    wall = [((0.25, 0.5), (0.5, 0.5)), ((0.5, 0.5), (0.75, 0.5))]
+    lines = {"wall": wall, "rail": [((0.5, 0.75), (0.5, 0.5))]}
+    mesh = Mesh(
+        points=regular.points,
+        triangles=regular.triangles,
+        boundary_edges=regular.boundary_edges,
+        boundary_sides=regular.boundary_sides,
+        side_names=SIDES,
+        seam_edges=[
+            [number[p] for p in edge] for own in lines.values() for edge in own
+        ],
+        seam_numbers=[0, 0, 1],
+        seam_names=tuple(lines),
+    )
+    supports = {"south": S, "east": C, "north": G, "wall": S, "rail": C}
+    held = hold(outline, mesh, supports, unknowns=unknowns)
+    p, q = unknowns[:2]
+    found = ~held.free[p * len(mesh.points) :].reshape(len(mesh.edges), q)
+    expected = np.zeros_like(found)
+    middles = mesh.points[mesh.edges].mean(axis=1)
+    along = np.diff(mesh.points[mesh.edges], axis=1)[:, 0]
+    for edge, ((x, y), (a, b)) in enumerate(zip(middles, along, strict=True)):
+        upright, level = a == 0.0, b == 0.0
+        support = F
+        if y == 0.0 or (level and y == 0.5 and 0.25 < x < 0.75):
+            support = S
+        elif x == 1.0 or (upright and x == 0.5 and 0.5 < y < 0.75):
+            support = C
+        elif y == 1.0:
+            support = G
+        expected[edge, :deflections] = support.holds_deflection
+        expected[edge, deflections:] = support.holds_slope
+    np.testing.assert_array_equal(found, expected)
+    assert len(np.unique(held.on_edges)) == len(held.on_edges) == expected.sum()
+
+
+def test_where_w_alone_is_at_the_vertices_a_slope_holds_none_of_it():
+    outline, mesh = sector(90.0)
+    for arriving, leaving in PAIRS:
+        supports = {"arriving": arriving, "leaving": leaving}
+        held = hold(outline, mesh, supports, unknowns=(1, 7, 3))
+        for vertex, ends in ((0, (arriving, leaving)), (1, (leaving,)), (2, ())):
+            expected = float(any(support.holds_deflection for support in ends))
+            np.testing.assert_allclose(held_at(held, vertex), [[expected]], atol=1e-15)
+
+
+# What is held is what vanishes along the supported edges
+
+
+def traces(element, mesh, supports):
+    """Rows of all that must vanish along the supported edges, (m, unknowns).
+
+    w and the slope across the edge, at more points than fix them.
+    """
+    numbering = Numbering(
+        mesh=mesh, per_vertex=element.per_vertex, per_edge=element.per_edge
+    )
+    lines = [
+        (supports.get(names[number], F), edge)
+        for names, numbers, edges in (
+            (mesh.side_names, mesh.boundary_sides, mesh.boundary_edges),
+            (mesh.seam_names, mesh.seam_numbers, mesh.seam_edges),
+        )
+        for number, edge in zip(numbers, edges, strict=True)
+    ]
+    s = np.linspace(0.0, 1.0, 8)
+    rows = [np.zeros((1, numbering.count))]
+    for support, edge in lines:
+        (k,) = mesh.triangles_at(edge[None])
+        corners = mesh.triangles[k]
+        start, end = (np.eye(3)[list(corners).index(v)] for v in edge)
+        barycentrics = np.outer(1.0 - s, start) + np.outer(s, end)
+        jet = element.evaluate(mesh.points[corners][None], barycentrics)[0]
+        a, b = mesh.points[edge[1]] - mesh.points[edge[0]]
+        own = np.zeros((2, len(s), numbering.count))
+        own[0][:, numbering.table[k]] = jet[:, 0] * support.holds_deflection
+        across = (b * jet[:, 1] - a * jet[:, 2]) / np.hypot(a, b)
+        own[1][:, numbering.table[k]] = across * support.holds_slope
+        rows += list(own)
+    return np.vstack(rows)
+
+
+def assert_just_conforming(element, outline, mesh, supports):
+    """Of the free space nothing is seen on the supported edges; of all else, all is."""
+    unknowns = (element.per_vertex, element.per_edge)
+    held = hold(outline, mesh, supports, unknowns=unknowns, bend_turn=0.0)
+    T = traces(element, mesh, supports)
+    free = np.eye(held.numbering.count)[:, held.free]
+    seen = T @ held.turn_back(free)
+    np.testing.assert_allclose(seen, 0.0, atol=1e-11 * max(np.abs(T).max(), 1.0))
+    strength = np.linalg.svd(T, compute_uv=False)
+    rank = np.count_nonzero(strength > 1e-8 * max(strength[0], 1e-8))
+    assert rank == np.count_nonzero(~held.free)
+
+
+conforming = pytest.mark.parametrize("name", ["hct", "quintic"])
+
+
+@conforming
+@pytest.mark.parametrize("degrees", TURNED)
+def test_what_is_held_at_a_corner_is_what_vanishes_on_its_sides(name, degrees):
+    outline, mesh = sector(degrees)
+    for arriving, leaving in PAIRS:
+        supports = {"arriving": arriving, "leaving": leaving}
+        assert_just_conforming(ELEMENTS[name], outline, mesh, supports)
+
+
+@conforming
+@pytest.mark.parametrize("meeting", MEETINGS)
+def test_what_is_held_along_seams_is_what_vanishes_there(name, meeting):
+    """With a rim that is free, simply supported, clamped or guided."""
+    stated, _ = MEETINGS[meeting]
+    supports = {key: support for key, (support, *_) in stated.items()}
+    spokes = {key: tuple(map(float, angles)) for key, (_, *angles) in stated.items()}
+    outline, mesh = wheel(spokes)
+    for rim in (F, S, C, G):
+        assert_just_conforming(ELEMENTS[name], outline, mesh, {"rim": rim, **supports})
+
+
 # Turned unknowns
 
 
@@ -258,14 +636,14 @@ def test_turns_are_positive_to_the_left():
 # Rigid motions
 
 
-def motions(supports, **changes):
+def motions(supports, per_vertex, per_edge):
     """Free motions of a rectangle 2 x 1."""
     plate, mesh = rectangle(supports, a=2.0), grid(4, m=2, a=2.0)
-    return free_motions(
-        constrain(plate, Numbering(mesh=mesh, per_vertex=3, per_edge=0))
-    )
+    numbering = Numbering(mesh=mesh, per_vertex=per_vertex, per_edge=per_edge)
+    return free_motions(constrain(plate, numbering))
 
 
+@pytest.mark.parametrize("unknowns", [(3, 0), (3, 1), (6, 1)])
 @pytest.mark.parametrize(
     ("supports", "words"),
     [
@@ -288,8 +666,8 @@ def motions(supports, **changes):
         (dict.fromkeys(SIDES, C), []),
     ],
 )
-def test_free_motions_are_named(supports, words):
-    assert motions(supports) == words
+def test_free_motions_are_named(supports, words, unknowns):
+    assert motions(supports, *unknowns) == words
 
 
 @pytest.mark.parametrize("size", SIZES)

@@ -12,6 +12,13 @@ from kplate.elements import bernstein
 from kplate.quadrature import triangle_rule
 
 degrees = st.integers(1, 6)
+from_two = st.integers(2, 6)
+
+
+def difference(function, degree, l, v):
+    """Central difference of a function of barycentrics by barycentric v."""
+    step = 1e-5 * np.eye(3)[v]
+    return (function(degree, l + step) - function(degree, l - step)) / 2e-5
 
 
 @given(degrees, points_in(count=5))
@@ -30,13 +37,52 @@ def test_powers_of_a_linear_function_are_reproduced(degree, l, c):
 
 @given(degrees, points_in(count=5))
 def test_gradients_against_differences(degree, l):
-    step = 1e-5
     found = bernstein.gradients(degree, l)
     for v in range(3):
-        move = step * np.eye(3)[v]
-        ahead, behind = (bernstein.values(degree, l + s * move) for s in (1.0, -1.0))
-        difference = (ahead - behind) / (2.0 * step)
-        np.testing.assert_allclose(found[:, v], difference, rtol=0.0, atol=1e-7)
+        expected = difference(bernstein.values, degree, l, v)
+        np.testing.assert_allclose(found[:, v], expected, rtol=0.0, atol=1e-7)
+
+
+@given(from_two, points_in(count=5))
+def test_hessians_against_differences(degree, l):
+    found = bernstein.hessians(degree, l)
+    assert found.shape == (5, 6, len(bernstein.indices(degree)))
+    for pair, (v, u) in enumerate(bernstein.PAIRS):
+        expected = difference(bernstein.gradients, degree, l, v)[:, u]
+        np.testing.assert_allclose(found[:, pair], expected, rtol=0.0, atol=1e-6)
+
+
+@given(from_two, points_in(count=5))
+def test_hessian_gradients_against_differences(degree, l):
+    """Of quadratics too, whose hessians do not change."""
+    found = bernstein.hessian_gradients(degree, l)
+    assert found.shape == (5, 3, 6, len(bernstein.indices(degree)))
+    for v in range(3):
+        expected = difference(bernstein.hessians, degree, l, v)
+        np.testing.assert_allclose(found[:, v], expected, rtol=0.0, atol=1e-5)
+
+
+def test_pairs_are_all_pairs_of_barycentrics():
+    found = sorted(tuple(sorted(pair)) for pair in bernstein.PAIRS)
+    assert found == [(0, 0), (0, 1), (0, 2), (1, 1), (1, 2), (2, 2)]
+
+
+@pytest.mark.parametrize("degree", range(1, 7))
+def test_masses_are_the_means_of_products(degree):
+    rule = triangle_rule(2 * degree)
+    B = bernstein.values(degree, rule.points)
+    expected = np.einsum("q,qi,qj->ij", rule.weights, B, B)
+    np.testing.assert_allclose(bernstein.masses(degree), expected, rtol=1e-12)
+
+
+@pytest.mark.parametrize("degree", range(2, 7))
+def test_bendings_are_the_means_of_products_of_hessians(degree):
+    rule = triangle_rule(2 * degree - 4)
+    H = bernstein.hessians(degree, rule.points)
+    count = H.shape[-1]
+    expected = np.einsum("q,qxi,qyj->xyij", rule.weights, H, H)
+    found = bernstein.bendings(degree).reshape(6, 6, count, count)
+    np.testing.assert_allclose(found, expected, rtol=1e-12, atol=1e-12 * degree**4)
 
 
 @given(degrees, points_in(count=5))

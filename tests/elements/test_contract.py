@@ -9,13 +9,14 @@ import math
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 from strategies import (
     kites,
     numbers,
     points_in,
     polynomials,
+    powers,
     rigidities,
     similarities,
     size_of,
@@ -30,8 +31,14 @@ from kplate.quadrature import composite, gauss, triangle_rule
 every_element = pytest.mark.parametrize(
     "element", ELEMENTS.values(), ids=ELEMENTS.keys()
 )
+few = settings(max_examples=20)  # of what takes long
 FINE = 12  # degree of the rules that stand for exact integrals
 LATTICE = np.array([(i, j, 7 - i - j) for i in range(8) for j in range(8 - i)]) / 7.0
+# Two triangles that share a vertical edge, the second beginning with its own vertex.
+UPRIGHT = (
+    np.array([(0.0, 0.0), (0.0, 1.0), (-0.7, 0.4), (0.6, 0.3)]),
+    np.array([(0, 1, 2), (3, 1, 0)]),
+)
 
 
 def places(vertices, barycentrics):
@@ -96,9 +103,69 @@ def load(element, vertices, pressure):
     return element.load(geometry, pressure(element.load_rule.points)[None])[0]
 
 
-def quadratic_pressure(c):
-    """Pressure ``sum of c l_i l_j`` as a function of barycentrics."""
+def mass(element, vertices, density):
+    """Mass matrix of one triangle for a function of barycentrics."""
+    geometry = Geometry(vertices=vertices[None], rule=element.load_rule)
+    return element.mass(geometry, density(element.load_rule.points)[None])[0]
+
+
+def geometric(element, vertices, forces):
+    """Geometric stiffness of one triangle for a function of barycentrics."""
+    geometry = Geometry(vertices=vertices[None], rule=element.load_rule)
+    return element.geometric(geometry, forces(element.load_rule.points)[None])[0]
+
+
+def matrices(element, vertices, rigidity, density, forces):
+    """Stiffness, mass and geometric stiffness where the size of the triangle is one."""
+    size = area(vertices[None])[0]
+    return np.stack(
+        [
+            stiffness(element, vertices, rigidity) * size,
+            mass(element, vertices, density) / size,
+            geometric(element, vertices, forces),
+        ]
+    )
+
+
+def quadratic(c):
+    """The function ``sum of c l_i l_j`` of barycentrics; c all 1 is constant."""
     return lambda l: np.einsum("...i,ij,...j->...", l, c, l)
+
+
+def linear(c):
+    """The function of barycentrics with the values c at the vertices."""
+    return lambda l: l @ c
+
+
+def tensors(forces):
+    """Forces n_xx, n_yy, n_xy (..., 3) as tensors, (..., 2, 2)."""
+    xx, yy, xy = np.moveaxis(forces, -1, 0)
+    return np.stack([np.stack([xx, xy], -1), np.stack([xy, yy], -1)], -1)
+
+
+def rigid(element, vertices):
+    """Unknowns of w = 1 and of the distances from the centroid along x and y, (d, 3).
+
+    The distances count in the size of the triangle.
+    """
+    arms = (places(vertices, LATTICE) - vertices.mean(axis=0)) / size_of(vertices)
+    jets = np.zeros((len(LATTICE), 3, 3))
+    jets[:, 0, 0] = 1.0
+    jets[:, 0, 1:] = arms
+    jets[:, [1, 2], [1, 2]] = 1.0 / size_of(vertices)
+    return np.column_stack(
+        [interpolate(element, vertices, jets[..., k]) for k in range(3)]
+    )
+
+
+def monomials(points, i=0, j=0, *, degree=5):
+    """Derivatives, i by x and j by y, of all monomials at points (q, 2), (q, m)."""
+    x, y = points.T
+    columns = [
+        math.perm(a, i) * math.perm(b, j) * x ** max(a - i, 0) * y ** max(b - j, 0)
+        for a, b in powers(degree)
+    ]
+    return np.column_stack(columns)
 
 
 def assert_close(actual, expected, atol=1e-9):
@@ -110,6 +177,12 @@ def assert_close(actual, expected, atol=1e-9):
 def assert_equal(actual, expected, atol=1e-9):
     """Compare numbers of the size of one with an absolute tolerance."""
     np.testing.assert_allclose(actual, expected, rtol=0.0, atol=atol)
+
+
+def assert_matrices(actual, expected):
+    """Compare matrices (k, d, d), each in its own size where that is more than one."""
+    sizes = np.maximum(np.abs(expected).max(axis=(1, 2), keepdims=True), 1.0)
+    assert_equal(actual / sizes, expected / sizes)
 
 
 @every_element
@@ -197,6 +270,24 @@ def test_stiffness_is_the_energy_of_the_curvature(element, X, D):
 
 
 @every_element
+@given(triangles(), rigidities(count=2))
+def test_one_rigidity_may_be_copied_to_every_point(element, X, D):
+    """The closed form for one rigidity a triangle is the sum over the points."""
+    geometry = Geometry(vertices=[X, 1.3 * X[[1, 2, 0]]], rule=element.rule)
+    count = len(element.rule.weights)
+    one = np.broadcast_to(D[:, None], (2, count, 3, 3))
+    copied = one.copy()
+    assert one.strides[1] == 0 < copied.strides[1]
+    for found, expected in zip(
+        element.stiffness(geometry, one),
+        element.stiffness(geometry, copied),
+        strict=True,
+    ):
+        S = np.sqrt(np.diag(expected))
+        assert_equal(found / np.outer(S, S), expected / np.outer(S, S))
+
+
+@every_element
 @given(triangles(), st.data())
 def test_stiffness_is_symmetric_with_three_free_motions(element, X, data):
     D = data.draw(rigidities(count=len(element.rule.weights)))
@@ -210,35 +301,44 @@ def test_stiffness_is_symmetric_with_three_free_motions(element, X, data):
 
 
 @every_element
-@given(triangles(), rigidities(count=1), st.permutations(range(3)))
-def test_renumbering_the_triangle_renumbers_the_stiffness(element, X, D, order):
-    """The turns of the three numbers only: the others make it run clockwise."""
-    start = order[0]
+@few
+@given(triangles(), rigidities(count=1), st.integers(0, 2), numbers(3, 3))
+def test_renumbering_the_triangle_renumbers_its_matrices(element, X, D, start, c):
+    """The turns of the three numbers only: the others make it run clockwise.
+
+    The density is constant, for which the rule of the mass is exact.
+    """
     corners = [start, (start + 1) % 3, (start + 2) % 3]
     T = moved_unknowns(element, X, X[corners], corners)
     S = scales(element, X)
-    back = T.T @ stiffness(element, X[corners], D[0]) @ T
-    assert_close(back / np.outer(S, S), stiffness(element, X, D[0]) / np.outer(S, S))
+    D = D[0] / np.abs(D).max()
+    density = quadratic(np.ones((3, 3)))
+    found = T.T @ matrices(element, X[corners], D, density, linear(c[corners])) @ T
+    expected = matrices(element, X, D, density, linear(c))
+    assert_matrices(found / np.outer(S, S), expected / np.outer(S, S))
 
 
 @every_element
+@few
 @given(triangles(), rigidities(count=1), similarities(), numbers(3, 3))
-def test_turning_and_enlarging_the_triangle_does_so_to_the_stiffness(
+def test_turning_and_enlarging_the_triangle_does_so_to_its_matrices(
     element, X, D, motion, c
 ):
-    """For the same w, K falls as 1/size^2 and loads grow as size^2."""
+    """For the same w, K falls as 1/size^2, masses and loads grow as size^2."""
     turn, size, shift = motion
     moved = size * X @ turn.T + shift
     T = moved_unknowns(element, X, moved)
-    bend = bending_turn(turn)
-    turned = np.linalg.solve(bend.T, D[0] @ np.linalg.inv(bend))
     S = scales(element, X)
-    back = size**2 * T.T @ stiffness(element, moved, turned) @ T
-    assert_close(back / np.outer(S, S), stiffness(element, X, D[0]) / np.outer(S, S))
-    p = quadratic_pressure(c)
+    D = D[0] / np.abs(D).max()
+    bend, pulled = bending_turn(turn), turn @ tensors(c) @ turn.T
+    turned = np.linalg.solve(bend.T, D @ np.linalg.inv(bend))
+    forces = np.stack([pulled[:, 0, 0], pulled[:, 1, 1], pulled[:, 0, 1]], axis=-1)
+    found = T.T @ matrices(element, moved, turned, quadratic(c), linear(forces)) @ T
+    expected = matrices(element, X, D, quadratic(c), linear(c))
+    assert_matrices(found / np.outer(S, S), expected / np.outer(S, S))
     S *= area(X[None])[0]
-    found = T.T @ load(element, moved, p) / size**2
-    assert_equal(found / S, load(element, X, p) / S, 1e-10)
+    found = T.T @ load(element, moved, quadratic(c)) / size**2
+    assert_equal(found / S, load(element, X, quadratic(c)) / S, 1e-10)
 
 
 def bending_turn(turn):
@@ -294,6 +394,65 @@ def test_conforming_elements_bend_as_their_slopes_do(element, X):
 
 
 @every_element
+@few
+@given(triangles())
+def test_third_derivatives_are_those_of_the_deflection(element, X):
+    """Those of the polynomial through the deflections of each piece."""
+    S = scales(element, X)
+    size = size_of(X)
+    middle = X.mean(axis=0)
+    for piece in element.pieces:
+        around, inside = LATTICE @ piece, triangle_rule(4).points @ piece
+        at, to = ((l @ X - middle) / size for l in (around, inside))
+        w = np.linalg.lstsq(monomials(at), rows(element, X, around)[:, 0] / S)[0]
+        xxx, xxy, xyy, yyy = (monomials(to, 3 - k, k) @ w for k in range(4))
+        by_x = np.stack([xxx, xyy, 2.0 * xxy], axis=1)
+        by_y = np.stack([xxy, yyy, 2.0 * xyy], axis=1)
+        found = element.third_derivatives(X[None], inside)[0] / S * size**3
+        assert_close(found, np.stack([by_x, by_y], axis=1), 1e-7)
+
+
+@every_element
+@few
+@given(triangles())
+def test_third_derivatives_are_those_of_the_curvature_of_conforming_elements(
+    element, X
+):
+    """Of those alone: the curvatures of the others are not those of any deflection."""
+    points = composite(element.pieces, triangle_rule(4)).points
+    step = 1e-5 * size_of(X)
+    S = scales(element, X)
+    by = []
+    for move in barycentric_gradients(X[None])[0].T * step:
+        ahead, behind = (
+            element.curvature(X[None], points + s * move)[0] for s in (1.0, -1.0)
+        )
+        by.append((ahead - behind) / (2.0 * step) / S)
+    expected = np.stack(by, axis=1)
+    error = np.abs(element.third_derivatives(X[None], points)[0] / S - expected).max()
+    assert element.conforming == (error < 1e-6 * np.abs(expected).max())
+
+
+@every_element
+@few
+@given(triangles())
+def test_curvatures_have_the_stated_degree_on_each_piece(element, X):
+    """Polynomials of that degree fit them, of one degree less do not."""
+    S = scales(element, X)
+    for piece in element.pieces:
+        points = triangle_rule(8).points @ piece
+        at = (points @ X - X.mean(axis=0)) / size_of(X)
+        B = (element.curvature(X[None], points)[0] / S).reshape(len(points), -1)
+        errors = []
+        for degree in (element.curvature_degree, element.curvature_degree - 1):
+            basis = monomials(at, degree=degree)
+            fitted = basis @ np.linalg.lstsq(basis, B)[0]
+            errors.append(np.abs(fitted - B).max() / np.abs(B).max())
+        assert errors[0] < 1e-10
+        assert errors[1] > 1e-3
+
+
+@every_element
 @given(triangles())
 def test_curvature_sums_to_the_slopes_around_the_edge(element, X):
     """Gauss's theorem, whether the element is C1 or takes w on its edges only."""
@@ -333,33 +492,37 @@ def test_curvature_along_an_edge_is_that_of_the_deflection(element, X):
 
 @every_element
 @given(kites(), numbers(2, 100), st.lists(st.floats(0.0, 1.0), min_size=1))
-def test_triangles_agree_along_a_shared_edge(element, kite, u, shares):
-    """In w; in w and both slopes where the element is conforming."""
+@example(UPRIGHT, np.cos(np.arange(200.0)).reshape(2, 100), [0.0, 0.3, 0.6, 1.0])
+def test_triangles_with_the_same_unknowns_agree_along_a_shared_edge(
+    element, kite, u, shares
+):
+    """In w; in w and both slopes where the element is conforming.
+
+    An edge's own unknowns mean the same in both triangles, whatever their numbers are.
+    """
     points, corners = kite
     X = points[corners]
     at = [[list(own).index(k) for k in (0, 1)] for own in corners]
     u = u[:, : unknowns_of(element)] / scales(element, X[0])
-    vertex = u[:, : 3 * element.per_vertex].reshape(2, 3, -1).copy()
+    first = 3 * element.per_vertex
+    vertex = u[:, :first].reshape(2, 3, -1)  # views
+    edge = u[:, first:].reshape(2, 3, -1)
     vertex[1, at[1]] = vertex[0, at[0]]
-    u[1, : vertex[1].size] = vertex[1].ravel()
+    edge[1, 3 - sum(at[1])] = edge[0, 3 - sum(at[0])]  # opposite the third vertex
     kept = 3 if element.conforming else 1
-    weight = np.array([1.0, size_of(X[0]), size_of(X[0])])[:kept, None]
+    weight = np.array([1.0, size_of(X[0]), size_of(X[0])])[:kept]
     s = np.array(shares)
     traces = []
-    for own, ends in zip(X, np.eye(3)[at], strict=True):
+    for own, ends, values in zip(X, np.eye(3)[at], u, strict=True):
         barycentrics = np.outer(1.0 - s, ends[0]) + np.outer(s, ends[1])
-        traces.append(rows(element, own, barycentrics)[:, :kept] * weight)
-    gap = (traces[0] @ u[0] - traces[1] @ u[1]).ravel()
-    # Unknowns of the second triangle on the shared edge take the value that fits.
-    first = vertex[1].size + element.per_edge * (3 - sum(at[1]))
-    free = traces[1][..., first : first + element.per_edge].reshape(gap.size, -1)
-    assert_equal(gap - free @ np.linalg.lstsq(free, gap)[0], 0.0, 1e-10)
+        traces.append(rows(element, own, barycentrics)[:, :kept] @ values * weight)
+    assert_equal(traces[0], traces[1], 1e-10)
 
 
 @every_element
 @given(triangles(), numbers(3, 3))
 def test_load_is_the_pressure_times_the_deflection(element, X, c):
-    p = quadratic_pressure(c)
+    p = quadratic(c)
     rule = composite(element.pieces, triangle_rule(FINE))
     w = rows(element, X, rule.points)[:, 0]
     exact = area(X[None])[0] * (rule.weights * p(rule.points)) @ w
@@ -380,7 +543,7 @@ def test_load_has_the_force_and_moments_of_the_pressure(element, X, c):
             for k in range(3)
         ]
     )
-    f = load(element, X, quadratic_pressure(c))
+    f = load(element, X, quadratic(c))
     one = interpolate(element, X, np.tile([1.0, 0.0, 0.0], (len(LATTICE), 1)))
     size = area(X[None])[0]
     assert f @ one / size == pytest.approx(force / size, abs=1e-11)
@@ -414,14 +577,134 @@ def test_load_works_on_polynomials_exactly(element, X, data):
 
 
 @every_element
-@given(st.lists(triangles(), min_size=2, max_size=4), st.data())
-def test_a_batch_is_one_by_one(element, several, data):
+@few
+@given(triangles(), numbers(3, 3), st.data())
+def test_mass_is_exact_on_polynomials(element, X, c, data):
+    """Any two for a constant density; one and a lower one for a quadratic density."""
+    rule = triangle_rule(FINE)
+    points = places(X, rule.points)
+    w = data.draw(polynomials(element.degree)).about(X)
+    u = interpolate(element, X, w.jet(places(X, LATTICE)))
+    for degree, density in (
+        (element.degree, quadratic(np.full((3, 3), c[0, 0]))),
+        (element.degree - 2, quadratic(c)),
+    ):
+        v = data.draw(polynomials(degree)).about(X)
+        other = interpolate(element, X, v.jet(places(X, LATTICE)))
+        product = w.derivative(points, 0, 0) * v.derivative(points, 0, 0)
+        exact = rule.weights @ (density(rule.points) * product)
+        found = u @ mass(element, X, density) @ other / area(X[None])[0]
+        assert found == pytest.approx(exact, abs=1e-10)
+
+
+@every_element
+@few
+@given(triangles(), st.data())
+def test_mass_is_taken_point_by_point(element, X, data):
+    rule = element.load_rule
+    density = data.draw(numbers(len(rule.weights)))
+    w = rows(element, X, rule.points)[:, 0] / scales(element, X)
+    exact = np.einsum("q,q,qd,qe->de", rule.weights, density, w, w)
+    S = scales(element, X) * np.sqrt(area(X[None])[0])
+    found = mass(element, X, lambda _: density)
+    assert_equal(found / np.outer(S, S), exact, 1e-12)
+
+
+@every_element
+@given(triangles(), st.data())
+def test_mass_is_symmetric_and_positive(element, X, data):
+    density = 1.5 + data.draw(numbers(len(element.load_rule.weights)))
+    M = mass(element, X, lambda _: density)
+    S = np.sqrt(np.diag(M))
+    M = M / np.outer(S, S)
+    assert_equal(M, M.T, 1e-14)
+    assert np.linalg.eigvalsh(M)[0] > 1e-7
+
+
+@every_element
+@few
+@given(triangles(), numbers(3, 3))
+def test_mass_of_rigid_motions_is_mass_and_moments_of_area(element, X, c):
+    """First and second ones, about the centroid, from the closed form."""
+    motions = rigid(element, X)
+    arms = (X - X.mean(axis=0)) / size_of(X)
+    at = np.column_stack([np.ones(3), arms])  # w of the motions at the vertices
+    exact = np.zeros((3, 3))
+    for i, j, k, l in np.ndindex(3, 3, 3, 3):
+        exact += c[i, j] * moment_of(i, j, k, l) * np.outer(at[k], at[l])
+    found = motions.T @ mass(element, X, quadratic(c)) @ motions
+    assert_equal(found / area(X[None])[0], exact, 1e-11)
+
+
+@every_element
+@few
+@given(triangles(), numbers(3, 3), st.data())
+def test_geometric_stiffness_is_exact_on_polynomials(element, X, c, data):
+    """For in-plane forces that are constant or linear."""
+    rule = triangle_rule(FINE)
+    points = places(X, rule.points)
+    w, v = (data.draw(polynomials(element.degree)).about(X) for _ in range(2))
+    u, other = (interpolate(element, X, p.jet(places(X, LATTICE))) for p in (w, v))
+    for forces in (linear(c), linear(np.tile(c[0], (3, 1)))):
+        n_xx, n_yy, n_xy = forces(rule.points).T
+        w_x, w_y = w.jet(points)[:, 1:].T * size_of(X)
+        v_x, v_y = v.jet(points)[:, 1:].T * size_of(X)
+        work = n_xx * w_x * v_x + n_yy * w_y * v_y + n_xy * (w_x * v_y + w_y * v_x)
+        found = u @ geometric(element, X, forces) @ other
+        exact = area(X[None])[0] / size_of(X) ** 2 * (rule.weights @ work)
+        assert found == pytest.approx(exact, abs=1e-10)
+
+
+@every_element
+@given(triangles(), numbers(3))
+def test_geometric_stiffness_is_the_work_on_the_slopes(element, X, c):
+    """For any unknowns, where the forces are constant."""
+    rule = composite(element.pieces, triangle_rule(FINE))
+    S = scales(element, X)
+    slopes = rows(element, X, rule.points)[:, 1:] / S
+    weights = area(X[None])[0] * rule.weights
+    exact = np.einsum("q,qid,ij,qje->de", weights, slopes, tensors(c), slopes)
+    found = geometric(element, X, linear(np.tile(c, (3, 1)))) / np.outer(S, S)
+    assert_equal(found, found.T, 1e-13)
+    assert_equal(found, exact, 1e-11)
+
+
+@every_element
+@few
+@given(triangles(), st.data())
+def test_in_plane_forces_are_taken_point_by_point(element, X, data):
+    rule = element.load_rule
+    forces = data.draw(numbers(len(rule.weights), 3))
+    S = scales(element, X)
+    slopes = rows(element, X, rule.points)[:, 1:] / S
+    weights = area(X[None])[0] * rule.weights
+    exact = np.einsum("q,qid,qij,qje->de", weights, slopes, tensors(forces), slopes)
+    found = geometric(element, X, lambda _: forces) / np.outer(S, S)
+    assert_equal(found, exact, 1e-11)
+
+
+@every_element
+@few
+@given(triangles(), st.data())
+def test_in_plane_forces_do_not_work_on_a_motion_up_and_down(element, X, data):
+    forces = data.draw(numbers(len(element.load_rule.weights), 3))
+    up = rigid(element, X)[:, 0]
+    found = geometric(element, X, lambda _: forces) @ up
+    assert_equal(found / scales(element, X), 0.0, 1e-11)
+
+
+@every_element
+@few
+@given(st.lists(triangles(), min_size=2, max_size=3), st.integers(0, 2**32 - 1))
+def test_a_batch_is_one_by_one(element, several, seed):
     X = np.array(several)
     n, q, load_q = len(X), len(element.rule.weights), len(element.load_rule.weights)
-    D = data.draw(rigidities(count=n * q)).reshape(n, q, 3, 3)
-    p = data.draw(numbers(n, load_q))
-    l = data.draw(points_in(count=4 * n)).reshape(n, 4, 3)
-    for array in (X, D, p, l):
+    rng = np.random.default_rng(seed)
+    A = rng.normal(size=(n, q, 3, 3))
+    D = A @ A.swapaxes(-1, -2)
+    p, forces = rng.normal(size=(n, load_q)), rng.normal(size=(n, load_q, 3))
+    l = rng.dirichlet(np.ones(3), (n, 4))
+    for array in (X, D, p, forces, l):
         array.setflags(write=False)
 
     def all_of(some):
@@ -429,26 +712,35 @@ def test_a_batch_is_one_by_one(element, several, data):
         loaded = Geometry(vertices=X[some], rule=element.load_rule)
         return (
             element.stiffness(geometry, D[some]),
+            element.stiffness(geometry, np.broadcast_to(D[some, :1], D[some].shape)),
             element.load(loaded, p[some]),
+            element.mass(loaded, p[some]),
+            element.geometric(loaded, forces[some]),
             element.evaluate(X[some], l[some]),
             element.curvature(X[some], l[some]),
+            element.third_derivatives(X[some], l[some]),
         )
 
-    for k, whole in enumerate(all_of(slice(None))):
-        single = np.concatenate([all_of(slice(i, i + 1))[k] for i in range(n)])
-        for one, other in zip(whole, single, strict=True):
+    singles = [all_of(slice(i, i + 1)) for i in range(n)]
+    for whole, *parts in zip(all_of(slice(None)), *singles, strict=True):
+        for one, other in zip(whole, np.concatenate(parts), strict=True):
             assert_close(one, other, 1e-13)
 
 
 @every_element
 @given(triangles(), points_in(count=4))
-def test_curvature_takes_points_for_all_or_for_each(element, X, barycentrics):
-    both = np.array([X, 2.0 * X])
-    shared = element.curvature(both, barycentrics)
-    each = element.curvature(both, np.array([barycentrics] * 2))
-    np.testing.assert_array_equal(shared, each)
+def test_points_may_be_given_for_all_triangles_or_for_each(element, X, barycentrics):
+    both = np.array([X, 2.0 * X[[1, 2, 0]]])
+    each = np.array([barycentrics] * 2)
     d = unknowns_of(element)
-    assert shared.shape == (2, 4, 3, d)
+    for rows_of, shape in (
+        (element.evaluate, (2, 4, 3, d)),
+        (element.curvature, (2, 4, 3, d)),
+        (element.third_derivatives, (2, 4, 2, 3, d)),
+    ):
+        shared = rows_of(both, barycentrics)
+        assert shared.shape == shape
+        np.testing.assert_allclose(shared, rows_of(both, each), rtol=1e-14, atol=0.0)
 
 
 @every_element
