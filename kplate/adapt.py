@@ -7,8 +7,12 @@ the places that have no finite moment; bands are not estimated.
 import math
 from collections.abc import Sequence
 
+from kplate.certifying import BUDGET, refine_to
 from kplate.choice import AUTO, TRIANGLES, choose
+from kplate.elements import ELEMENTS
 from kplate.errors import InputError
+from kplate.following import followed
+from kplate.goals import Goal, Peak, Resultant
 from kplate.guard import mesh_guarded
 from kplate.loads import Case, DiscPatch, Load, RectanglePatch
 from kplate.meshing import mesh_outline, refined_triangles, size_for
@@ -31,6 +35,10 @@ SHEAR_ERROR = 1e-6
 ENOUGH, MOST = 2_500, 100_000  # triangles at a refined place, at all of them
 # Edges at the centre of a patch, as a share of its smaller length.
 PATCH_SHARE = 0.125
+# Triangles of the first mesh on the way to a tolerance, and the tolerance below which
+# excluded discs begin with triangles of half their radius.
+COARSE = {"quintic": 200, "hct": 800}
+FINE_TOLERANCE = 0.005
 
 
 def solve(
@@ -42,6 +50,9 @@ def solve(
     element: str = AUTO,
     excluded_radius: float | None = None,
     balanced: bool = False,
+    tolerance: float | None = None,
+    goals: Sequence[Goal] | None = None,
+    budget: int = BUDGET,
     progress: Progress | None = None,
 ) -> Solution:
     """Solve the bending of a plate under its loads.
@@ -66,6 +77,15 @@ def solve(
     balanced : bool, optional
         Whether to find balanced moments too (`Solution.balanced_moments`), on the same
         mesh; they take several times as long.
+    tolerance : float, optional
+        Half width of the bands as a share of the values, such as 0.01: the mesh is
+        refined until every goal is inside it. Without one a single mesh is solved and
+        no band is made.
+    goals : sequence of Goal, optional
+        What must be inside the tolerance, in every case; the peak deflection, the peak
+        von Mises stress and the resultant of each support if left out.
+    budget : int, optional
+        Unknowns beyond which no finer mesh is made; the bands are then those reached.
     progress : callable, optional
         Called with a stage and the fraction done.
 
@@ -106,6 +126,10 @@ def solve(
     """
     if triangles is not None and size is not None:
         raise InputError("give the number of triangles or their size, not both.")
+    if tolerance is not None and not 0.0 < tolerance < 1.0:
+        raise InputError(
+            f"the tolerance is {tolerance:g}; it must lie between 0 and 1."
+        )
     if excluded_radius is not None and not excluded_radius > 0.0:
         raise InputError(
             f"excluded_radius is {excluded_radius:g} m; it must be positive."
@@ -116,6 +140,18 @@ def solve(
     if size is not None:
         triangles = math.ceil(plate.outline.area / (math.sqrt(3.0) / 4.0 * size**2))
     chosen = choose(plate, element, triangles)
+    if tolerance is not None and ELEMENTS[chosen.element].conforming:
+        return _to_tolerance(
+            plate,
+            cases,
+            tolerance,
+            goals=default_goals(plate) if goals is None else goals,
+            element=chosen.element,
+            start=size,
+            budget=budget,
+            excluded_radius=excluded_radius,
+            progress=progress,
+        )
     if size is None:
         wanted = TRIANGLES[chosen.element] if triangles is None else triangles
         size = size_for(plate.outline, wanted)
@@ -130,6 +166,62 @@ def solve(
     state = solve_static(plate, mesh, cases, element=chosen.element, progress=progress)
     dual = solve_dual(plate, mesh, cases) if balanced else None
     return Solution(state=state, excluded_radius=excluded_radius, dual=dual)
+
+
+def default_goals(plate: Plate, criterion: str = "von Mises") -> tuple[Goal, ...]:
+    """Goals where nobody states any.
+
+    Peak deflection, peak stress by a criterion, and the force of each support.
+    """
+    outline = plate.outline
+    names = [
+        *outline.side_names,
+        *(seam.name for seam in outline.seams),
+        *(mark.name for mark in outline.marks),
+    ]
+    return (
+        Peak(quantity="deflection"),
+        Peak(quantity=criterion),
+        *(Resultant(of=n) for n in names if plate.support(n).holds_deflection),
+    )
+
+
+def _to_tolerance(
+    plate: Plate,
+    cases: Sequence[Case],
+    tolerance: float,
+    *,
+    goals: Sequence[Goal],
+    element: str,
+    start: float | None,
+    budget: int,
+    excluded_radius: float | None,
+    progress: Progress | None,
+) -> Solution:
+    """Solve to a tolerance, from a coarse mesh that is graded beforehand."""
+    size = size_for(plate.outline, COARSE[element]) if start is None else start
+    outline = followed(plate.outline, cases, goals)
+    share = 1.0 if tolerance > FINE_TOLERANCE else 0.5
+    fine = [
+        (place.place, min(share * place.radius, size))
+        for place in excluded_places(plate, cases, excluded_radius)
+    ]
+    graded = corner_grading(plate, error=min(CORNER_ERROR, 0.1 * tolerance))
+    inside = outline.zones or outline.seams or outline.marks
+    mesh = (mesh_guarded if inside else mesh_outline)(
+        outline, size=size, fine=fine, graded=graded
+    )
+    return refine_to(
+        plate,
+        mesh,
+        cases,
+        goals,
+        tolerance=tolerance,
+        element=element,
+        budget=budget,
+        excluded_radius=excluded_radius,
+        progress=progress,
+    )
 
 
 def _fine(

@@ -13,6 +13,7 @@ import numpy as np
 from kplate import cutting
 from kplate.arrays import Floats, Ints
 from kplate.dofs import Numbering, add_up
+from kplate.elements import bernstein
 from kplate.elements.triangle import Geometry
 from kplate.errors import InputError
 from kplate.loads import (
@@ -30,11 +31,14 @@ from kplate.loads import (
 )
 from kplate.mesh import Mesh
 from kplate.plate import Plate
-from kplate.quadrature import Rule, gauss
+from kplate.quadrature import Rule, gauss, triangle_rule
 
 BLOCK = 1024  # triangles
 # Share of a patch that may be missing, as round-off, before it is off the plate.
 MISSING = 1e-9
+# Share below which what is not linear of a pressure is round-off.
+ROUND_OFF = 1e-12
+FIELD_DEGREE = 12  # of the rule that looks for it in a stated function
 
 
 class Shape(Protocol):
@@ -80,6 +84,51 @@ def load_vector(
             case _:
                 _add_pressure(forces, element, numbering, plate, load)
     return forces[:, 0]
+
+
+def unbalanced(mesh: Mesh, load: Load) -> Floats:
+    """Square integral, or more, of what of a pressure is not linear on each triangle.
+
+    Returns
+    -------
+    ndarray, shape (n_triangles,)
+        In N^2/m^2; 0 where the pressure is linear on the triangle.
+    """
+    match load:
+        case RectanglePatch() | DiscPatch():
+            if isinstance(load, RectanglePatch):
+                groups = cutting.inside_polygon(
+                    mesh.points[mesh.triangles], load.corners
+                )
+                height = load.force / (load.size[0] * load.size[1])
+            else:
+                groups = cutting.inside_disc(
+                    mesh.points[mesh.triangles], load.centre, load.radius
+                )
+                height = load.force / (np.pi * load.radius**2)
+            covered = np.zeros(len(mesh.triangles))
+            for parts in groups:
+                np.add.at(covered, parts.triangles, parts.weights.sum(axis=1))
+            # Nothing, or the pressure everywhere, is a linear one.
+            off = np.minimum(covered, mesh.areas - covered)
+            off[off < ROUND_OFF * mesh.areas] = 0.0
+            return height**2 * off
+        case Hydrostatic():
+            depth = _depth(load, mesh.points[mesh.triangles])
+            cut = (depth.min(axis=1) < 0.0) & (depth.max(axis=1) > 0.0)
+            most = load.specific_weight * np.maximum(depth.max(axis=1), 0.0)
+            return np.where(cut, most**2 * mesh.areas, 0.0)
+        case PressureField(function=function):
+            rule = triangle_rule(FIELD_DEGREE)
+            points = rule.points @ mesh.points[mesh.triangles]
+            pressure = _field_pressure(function(points[..., 0], points[..., 1]), points)
+            mean = (pressure * rule.weights) @ rule.points
+            best = np.linalg.solve(bernstein.masses(1), mean[..., None])[..., 0]
+            off = pressure - best @ rule.points.T
+            squared: Floats = mesh.areas * (off**2 @ rule.weights)
+            small = squared < ROUND_OFF**2 * mesh.areas * (pressure**2 @ rule.weights)
+            return np.where(small, 0.0, squared)
+    return np.zeros(len(mesh.triangles))
 
 
 def _add_pressure(

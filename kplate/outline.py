@@ -284,6 +284,19 @@ class Outline:
         rim, *holes = (line.region.exterior.coords for line in self.boundaries)
         return shapely.Polygon(rim, holes)
 
+    def crossed(
+        self, start: tuple[float, float], end: tuple[float, float]
+    ) -> list[list[tuple[float, float]]]:
+        """Pieces of a segment (ends in m) that lie on the plate, but for round-off."""
+        import shapely
+
+        cut = self.region.intersection(shapely.LineString([start, end]))
+        return [
+            [(float(x), float(y)) for x, y in part.coords]
+            for part in getattr(cut, "geoms", [cut])
+            if part.geom_type == "LineString" and part.length > SNAP * self.size
+        ]
+
     @cached_property
     def span(self) -> float:
         """Diameter in m of the largest circle inside the rim, holes disregarded.

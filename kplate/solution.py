@@ -6,18 +6,29 @@ in tension. Methods that take a `case` want its name where there are several.
 """
 
 import math
-from collections.abc import Callable
-from dataclasses import dataclass, replace
+from collections.abc import Mapping
+from dataclasses import dataclass, field, replace
 from functools import cached_property
-from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from kplate import reactions as support_reactions
 from kplate.arrays import Floats, Ints
+from kplate.boundary import rigid_motions
 from kplate.errors import InputError
+from kplate.goals import Goal, Peak
 from kplate.mesh import Mesh
+from kplate.peaks import (
+    QUANTITIES,
+    Candidates,
+    Extreme,
+    PeakBand,
+    climb,
+    extreme,
+    measures,
+    peak_band,
+)
 from kplate.plate import Plate
 from kplate.raw import RawMoments
 from kplate.reactions import CornerForce, Reactions
@@ -28,26 +39,45 @@ from kplate.recovery import (
     surface_stress,
     von_mises,
 )
-from kplate.rims import outside, rim, stationary
+from kplate.rims import outside, rim
 from kplate.samples import Samples
 from kplate.singular import Excluded, excluded_places, shear_places
 from kplate.solve.dual import DualState
 from kplate.solve.static import StaticState
 from kplate.values import Face, Value
 
-# A summit is sought on stencils of 3 x 3 points, each a third of the last in size.
-_STENCIL = np.array([(i, j) for i in (-1, 0, 1) for j in (-1, 0, 1)]) / 2.0
-_ZOOMS = 8
 _FACES: tuple[Face, Face] = ("top", "bottom")
 
 
-class _Candidates(NamedTuple):
-    """Places (k, 2) where moments may peak, with what is known there."""
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Step:
+    """One mesh on the way to a tolerance.
 
-    places: Floats
-    moments: Floats
-    shears: Floats
-    thickness: Floats
+    Parameters
+    ----------
+    unknowns : int
+        Free unknowns of the plate.
+    triangles : int
+        Triangles of the mesh.
+    seconds : float
+        Time since the start.
+    bands : dict of str to float
+        Half width of each goal's band as a share of its value, the widest of the cases.
+    reached : bool
+        Whether every goal is inside the tolerance.
+    """
+
+    unknowns: int
+    triangles: int
+    seconds: float
+    bands: dict[str, float]
+    reached: bool
+
+    @property
+    def words(self) -> str:
+        """One line: unknowns, band per goal, seconds."""
+        bands = ", ".join(f"{name} {100 * b:.2g} %" for name, b in self.bands.items())
+        return f"{self.unknowns} unknowns, {self.seconds:.1f} s: {bands}"
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -63,11 +93,23 @@ class Solution:
         plate's thickness if left out.
     dual : DualState, optional
         Balanced moments on the same mesh.
+    known : mapping, optional
+        Values with bands, by goal and case.
+    energies : tuple of Value, optional
+        Strain energy of each case with its band.
+    tolerance : float, optional
+        Half width of bands that was asked for, as a share.
+    history : tuple of Step, optional
+        The meshes on the way to it.
     """
 
     state: StaticState
     excluded_radius: float | None = None
     dual: DualState | None = None
+    known: Mapping[tuple[Goal, str], Value] = field(default_factory=dict)
+    energies: tuple[Value, ...] = ()
+    tolerance: float | None = None
+    history: tuple[Step, ...] = ()
 
     @property
     def plate(self) -> Plate:
@@ -158,6 +200,45 @@ class Solution:
         """Strain energy in J."""
         return float(self.state.strain_energy[self._index(case)])
 
+    def load_force(self, *, case: str | None = None) -> float:
+        """Sum of the loads in N, positive up."""
+        motions = rigid_motions(self.state.constraints.numbering)[:, 0]
+        return float(motions @ self.state.forces[:, self._index(case)])
+
+    @property
+    def reached(self) -> bool:
+        """Whether every goal is inside the tolerance that was asked for."""
+        return bool(self.history) and self.history[-1].reached
+
+    def value(self, goal: Goal, *, case: str | None = None) -> Value:
+        """A goal's value and band.
+
+        Parameters
+        ----------
+        goal : Goal
+            One of those the plate was solved for, or a peak.
+        case : str, optional
+            The load case; may be left out where there is only one.
+
+        Returns
+        -------
+        Value
+
+        Raises
+        ------
+        InputError
+            If the plate was solved without that goal.
+        """
+        if isinstance(goal, Peak):
+            return self.peak(goal.quantity, case=case)
+        name = self.cases[self._index(case)]
+        if (goal, name) not in self.known:
+            raise InputError(
+                f"{goal} was not asked for; call solve(..., tolerance=..., "
+                "goals=[...])."
+            )
+        return self.known[goal, name]
+
     def load_work(self, *, case: str | None = None) -> float:
         """Work of the loads on their deflections in J: twice the strain energy."""
         return float(self.state.load_work[self._index(case)])
@@ -215,24 +296,98 @@ class Solution:
         Returns
         -------
         Value
-            Kind "none". Moments and stresses leave the discs in `excluded` out, but not
-            their rims.
+            Kind "estimate" where balanced moments were found too, "none" elsewhere.
+            Moments and stresses leave the discs in `excluded` out, but not their rims.
 
         Raises
         ------
         InputError
             If there is no such quantity or case.
         """
-        if quantity not in _PEAKS:
+        self._check_quantity(quantity)
+        indices = range(len(self.cases)) if case is None else [self._index(case)]
+        values = [self._peak(quantity, index) for index in indices]
+        lost = [value for value in values if math.isnan(value.value)]
+        key = _largest if quantity == "largest principal" else _magnitude
+        return lost[0] if lost else max(values, key=key)
+
+    def peak_band(self, quantity: str, *, case: str | None = None) -> PeakBand:
+        """Band of the peak's magnitude in one case, and where the peak may be.
+
+        Raises
+        ------
+        InputError
+            If there is no such quantity or case, or no balanced moments are there.
+        """
+        self._check_quantity(quantity)
+        if self.dual is None or not self.state.element.conforming:
+            raise InputError(
+                "a peak has a band only where balanced moments were found too, with a "
+                'C1 element; call solve(..., tolerance=...) with element "auto".'
+            )
+        index = self._index(case)
+        if quantity == "deflection":
+            return self._deflection_band(index)
+        at = self._candidates(index)
+        own = self.mesh.barycentrics(at.triangles, at.places)[:, None]
+        moments = self.dual.moments_at(at.triangles, own)[:, 0, :, index]
+        shears = self.dual.shears_at(at.triangles, own)[:, 0, :, index]
+        values, differences = measures(quantity, at, moments, shears)
+        return peak_band(self.mesh, at.triangles, values, differences)
+
+    def _deflection_band(self, index: int) -> PeakBand:
+        assert self.dual is not None
+        samples = self.samples
+        own = self.mesh.barycentrics(samples.holders, samples.points)[:, None]
+        other = self.dual.deflections_at(samples.holders, own)[:, 0, index]
+        w = samples.bent[:, 0, index]
+        return peak_band(self.mesh, samples.holders, np.abs(w), np.abs(w - other))
+
+    def _check_quantity(self, quantity: str) -> None:
+        if quantity not in QUANTITIES:
             raise InputError(
                 f"there is no quantity {quantity!r}; the quantities are "
-                f"{', '.join(_PEAKS)}."
+                f"{', '.join(QUANTITIES)}."
             )
-        indices = range(len(self.cases)) if case is None else [self._index(case)]
-        values = [_PEAKS[quantity](self, index) for index in indices]
-        lost = [value for value in values if math.isnan(value.value)]
-        key = _largest if quantity in _BY_VALUE else _magnitude
-        return lost[0] if lost else max(values, key=key)
+
+    def _peak(self, quantity: str, index: int) -> Value:
+        """Peak of one case, with its band where there is a dual."""
+        case = self.cases[index]
+        found: Extreme
+        if quantity == "deflection":
+            found = self._summit(index)
+        else:
+            at = self._candidates(index)
+            if not len(at.places):
+                return Value(
+                    value=math.nan,
+                    case=case,
+                    reason="is not known: the places left out cover the plate",
+                )
+            found = extreme(quantity, at)
+        value, place, face = found
+        result = Value(value=value, place=place, face=face, case=case)
+        if self.dual is None or not self.state.element.conforming:
+            return result
+        band = self.peak_band(quantity, case=case)
+        size = abs(value)
+        low, high = min(band.lower, size), max(band.upper, size)
+        low, high = (low, high) if value >= 0.0 else (-high, -low)
+        return replace(result, lower=low, upper=high, kind="estimate")
+
+    def _summit(self, index: int) -> tuple[float, tuple[float, float], None]:
+        """Climb from the sample that deflects most to the summit beside it."""
+        samples, case = self.samples, self.cases[index]
+        w = samples.bent[:, 0, index]
+        best = int(np.argmax(np.abs(w)))
+        size = float(np.sqrt(2.0 * self.mesh.areas[samples.holders[best]]))
+        value, place = climb(
+            lambda points: self.deflection(points, case=case),
+            self.mesh,
+            (float(w[best]), samples.points[best]),
+            size,
+        )
+        return value, place, None
 
     def point_fields(self, *, case: str | None = None) -> dict[str, Floats]:
         """Fields at `field_points`, for files and pictures.
@@ -343,7 +498,7 @@ class Solution:
         table = self.state.constraints.numbering.table[triangles]
         return np.einsum("krd,kd->kr", rows, self.state.unknowns[table, index])
 
-    def _candidates(self, index: int) -> "_Candidates":
+    def _candidates(self, index: int) -> Candidates:
         """Places at which moments may peak, with moments, shears and thickness there.
 
         They are taken as linear between the samples and what is asked of them is
@@ -352,7 +507,7 @@ class Solution:
         case, samples = self.cases[index], self.samples
         moments, shears = samples.moments[:, :, index], samples.shears[:, :, index]
         thickness = self.plate.thicknesses[samples.sections]
-        found = _Candidates(samples.points, moments, shears, thickness)
+        found = Candidates(samples.points, moments, shears, thickness, samples.holders)
         discs = [e for e in self.excluded if e.case in ("", case)]
         if not discs:
             return found
@@ -361,110 +516,20 @@ class Solution:
         rims = rims[outside(rims, discs, 1.0 - 1e-9)]
         if not (kept.any() or len(rims)):
             nothing = np.empty((0, 3))
-            return _Candidates(nothing[:, :2], nothing, nothing[:, :2], nothing[:, 0])
+            none = np.empty(0, dtype=np.int64)
+            return Candidates(
+                nothing[:, :2], nothing, nothing[:, :2], nothing[:, 0], none
+            )
         triangles, barycentrics = self.mesh.locate(rims)
-        on_rims = _Candidates(
+        on_rims = Candidates(
             rims,
             self._recovered.moments_at(triangles, barycentrics)[:, :, index],
             self._recovered.shears_at(triangles, barycentrics)[:, :, index],
             self.plate.thicknesses[self.mesh.zones[triangles]],
+            triangles,
         )
         both = zip(found, on_rims, strict=True)
-        return _Candidates(*(np.concatenate([a[kept], b]) for a, b in both))
-
-    def _unknown(self, index: int) -> Value:
-        """No value, where the discs that are left out cover the plate."""
-        return Value(
-            value=math.nan,
-            case=self.cases[index],
-            reason="is not known: the places left out cover the plate",
-        )
-
-    def _value(self, value: float, place: ArrayLike, index: int) -> Value:
-        x, y = np.asarray(place, dtype=float)
-        return Value(
-            value=float(value), place=(float(x), float(y)), case=self.cases[index]
-        )
-
-
-def _peak_deflection(solution: Solution, index: int) -> Value:
-    """Climb from the sample that deflects most to the summit beside it."""
-    samples, case = solution.samples, solution.cases[index]
-    w = samples.bent[:, 0, index]
-    best = int(np.argmax(np.abs(w)))
-    place, value = samples.points[best], float(w[best])
-    owner = int(samples.owners[np.flatnonzero((samples.triangles == best).any(1))[0]])
-    size = float(np.sqrt(2.0 * solution.mesh.areas[owner]))
-    for _ in range(_ZOOMS):
-        stencil = place + size * _STENCIL
-        stencil = stencil[solution.mesh.covers(stencil)]
-        size /= 3.0
-        if len(stencil) < len(_STENCIL):
-            continue
-        found = solution.deflection(stencil, case=case)
-        summit = stationary(stencil, found)
-        there = stencil if summit is None else np.concatenate([stencil, summit[None]])
-        found = solution.deflection(there, case=case)
-        top = int(np.argmax(np.abs(found)))
-        if abs(found[top]) > abs(value):
-            place, value = there[top], float(found[top])
-    return solution._value(value, place, index)
-
-
-def _peak_von_mises(solution: Solution, index: int) -> Value:
-    at = solution._candidates(index)
-    if not len(at.places):
-        return solution._unknown(index)
-    stress = von_mises(surface_stress(at.moments, at.thickness, "bottom"))
-    best = int(np.argmax(stress))
-    principal = principal_moments(at.moments[best])[0]
-    # The same on both faces; name the one in tension.
-    face: Face = "bottom" if principal.sum() >= 0.0 else "top"
-    return replace(solution._value(stress[best], at.places[best], index), face=face)
-
-
-def _peak_principal(solution: Solution, index: int, sign: float) -> Value:
-    at = solution._candidates(index)
-    if not len(at.places):
-        return solution._unknown(index)
-    values = []
-    for face in _FACES:
-        stress = surface_stress(at.moments, at.thickness, face)
-        first = principal_moments(sign * stress)[0][:, 0]
-        best = int(np.argmax(first))
-        value = solution._value(sign * first[best], at.places[best], index)
-        values.append(replace(value, face=face))
-    return max(values, key=lambda value: sign * value.value)
-
-
-def _peak_moment(solution: Solution, index: int, component: int) -> Value:
-    at = solution._candidates(index)
-    if not len(at.places):
-        return solution._unknown(index)
-    best = int(np.argmax(np.abs(at.moments[:, component])))
-    return solution._value(at.moments[best, component], at.places[best], index)
-
-
-def _peak_shear_stress(solution: Solution, index: int) -> Value:
-    at = solution._candidates(index)
-    if not len(at.places):
-        return solution._unknown(index)
-    stress = 1.5 * np.hypot(*at.shears.T) / at.thickness
-    best = int(np.argmax(stress))
-    return solution._value(stress[best], at.places[best], index)
-
-
-_PEAKS: dict[str, Callable[[Solution, int], Value]] = {
-    "deflection": _peak_deflection,
-    "von Mises": _peak_von_mises,
-    "largest principal": lambda s, i: _peak_principal(s, i, 1.0),
-    "smallest principal": lambda s, i: _peak_principal(s, i, -1.0),
-    "shear stress": _peak_shear_stress,
-    "m_xx": lambda s, i: _peak_moment(s, i, 0),
-    "m_yy": lambda s, i: _peak_moment(s, i, 1),
-    "m_xy": lambda s, i: _peak_moment(s, i, 2),
-}
-_BY_VALUE = ("largest principal",)
+        return Candidates(*(np.concatenate([a[kept], b]) for a, b in both))
 
 
 def _largest(value: Value) -> float:

@@ -206,7 +206,16 @@ class DualSystem:
 
     def state(self, cases: Sequence[Case], forces: Floats) -> DualState:
         """Balance the forces (n, whole, c) of load cases."""
-        unknowns, inside, moments, defect = self.balance(forces)
+        return self.state_of(cases, forces, self.balance(forces))
+
+    def state_of(
+        self,
+        cases: Sequence[Case],
+        forces: Floats,
+        solved: tuple[Floats, Floats, Floats, Floats],
+    ) -> DualState:
+        """State of load cases that `balance` has solved."""
+        unknowns, inside, moments, defect = solved
         return DualState(
             plate=self.plate,
             cases=tuple(cases),

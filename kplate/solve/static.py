@@ -154,7 +154,12 @@ class StaticSystem:
 
     def state(self, cases: Sequence[Case], forces: Floats) -> StaticState:
         """Solve for the forces (count, c) of load cases."""
-        unknowns = self.solve(forces)
+        return self.state_of(cases, forces, self.solve(forces))
+
+    def state_of(
+        self, cases: Sequence[Case], forces: Floats, unknowns: Floats
+    ) -> StaticState:
+        """State of load cases whose unknowns are known."""
         return StaticState(
             plate=self.plate,
             cases=tuple(cases),
@@ -225,7 +230,7 @@ def solve_static(
     """
     check_cases(cases)
     report = progress or _silent
-    report("stiffness", 0.1)
+    report("factorisation", 0.1)
     system = StaticSystem.of(plate, mesh, element)
     report("loads", 0.6)
     forces = np.column_stack([system.forces(case.loads) for case in cases])

@@ -1,0 +1,95 @@
+"""Numbers that a band can be asked for.
+
+Each is a linear functional of the deflection. Those at a point inside need the mesh to
+have a vertex there (deflections) or a disc around it that is free of supports, loads on
+lines and steps (moments, shears, slopes).
+"""
+
+from dataclasses import dataclass
+from typing import Literal
+
+Component = Literal["m_xx", "m_yy", "m_xy"]
+Place = tuple[float, float]
+
+
+@dataclass(frozen=True, kw_only=True)
+class Deflection:
+    """The deflection w in m at a place."""
+
+    at: Place
+
+
+@dataclass(frozen=True, kw_only=True)
+class MeanDeflection:
+    """The mean deflection in m of a zone, or of the whole plate if left out."""
+
+    zone: str | None = None
+
+
+@dataclass(frozen=True, kw_only=True)
+class Slope:
+    """The slope of w at a place in a direction (a unit vector)."""
+
+    at: Place
+    direction: Place
+
+
+@dataclass(frozen=True, kw_only=True)
+class Moment:
+    """A moment in N at a place inside."""
+
+    at: Place
+    component: Component
+
+
+@dataclass(frozen=True, kw_only=True)
+class Shear:
+    """The transverse shear q in N/m at a place inside, on a face with this normal."""
+
+    at: Place
+    direction: Place
+
+
+@dataclass(frozen=True, kw_only=True)
+class ClampingMoment:
+    """The moment m_nn in N at a place on a straight clamped side."""
+
+    at: Place
+
+
+@dataclass(frozen=True, kw_only=True)
+class LineReaction:
+    """The effective shear v_n in N/m at a place on a straight simply supported side."""
+
+    at: Place
+
+
+@dataclass(frozen=True, kw_only=True)
+class Resultant:
+    """The force in N, positive up, that a side, seam or mark brings.
+
+    Of a side with its corner forces where no other support meets it, without them
+    elsewhere.
+    """
+
+    of: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class Peak:
+    """The extreme value of a quantity of `Solution.peak` over the plate."""
+
+    quantity: str
+
+
+Goal = (
+    Deflection
+    | MeanDeflection
+    | Slope
+    | Moment
+    | Shear
+    | ClampingMoment
+    | LineReaction
+    | Resultant
+    | Peak
+)
