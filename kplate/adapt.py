@@ -12,9 +12,10 @@ from kplate.choice import AUTO, TRIANGLES, choose
 from kplate.elements import ELEMENTS
 from kplate.errors import InputError
 from kplate.following import followed
-from kplate.goals import Goal, Peak, Resultant
+from kplate.goals import Deflection, Goal, Peak, Resultant
 from kplate.guard import mesh_guarded
-from kplate.loads import Case, DiscPatch, Load, RectanglePatch
+from kplate.loads import Case, DiscPatch, Load, PointMoment, RectanglePatch
+from kplate.mesh import Mesh
 from kplate.meshing import mesh_outline, refined_triangles, size_for
 from kplate.plate import Plate
 from kplate.singular import excluded_places, plate_corners
@@ -35,9 +36,10 @@ SHEAR_ERROR = 1e-6
 ENOUGH, MOST = 2_500, 100_000  # triangles at a refined place, at all of them
 # Edges at the centre of a patch, as a share of its smaller length.
 PATCH_SHARE = 0.125
-# Triangles of the first mesh on the way to a tolerance, and the tolerance below which
-# excluded discs begin with triangles of half their radius.
-COARSE = {"quintic": 200, "hct": 800}
+# The first mesh on the way to a tolerance: triangles, and edges at excluded discs as a
+# share of their radius, half of it below a tolerance.
+COARSE = {"quintic": 400, "hct": 1_000}
+RIMS = {"quintic": 1.0, "hct": 0.4}
 FINE_TOLERANCE = 0.005
 
 
@@ -140,7 +142,7 @@ def solve(
     if size is not None:
         triangles = math.ceil(plate.outline.area / (math.sqrt(3.0) / 4.0 * size**2))
     chosen = choose(plate, element, triangles)
-    if tolerance is not None and ELEMENTS[chosen.element].conforming:
+    if tolerance is not None and not no_bands(cases, chosen.element):
         return _to_tolerance(
             plate,
             cases,
@@ -166,6 +168,20 @@ def solve(
     state = solve_static(plate, mesh, cases, element=chosen.element, progress=progress)
     dual = solve_dual(plate, mesh, cases) if balanced else None
     return Solution(state=state, excluded_radius=excluded_radius, dual=dual)
+
+
+def no_bands(cases: Sequence[Case], element: str) -> str:
+    """Why no bands can be made; empty where they can."""
+    if not ELEMENTS[element].conforming:
+        return f"a {ELEMENTS[element].name} is not C1"
+    for case in cases:
+        for load in case.loads:
+            if isinstance(load, PointMoment):
+                return (
+                    f"the moments of the couple at a point in case {case.name} have no "
+                    "finite energy"
+                )
+    return ""
 
 
 def default_goals(plate: Plate, criterion: str = "von Mises") -> tuple[Goal, ...]:
@@ -200,17 +216,28 @@ def _to_tolerance(
 ) -> Solution:
     """Solve to a tolerance, from a coarse mesh that is graded beforehand."""
     size = size_for(plate.outline, COARSE[element]) if start is None else start
-    outline = followed(plate.outline, cases, goals)
-    share = 1.0 if tolerance > FINE_TOLERANCE else 0.5
+    share = RIMS[element] if tolerance > FINE_TOLERANCE else 0.5 * RIMS[element]
     fine = [
         (place.place, min(share * place.radius, size))
         for place in excluded_places(plate, cases, excluded_radius)
     ]
     graded = corner_grading(plate, error=min(CORNER_ERROR, 0.1 * tolerance))
-    inside = outline.zones or outline.seams or outline.marks
-    mesh = (mesh_guarded if inside else mesh_outline)(
-        outline, size=size, fine=fine, graded=graded
-    )
+
+    def mesh_for(wanted: Sequence[Goal]) -> Mesh:
+        outline = followed(plate.outline, cases, wanted)
+        inside = outline.zones or outline.seams or outline.marks
+        return (mesh_guarded if inside else mesh_outline)(
+            outline, size=size, fine=fine, graded=graded
+        )
+
+    mesh = mesh_for(goals)
+    if Peak(quantity="deflection") in goals:
+        # A vertex where it peaks, so that the deflection there can have a bound.
+        first = Solution(state=solve_static(plate, mesh, cases, element=element))
+        tops = [first.peak("deflection", case=case.name) for case in cases]
+        places = [top.place for top in tops if top.place is not None and top.value]
+        goals = [*goals, *(Deflection(at=at) for at in dict.fromkeys(places))]
+        mesh = mesh_for(goals)
     return refine_to(
         plate,
         mesh,

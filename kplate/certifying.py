@@ -16,13 +16,13 @@ import numpy as np
 from kplate.arrays import Bools, Floats
 from kplate.bands import Certified, certify
 from kplate.functionals import functional
-from kplate.goals import Deflection, Goal, Peak, Resultant
+from kplate.goals import Goal, Peak, Resultant
 from kplate.loads import Case
 from kplate.mesh import Mesh
 from kplate.plate import Plate
 from kplate.refine import refined
 from kplate.solution import Solution, Step
-from kplate.solve.static import Progress, StaticState, solve_static
+from kplate.solve.static import Progress
 from kplate.values import Value
 
 BUDGET = 100_000  # unknowns of the plate
@@ -75,14 +75,9 @@ def refine_to(
     """
     start, steps = time.perf_counter(), []
     known: dict[tuple[Goal, str], Value] = {}
-    wants_deflection = any(g == Peak(quantity="deflection") for g in goals)
-    peaks: list[Deflection] = []
-    if wants_deflection:
-        peaks = _highest(solve_static(plate, mesh, cases, element=element))
     linear = [goal for goal in goals if not isinstance(goal, Peak)]
     while True:
-        chosen = [*linear, *dict.fromkeys(peaks)]
-        functionals = [functional(plate, mesh, goal, cases) for goal in chosen]
+        functionals = [functional(plate, mesh, goal, cases) for goal in linear]
         certified = certify(plate, mesh, cases, functionals, element=element)
         _keep_best(known, certified)
         solution = Solution(
@@ -107,8 +102,6 @@ def refine_to(
             progress(steps[-1].words, min(0.99, unknowns / budget))
         if steps[-1].reached or unknowns >= budget or len(steps) >= MOST_STEPS:
             return replace(solution, tolerance=tolerance, history=tuple(steps))
-        if wants_deflection:
-            peaks = _highest(certified.state)
         mesh = _bisected(mesh, _bulk(unmet))
 
 
@@ -199,13 +192,6 @@ def _size(solution: Solution, goal: Goal, value: Value) -> float:
 def _share(gaps: Floats) -> Floats:
     total = float(gaps.sum())
     return gaps / total if total > 0.0 else gaps
-
-
-def _highest(state: StaticState) -> list[Deflection]:
-    """Deflection at the vertex that deflects most, for each case."""
-    w = state.constraints.numbering.by_vertex(state.unknowns)[:, 0]
-    places = state.mesh.points[np.abs(w).argmax(axis=0)].tolist()
-    return [Deflection(at=(x, y)) for x, y in places]
 
 
 def _bulk(shares: Floats) -> Bools:

@@ -6,18 +6,19 @@ from pathlib import Path
 
 import numpy as np
 
-from kplate.adapt import solve
+from kplate.adapt import default_goals, solve
 from kplate.choice import TRIANGLES, choose
 from kplate.describe import describe
 from kplate.errors import InputError
 from kplate.files import replacing
+from kplate.goals import Deflection
 from kplate.limits import Outcome, Verdict, governing
 from kplate.output.picture import write_picture
 from kplate.output.record import solution_record, write_json, write_reactions
 from kplate.output.tables import Line, legend, reactions_table, values_table
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
-from kplate.reactions import CornerForce, Resultant
+from kplate.reactions import CornerForce
 from kplate.solution import Solution
 from kplate.solve.static import Progress
 from kplate.supports import Support
@@ -105,11 +106,14 @@ def check(
         If the panel cannot be meshed or solved.
     """
     panel = read_panel(path)
+    criterion = panel.limits.stress.criterion if panel.limits.stress else "von Mises"
     solution = solve(
         panel.plate,
         panel.cases,
         triangles=panel.triangles,
         element=panel.element,
+        tolerance=panel.tolerance if panel.triangles is None else None,
+        goals=default_goals(panel.plate, criterion),
         progress=progress,
     )
     lines = tuple(_lines(panel, solution))
@@ -208,10 +212,6 @@ def _heading(panel: Panel) -> list[str]:
             f"{', '.join(bends)} {length.symbol}"
         )
     lines += _stated(panel)
-    if panel.tolerance is not None:
-        lines.append(
-            f"tolerance {100.0 * panel.tolerance:.3g} %: not used: bands not estimated"
-        )
     return lines
 
 
@@ -274,6 +274,15 @@ def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
         limit=limit,
         where=f"{_at(deflection, panel)}, {way}",
     )
+    there = _deflection_there(solution, case)
+    if there is not None:
+        yield Line(
+            case=case,
+            quantity="deflection there",
+            value=there,
+            unit=units.deflection,
+            where=_at(there, panel),
+        )
     criterion = limits.stress.criterion if limits.stress is not None else "von Mises"
     stress = solution.peak(criterion, case=case)
     yield Line(
@@ -291,7 +300,7 @@ def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
     yield Line(
         case=case,
         quantity="total reaction",
-        value=Value(value=total, case=case),
+        value=_exact(total, solution, case),
         unit=units.force,
         where=f"supports push {'up' if total > 0.0 else 'down'}" if total else "",
     )
@@ -328,6 +337,26 @@ def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
         )
 
 
+def _deflection_there(solution: Solution, case: str) -> Value | None:
+    """Bound of the deflection at the vertex that deflects most, if there is one."""
+    own = [
+        value
+        for (goal, name), value in solution.known.items()
+        if name == case and isinstance(goal, Deflection) and value.value != 0.0
+    ]
+    return max(own, key=lambda value: abs(value.value), default=None)
+
+
+def _exact(total: float, solution: Solution, case: str) -> Value:
+    """All supports' force, which balances the loads, whatever the mesh."""
+    if solution.dual is None:
+        return Value(value=total, case=case)
+    off = 1e-9 * abs(total)
+    return Value(
+        value=total, case=case, lower=total - off, upper=total + off, kind="bound"
+    )
+
+
 def _largest_line_reaction(solution: Solution, case: str) -> float:
     sides = solution.reactions(case=case).sides
     sizes = [np.nanmax(np.abs(side.line_reaction), initial=0.0) for side in sides]
@@ -336,7 +365,7 @@ def _largest_line_reaction(solution: Solution, case: str) -> float:
 
 def _supports(
     solution: Solution,
-) -> list[tuple[str, str, Resultant, float, float]]:
+) -> list[tuple[str, str, Value, float, float]]:
     """What each side, seam and point support brings, case by case."""
     rows = []
     for case in solution.cases:
@@ -348,9 +377,10 @@ def _supports(
                 if known.size
                 else (np.nan,) * 2
             )
-            rows.append((case, side.side, side.resultant, *ends))
+            force = solution.resultant(side.side, case=case)
+            rows.append((case, side.side, force, *ends))
         rows += [
-            (case, point.mark, point.resultant, np.nan, np.nan)
+            (case, point.mark, point.force, np.nan, np.nan)
             for point in reactions.points
         ]
     return rows
@@ -401,16 +431,46 @@ def _closing(checked: Checked) -> list[str]:
             f"supports {_signed(reactions.total.force, panel)}, force and moments to "
             f"{max(reactions.imbalance, 1e-16):.0e}"
         )
+    lines += _reached(panel, solution)
     mark = legend(checked.lines)
     triangles = len(solution.mesh.triangles)
     chosen = choose(panel.plate, panel.element, panel.triangles)
-    asked = panel.triangles or TRIANGLES[chosen.element]
+    asked = ""
+    if not solution.history:
+        asked = f" ({panel.triangles or TRIANGLES[chosen.element]} asked for)"
     because = f", as {chosen.reason}" if chosen.reason else ""
     lines.append(
-        f"{triangles} triangles ({asked} asked for): {solution.state.element.name}"
-        f"{because}.{'   ' * bool(mark)}{mark}"
+        f"{triangles} triangles{asked}: {solution.state.element.name}{because}."
+        f"{'   ' * bool(mark)}{mark}"
     )
     return [*lines, CAUTION]
+
+
+def _reached(panel: Panel, solution: Solution) -> list[str]:
+    """Whether the tolerance was reached, and what bands are worth."""
+    if panel.tolerance is None:
+        return []
+    wanted = f"tolerance {100.0 * panel.tolerance:.3g} %"
+    if not solution.history:
+        why = (
+            "triangles are stated" if panel.triangles else "the element makes no bands"
+        )
+        return [f"{wanted}: not used, as {why}"]
+    last = solution.history[-1]
+    count = len(solution.history)
+    meshes = "1 mesh" if count == 1 else f"{count} meshes"
+    line = f"{wanted}: {'' if solution.reached else 'not '}reached"
+    line += f", {last.unknowns} unknowns, {meshes}"
+    if not solution.reached:
+        widest = max(last.bands, key=lambda name: last.bands[name])
+        line = f"tolerance not reached: {widest} {100.0 * last.bands[widest]:.2g} %"
+        line += (
+            f" of {100.0 * panel.tolerance:.3g} %, {last.unknowns} unknowns, {meshes}"
+        )
+    kinds = {
+        value.reason for value in solution.known.values() if value.kind == "estimate"
+    }
+    return [line, *(f"no band is a bound: {reason}" for reason in sorted(kinds))]
 
 
 def _write(checked: Checked, out: Path) -> tuple[Path, ...]:

@@ -10,9 +10,9 @@ the centre, or its half where the centre lies on a straight edge. It holds exact
 in that disc ``D lap lap w = p``, D is constant, the plate isotropic and p linear, and
 the edge, if any, is held over the whole diameter.
 
-Below, ``u = 1 - r^2 / R^2``, lengths are in R, n is `EXPONENT`, g is grad p. Where a
-gradient is moved from the field to a kernel by parts, the kernel's zero at the rim
-leaves nothing over.
+Below, ``u = 1 - r^2 / R^2``, lengths are in R and g is grad p. Where a gradient is
+moved from the field to a kernel by parts, the kernel's zero at the rim leaves nothing
+over.
 
 - Over a circle the mean of f is ``f + r^2/4 lap f + r^4/64 lap lap f`` at its centre,
   if lap lap f is constant. `_mean`, of integral 1, thus gives f where lap f = 0, and
@@ -36,7 +36,8 @@ leaves nothing over.
 - Simply supported edge y = 0, plate at y > 0: ``v_n = D (lap w),y + (m_xy),x`` there.
   Less ``p(0) y^4/24 + g_x x y^4/24 + g_y y^5/120``, which adds nothing to v_n, D w goes
   on oddly across the edge as a biharmonic field: -grad `_mean` times H and -grad
-  `_level` times m_xy over the whole disc, twice over the half.
+  `_level` times m_xy over the whole disc, twice over the half. What was taken off has
+  no part in the second, and in the first it leaves the constant.
 
 Arrays: points (..., 2) in m; weights (..., 3) or (...).
 """
@@ -54,8 +55,7 @@ from kplate.arrays import Bools, Floats, read_only_floats
 Weights = Callable[[ArrayLike], Floats]
 Constant = Callable[[float, ArrayLike], float]
 
-# Weights go to zero at the rim as u^6: with less, quadrature that does not follow the
-# rim errs by more than tight bounds allow.
+# Weights go to zero at the rim as u^6, smooth enough for rules that do not follow it.
 EXPONENT = 6
 
 # A point this far behind the edge, in radii, is on it but for round-off.
@@ -64,7 +64,7 @@ BEHIND = 1e-9
 _U = Polynomial([0.0, 1.0])
 
 # Falls by u^10 as its fourth derivatives must by u^6; without the second factor lap b,
-# which a mesh must follow, is 1.4 times as large (mean square).
+# which a mesh must follow, is 1.4 times as large (root mean square).
 _CUT_OFF = _U ** (EXPONENT + 4) * (3.0 - 2.0 * _U)
 
 
@@ -92,7 +92,8 @@ class Kernel:
         They go to zero at the rim as the distance to this power, and are zero outside:
         derivatives are continuous across the rim up to the order before it.
     moments : function of points (..., 2), optional
-        Weights (..., 3) of m_xx, m_yy, m_xy.
+        Weights (..., 3) of m_xx, m_yy, m_xy: the curvature ``w,xx, w,yy, 2 w,xy`` that
+        is imposed on the adjoint plate.
     pressure : function of points (..., 2), optional
         Weights (...) of w: the pressure that loads the adjoint plate.
     constant : function of a pressure and its gradient (2,)

@@ -14,18 +14,20 @@ through the origin are right-handed: M_x = sum y F, M_y = -sum x F.
 """
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from kplate.arrays import Floats
 from kplate.boundary import rigid_motions
+from kplate.dualforces import edge_moments
 from kplate.loads import PointForce
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.polygon import SNAP
 from kplate.raw import RawMoments
 from kplate.recovery import SmoothedMoments
 from kplate.singular import Corner, Excluded, Place, moment_ends, plate_corners
+from kplate.solve.dual import DualState
 from kplate.solve.static import StaticState
 from kplate.stations import held_lines, windowed
 from kplate.supports import Support
@@ -172,6 +174,7 @@ def reactions(
     recovered: SmoothedMoments | RawMoments,
     index: int,
     excluded: Sequence[Excluded] = (),
+    dual: DualState | None = None,
 ) -> Reactions:
     """Support forces of case number `index`.
 
@@ -185,13 +188,16 @@ def reactions(
         Which case.
     excluded : sequence of Excluded
         Discs in which line reactions have no finite value.
+    dual : DualState, optional
+        Balanced moments, whose corner forces give those here a band of kind
+        "indicator".
 
     Returns
     -------
     Reactions
     """
     motions = rigid_motions(state.constraints.numbering)
-    found = _corner_forces(state, recovered, index)
+    found = _corner_forces(state, recovered, index, dual)
     brought, loads = state.support_forces[:, index], state.forces[:, index]
     case = state.cases[index].name
     return Reactions(
@@ -206,7 +212,10 @@ def reactions(
 
 
 def _corner_forces(
-    state: StaticState, recovered: SmoothedMoments | RawMoments, index: int
+    state: StaticState,
+    recovered: SmoothedMoments | RawMoments,
+    index: int,
+    dual: DualState | None,
 ) -> list[tuple[CornerForce, int]]:
     """Forces at the corners and their vertices."""
     mesh, case = state.mesh, state.cases[index]
@@ -218,6 +227,7 @@ def _corner_forces(
             continue
         joint = _joint_at(mesh, corner)
         vertex = int(mesh.boundary_edges[joint, 1])
+        off = np.nan
         jump, reason = np.nan, f"no finite value: {corner.words}"
         if corner.place in ends:
             reason = "no finite value: end of an edge moment"
@@ -228,6 +238,10 @@ def _corner_forces(
             moments = recovered.corner_moments(edges, np.array([1, 0]))[:, :, index]
             m_ns = _twist(moments, tangents)
             jump, reason = float(m_ns[0] - m_ns[1]), ""
+            if dual is not None:
+                both = edge_moments(dual, edges, np.array([0.0, 1.0]))[..., index]
+                other = _twist(np.stack([both[0, 1], both[1, 0]]), tangents)
+                off = abs(float(other[0] - other[1]) - jump)
             # A force that acts at the corner itself goes straight into the support.
             jump -= sum(
                 load.force
@@ -235,9 +249,9 @@ def _corner_forces(
                 if isinstance(load, PointForce)
                 and np.hypot(*np.subtract(load.at, corner.place)) < SNAP * corner_size
             )
-        force = Value(
-            value=jump, place=corner.place, case=state.cases[index].name, reason=reason
-        )
+        force = Value(value=jump, place=corner.place, case=case.name, reason=reason)
+        if not np.isnan(off):
+            force = replace(force, lower=jump - off, upper=jump + off, kind="indicator")
         found.append((CornerForce(corner=corner, force=force), vertex))
     return found
 

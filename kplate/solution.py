@@ -16,8 +16,9 @@ from numpy.typing import ArrayLike
 from kplate import reactions as support_reactions
 from kplate.arrays import Floats, Ints
 from kplate.boundary import rigid_motions
+from kplate.dualforces import side_forces
 from kplate.errors import InputError
-from kplate.goals import Goal, Peak
+from kplate.goals import Goal, Peak, Resultant
 from kplate.mesh import Mesh
 from kplate.peaks import (
     QUANTITIES,
@@ -259,16 +260,17 @@ class Solution:
             corners = self.reactions(case=name).corners
             most, forces = support_reactions.hold_down(corners)
             unknown = sum(math.isnan(corner.force.value) for corner in corners)
-            value = Value(
-                value=most,
-                case=name,
-                place=forces[0].corner.place if forces else None,
-                reason=(
-                    f"not known at {unknown} corner{'s' * (unknown > 1)}"
-                    if unknown
-                    else ""
-                ),
-            )
+            words = f"not known at {unknown} corner{'s' * (unknown > 1)}"
+            value = Value(value=most, case=name, reason=words if unknown else "")
+            if forces:
+                worst = min(forces, key=lambda own: own.force.value).force
+                value = replace(
+                    value,
+                    place=worst.place,
+                    kind=worst.kind,
+                    lower=None if worst.upper is None else -worst.upper,
+                    upper=None if worst.lower is None else -worst.lower,
+                )
             pulls.append((value, forces))
         lost = [pull for pull in pulls if np.isnan(pull[0].value)]
         return max(lost or pulls, key=lambda pull: pull[0].value)
@@ -466,10 +468,71 @@ class Solution:
         if index not in known:
             radius = self.excluded_radius or self.plate.thickness
             discs = (*self.excluded, *shear_places(self.plate, radius))
-            known[index] = support_reactions.reactions(
-                self.state, self._recovered, index, discs
+            dual = self.dual if self.state.element.conforming else None
+            found = support_reactions.reactions(
+                self.state, self._recovered, index, discs, dual
             )
+            case = self.cases[index]
+            points = tuple(
+                replace(point, force=self._banded(point.force, point.mark, case))
+                for point in found.points
+            )
+            known[index] = replace(found, points=points)
         return known[index]
+
+    def _banded(self, force: Value, name: str, case: str) -> Value:
+        """A support's force with the band that is known of it."""
+        band = self.known.get((Resultant(of=name), case))
+        if band is None or band.lower is None or band.upper is None:
+            return force
+        value = min(max(force.value, band.lower), band.upper)
+        return replace(
+            force, value=value, lower=band.lower, upper=band.upper, kind=band.kind
+        )
+
+    def resultant(self, name: str, *, case: str | None = None) -> Value:
+        """Force in N, positive up, that a side, seam or mark brings, with its band.
+
+        A bound where no other support meets it and the plate was solved to a tolerance;
+        an indicator, from the balanced moments, on other sides; no band elsewhere.
+
+        Raises
+        ------
+        InputError
+            If there is no such support.
+        """
+        index = self._index(case)
+        found = self._reactions(index)
+        for point in found.points:
+            if point.mark == name:
+                return point.force
+        for side in found.sides:
+            if side.side == name:
+                force = Value(value=side.resultant.force, case=self.cases[index])
+                force = self._banded(force, name, self.cases[index])
+                if force.kind != "none" or name not in self.mesh.side_names:
+                    return force
+                return self._indicated(force, name, index)
+        held = [own.side for own in found.sides] + [own.mark for own in found.points]
+        raise InputError(
+            f"there is no held side, seam or mark {name!r}; they are {', '.join(held)}."
+        )
+
+    def _indicated(self, force: Value, name: str, index: int) -> Value:
+        """A side's force with what the balanced moments make of it."""
+        if self.dual is None or not self.state.element.conforming:
+            return force
+        points = self.mesh.points
+        corners = [
+            int(np.hypot(*(points - own.corner.place).T).argmin())
+            for own in self._reactions(index).corners
+            if not math.isnan(own.force.value)
+        ]
+        other = float(side_forces(self.dual, name, corners)[index])
+        off = abs(other - force.value)
+        return replace(
+            force, lower=force.value - off, upper=force.value + off, kind="indicator"
+        )
 
     def _index(self, case: str | None) -> int:
         if case is None:

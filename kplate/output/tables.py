@@ -6,7 +6,6 @@ from dataclasses import dataclass
 from io import StringIO
 
 from kplate.limits import Judgement
-from kplate.reactions import Resultant
 from kplate.units import DisplayUnits, Unit
 from kplate.values import Value
 
@@ -69,17 +68,17 @@ def values_table(lines: Sequence[Line]) -> str:
 
 
 def reactions_table(
-    rows: Sequence[tuple[str, str, Resultant, float, float]],
+    rows: Sequence[tuple[str, str, Value, float, float]],
     units: DisplayUnits,
 ) -> str:
     """Table of what each support brings: force, and largest push and pull along it.
 
-    Rows hold case, support, resultant, and the largest pull (0 or less) and push (0 or
+    Rows hold case, support, force, and the largest pull (0 or less) and push (0 or
     more) in N/m; nan at a point.
     """
     shown = []
-    for case, name, resultant, least, most in rows:
-        force = f"{resultant.force / units.force.size:+.4g} {units.force.symbol}"
+    for case, name, value, least, most in rows:
+        force = f"{value.value / units.force.size:+.4g} {units.force.symbol}"
         line = "-"
         if not math.isnan(least):
             size, symbol = units.line_force.size, units.line_force.symbol
@@ -88,8 +87,9 @@ def reactions_table(
             ends = [end for end in (least, most) if abs(end) > 0.01 * largest]
             line = " and ".join(f"{end / size:+.3g}" for end in ends) or "0"
             line = f"{line} {symbol}"
-        shown.append((case, name, force, line))
-    return _columns(("case", "support", "pushes up", "largest line reaction"), shown)
+        shown.append((case, name, force, band(value), line))
+    header = ("case", "support", "pushes up", "band", "largest line reaction")
+    return _columns(header, shown)
 
 
 def band(value: Value) -> str:
@@ -99,7 +99,9 @@ def band(value: Value) -> str:
     half = max(value.upper - value.value, value.value - value.lower)
     if value.value == 0.0:
         return f"+-{half:.2g}{MARKS[value.kind]}"
-    return f"{100.0 * half / abs(value.value):.2g} %{MARKS[value.kind]}"
+    share = 100.0 * half / abs(value.value)
+    shown = "< 0.01" if share < 0.01 else f"{share:.2g}"
+    return f"{shown} %{MARKS[value.kind]}"
 
 
 def legend(lines: Sequence[Line]) -> str:
