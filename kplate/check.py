@@ -6,7 +6,7 @@ from pathlib import Path
 
 import numpy as np
 
-from kplate.adapt import default_goals, solve
+from kplate.adapt import default_goals, no_bands, solve
 from kplate.choice import TRIANGLES, choose
 from kplate.describe import describe
 from kplate.errors import InputError
@@ -452,9 +452,10 @@ def _reached(panel: Panel, solution: Solution) -> list[str]:
         return []
     wanted = f"tolerance {100.0 * panel.tolerance:.3g} %"
     if not solution.history:
-        why = (
-            "triangles are stated" if panel.triangles else "the element makes no bands"
-        )
+        why = "triangles are stated"
+        if not panel.triangles:
+            element = choose(panel.plate, panel.element).element
+            why = no_bands(panel.cases, element)
         return [f"{wanted}: not used, as {why}"]
     last = solution.history[-1]
     count = len(solution.history)
