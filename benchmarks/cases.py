@@ -7,7 +7,7 @@ the published figure where one is known. Everything is scaled to D = 1, p = 1, F
 
 import json
 import math
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from functools import cache
 from pathlib import Path
@@ -21,7 +21,9 @@ FILE = Path(__file__).with_name("reference_static.json")
 THICKNESS = 1e-2
 # D = 1e4 N m keeps E within what is usual; results are divided by it.
 STIFFNESS = 1e4
-SUPPORTS = {s.name: s for s in (kp.CLAMPED, kp.SIMPLY_SUPPORTED, kp.FREE)}
+SUPPORTS = {s.name: s for s in (kp.CLAMPED, kp.SIMPLY_SUPPORTED, kp.FREE, kp.GUIDED)}
+# How far to its own side, in m, a value on a step is read; the plates are 1 m wide.
+HAIR = 1e-9
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -98,12 +100,25 @@ def plate(problem: dict[str, Any]) -> kp.Plate:
         )
     for hole in problem["holes"]:
         outline = outline.cut(_hole(hole))
+    for zone in problem.get("zones", ()):
+        points = zone["polygon"]
+        sides = [f"{zone['name']}-{k}" for k in range(len(points))]
+        shape = kp.Polygon(points=points, sides=sides)
+        outline = outline.zone(shape, name=zone["name"])
+    for seam in problem.get("seams", ()):
+        outline = outline.seam(seam["points"], name=seam["name"])
+    for mark in problem.get("marks", ()):
+        outline = outline.mark(tuple(mark["at"]), name=mark["name"])
     E = 12.0 * (1.0 - nu**2) * STIFFNESS / THICKNESS**3
     return kp.Plate(
         outline=outline,
         thickness=THICKNESS,
         material=kp.Isotropic(name="reference", E=E, nu=nu),
         supports={k: SUPPORTS[v] for k, v in problem["supports"].items()},
+        zones={
+            zone["name"]: kp.Section(thickness=zone["thickness"] * THICKNESS)
+            for zone in problem.get("zones", ())
+        },
     )
 
 
@@ -112,7 +127,7 @@ def load(problem: dict[str, Any]) -> Any:
     stated = problem["load"]
     match stated["kind"]:
         case "uniform":
-            return kp.Pressure(stated["pressure"])
+            return kp.Pressure(stated["pressure"], zone=stated.get("zone"))
         case "linear":
             at_origin, (gx, gy) = stated["at_origin"], stated["gradient"]
             return kp.PressureField(lambda x, y: at_origin + gx * x + gy * y)
@@ -124,12 +139,20 @@ def load(problem: dict[str, Any]) -> Any:
             )
         case "point":
             return kp.PointForce(force=stated["force"], at=tuple(stated["at"]))
+        case "line":
+            return kp.LineForce(force=stated["force"], along=stated["along"])
+        case "edge moment":
+            return kp.EdgeMoment(moment=stated["moment"], along=stated["along"])
     raise ValueError(f"unknown load {stated['kind']!r}")
 
 
-def rows(problem: dict[str, Any], *, triangles: int) -> Iterator[Row]:
+def rows(
+    problem: dict[str, Any], *, triangles: int, element: str = "auto"
+) -> Iterator[Row]:
     """Solve a problem and set every number beside its reference."""
-    solution = kp.solve(plate(problem), [load(problem)], triangles=triangles)
+    solution = kp.solve(
+        plate(problem), [load(problem)], triangles=triangles, element=element
+    )
     publications = reference()["publications"]
     largest: dict[str, float] = {}
     for item in problem["quantities"]:
@@ -143,9 +166,12 @@ def rows(problem: dict[str, Any], *, triangles: int) -> Iterator[Row]:
         if item.get("from_memory"):
             publication += " (from memory)"
         x, y = item["at"]
+        side = (
+            " toward ({:g}, {:g})".format(*item["toward"]) if "toward" in item else ""
+        )
         yield Row(
             case=problem["id"],
-            quantity=f"{item['quantity']} at ({x:.4g}, {y:.4g})",
+            quantity=f"{item['quantity']} at ({x:.4g}, {y:.4g}){side}",
             value=item["value"],
             digits=item["digits"],
             computed=computed(solution, item),
@@ -159,16 +185,16 @@ def rows(problem: dict[str, Any], *, triangles: int) -> Iterator[Row]:
 def computed(solution: kp.Solution, item: dict[str, Any]) -> float:
     """What kplate finds for one quantity, scaled to D = 1."""
     at, quantity = [item["at"]], item["quantity"]
+    if "toward" in item:
+        at = [np.add(item["at"], HAIR * np.array(item["toward"]))]
     if quantity == "deflection":
         return float(solution.deflection(at)[0]) * STIFFNESS
     if quantity == "line reaction":
         return _line_reaction(solution, item["at"])
-    if quantity == "corner force":
-        forces = solution.reactions().corners
-        nearest = min(
-            forces, key=lambda f: np.hypot(*np.subtract(f.corner.place, at[0]))
-        )
-        return nearest.force.value
+    if quantity in ("corner force", "point reaction"):
+        found = solution.reactions()
+        forces = found.corners if quantity == "corner force" else found.points
+        return _nearest([one.force for one in forces], item["at"])
     moments = solution.moments(at)[0]
     if quantity == "moment":
         nx, ny = item["normal"]
@@ -177,6 +203,12 @@ def computed(solution: kp.Solution, item: dict[str, Any]) -> float:
         principal, _ = kp.principal_moments(moments)
         return float(principal[int(quantity[-1]) - 1])
     return float(moments[("m_xx", "m_yy", "m_xy").index(quantity)])
+
+
+def _nearest(values: Sequence[kp.Value], at: tuple[float, float]) -> float:
+    """Of values at places the one nearest to a place."""
+    places = np.array([value.place for value in values])
+    return values[int(np.hypot(*(places - at).T).argmin())].value
 
 
 def _line_reaction(solution: kp.Solution, at: tuple[float, float]) -> float:

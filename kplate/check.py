@@ -321,7 +321,7 @@ def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
         yield Line(
             case=case,
             quantity=f"{point.mark} hold-down",
-            value=replace(point.force, value=-point.force.value),
+            value=-point.force,
             unit=units.force,
             limit=limits.hold_down,
             where=f"{_at(point.force, panel)}",

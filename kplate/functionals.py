@@ -32,7 +32,9 @@ from kplate.goals import (
 from kplate.loads import (
     Case,
     DiscPatch,
+    EdgeMoment,
     Hydrostatic,
+    LineForce,
     Load,
     PointForce,
     PointMoment,
@@ -233,6 +235,13 @@ def _room(
             found.append((off, f"the support {name}"))
     for case in cases:
         found += [_load_room(load, place) for load in case.loads]
+        if edge is not None:
+            own = mesh.side_names[mesh.boundary_sides[edge]]
+            found += [
+                (0.0, f"a load along {own}")
+                for load in case.loads
+                if isinstance(load, EdgeMoment | LineForce) and load.along == own
+            ]
     return min(found)
 
 

@@ -275,15 +275,9 @@ def _point_reactions(
 ) -> tuple[PointReaction, ...]:
     """Reactions of held marks that lie on no held line."""
     mesh, numbering = state.mesh, state.constraints.numbering
-    lines = held_lines(state.plate, mesh)
-    lined = np.concatenate(
-        [np.empty(0, dtype=np.int64), *(e.edges.ravel() for e in lines)]
-    )
     found = []
-    for name, vertex in zip(mesh.mark_names, mesh.mark_vertices, strict=True):
+    for name, vertex in _point_supports(state):
         support = state.plate.support(name)
-        if not support.holds or vertex in lined:
-            continue
         own = numbering.at_vertices(np.array(vertex))
         brought = state.support_forces[own, index]
         x, y = mesh.points[vertex]
@@ -301,6 +295,20 @@ def _point_reactions(
             )
         )
     return tuple(found)
+
+
+def _point_supports(state: StaticState) -> list[tuple[str, int]]:
+    """Held marks, and their vertices, that lie on no line that holds w already."""
+    mesh = state.mesh
+    lined = np.zeros(len(mesh.points), dtype=bool)
+    for line in held_lines(state.plate, mesh):
+        if line.support.holds_deflection:
+            lined[line.edges] = True
+    return [
+        (name, int(vertex))
+        for name, vertex in zip(mesh.mark_names, mesh.mark_vertices, strict=True)
+        if state.plate.support(name).holds and not lined[vertex]
+    ]
 
 
 def _side_reactions(
@@ -377,6 +385,8 @@ def _at_vertices(
     for line in held_lines(state.plate, mesh):
         lined[line.edges] = True
     rest[~lined] = 0.0  # what point supports bring
+    for _, vertex in _point_supports(state):
+        rest[vertex, 0] = 0.0
     return rest, motions
 
 

@@ -263,14 +263,8 @@ class Solution:
             words = f"not known at {unknown} corner{'s' * (unknown > 1)}"
             value = Value(value=most, case=name, reason=words if unknown else "")
             if forces:
-                worst = min(forces, key=lambda own: own.force.value).force
-                value = replace(
-                    value,
-                    place=worst.place,
-                    kind=worst.kind,
-                    lower=None if worst.upper is None else -worst.upper,
-                    upper=None if worst.lower is None else -worst.lower,
-                )
+                worst = -min(forces, key=lambda own: own.force.value).force
+                value = replace(worst, case=name, reason=value.reason)
             pulls.append((value, forces))
         lost = [pull for pull in pulls if np.isnan(pull[0].value)]
         return max(lost or pulls, key=lambda pull: pull[0].value)

@@ -44,6 +44,7 @@ RELUCTANCE = 1e-4
 # Added to the equations, scaled to one, in case two of them say the same.
 SLACK = 1e-13
 STATIONS = 4  # on each edge
+CUBIC = 4  # jets of a cubic trace, at both ends
 # Tangents that differ by less than this are one.
 ONE = 1e-12
 
@@ -279,6 +280,8 @@ def _along_line(
         v = found.line_reaction(edges, share)[:, :, index]
         m = found.line_moment(edges, share)[:, :, index]
         v[~forward], m[~forward] = v[~forward, ::-1], m[~forward, ::-1]
+        if found.shears.shape[1] == CUBIC:
+            v = _means(found, edges, index, closed=bool(chain[0] == chain[-1]))
         step = behind - ahead
         lengths = np.hypot(*step.T)
         first = start + np.concatenate([[0.0], np.cumsum(lengths)[:-1]])
@@ -296,6 +299,25 @@ def _along_line(
         moment=np.concatenate(moments) * line.support.holds_slope,
         resultant=brought,
     )
+
+
+def _means(found: Traces, edges: Ints, index: int, *, closed: bool) -> Floats:
+    """Line reactions of cubic traces at stations, between means over whole edges.
+
+    Cubic traces swing by several per cent between the vertices; their means over edges
+    do not.
+    """
+    ends = found.numbering.mesh.points[found.held.edges[edges]]
+    lengths = np.hypot(*(ends[:, 1] - ends[:, 0]).T)
+    s, weights = gauss(2)
+    means = weights @ found.line_reaction(edges, s)[:, :, index].T
+    start = np.concatenate([[0.0], np.cumsum(lengths)[:-1]])
+    middle = start + 0.5 * lengths
+    period = float(lengths.sum())
+    at = start[:, None] + np.arange(STATIONS + 1) / STATIONS * lengths[:, None]
+    if closed:
+        return np.interp(at, middle, means, period=period)
+    return np.interp(at, middle, means)
 
 
 def _virtual(

@@ -1,6 +1,6 @@
 """A reported number with its band, where it stands, and what kind of band that is."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 from kplate.errors import InputError
@@ -62,3 +62,12 @@ class Value:
                 )
         elif self.lower is not self.upper:
             raise InputError("a band has two ends; give lower and upper.")
+
+    def __neg__(self) -> "Value":
+        """The same with the other sign: a pull for a push."""
+        return replace(
+            self,
+            value=-self.value,
+            lower=None if self.upper is None else -self.upper,
+            upper=None if self.lower is None else -self.lower,
+        )

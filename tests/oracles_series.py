@@ -6,6 +6,9 @@ way, as by a strip) is summed in closed form; the rest is made of
 ``exp(-alpha |y - level|)`` alone, which overflows nowhere, and takes as many terms as
 the distance to the nearest level (a loaded side, an end of a patch, a force) asks for.
 
+A rectangle of several bands across y (steps of thickness or material, walls, a line
+force, moments on the ends) takes the same end functions, four to a band.
+
 Arrays: derivatives (4, 4, n), entry ``[i, j]`` is ``d^(i+j) w / dx^i dy^j`` for
 ``i + j <= 3``, zero elsewhere; functions of y (4, m), order of the derivative first,
 one column a term of the series.
@@ -58,6 +61,19 @@ class PointForce:
 Load = LinearPressure | PatchForce | PointForce
 
 
+@dataclass(frozen=True, kw_only=True)
+class Band:
+    """Part of a rectangle between two y, all the way along x.
+
+    Width along y in m, bending rigidity D in N m, Poisson's ratio, even pressure in Pa.
+    """
+
+    width: float
+    rigidity: float = 1.0
+    nu: float = 0.3
+    pressure: float = 0.0
+
+
 def series(
     xy: Floats, size: tuple[float, float], load: Load, ends: tuple[str, str], nu: float
 ) -> Floats:
@@ -74,6 +90,56 @@ def series(
         Y = source.decaying(k, y, a)
         Y += np.einsum("fm,fjm->jm", factors[:, :m], _end_functions(k, y, b))
         W[..., n] = source.strip(x, y, a)
+        for i, j in ORDERS:
+            W[i, j, n] += Y[j] @ (k**i * sine_derivative(i, k * x))
+    return W
+
+
+def banded(
+    xy: Floats,
+    number: int,
+    bands: Sequence[Band],
+    ends: tuple[str, str],
+    *,
+    a: float = 1.0,
+    walls: bool = False,
+    line_force: float = 0.0,
+    end_moments: tuple[float, float] = (0.0, 0.0),
+) -> Floats:
+    """Derivatives (4, 4, n) of w in m, at points (n, 2) of one band of a rectangle.
+
+    Parameters
+    ----------
+    xy : ndarray, shape (n, 2)
+        Points in m of band `number`, its own side of the joints included.
+    number : int
+        The band they are in.
+    bands : sequence of Band
+        From y = 0 up; x = 0 and x = a are simply supported.
+    ends : (str, str)
+        Supports of the first and the last y, as in `oracles.levy`.
+    a : float
+        Length in m along x.
+    walls : bool
+        Whether w = 0 along every joint of two bands.
+    line_force : float
+        Force in N/m along every joint without a wall, positive upwards.
+    end_moments : (float, float)
+        Moments m_yy in N applied to ends that are simply supported.
+    """
+    y0 = sum(band.width for band in bands[:number])
+    own = bands[number]
+    local = xy[:, 1] - y0
+    distance = np.minimum(np.abs(local), np.abs(own.width - local))
+    counts = _counts(distance, a)
+    alpha = np.pi / a * np.arange(1, counts.max() + 1)
+    factors = _band_factors(alpha, a, bands, ends, walls, line_force, end_moments)
+    W = np.zeros((4, 4, len(xy)))
+    for n, (x, y, m) in enumerate(zip(xy[:, 0], local, counts, strict=True)):
+        k = alpha[:m]
+        Y = _end_functions(k, y, own.width)
+        Y = np.einsum("fm,fjm->jm", factors[number, :, :m], Y)
+        W[:, 0, n] = _beam(x, a, (0.0, a), (own.pressure / own.rigidity, 0.0))
         for i, j in ORDERS:
             W[i, j, n] += Y[j] @ (k**i * sine_derivative(i, k * x))
     return W
@@ -96,8 +162,12 @@ def term_counts(xy: Floats, size: tuple[float, float], load: Load) -> Ints:
     source = _source(load, size)
     levels = [level for level, _ in source.levels]
     levels += [y for y in (0.0, size[1]) if source.acts(y)]
-    distance = np.abs(xy[:, 1, None] - levels).min(axis=1)
-    reach = DECAY * size[0] / np.pi  # one term reaches this far
+    return _counts(np.abs(xy[:, 1, None] - levels).min(axis=1), size[0])
+
+
+def _counts(distance: Floats, a: float) -> Ints:
+    """How many terms points at these distances from the nearest level need."""
+    reach = DECAY * a / np.pi  # one term reaches this far
     counts = np.ceil(reach / np.maximum(distance, reach / MOST_TERMS))
     return np.asarray(np.maximum(counts, FEWEST_TERMS), dtype=np.int64)
 
@@ -218,6 +288,62 @@ def _end_factors(
     matrices = np.stack(rows).transpose(2, 0, 1)
     factors = np.linalg.solve(matrices, -np.stack(right).T[..., None])
     return np.asarray(factors[..., 0].T, dtype=float)
+
+
+def _band_factors(
+    alpha: Floats,
+    a: float,
+    bands: Sequence[Band],
+    ends: tuple[str, str],
+    walls: bool,
+    line_force: float,
+    end_moments: tuple[float, float],
+) -> Floats:
+    """Factors (bands, 4, m) of each band's end functions."""
+    one = 2.0 / a * (1.0 - np.cos(alpha * a)) / alpha  # terms of an even load of one
+    zero, count = 0.0 * one, 4 * len(bands)
+    rows: list[Floats] = []
+    right: list[Floats] = []
+
+    def state(j: int, y: float) -> tuple[Floats, Floats]:
+        """w, slope, moment, shear of all factors (4, count, m), of the load (4, m)."""
+        band = bands[j]
+        every = np.zeros((4, count, len(alpha)))
+        F = _end_functions(alpha, y, band.width)
+        every[:, 4 * j : 4 * j + 4] = _band_state(band, F, alpha).swapaxes(0, 1)
+        flat = np.stack([band.pressure / band.rigidity * one / alpha**4, *3 * [zero]])
+        return every, _band_state(band, flat, alpha)
+
+    last = len(bands) - 1
+    for j, y, end, moment in (
+        (0, 0.0, ends[0], end_moments[0]),
+        (last, bands[last].width, ends[1], end_moments[1]),
+    ):
+        every, load = state(j, y)
+        given = np.stack([zero, zero, moment * one / alpha**2, zero])
+        vanish = {CLAMPED: [0, 1], SIMPLY_SUPPORTED: [0, 2], FREE: [2, 3]}[end]
+        rows += list(every[vanish])
+        right += list((given - load)[vanish])
+    for j in range(last):
+        below, above = state(j, bands[j].width), state(j + 1, 0.0)
+        jump = np.stack([zero, zero, zero, line_force * one / alpha**3])
+        meet = [0, 1, 2] if walls else [0, 1, 2, 3]
+        rows += list((above[0] - below[0])[meet])
+        right += list((jump - above[1] + below[1])[meet])
+        if walls:
+            rows.append(below[0][0])
+            right.append(-below[1][0])
+    A, f = np.stack(rows).transpose(2, 0, 1), np.stack(right).T
+    factors = np.linalg.solve(A, f[..., None])[..., 0]
+    return np.asarray(factors.T.reshape(len(bands), 4, -1), dtype=float)
+
+
+def _band_state(band: Band, Y: Floats, alpha: Floats) -> Floats:
+    """w, slope, m_yy and -v_y over powers of alpha; Y (..., 4, m)."""
+    w, slope, bend, third = (Y[..., j, :] / alpha**j for j in range(4))
+    D, nu = band.rigidity, band.nu
+    moment, shear = D * (bend - nu * w), D * (third - (2 - nu) * slope)
+    return np.stack([w, slope, moment, shear], axis=-2)
 
 
 def _end_conditions(end: str, Y: Floats, alpha: Floats, nu: float) -> list[Floats]:
