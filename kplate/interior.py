@@ -99,8 +99,19 @@ class Seam:
     @property
     def turns(self) -> Floats:
         """Turn to the left at each vertex between two pieces in rad, (n - 2,)."""
+        return self._turns[1:]
+
+    @property
+    def closing_turn(self) -> float:
+        """Turn to the left in rad where a closed seam begins; 0 of an open one."""
+        closed = np.array_equal(self.points[0], self.points[-1])
+        return float(self._turns[0]) if closed else 0.0
+
+    @property
+    def _turns(self) -> Floats:
+        """Turns from the last piece to the first, then at the vertices between."""
         out, into = curves.tangents(self.points[:-1], self.points[1:], self.bulges)
-        out, into = out[1:], into[:-1]
+        into = np.roll(into, 1, axis=0)
         cross = into[:, 0] * out[:, 1] - into[:, 1] * out[:, 0]
         turn: Floats = np.arctan2(cross, np.einsum("ij,ij->i", into, out))
         return turn

@@ -125,7 +125,7 @@ class PointReaction:
     force : Value
         N, positive up, with its place.
     resultant : Resultant
-        The force, and the couples where the slopes are held, about the origin's axes.
+        The force and its moments about the origin's axes.
     """
 
     mark: str
@@ -278,20 +278,18 @@ def _point_reactions(
     found = []
     for name, vertex in _point_supports(state):
         support = state.plate.support(name)
-        own = numbering.at_vertices(np.array(vertex))
-        brought = state.support_forces[own, index]
+        own = int(numbering.at_vertices(np.array(vertex))[0])
+        brought = float(state.support_forces[own, index])  # couples are a line's
         x, y = mesh.points[vertex]
         force = Value(
-            value=float(brought[0]),
-            place=(float(x), float(y)),
-            case=state.cases[index].name,
+            value=brought, place=(float(x), float(y)), case=state.cases[index].name
         )
         found.append(
             PointReaction(
                 mark=name,
                 support=support,
                 force=force,
-                resultant=_resultant(motions[own].T @ brought),
+                resultant=_resultant(motions[own] * brought),
             )
         )
     return tuple(found)

@@ -225,10 +225,11 @@ def _held_inside(plate: Plate) -> list[tuple[Place, str]]:
         ends = (seam.points[0], seam.points[-1])
         if not np.array_equal(*ends):
             found += [(_pair(end), f"end of the support {seam.name}") for end in ends]
+        turns = [seam.closing_turn, *seam.turns]
         found += [
             (_pair(point), f"corner of the support {seam.name}")
-            for point, turn in zip(seam.points[1:-1], seam.turns, strict=True)
-            if abs(turn) >= plate.bend_turn
+            for point, turn in zip(seam.points[:-1], turns, strict=True)
+            if turn != 0.0 and abs(turn) >= plate.bend_turn
         ]
     for a, b in combinations(held, 2):
         common = a.path.intersection(b.path)

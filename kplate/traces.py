@@ -39,7 +39,7 @@ from kplate.quadrature import gauss
 from kplate.solve.static import StaticState
 from kplate.stations import HeldLine, LinePart, stretches
 
-# A force at an end that no corner carries is used only where nothing else will do.
+# A force at an end on the rim that no corner carries is used only in need.
 RELUCTANCE = 1e-4
 # Added to the equations, scaled to one, in case two of them say the same.
 SLACK = 1e-13
@@ -68,6 +68,9 @@ class HeldEdges:
         1, or -1 where the joint counts against the edge's sense.
     ends : ndarray, shape (m, 2)
         Whether a run of edges ends there.
+    tangents : ndarray, shape (m, 2, 2)
+        Unit tangents held at the beginning and at the end: the edge's own, or at a bend
+        that of both its edges, and on a circle the circle's.
     """
 
     lines: Ints
@@ -77,6 +80,7 @@ class HeldEdges:
     joints: Ints
     senses: Floats
     ends: Bools
+    tangents: Floats
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -139,8 +143,10 @@ def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
     clamps = np.array([plate.support(name).holds_slope for name in names])
     joints = np.arange(2 * len(edges)).reshape(-1, 2)
     senses, ends = np.ones(joints.shape), np.ones(joints.shape, dtype=bool)
+    held = np.empty((len(edges), 2, 2))
     arriving, leaving = mesh.boundary_joints.T
     tangents = side_tangents(plate, mesh)
+    held[arriving, 1], held[leaving, 0] = tangents[:, 0], tangents[:, 1]
     one = np.abs(tangents[:, 0] - tangents[:, 1]).max(axis=1) < ONE
     first, second = lines[arriving], lines[leaving]
     one &= (holds[first] == holds[second]) & (clamps[first] == clamps[second])
@@ -149,6 +155,7 @@ def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
     vertices, number, away = seam_tangents(plate, mesh)
     at = (mesh.seam_edges[number, 1] == vertices).astype(np.int64)
     number = len(mesh.boundary_edges) + number
+    held[number, at] = np.where(at[:, None] == 1, -away, away)
     first, second = lines[number[:-1]], lines[number[1:]]
     pairs = np.flatnonzero(
         (vertices[1:] == vertices[:-1])
@@ -170,6 +177,7 @@ def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
         joints=joints[kept],
         senses=senses[kept],
         ends=ends[kept],
+        tangents=held[kept],
     )
 
 
@@ -279,7 +287,8 @@ def _along_line(
         ahead, behind = points[chain[:-1]], points[chain[1:]]
         v = found.line_reaction(edges, share)[:, :, index]
         m = found.line_moment(edges, share)[:, :, index]
-        v[~forward], m[~forward] = v[~forward, ::-1], m[~forward, ::-1]
+        # The moment counts about the normal on the right of the stretch.
+        v[~forward], m[~forward] = v[~forward, ::-1], -m[~forward, ::-1]
         if found.shears.shape[1] == CUBIC:
             v = _means(found, edges, index, closed=bool(chain[0] == chain[-1]))
         step = behind - ahead
@@ -341,17 +350,20 @@ def _virtual(
     lengths = np.hypot(*step.T)
     tangent = step / lengths[:, None]
     normal = np.column_stack([tangent[:, 1], -tangent[:, 0]])
-    w, slope = np.zeros((m, jets, p)), np.zeros((m, jets - 1, p))
-    w[:, 0, 0] = 1.0
-    w[:, 1, 1:3] = step
-    slope[:, 0, 1:3] = normal
-    if jets == 3:
-        w[:, 2, 3:] = second_derivative(step, step)
-        slope[:, 1, 3:] = second_derivative(step, normal)
     on_w = np.zeros((m, 2 * jets, 2 * p + 1))
-    on_w[:, :jets, :p], on_w[:, jets:, p : 2 * p] = w, w
     on_slope = np.zeros((m, 2 * jets - 1, 2 * p + 1))
-    on_slope[:, : jets - 1, :p], on_slope[:, jets - 1 : -1, p : 2 * p] = slope, slope
+    for end in (0, 1):
+        along = held.tangents[:, end] * lengths[:, None]
+        across = np.column_stack([held.tangents[:, end, 1], -held.tangents[:, end, 0]])
+        w = on_w[:, jets * end : jets * (end + 1), p * end : p * (end + 1)]
+        w[:, 0, 0] = 1.0
+        w[:, 1, 1:3] = along
+        first = (jets - 1) * end
+        slope = on_slope[:, first : first + jets - 1, p * end : p * (end + 1)]
+        slope[:, 0, 1:3] = across
+        if jets == 3:
+            w[:, 2, 3:] = second_derivative(along, along)
+            slope[:, 1, 3:] = second_derivative(along, across)
     triangles = mesh.triangles_at(held.edges)
     corners = mesh.triangles[triangles]
     on = (corners[:, :, None] == held.edges[:, None]).any(axis=2)
@@ -400,15 +412,16 @@ def _ends(
 ) -> tuple[Ints, Floats]:
     """Vertices that may have a force of their own, and the size of its unit.
 
-    They are the ends of runs and the marks along them; a force that is no corner force
-    has a small unit, lest it take what belongs to the line.
+    They are the ends of runs and the marks along them. On the rim, at a corner that
+    carries no force, it has a small unit, lest it take what belongs to the lines.
     """
     ends = held.edges[held.ends & held.holds[:, None]]
     marks = np.intersect1d(state.mesh.mark_vertices, held.edges)
     vertices = np.union1d(ends, marks)
     size = np.zeros(len(state.mesh.points))
     np.maximum.at(size, held.edges, lengths[:, None])
-    share = np.where(np.isin(vertices, carrying), 1.0, RELUCTANCE)
+    inside = ~np.isin(vertices, state.mesh.boundary_edges)
+    share = np.where(inside | np.isin(vertices, carrying), 1.0, RELUCTANCE)
     return vertices, size[vertices] * share
 
 
