@@ -11,15 +11,12 @@ from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 import numpy as np
-from numpy.typing import ArrayLike
 
 from kplate import reactions as support_reactions
-from kplate.arrays import Floats, Ints
-from kplate.boundary import rigid_motions
+from kplate.arrays import Floats
 from kplate.dualforces import side_forces
 from kplate.errors import InputError
 from kplate.goals import Goal, Peak, Resultant
-from kplate.mesh import Mesh
 from kplate.peaks import (
     QUANTITIES,
     Candidates,
@@ -30,24 +27,40 @@ from kplate.peaks import (
     measures,
     peak_band,
 )
-from kplate.plate import Plate
-from kplate.raw import RawMoments
+from kplate.polygon import SNAP
 from kplate.reactions import CornerForce, Reactions
-from kplate.recovery import (
-    SmoothedMoments,
-    principal_moments,
-    smoothed_moments,
-    surface_stress,
-    von_mises,
-)
 from kplate.rims import outside, rim
-from kplate.samples import Samples
-from kplate.singular import Excluded, excluded_places, shear_places
-from kplate.solve.dual import DualState
-from kplate.solve.static import StaticState
+from kplate.singular import (
+    plate_corners,
+    shear_places,
+)
+from kplate.solved import Solved
 from kplate.values import Face, Value
 
 _FACES: tuple[Face, Face] = ("top", "bottom")
+
+
+@dataclass(frozen=True, kw_only=True)
+class Growth:
+    """How a quantity grows towards a place without a finite moment.
+
+    Parameters
+    ----------
+    value : Value
+        Its largest value at the distance asked for.
+    distance : float
+        That distance in m.
+    power : float or None
+        Moments and stresses go with distance to this power, of a corner; ``None`` where
+        they go with the logarithm of it, such as at a point force.
+    words : str
+        The law, for a checker.
+    """
+
+    value: Value
+    distance: float
+    power: float | None
+    words: str
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -82,7 +95,7 @@ class Step:
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
-class Solution:
+class Solution(Solved):
     """A solved plate in all its load cases.
 
     Parameters
@@ -104,107 +117,10 @@ class Solution:
         The meshes on the way to it.
     """
 
-    state: StaticState
-    excluded_radius: float | None = None
-    dual: DualState | None = None
     known: Mapping[tuple[Goal, str], Value] = field(default_factory=dict)
     energies: tuple[Value, ...] = ()
     tolerance: float | None = None
     history: tuple[Step, ...] = ()
-
-    @property
-    def plate(self) -> Plate:
-        """The plate as stated."""
-        return self.state.plate
-
-    @property
-    def mesh(self) -> Mesh:
-        """Its triangles."""
-        return self.state.mesh
-
-    @property
-    def cases(self) -> tuple[str, ...]:
-        """Names of the load cases."""
-        return tuple(case.name for case in self.state.cases)
-
-    @cached_property
-    def excluded(self) -> tuple[Excluded, ...]:
-        """Places without a finite moment, left out of the peaks."""
-        return excluded_places(self.plate, self.state.cases, self.excluded_radius)
-
-    def deflection(self, points: ArrayLike, *, case: str | None = None) -> Floats:
-        """Deflection w in m at points (k, 2) in m, (k,)."""
-        return self._bent(points, case)[:, 0]
-
-    def slopes(self, points: ArrayLike, *, case: str | None = None) -> Floats:
-        """Slopes dw/dx, dw/dy at points (k, 2) in m, (k, 2)."""
-        return self._bent(points, case)[:, 1:]
-
-    def moments(self, points: ArrayLike, *, case: str | None = None) -> Floats:
-        """Moments m_xx, m_yy, m_xy in N at points (k, 2) in m, (k, 3).
-
-        Of a C1 element those of the triangle itself, of DKT smoothed ones.
-        """
-        found = self._recovered.moments_at(*self.mesh.locate(points))
-        return found[:, :, self._index(case)]
-
-    def balanced_moments(self, points: ArrayLike, *, case: str | None = None) -> Floats:
-        """Moments of the dual in N at points (k, 2) in m, (k, 3): the safe field.
-
-        They balance the loads in every triangle and across every edge, wherever the
-        loads are no more than linear there, so that they may be designed for by the
-        lower-bound theorem of plasticity. They are less smooth than `moments`.
-
-        Raises
-        ------
-        InputError
-            If the plate was solved without them, or a point is not on the plate.
-        """
-        if self.dual is None:
-            raise InputError(
-                "balanced moments were not asked for; call solve(..., balanced=True)."
-            )
-        triangles, barycentrics = self.mesh.locate(points)
-        found = self.dual.moments_at(triangles, barycentrics[:, None])
-        return found[:, 0, :, self._index(case)]
-
-    def principal_moments(
-        self, points: ArrayLike, *, case: str | None = None
-    ) -> tuple[Floats, Floats]:
-        """Principal moments (k, 2) in N, larger first, and the angle of the larger."""
-        return principal_moments(self.moments(points, case=case))
-
-    def shears(self, points: ArrayLike, *, case: str | None = None) -> Floats:
-        """Transverse shears q_x, q_y in N/m at points (k, 2) in m, (k, 2)."""
-        found = self._recovered.shears_at(*self.mesh.locate(points))
-        return found[:, :, self._index(case)]
-
-    def shear_stress(self, points: ArrayLike, *, case: str | None = None) -> Floats:
-        """Largest transverse shear stress 3 q / 2h in Pa, at mid-depth, (k,)."""
-        q = self.shears(points, case=case)
-        return 1.5 * np.hypot(*q.T) / self._thickness_at(points)
-
-    def stresses(
-        self, points: ArrayLike, *, face: Face, case: str | None = None
-    ) -> Floats:
-        """Stresses xx, yy, xy in Pa on a face at points (k, 2) in m, (k, 3)."""
-        moments = self.moments(points, case=case)
-        return surface_stress(moments, self._thickness_at(points), face)
-
-    def von_mises(
-        self, points: ArrayLike, *, face: Face, case: str | None = None
-    ) -> Floats:
-        """Von Mises stress in Pa on a face at points (k, 2) in m, (k,)."""
-        return von_mises(self.stresses(points, face=face, case=case))
-
-    def strain_energy(self, *, case: str | None = None) -> float:
-        """Strain energy in J."""
-        return float(self.state.strain_energy[self._index(case)])
-
-    def load_force(self, *, case: str | None = None) -> float:
-        """Sum of the loads in N, positive up."""
-        motions = rigid_motions(self.state.constraints.numbering)[:, 0]
-        return float(motions @ self.state.forces[:, self._index(case)])
 
     @property
     def reached(self) -> bool:
@@ -239,10 +155,6 @@ class Solution:
                 "goals=[...])."
             )
         return self.known[goal, name]
-
-    def load_work(self, *, case: str | None = None) -> float:
-        """Work of the loads on their deflections in J: twice the strain energy."""
-        return float(self.state.load_work[self._index(case)])
 
     def reactions(self, *, case: str | None = None) -> Reactions:
         """Support forces by side and corner, and their balance with the loads."""
@@ -306,6 +218,77 @@ class Solution:
         lost = [value for value in values if math.isnan(value.value)]
         key = _largest if quantity == "largest principal" else _magnitude
         return lost[0] if lost else max(values, key=key)
+
+    def near(
+        self,
+        place: tuple[float, float],
+        distance: float,
+        *,
+        quantity: str = "von Mises",
+        case: str | None = None,
+    ) -> Growth:
+        """Largest value of a quantity at a distance from a place without a finite one.
+
+        Parameters
+        ----------
+        place : tuple of float
+            One of those in `excluded`, in m.
+        distance : float
+            Radius in m of the circle around it on which to look.
+        quantity : str, optional
+            As in `peak`, but the deflection.
+        case : str, optional
+            The load case; may be left out where there is only one.
+
+        Returns
+        -------
+        Growth
+
+        Raises
+        ------
+        InputError
+            If the place is none of those left out, or nothing of the plate is at that
+            distance.
+        """
+        self._check_quantity(quantity)
+        index = self._index(case)
+        size = SNAP * self.plate.outline.size
+        known = [
+            disc
+            for disc in self.excluded
+            if np.hypot(*np.subtract(disc.place, place)) < size
+        ]
+        if not known or quantity == "deflection":
+            places = ", ".join(f"({x:g}, {y:g})" for x, y in self._left_out())
+            raise InputError(
+                f"{quantity} at ({place[0]:g}, {place[1]:g}) m: the places without a "
+                f"finite moment are {places or 'none'}; use `moments` elsewhere."
+            )
+        ring = rim(self.mesh, replace(known[0], radius=distance))
+        if not len(ring):
+            raise InputError(
+                f"nothing of the plate is {distance:g} m from ({place[0]:g}, "
+                f"{place[1]:g}) m; choose a smaller distance."
+            )
+        value, at, face = extreme(quantity, self._at(ring, index))
+        power = next(
+            (
+                corner.exponent.real - 1.0
+                for corner in plate_corners(self.plate)
+                if corner.place == known[0].place
+            ),
+            None,
+        )
+        law = "the logarithm of the distance" if power is None else f"r^{power:.3f}"
+        return Growth(
+            value=Value(value=value, place=at, face=face, case=self.cases[index]),
+            distance=distance,
+            power=power,
+            words=f"{known[0].reason}; moments and stresses go with {law}",
+        )
+
+    def _left_out(self) -> list[tuple[float, float]]:
+        return list(dict.fromkeys(disc.place for disc in self.excluded))
 
     def peak_band(self, quantity: str, *, case: str | None = None) -> PeakBand:
         """Band of the peak's magnitude in one case, and where the peak may be.
@@ -385,74 +368,6 @@ class Solution:
         )
         return value, place, None
 
-    def point_fields(self, *, case: str | None = None) -> dict[str, Floats]:
-        """Fields at `field_points`, for files and pictures.
-
-        Returns
-        -------
-        dict of str to ndarray
-            Keys carry the SI unit, such as "deflection [m]"; shapes (n,) or (n, k).
-            Components are listed xx, yy, xy.
-        """
-        index, samples = self._index(case), self.samples
-        bent = samples.bent[:, :, index]
-        moments, shears = samples.moments[:, :, index], samples.shears[:, :, index]
-        h = self.plate.thicknesses[samples.sections]
-        fields = {
-            "deflection [m]": bent[:, 0],
-            "slopes [rad]": bent[:, 1:],
-            "moments [N]": moments,
-            "principal moments [N]": principal_moments(moments)[0],
-            "shears [N per m]": shears,
-            "shear stress [Pa]": 1.5 * np.hypot(*shears.T) / h,
-        }
-        for face in _FACES:
-            stress = surface_stress(moments, h, face)
-            fields[f"stress {face} [Pa]"] = stress
-            fields[f"largest principal {face} [Pa]"] = principal_moments(stress)[0][
-                :, 0
-            ]
-        fields["von Mises [Pa]"] = von_mises(surface_stress(moments, h, "bottom"))
-        if self.dual is not None:
-            at = self.mesh.barycentrics(samples.holders, samples.points)
-            own = self.dual.moments_at(samples.holders, at[:, None])
-            fields["balanced moments [N]"] = own[:, 0, :, index]
-        return fields
-
-    @property
-    def samples(self) -> Samples:
-        """Places of the fields, what they are there, and the triangles between.
-
-        Of a C1 element a lattice on each triangle of the mesh; of DKT the vertices,
-        once for each part of the plate that meets there.
-        """
-        return self._recovered.samples
-
-    @property
-    def field_points(self) -> Floats:
-        """Places of the fields in m, (n, 2)."""
-        return self.samples.points
-
-    @property
-    def field_triangles(self) -> Ints:
-        """Numbers of the field points of each small triangle, (m, 3)."""
-        return self.samples.triangles
-
-    @property
-    def field_edges(self) -> Ints:
-        """Numbers of the field points of each piece of the boundary, (k, 2)."""
-        return self.samples.rim
-
-    def _thickness_at(self, points: ArrayLike) -> Floats:
-        triangles, _ = self.mesh.locate(points)
-        return self.plate.thicknesses[self.mesh.zones[triangles]]
-
-    @cached_property
-    def _recovered(self) -> SmoothedMoments | RawMoments:
-        if self.state.element.conforming:
-            return RawMoments(state=self.state, excluded=self.excluded)
-        return smoothed_moments(self.state)
-
     @cached_property
     def _known_reactions(self) -> dict[int, Reactions]:
         return {}
@@ -528,33 +443,6 @@ class Solution:
             force, lower=force.value - off, upper=force.value + off, kind="indicator"
         )
 
-    def _index(self, case: str | None) -> int:
-        if case is None:
-            if len(self.cases) > 1:
-                raise InputError(
-                    f"there are {len(self.cases)} load cases; name one of "
-                    f"{', '.join(self.cases)}."
-                )
-            return 0
-        if case not in self.cases:
-            raise InputError(
-                f"there is no load case {case!r}; the cases are "
-                f"{', '.join(self.cases)}."
-            )
-        return self.cases.index(case)
-
-    def _bent(self, points: ArrayLike, case: str | None) -> Floats:
-        """Deflection and slopes at points, (k, 3)."""
-        triangles, barycentrics = self.mesh.locate(points)
-        return self._bent_at(triangles, barycentrics, self._index(case))
-
-    def _bent_at(self, triangles: Ints, barycentrics: Floats, index: int) -> Floats:
-        rows = self.state.element.evaluate(
-            self.mesh.points[self.mesh.triangles[triangles]], barycentrics[:, None]
-        )[:, 0]
-        table = self.state.constraints.numbering.table[triangles]
-        return np.einsum("krd,kd->kr", rows, self.state.unknowns[table, index])
-
     def _candidates(self, index: int) -> Candidates:
         """Places at which moments may peak, with moments, shears and thickness there.
 
@@ -577,16 +465,19 @@ class Solution:
             return Candidates(
                 nothing[:, :2], nothing, nothing[:, :2], nothing[:, 0], none
             )
-        triangles, barycentrics = self.mesh.locate(rims)
-        on_rims = Candidates(
-            rims,
+        both = zip(found, self._at(rims, index), strict=True)
+        return Candidates(*(np.concatenate([a[kept], b]) for a, b in both))
+
+    def _at(self, points: Floats, index: int) -> Candidates:
+        """Candidates at points (k, 2)."""
+        triangles, barycentrics = self.mesh.locate(points)
+        return Candidates(
+            points,
             self._recovered.moments_at(triangles, barycentrics)[:, :, index],
             self._recovered.shears_at(triangles, barycentrics)[:, :, index],
             self.plate.thicknesses[self.mesh.zones[triangles]],
             triangles,
         )
-        both = zip(found, on_rims, strict=True)
-        return Candidates(*(np.concatenate([a[kept], b]) for a, b in both))
 
 
 def _largest(value: Value) -> float:
