@@ -279,12 +279,14 @@ class Solution(Solved):
             ),
             None,
         )
-        law = "the logarithm of the distance" if power is None else f"r^{power:.3f}"
+        words = known[0].reason
+        if power is None:
+            words += ": moments and stresses grow with the logarithm of the distance"
         return Growth(
             value=Value(value=value, place=at, face=face, case=self.cases[index]),
             distance=distance,
             power=power,
-            words=f"{known[0].reason}; moments and stresses go with {law}",
+            words=words,
         )
 
     def _left_out(self) -> list[tuple[float, float]]:
