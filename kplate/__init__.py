@@ -57,6 +57,7 @@ from kplate.materials import (
 )
 from kplate.mesh import Mesh
 from kplate.outline import Outline
+from kplate.output.history import write_history
 from kplate.output.picture import write_picture
 from kplate.output.record import solution_record, write_json, write_reactions
 from kplate.output.view import view
@@ -135,6 +136,7 @@ __all__ = [
     "solve",
     "validity",
     "view",
+    "write_history",
     "write_json",
     "write_picture",
     "write_reactions",

@@ -18,6 +18,7 @@ from kplate.loads import Case, DiscPatch, Load, PointMoment, RectanglePatch
 from kplate.mesh import Mesh
 from kplate.meshing import mesh_outline, refined_triangles, size_for
 from kplate.plate import Plate
+from kplate.refine import refined_towards
 from kplate.singular import excluded_places, plate_corners
 from kplate.solution import Solution
 from kplate.solve.dual import solve_dual
@@ -38,7 +39,7 @@ ENOUGH, MOST = 2_500, 100_000  # triangles at a refined place, at all of them
 PATCH_SHARE = 0.125
 # The first mesh on the way to a tolerance: triangles, and edges at excluded discs as a
 # share of their radius, half of it below a tolerance.
-COARSE = {"quintic": 400, "hct": 1_000}
+COARSE = {"quintic": 120, "hct": 600}
 RIMS = {"quintic": 1.0, "hct": 0.4}
 FINE_TOLERANCE = 0.005
 
@@ -217,18 +218,21 @@ def _to_tolerance(
     """Solve to a tolerance, from a coarse mesh that is graded beforehand."""
     size = size_for(plate.outline, COARSE[element]) if start is None else start
     share = RIMS[element] if tolerance > FINE_TOLERANCE else 0.5 * RIMS[element]
-    fine = [
-        (place.place, min(share * place.radius, size))
-        for place in excluded_places(plate, cases, excluded_radius)
-    ]
+    stressed = any(isinstance(g, Peak) and g.quantity != "deflection" for g in goals)
+    discs = excluded_places(plate, cases, excluded_radius) if stressed else ()
     graded = corner_grading(plate, error=min(CORNER_ERROR, 0.1 * tolerance))
 
     def mesh_for(wanted: Sequence[Goal]) -> Mesh:
         outline = followed(plate.outline, cases, wanted)
         inside = outline.zones or outline.seams or outline.marks
-        return (mesh_guarded if inside else mesh_outline)(
-            outline, size=size, fine=fine, graded=graded
-        )
+        mesh = (mesh_guarded if inside else mesh_outline)(outline, size=size)
+        for place, least in graded:
+            mesh = refined_towards(mesh, place, least)
+        for disc in discs:
+            # From twice the radius on, so that its rim lies among small triangles.
+            least, reach = share * disc.radius, 2.0 * disc.radius
+            mesh = refined_towards(mesh, disc.place, least, reach)
+        return mesh
 
     mesh = mesh_for(goals)
     if Peak(quantity="deflection") in goals:

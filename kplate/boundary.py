@@ -215,37 +215,47 @@ def side_tangents(plate: Plate, mesh: Mesh) -> Floats:
     return _one_tangent(tangents, alike, plate.bend_turn)
 
 
-def seam_tangents(plate: Plate, mesh: Mesh) -> tuple[Ints, Ints, Floats]:
+def seam_tangents(plate: Plate, mesh: Mesh) -> tuple[Ints, Ints, Floats, Ints]:
     """Ends of the edges of held seams, and the tangents away from each.
 
     Returns
     -------
     vertices : ndarray, shape (k,)
-        Vertices at which the edges end, those of one vertex together.
+        Vertices at which the edges end.
     edges : ndarray, shape (k,)
         Which of `mesh.seam_edges` each is an end of.
     away : ndarray, shape (k, 2)
-        Unit vectors along the edges away from the vertex; at a bend, where just two
-        edges held alike end, one the reverse of the other.
+        Unit vectors along the edges away from the vertex; at a bend one the reverse of
+        the other.
+    pairs : ndarray, shape (m,)
+        Ends that go on, held alike, as the next one in the list: two of one seam, or
+        the only two at the vertex.
     """
     holds, clamps = _seam_supports(plate, mesh)
     number = np.tile(np.flatnonzero(holds | clamps), 2)
     m = len(number) // 2
     vertices = mesh.seam_edges[number, np.repeat([0, 1], m)]
     others = mesh.seam_edges[number, np.repeat([1, 0], m)]
-    order = np.argsort(vertices, kind="stable")
+    order = np.lexsort((mesh.seam_numbers[number], vertices))
     vertices, others, number = vertices[order], others[order], number[order]
     away = mesh.points[others] - mesh.points[vertices]
     away /= np.hypot(*away.T)[:, None]
-    twice = np.flatnonzero(
-        (vertices[1:] == vertices[:-1]) & (np.bincount(vertices)[vertices[1:]] == 2)
+    first, second = number[:-1], number[1:]
+    seams = mesh.seam_numbers
+    both = vertices * (len(mesh.seam_names) + 1) + seams[number]
+    own = np.unique(both, return_inverse=True, return_counts=True)
+    of_seam = own[2][own[1]][1:] == 2
+    alone = np.bincount(vertices)[vertices[1:]] == 2
+    pairs = np.flatnonzero(
+        (vertices[1:] == vertices[:-1])
+        & (holds[first] == holds[second])
+        & (clamps[first] == clamps[second])
+        & (alone | (of_seam & (seams[first] == seams[second])))
     )
-    first, second = number[twice], number[twice + 1]
-    alike = (holds[first] == holds[second]) & (clamps[first] == clamps[second])
-    pairs = np.stack([-away[twice], away[twice + 1]], axis=1)
-    pairs = _one_tangent(pairs, alike, plate.bend_turn)
-    away[twice], away[twice + 1] = -pairs[:, 0], pairs[:, 1]
-    return vertices, number, away
+    two = np.stack([-away[pairs], away[pairs + 1]], axis=1)
+    two = _one_tangent(two, np.ones(len(pairs), dtype=bool), plate.bend_turn)
+    away[pairs], away[pairs + 1] = -two[:, 0], two[:, 1]
+    return vertices, number, away, pairs
 
 
 def _seam_supports(plate: Plate, mesh: Mesh) -> tuple[Bools, Bools]:
@@ -278,7 +288,7 @@ def _side_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
 def _seam_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
     """Vertices of held seams and what they hold there."""
     holds, clamps = _seam_supports(plate, mesh)
-    vertices, edges, away = seam_tangents(plate, mesh)
+    vertices, edges, away, _ = seam_tangents(plate, mesh)
     return [(vertices, _rows(away, holds[edges], clamps[edges]))]
 
 

@@ -15,6 +15,7 @@ import numpy as np
 
 from kplate.arrays import Bools, Floats
 from kplate.bands import Certified, certify
+from kplate.errors import SolveError
 from kplate.functionals import functional
 from kplate.goals import Goal, Peak, Resultant
 from kplate.loads import Case
@@ -73,12 +74,20 @@ def refine_to(
     Solution
         With its history; the last step tells whether the tolerance was reached.
     """
-    start, steps = time.perf_counter(), []
+    start = time.perf_counter()
+    steps: list[Step] = []
+    solution: Solution | None = None
     known: dict[tuple[Goal, str], Value] = {}
     linear = [goal for goal in goals if not isinstance(goal, Peak)]
     while True:
         functionals = [functional(plate, mesh, goal, cases) for goal in linear]
-        certified = certify(plate, mesh, cases, functionals, element=element)
+        try:
+            certified = certify(plate, mesh, cases, functionals, element=element)
+        except SolveError:
+            if solution is None:
+                raise
+            # Round-off ends the way; the bands reached before it stand.
+            return replace(solution, tolerance=tolerance, history=tuple(steps))
         _keep_best(known, certified)
         solution = Solution(
             state=certified.state,

@@ -5,7 +5,8 @@ curvature at a vertex and straight edges. So ``"auto"`` means
 
 - ``quintic`` on plates of straight sides and one section;
 - ``hct`` where the thickness or material changes or a seam holds the slope (moments
-  jump at both), or a side is round;
+  jump at both), or a held side bends or any is round (one tangent at a vertex leaves w
+  not quite 0 along the edges, which the quintic answers with false shears);
 - ``dkt`` beyond `MOST` triangles.
 """
 
@@ -91,7 +92,21 @@ def _kinks(plate: Plate) -> str:
             return f"seam {seam.name} holds the slope"
     for side in _round_sides(plate):
         return f"side {side} is round"
+    for side in _bent_sides(plate):
+        return f"side {side} bends where it is held"
     return ""
+
+
+def _bent_sides(plate: Plate) -> list[str]:
+    """Names of the sides at bends between sides held alike."""
+    found = []
+    for line in plate.outline.boundaries:
+        for i, side in enumerate(line.sides):
+            own, before = plate.support(side), plate.support(line.sides[i - 1])
+            bend = not line.straight[i] and abs(line.turns[i]) < plate.bend_turn
+            if bend and own.holds and own == before:
+                found.append(side)
+    return found
 
 
 def _round_sides(plate: Plate) -> list[str]:

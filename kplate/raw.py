@@ -25,7 +25,9 @@ from kplate.solve.static import StaticState
 from kplate.traces import Traces, solve_traces
 
 TOLERANCE = 0.005
-MOST_STEPS = 16
+MOST_STEPS = 16  # of a lattice: where a field is steeper, it stays coarser
+# A field less than this share of the largest of its kind is taken for nothing.
+NOTHING = 1e-3
 # Samples lie this share of a piece inside it, which settles on which side of a kink.
 INSIDE = 1e-9
 _BLOCK = 1024  # triangles
@@ -149,7 +151,15 @@ class RawMoments:
                 high = np.maximum(
                     high, np.where(judged, values, -np.inf).max(axis=(0, 1))
                 )
-        return np.maximum(high - low, np.finfo(float).tiny)
+        if not np.ndim(low):  # the discs cover the plate
+            return np.full((9, 1), np.finfo(float).tiny)
+        largest = np.maximum(np.abs(low), np.abs(high))
+        size = float(np.ptp(mesh.points, axis=0).max())
+        slope, moment = largest[1:3].max(axis=0), largest[_MOMENTS].max(axis=0)
+        shear = np.maximum(largest[_SHEARS].max(axis=0), moment / size)
+        kinds = [largest[0], *[slope] * 2, *[moment] * 3, *[shear] * 2, moment]
+        ranges = np.maximum(high - low, NOTHING * np.stack(kinds))
+        return np.maximum(ranges, np.finfo(float).tiny)
 
     def _judged(self, points: Floats) -> Bools:
         """Which points (..., 2) lie outside the discs."""
@@ -162,8 +172,11 @@ class RawMoments:
     def _within_discs(self) -> Bools:
         """Which triangles lie in excluded discs wholly, (n_triangles,)."""
         mesh = self.state.mesh
-        inside = ~self._judged(mesh.points[mesh.triangles])
-        return np.asarray(inside.all(axis=1), dtype=bool)
+        within = np.zeros(len(mesh.triangles), dtype=bool)
+        for disc in self.excluded:
+            near = np.hypot(*(mesh.points - disc.place).T) < disc.radius
+            within |= near[mesh.triangles].all(axis=1)
+        return within
 
     def _emit(self, chosen: Bools, steps: int) -> Samples:
         """Samples of pieces (n_triangles, s) that have so many steps."""

@@ -16,6 +16,7 @@ from numpy.typing import ArrayLike
 from kplate.arrays import Bools, Floats, Ints
 from kplate.errors import InputError
 from kplate.mesh import STRAIGHT_EDGE, Mesh
+from kplate.polygon import SNAP
 
 
 def refined(mesh: Mesh, marked: ArrayLike) -> Mesh:
@@ -62,6 +63,42 @@ def refined(mesh: Mesh, marked: ArrayLike) -> Mesh:
         seam_edges=seams,
         seam_numbers=mesh.seam_numbers[seam_owners],
     )
+
+
+def refined_towards(
+    mesh: Mesh, place: tuple[float, float], least: float, within: float = 0.0
+) -> Mesh:
+    """Bisect the triangles at a place until their edges are short enough.
+
+    Parameters
+    ----------
+    mesh : Mesh
+        What to refine.
+    place : tuple of float
+        A place in m; where `within` is 0 it must be a vertex.
+    least : float
+        Length in m that no edge of the triangles there is to exceed.
+    within : float, optional
+        Distance in m from the place up to which triangles count as there.
+
+    Returns
+    -------
+    Mesh
+        Sizes double from triangle to triangle around it.
+    """
+    reach = within + SNAP * float(np.sqrt(mesh.area))
+    while True:
+        near = np.hypot(*(mesh.points - place).T) <= reach
+        at = near[mesh.triangles].any(axis=1)
+        if within > 0.0:
+            at[mesh.locate([place])[0]] = True
+        corners = mesh.points[mesh.triangles]
+        sides = corners - np.roll(corners, 1, axis=1)
+        longest = np.hypot(sides[..., 0], sides[..., 1]).max(axis=1)
+        marked = at & (longest > least)
+        if not marked.any():
+            return mesh
+        mesh = refined(mesh, marked)
 
 
 def _longest_first(mesh: Mesh) -> Ints:

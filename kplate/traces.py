@@ -152,18 +152,11 @@ def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
     one &= (holds[first] == holds[second]) & (clamps[first] == clamps[second])
     joints[leaving[one], 0] = joints[arriving[one], 1]
     ends[arriving[one], 1] = ends[leaving[one], 0] = False
-    vertices, number, away = seam_tangents(plate, mesh)
+    vertices, number, away, pairs = seam_tangents(plate, mesh)
     at = (mesh.seam_edges[number, 1] == vertices).astype(np.int64)
     number = len(mesh.boundary_edges) + number
     held[number, at] = np.where(at[:, None] == 1, -away, away)
-    first, second = lines[number[:-1]], lines[number[1:]]
-    pairs = np.flatnonzero(
-        (vertices[1:] == vertices[:-1])
-        & (holds[first] == holds[second])
-        & (clamps[first] == clamps[second])
-        & (np.bincount(vertices)[vertices[1:]] == 2)
-        & (np.abs(away[1:] + away[:-1]).max(axis=1) < ONE)
-    )
+    pairs = pairs[np.abs(away[pairs + 1] + away[pairs]).max(axis=1) < ONE]
     a, b = (number[pairs], at[pairs]), (number[pairs + 1], at[pairs + 1])
     joints[b] = joints[a]
     senses[b] = np.where(a[1] == b[1], -1.0, 1.0)

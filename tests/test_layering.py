@@ -90,6 +90,7 @@ def test_heavy_libraries_stay_with_their_owners():
         "pyvista": {"view.py"},
         "matplotlib": {
             "contours.py",
+            "history.py",
             "lettering.py",
             "picture.py",
             "plan.py",

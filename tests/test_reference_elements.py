@@ -2,11 +2,10 @@
 
 Problems and sources are those of ``python -m benchmarks``. They are grouped by what
 limits the error: a strong corner, a force or a support at a point, or none of these.
-Tolerances are the largest discretisation errors measured, rounded up: of the
-quintic as shares of each value (of 2 % of the largest of its kind where that is more),
-of HCT, whose moments are linear, as shares of the largest of the kind. The line
-reactions of HCT, which swing about their means between vertices, are left to
-test_steps.py.
+Tolerances are about twice the largest discretisation errors measured, since meshes
+differ from one version of the mesher to the next: of the quintic as shares of each
+value (of 2 % of the largest of its kind where that is more), of HCT, whose moments are
+linear, as shares of the largest of the kind.
 """
 
 import numpy as np
@@ -47,17 +46,17 @@ HCT = [
 TRIANGLES = {"quintic": 2_000, "hct": 2_500}
 TOLERANCE = {
     ("quintic", "none"): {
-        "deflection": 2e-6,
-        "moment": 1e-5,
-        "line reaction": 1e-4,
-        "corner force": 4e-4,
+        "deflection": 4e-6,
+        "moment": 2e-5,
+        "line reaction": 2e-4,
+        "corner force": 6e-4,
     },
     ("quintic", "point"): {
-        "deflection": 5e-7,
-        "moment": 3e-4,
-        "line reaction": 3e-4,
-        "corner force": 2e-6,
-        "point reaction": 1e-7,
+        "deflection": 1e-6,
+        "moment": 6e-4,
+        "line reaction": 6e-4,
+        "corner force": 4e-6,
+        "point reaction": 2e-7,
     },
     ("quintic", "strong corner"): {
         "deflection": 1.5e-3,
@@ -66,13 +65,15 @@ TOLERANCE = {
     },
     ("hct", "none"): {
         "deflection": 2e-5,
-        "moment": 4e-3,
-        "corner force": 6e-3,
+        "moment": 6e-3,
+        "line reaction": 8e-3,
+        "corner force": 8e-3,
     },
     ("hct", "point"): {
         "deflection": 4e-5,
-        "moment": 8e-3,
-        "corner force": 1e-3,
+        "moment": 1e-2,
+        "line reaction": 8e-3,
+        "corner force": 2e-3,
         "point reaction": 1e-5,
     },
     ("hct", "strong corner"): {"deflection": 5e-4, "moment": 1e-3},
@@ -100,8 +101,6 @@ def missed(name, element):
         kind, off = row.quantity.split(" at ")[0], row.deviation
         if chosen == "hct":
             off = (row.computed - row.value) / row.scale
-            if kind == "line reaction":
-                continue
         if not abs(off) <= tolerance["moment" if kind.startswith("m") else kind]:
             found.append(
                 f"{row.quantity}: {row.computed:.8g}, reference {row.value:.8g}, off "

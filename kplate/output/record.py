@@ -98,7 +98,8 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
     dict
         "statement" (outline with zones, seams and marks, thickness, material, zones,
         supports, cases), "mesh", "results" (case by case: peaks, energy, reactions),
-        "excluded" (places left out of the peaks of moments and stresses), and what a
+        "excluded" (places left out of the peaks of moments and stresses), "tolerance"
+        and "history" (the meshes on the way to it), and what a
         VTU file cannot hold: "side_names", by their number in it, and "field_names", by
         their array in it.
     """
@@ -123,6 +124,16 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
                 "case": excluded.case or None,
             }
             for excluded in solution.excluded
+        ],
+        "tolerance": solution.tolerance,
+        "history": [
+            {
+                "unknowns": step.unknowns,
+                "triangles": step.triangles,
+                "bands": dict(step.bands),
+                "reached": step.reached,
+            }
+            for step in solution.history
         ],
         "side_names": list(mesh.side_names),
         "field_names": {
