@@ -226,13 +226,14 @@ def _to_tolerance(
         outline = followed(plate.outline, cases, wanted)
         inside = outline.zones or outline.seams or outline.marks
         mesh = (mesh_guarded if inside else mesh_outline)(outline, size=size)
-        for place, least in graded:
-            mesh = refined_towards(mesh, place, least)
-        for disc in discs:
-            # From twice the radius on, so that its rim lies among small triangles.
-            least, reach = share * disc.radius, 2.0 * disc.radius
-            mesh = refined_towards(mesh, disc.place, least, reach)
-        return mesh
+        # Discs from twice the radius on: their rims then lie among small triangles.
+        return refined_towards(
+            mesh,
+            [
+                *((place, least, 0.0) for place, least in graded),
+                *((d.place, share * d.radius, 2.0 * d.radius) for d in discs),
+            ],
+        )
 
     mesh = mesh_for(goals)
     if Peak(quantity="deflection") in goals:

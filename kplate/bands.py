@@ -346,9 +346,7 @@ def _bent(
     own = assembly.without_rigid_motion(
         unknowns[numbering.table[triangles]], vertices, numbering
     )
-    B = system.element.curvature(vertices, points)
-    n, q, _, d = B.shape
-    strain = (B.reshape(n, 3 * q, d) @ own).reshape(n, q, 3, -1)
+    strain = system.element.shape.fields(vertices, points, own, 2)
     moments: Floats = system.plate.rigidities[mesh.zones[triangles]][:, None] @ strain
     return moments
 

@@ -167,9 +167,7 @@ def kernel_forces(system: StaticSystem, own: Kernelled) -> Floats:
     weights = mesh.areas[part][:, None] * own.weights
     rigidity = system.plate.rigidities[mesh.zones[part]][:, None]
     pull = (rigidity @ own.moments[..., None])[..., 0] * weights[..., None]
-    found = np.einsum(
-        "kqad,kqa->kd", system.element.curvature(vertices, own.points), pull
-    )
+    found = system.element.shape.curvature_load(vertices, own.points, pull)
     if own.pressure.any():
         rows = system.element.evaluate(vertices, own.points)[:, :, 0]
         found += np.einsum("kqd,kq->kd", rows, weights * own.pressure)

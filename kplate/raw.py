@@ -260,10 +260,11 @@ class RawMoments:
         own = state.unknowns[state.constraints.numbering.table[triangles]]
         bent = assembly.without_rigid_motion(own, vertices, state.constraints.numbering)
         rigidity = state.plate.rigidities[mesh.zones[triangles]][:, None]
-        moments = rigidity @ _times(element.curvature(vertices, barycentrics), bent)
+        shape = element.shape
+        moments = rigidity @ shape.fields(vertices, barycentrics, bent, 2)
         if element.curvature_degree > 1:
-            third = element.third_derivatives(vertices, barycentrics)
-            by_x, by_y = (rigidity @ _times(third[:, :, c], bent) for c in range(2))
+            third = shape.fields(vertices, barycentrics, bent, 3)
+            by_x, by_y = rigidity @ third[:, :, :3], rigidity @ third[:, :, 3:]
             shears = -np.stack(
                 [by_x[:, :, 0] + by_y[:, :, 2], by_x[:, :, 2] + by_y[:, :, 1]], axis=2
             )
@@ -271,14 +272,8 @@ class RawMoments:
             nodes = self._smoothed.nodes.triangles[triangles]
             at = np.broadcast_to(barycentrics, (*moments.shape[:2], 3))
             shears = np.einsum("nqv,nvac->nqac", at, self._smoothed.shears[nodes])
-        jets = _times(element.evaluate(vertices, barycentrics), own)
+        jets = shape.fields(vertices, barycentrics, own, 1)
         return np.concatenate([jets, moments, shears], axis=2)
-
-
-def _times(rows: Floats, own: Floats) -> Floats:
-    """Rows (n, q, a, d) times unknowns (n, d, c), (n, q, a, c)."""
-    n, q, a, d = rows.shape
-    return (rows.reshape(n, q * a, d) @ own).reshape(n, q, a, -1)
 
 
 def _with_stress(values: Floats) -> Floats:

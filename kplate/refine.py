@@ -8,6 +8,7 @@ Source: M. C. Rivara, "Algorithms for refining triangular grids suitable for ada
 and multigrid techniques", Int. J. Numer. Meth. Engng 20 (1984) 745-756 (from memory).
 """
 
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -66,39 +67,39 @@ def refined(mesh: Mesh, marked: ArrayLike) -> Mesh:
 
 
 def refined_towards(
-    mesh: Mesh, place: tuple[float, float], least: float, within: float = 0.0
+    mesh: Mesh, places: Sequence[tuple[tuple[float, float], float, float]]
 ) -> Mesh:
-    """Bisect the triangles at a place until their edges are short enough.
+    """Bisect the triangles at some places until their edges are short enough.
 
     Parameters
     ----------
     mesh : Mesh
         What to refine.
-    place : tuple of float
-        A place in m; where `within` is 0 it must be a vertex.
-    least : float
-        Length in m that no edge of the triangles there is to exceed.
-    within : float, optional
-        Distance in m from the place up to which triangles count as there.
+    places : sequence of tuple
+        Each a place in m, the length in m that no edge of the triangles there is to
+        exceed, and the distance in m from the place up to which they count as there.
 
     Returns
     -------
     Mesh
-        Sizes double from triangle to triangle around it.
+        Sizes double from triangle to triangle around each place.
     """
-    reach = within + SNAP * float(np.sqrt(mesh.area))
-    while True:
-        near = np.hypot(*(mesh.points - place).T) <= reach
-        at = near[mesh.triangles].any(axis=1)
-        if within > 0.0:
-            at[mesh.locate([place])[0]] = True
+    snap = SNAP * float(np.sqrt(mesh.area))
+    while places:
         corners = mesh.points[mesh.triangles]
         sides = corners - np.roll(corners, 1, axis=1)
         longest = np.hypot(sides[..., 0], sides[..., 1]).max(axis=1)
-        marked = at & (longest > least)
+        marked = np.zeros(len(mesh.triangles), dtype=bool)
+        for place, least, within in places:
+            near = np.hypot(*(mesh.points - place).T) <= within + snap
+            at = near[mesh.triangles].any(axis=1)
+            if not at.any() and mesh.covers([place])[0]:
+                at[mesh.locate([place])[0]] = True
+            marked |= at & (longest > least)
         if not marked.any():
-            return mesh
+            break
         mesh = refined(mesh, marked)
+    return mesh
 
 
 def _longest_first(mesh: Mesh) -> Ints:

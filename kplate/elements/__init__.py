@@ -36,6 +36,8 @@ class Element:
         Quadrature of the stiffness; of loads, mass and geometric stiffness.
     pieces : ndarray, shape (s, 3, 3)
         Barycentric vertices of the pieces on which w is one polynomial.
+    shape : Piecewise
+        Its deflection; of an element that is not conforming, that between the vertices.
     stiffness : callable
         (geometry with `rule`, rigidity (n, q, 3, 3)) to (n, d, d).
     load : callable
@@ -63,6 +65,7 @@ class Element:
     rule: Rule
     load_rule: Rule
     pieces: Floats
+    shape: Piecewise
     stiffness: Callable[[Geometry, Floats], Floats]
     load: Callable[[Geometry, Floats], Floats]
     mass: Callable[[Geometry, Floats], Floats]
@@ -81,6 +84,7 @@ def _conforming(shape: Piecewise, **named: Any) -> Element:
         rule=shape.rule,
         load_rule=shape.load_rule,
         pieces=shape.pieces,
+        shape=shape,
         stiffness=shape.stiffness,
         load=shape.load,
         mass=shape.mass,
@@ -103,6 +107,7 @@ ELEMENTS = {
         rule=dkt.RULE,
         load_rule=hct.REDUCED.load_rule,
         pieces=hct.PIECES,
+        shape=hct.REDUCED,
         stiffness=dkt.stiffness,
         load=hct.REDUCED.load,
         mass=hct.REDUCED.mass,

@@ -99,6 +99,58 @@ class Piecewise:
             result += rows @ C[:, None, None, k]
         return result
 
+    def fields(
+        self, vertices: Floats, barycentrics: Floats, unknowns: Floats, order: int
+    ) -> Floats:
+        """What unknowns (n, d, c) make at points of triangles, without their rows.
+
+        Barycentrics (q, 3) or (n, q, 3). Order 1 returns w and its slopes (n, q, 3, c);
+        2 the curvatures (n, q, 3, c); 3 their derivatives by x, then by y,
+        (n, q, 6, c).
+        """
+        C = self.ordinates(vertices)
+        n, c = len(C), unknowns.shape[-1]
+        q = barycentrics.shape[-2]
+        result = np.zeros((n, q, 6 if order == 3 else 3, c))
+        for k, local, own in self._parts(barycentrics):
+            net = C[:, k] @ unknowns  # ordinates, (n, k, c)
+            g = self._gradients(vertices, k)
+            if order == 1:
+                by = bernstein.gradients(self.degree, local)
+                value = bernstein.values(self.degree, local)[..., None, :]
+                turn = np.zeros((n, 3, 4))
+                turn[:, 0, 0], turn[:, 1:, 1:] = 1.0, g.swapaxes(1, 2)
+                rows = np.concatenate([value, by], axis=-2)
+            elif order == 2:
+                turn = curvature_of_pairs(g)
+                rows = bernstein.hessians(self.degree, local)
+            else:
+                bends = curvature_of_pairs(g)
+                turn = np.einsum("nvc,nax->ncavx", g, bends).reshape(n, 6, 18)
+                rows = bernstein.hessian_gradients(self.degree, local)
+                rows = rows.reshape(*rows.shape[:-3], 18, rows.shape[-1])
+            rows = rows * own[..., None, None]
+            flat = rows.reshape(*rows.shape[:-3], -1, rows.shape[-1])
+            found = (flat @ net).reshape(n, q, rows.shape[-2], c)
+            result += turn[:, None] @ found
+        return result
+
+    def curvature_load(
+        self, vertices: Floats, barycentrics: Floats, pulls: Floats
+    ) -> Floats:
+        """Forces on the unknowns of pulls (n, q, 3) on the curvature at points (q, 3).
+
+        Returns (n, d), the sum over the points of pull times curvature.
+        """
+        C = self.ordinates(vertices)
+        total = np.zeros((len(C), C.shape[-1]))
+        for k, local, own in self._parts(barycentrics):
+            pairs = pulls @ curvature_of_pairs(self._gradients(vertices, k))
+            by = bernstein.hessians(self.degree, local) * own[:, None, None]
+            net = pairs.reshape(len(C), -1) @ by.reshape(-1, by.shape[-1])
+            total += np.einsum("nk,nkd->nd", net, C[:, k])
+        return total
+
     def stiffness(self, geometry: Geometry, rigidity: Floats) -> Floats:
         """Element stiffness matrices.
 

@@ -748,3 +748,39 @@ def test_pieces_part_the_triangle(element):
     shares = np.linalg.det(element.pieces)
     assert (shares > 0.0).all()
     assert shares.sum() == pytest.approx(1.0, rel=1e-14)
+
+
+@every_element
+@given(
+    st.lists(triangles(), min_size=1, max_size=3),
+    numbers(3, 100, 2),
+    points_in(count=4),
+)
+def test_fields_are_the_rows_times_the_unknowns(element, several, u, l):
+    """Without forming the rows; of DKT those of the deflection between its vertices."""
+    X = np.array(several)
+    S = np.array([scales(element, own) for own in X])
+    u = u[: len(X), : unknowns_of(element)] / S[:, :, None]
+    size = np.array([size_of(own) for own in X])[:, None, None, None]
+    each = np.broadcast_to(l, (len(X), *l.shape))
+    for points in (l, each):
+        jets = np.einsum("nqad,ndc->nqac", element.evaluate(X, points), u)
+        found = element.shape.fields(X, points, u, 1)
+        assert_equal(found[:, :, :1], jets[:, :, :1], 1e-11)
+        assert_equal(found[:, :, 1:] * size, jets[:, :, 1:] * size, 1e-10)
+        bent = np.einsum("nqad,ndc->nqac", element.shape.curvature(X, points), u)
+        found = element.shape.fields(X, points, u, 2)
+        assert_equal(found * size**2, bent * size**2, 1e-9)
+        third = np.einsum("nqbad,ndc->nqbac", element.third_derivatives(X, points), u)
+        found = element.shape.fields(X, points, u, 3).reshape(third.shape)
+        assert_equal(found * size[..., None] ** 3, third * size[..., None] ** 3, 1e-8)
+
+
+@every_element
+@given(triangles(), numbers(4, 3), points_in(count=4))
+def test_pulls_on_the_curvature_load_as_its_rows_do(element, X, pulls, l):
+    B = element.shape.curvature(X[None], l)[0]
+    expected = np.einsum("qad,qa->d", B, pulls)
+    found = element.shape.curvature_load(X[None], l, pulls[None])[0]
+    S = np.abs(B).sum(axis=(0, 1))
+    assert_equal(found / S, expected / S, 1e-12)
