@@ -86,10 +86,16 @@ def _check(args: argparse.Namespace) -> int:
     from kplate.check import check
 
     out = args.out if args.out is not None else Path("results") / args.file.stem
-    checked = check(args.file, out=out)
+    checked = check(args.file, out=out, progress=_show_step)
     written = ", ".join(str(path) for path in checked.files)
     _say(f"{checked.text}\nwritten: {written}")
     return checked.status
+
+
+def _show_step(stage: str, done: float) -> None:
+    """Show a person who waits how far it is; files and pipes get results only."""
+    if sys.stderr is not None and sys.stderr.isatty():
+        print(f"{100.0 * done:3.0f} %  {stage}", file=sys.stderr)
 
 
 def _new(args: argparse.Namespace) -> int:

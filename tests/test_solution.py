@@ -3,9 +3,10 @@
 import numpy as np
 import oracles
 import pytest
-from plates import grid, rectangle, solved
+from plates import SIDES, grid, rectangle, solved
 
 from kplate.adapt import solve
+from kplate.dualforces import side_forces
 from kplate.errors import InputError
 from kplate.loads import Case, DiscPatch, PointForce, Pressure, RectanglePatch
 from kplate.materials import STEEL
@@ -280,3 +281,69 @@ def test_a_patch_smaller_than_the_thickness_is_left_out_of_peaks():
     assert [e.reason for e in solution.excluded] == ["patch smaller than the thickness"]
     place = solution.peak("von Mises").place
     assert np.hypot(*np.subtract(place, (0.5, 0.5))) >= 0.01 * (1 - 1e-6)
+
+
+# Towards places without a finite moment, and forces with bands
+
+
+@pytest.fixture(scope="module")
+def notched():
+    """An L-shape with a free notch, solved to 1 %."""
+    outline = Outline.polygon(
+        [(0, 0), (2.4, 0), (2.4, 1.2), (1.5, 1.2), (1.5, 1.8), (0, 1.8)],
+        sides=["south", "east", "notch-south", "notch-east", "north", "west"],
+    )
+    held = {"south": CLAMPED, "north": SIMPLY_SUPPORTED, "west": SIMPLY_SUPPORTED}
+    plate = Plate(outline=outline, thickness=0.02, material=STEEL, supports=held)
+    return solve(plate, [Pressure(-1e3)], tolerance=0.01)
+
+
+def test_stress_grows_towards_a_corner_by_its_exponent(notched):
+    """Free to free at 270 degrees: r^(0.6379 - 1) (computed by kplate.corners, too)."""
+    (corner,) = {disc.place for disc in notched.excluded}
+    far, near = (notched.near(corner, r) for r in (0.02, 0.01))
+    assert near.power == pytest.approx(0.6379 - 1.0, abs=1e-3)
+    ratio = near.value.value / far.value.value
+    assert ratio == pytest.approx(0.5**near.power, rel=0.05)
+    assert near.words.endswith("moments go with r^-0.362")
+    rim = notched.peak("von Mises").value
+    assert far.value.value == pytest.approx(rim, rel=1e-6)
+
+
+def test_other_places_have_no_growth(notched):
+    with pytest.raises(InputError, match=r"finite moment are \(1\.5, 1\.2\)"):
+        notched.near((0.5, 0.5), 0.01)
+    with pytest.raises(InputError, match="nothing of the plate is 50 m from"):
+        notched.near((1.5, 1.2), 50.0)
+
+
+def test_a_point_force_grows_with_the_logarithm():
+    plate = rectangle(CLAMPED)
+    solution = solve(plate, [PointForce(force=-1.0, at=(0.5, 0.5))], triangles=500)
+    growth = solution.near((0.5, 0.5), 0.02)
+    assert growth.power is None
+    assert growth.words.endswith("grow with the logarithm of the distance")
+
+
+def test_forces_of_sides_and_corners_carry_what_is_known_of_them(notched):
+    """Indicators from the balanced moments, small beside the forces."""
+    for side in notched.reactions().sides:
+        force = notched.resultant(side.side)
+        assert force.kind == "indicator"
+        assert force.value == side.resultant.force
+        assert force.upper - force.lower < 0.1 * abs(force.value)
+    for corner in notched.reactions().corners:
+        assert corner.force.kind == "indicator"
+        assert corner.force.upper - corner.force.lower < 0.1 * abs(corner.force.value)
+    with pytest.raises(InputError, match="no held side, seam or mark 'east'"):
+        notched.resultant("east")
+
+
+def test_the_dual_has_the_forces_of_a_square():
+    """Sides 0.32483 - corner share: together with the corners they bear the load."""
+    solution = solve(rectangle(SIMPLY_SUPPORTED), [Pressure(-1.0)], tolerance=0.01)
+    at = np.isin(solution.mesh.points, (0, 1)).all(axis=1)
+    corners = np.flatnonzero(at).tolist()
+    sides = [side_forces(solution.dual, name, corners)[0] for name in SIDES]
+    exact = 0.25 * (1.0 + 4.0 * 0.0649647)
+    np.testing.assert_allclose(sides, exact, rtol=2e-3)
