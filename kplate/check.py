@@ -1,29 +1,32 @@
 """One public function for each command: solve, judge, write."""
 
-from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
 
 from kplate.adapt import default_goals, no_bands, solve
+from kplate.checklines import (
+    place_words,
+    short,
+    signed,
+    support_rows,
+    table_lines,
+)
 from kplate.choice import TRIANGLES, choose
 from kplate.describe import describe
 from kplate.errors import InputError
 from kplate.files import replacing
-from kplate.goals import Deflection
 from kplate.limits import Outcome, Verdict, governing
 from kplate.output.picture import write_picture
 from kplate.output.record import solution_record, write_json, write_reactions
 from kplate.output.tables import Line, legend, reactions_table, values_table
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
-from kplate.reactions import CornerForce
 from kplate.solution import Solution
 from kplate.solve.static import Progress
 from kplate.supports import Support
 from kplate.validity import FLAG, Validity, validity
-from kplate.values import Value
 
 CAUTION = (
     "Not checked: welds, bolts, the frame, fatigue, impact, buckling. Results are for "
@@ -71,7 +74,7 @@ class Checked:
         parts = [
             "\n".join(_heading(self.panel)),
             values_table(self.lines),
-            reactions_table(_supports(self.solution), self.panel.units),
+            reactions_table(support_rows(self.solution), self.panel.units),
             "\n".join(_closing(self)),
         ]
         return "\n\n".join(part for part in parts if part)
@@ -116,7 +119,7 @@ def check(
         goals=default_goals(panel.plate, criterion),
         progress=progress,
     )
-    lines = tuple(_lines(panel, solution))
+    lines = tuple(table_lines(panel, solution))
     judgements = tuple(j for line in lines if (j := line.judgement) is not None)
     places = {excluded.place for excluded in solution.excluded}
     if panel.limits.stress is None:
@@ -191,7 +194,7 @@ def _heading(panel: Panel) -> list[str]:
         for support, names in by_support.items()
     ]
     lines += [
-        f"zone {name}: {_short(h, panel.units.deflection.size)} "
+        f"zone {name}: {short(h, panel.units.deflection.size)} "
         f"{panel.units.deflection.symbol} {material.name}"
         for name, (h, material) in zip(
             plate.outline.zone_names, plate.sections[1:], strict=True
@@ -250,153 +253,8 @@ def _bends(panel: Panel) -> list[str]:
                 and not line.straight[i]
                 and abs(line.turns[i]) < plate.bend_turn
             ):
-                places.append(_place((float(x), float(y)), size))
+                places.append(place_words((float(x), float(y)), size))
     return places
-
-
-def _lines(panel: Panel, solution: Solution) -> Iterator[Line]:
-    """Numbers of the table, case by case."""
-    for case in solution.cases:
-        yield from _case_lines(panel, solution, case)
-
-
-def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
-    units, limits = panel.units, panel.limits
-    size = units.length.size
-    deflection = solution.peak("deflection", case=case)
-    limit = limits.deflection.at_most if limits.deflection is not None else None
-    way = "up" if deflection.value > 0.0 else "down"
-    yield Line(
-        case=case,
-        quantity="peak deflection",
-        value=deflection,
-        unit=units.deflection,
-        limit=limit,
-        where=f"{_at(deflection, panel)}, {way}",
-    )
-    there = _deflection_there(solution, case)
-    if there is not None:
-        yield Line(
-            case=case,
-            quantity="deflection there",
-            value=there,
-            unit=units.deflection,
-            where=_at(there, panel),
-        )
-    criterion = limits.stress.criterion if limits.stress is not None else "von Mises"
-    stress = solution.peak(criterion, case=case)
-    yield Line(
-        case=case,
-        quantity=f"peak {criterion}",
-        value=stress,
-        unit=units.stress,
-        limit=limits.stress.at_most if limits.stress is not None else None,
-        where=_at(stress, panel) + (f", {stress.face}" if stress.face else ""),
-    )
-    reactions = solution.reactions(case=case)
-    total = reactions.total.force
-    if abs(total) < ROUND_OFF * reactions.magnitude:
-        total = 0.0
-    yield Line(
-        case=case,
-        quantity="total reaction",
-        value=_exact(total, solution, case),
-        unit=units.force,
-        where=f"supports push {'up' if total > 0.0 else 'down'}" if total else "",
-    )
-    pull, forces = solution.hold_down(case=case)
-    if forces or pull.reason or limits.hold_down is not None:
-        words = [_corner_words(solution, forces, case, size)] if forces else []
-        where = "; ".join([*words, *([pull.reason] if pull.reason else [])])
-        yield Line(
-            case=case,
-            quantity="corner hold-down",
-            value=pull,
-            unit=units.force,
-            limit=limits.hold_down,
-            where=where or "none needed",
-        )
-    points = [p for p in solution.reactions(case=case).points if p.force.value < 0.0]
-    for point in points:
-        yield Line(
-            case=case,
-            quantity=f"{point.mark} hold-down",
-            value=-point.force,
-            unit=units.force,
-            limit=limits.hold_down,
-            where=f"{_at(point.force, panel)}",
-        )
-    uplift, side = solution.side_uplift(case=case)
-    if uplift.value > SLIGHT * _largest_line_reaction(solution, case):
-        yield Line(
-            case=case,
-            quantity="side hold-down",
-            value=uplift,
-            unit=units.line_force,
-            where=f"{side} at {_at(uplift, panel)}",
-        )
-
-
-def _deflection_there(solution: Solution, case: str) -> Value | None:
-    """Bound of the deflection at the vertex that deflects most, if there is one."""
-    own = [
-        value
-        for (goal, name), value in solution.known.items()
-        if name == case and isinstance(goal, Deflection) and value.value != 0.0
-    ]
-    return max(own, key=lambda value: abs(value.value), default=None)
-
-
-def _exact(total: float, solution: Solution, case: str) -> Value:
-    """All supports' force, which balances the loads, whatever the mesh."""
-    if solution.dual is None:
-        return Value(value=total, case=case)
-    off = 1e-9 * abs(total)
-    return Value(
-        value=total, case=case, lower=total - off, upper=total + off, kind="bound"
-    )
-
-
-def _largest_line_reaction(solution: Solution, case: str) -> float:
-    sides = solution.reactions(case=case).sides
-    sizes = [np.nanmax(np.abs(side.line_reaction), initial=0.0) for side in sides]
-    return float(max(sizes, default=0.0))
-
-
-def _supports(
-    solution: Solution,
-) -> list[tuple[str, str, Value, float, float]]:
-    """What each side, seam and point support brings, case by case."""
-    rows = []
-    for case in solution.cases:
-        reactions = solution.reactions(case=case)
-        for side in reactions.sides:
-            known = side.line_reaction[~np.isnan(side.line_reaction)]
-            ends = (
-                (float(known.min()), float(known.max()))
-                if known.size
-                else (np.nan,) * 2
-            )
-            force = solution.resultant(side.side, case=case)
-            rows.append((case, side.side, force, *ends))
-        rows += [
-            (case, point.mark, point.force, np.nan, np.nan)
-            for point in reactions.points
-        ]
-    return rows
-
-
-def _corner_words(
-    solution: Solution, forces: list[CornerForce], case: str, size: float
-) -> str:
-    """Which corners need the largest pull."""
-    known = [
-        f for f in solution.reactions(case=case).corners if not np.isnan(f.force.value)
-    ]
-    if len(forces) > 2 and len(forces) == len(known):
-        counts = {3: "three", 4: "four"}
-        return f"all {counts.get(len(forces), len(forces))} corners"
-    return ", ".join(_place(f.corner.place, size) for f in forces)
 
 
 def _closing(checked: Checked) -> list[str]:
@@ -414,8 +272,8 @@ def _closing(checked: Checked) -> list[str]:
     for excluded in solution.excluded:
         only = f", case {excluded.case}" if excluded.case else ""
         place, radius = (
-            _place(excluded.place, length.size),
-            _short(excluded.radius, length.size),
+            place_words(excluded.place, length.size),
+            short(excluded.radius, length.size),
         )
         lines.append(
             f"left out of peaks and line reactions: {place} {length.symbol}{only}, "
@@ -427,8 +285,8 @@ def _closing(checked: Checked) -> list[str]:
             lines.append(f"case {case} brings no load on the panel")
             continue
         lines.append(
-            f"balance of {case}: loads {_signed(reactions.load.force, panel)}, "
-            f"supports {_signed(reactions.total.force, panel)}, force and moments to "
+            f"balance of {case}: loads {signed(reactions.load.force, panel)}, "
+            f"supports {signed(reactions.total.force, panel)}, force and moments to "
             f"{max(reactions.imbalance, 1e-16):.0e}"
         )
     lines += _reached(panel, solution)
@@ -539,24 +397,4 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
 
 def _thickness(panel: Panel) -> str:
     unit = panel.units.deflection
-    return f"{_short(panel.plate.thickness, unit.size)} {unit.symbol}"
-
-
-def _at(value: Value, panel: Panel) -> str:
-    if value.place is None:
-        return value.reason
-    return f"{_place(value.place, panel.units.length.size)} {panel.units.length.symbol}"
-
-
-def _place(place: tuple[float, float], size: float) -> str:
-    """A place to four digits of the unit of length."""
-    return f"({_short(place[0], size, 4)}, {_short(place[1], size, 4)})"
-
-
-def _short(value: float, size: float, digits: int = 6) -> str:
-    shown = value / size
-    return f"{0.0 if abs(shown) < 1e-6 else shown:.{digits}g}"
-
-
-def _signed(force: float, panel: Panel) -> str:
-    return f"{force / panel.units.force.size:+.6g} {panel.units.force.symbol}"
+    return f"{short(panel.plate.thickness, unit.size)} {unit.symbol}"

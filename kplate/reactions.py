@@ -31,7 +31,7 @@ from kplate.solve.dual import DualState
 from kplate.solve.static import StaticState
 from kplate.stations import held_lines, windowed
 from kplate.supports import Support
-from kplate.traces import traced
+from kplate.tracelines import traced
 from kplate.values import Value
 
 # Beside a place without a finite shear the reaction swings over two edges.

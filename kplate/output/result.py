@@ -115,12 +115,16 @@ class Result:
         sides = self.fields.cell_data.get("side", (None, np.empty(0)))[1]
         if len(sides) != len(self.fields.lines):
             return {}
-        middles = self.fields.points[self.fields.lines].mean(axis=1)
+        ends = self.fields.points[self.fields.lines]
+        middles = ends.mean(axis=1)
+        lengths = np.linalg.norm(ends[:, 1] - ends[:, 0], axis=1)
         places = {}
         for number, name in enumerate(self.side_names):
             own = middles[sides == number]
             if len(own):
-                off = np.linalg.norm(own - own.mean(axis=0), axis=1)
+                # Pieces are shorter towards corners.
+                centre = np.average(own, axis=0, weights=lengths[sides == number])
+                off = np.linalg.norm(own - centre, axis=1)
                 places[name] = own[off.argmin()]
         return places
 
