@@ -1,9 +1,9 @@
-"""Print handbook cases, what elements need, or timings: ``python -m benchmarks``."""
+"""Print handbook cases, bands, what elements need, or timings."""
 
 import argparse
 import sys
 
-from benchmarks import cases, elements, timing
+from benchmarks import bands, cases, elements, timing
 
 # What a handbook prints, beside what kplate finds: one line for each figure.
 SHOWN = (
@@ -26,11 +26,20 @@ def main() -> int:
         one.add_argument(
             "--all", action="store_true", help="every number of the reference file"
         )
+    banded = commands.add_parser("bands", help="bands of numbers with straight sides")
+    banded.add_argument(
+        "--tolerance", type=float, default=0.01, help="half width wanted, as a share"
+    )
+    banded.add_argument(
+        "--all", action="store_true", help="every problem of the reference file"
+    )
     commands.add_parser("elements", help="unknowns and seconds to an error")
     commands.add_parser("timing", help="ratios measured on this machine")
     args = parser.parse_args()
     if args.command == "timing":
         timing.main()
+    elif args.command == "bands":
+        return int(bands.main(args.tolerance, None if args.all else SHOWN) > 0)
     elif args.command == "elements":
         elements.main()
     else:

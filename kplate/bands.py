@@ -26,7 +26,7 @@ import numpy as np
 
 from kplate import assembly
 from kplate.arrays import Floats, Ints
-from kplate.boundary import side_tangents
+from kplate.boundary import seam_tangents, side_tangents
 from kplate.elements import bernstein
 from kplate.errors import SolveError
 from kplate.functionals import Functional, local_pressure, settled_vertices
@@ -38,7 +38,7 @@ from kplate.kernelled import (
     kernelled_on,
 )
 from kplate.loading import unbalanced
-from kplate.loads import Case, PointForce
+from kplate.loads import Case, LineForce, Load, PointForce, Pressure, PressureField
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
 from kplate.polygon import SNAP
@@ -50,6 +50,9 @@ from kplate.values import Kind, Value
 BLOCK = 512  # triangles
 # The primal energy may exceed the dual's by this share, as round-off.
 CROSSING = 1e-9
+# Energies of loads that supports take at once are round-off: so small a share of what
+# the loads could do.
+ROUND_OFF = 1e-20
 BENT = 1e-9  # tangents that differ by more are not those of the edges
 
 
@@ -165,7 +168,9 @@ def certify(
                 )
             )
             continue
-        own = []
+        own, (own_kind, why) = [], (kind, reason)
+        if not reason and _put(plate, mesh, f.loads):
+            own_kind, why = "estimate", _put(plate, mesh, f.loads)
         for k, case in enumerate(cases):
             settled = bool(f.settled)
             centre = pulls[k, column] - work[k, column] + 0.5 * cross[k, column]
@@ -181,10 +186,10 @@ def certify(
                     value=float(centre),
                     lower=float(centre - half),
                     upper=float(centre + half),
-                    kind=kind,
+                    kind=own_kind,
                     place=getattr(f.goal, "at", None),
                     case=case.name,
-                    reason=reason,
+                    reason=why,
                 )
             )
         values.append(tuple(own))
@@ -214,25 +219,60 @@ def certify(
 
 def worth(plate: Plate, mesh: Mesh, cases: Sequence[Case]) -> tuple[Kind, str]:
     """What bands on this mesh are worth, and why they are no bounds if they are not."""
+    loads = [load for case in cases for load in case.loads]
+    reason = _drawn(plate, mesh) or _bends(plate, mesh) or _put(plate, mesh, loads)
+    return ("estimate", reason) if reason else ("bound", "")
+
+
+def _drawn(plate: Plate, mesh: Mesh) -> str:
+    """What of the plate is round, so that the mesh draws it by chords."""
+    outline = plate.outline
     curved = mesh.boundary_sides[mesh.boundary_circles != STRAIGHT_EDGE]
-    if curved.size:
-        name = mesh.side_names[int(curved[0])]
-        return "estimate", f"side {name} is round and drawn by chords"
+    names = [f"side {mesh.side_names[int(side)]}" for side in curved]
+    for zone, section in zip(outline.zones, plate.sections[1:], strict=True):
+        if section != plate.sections[0] and zone.shape.line.bulges.any():
+            names.append(f"zone {zone.name}")
+    for seam in outline.seams:
+        if plate.support(seam.name).holds and seam.bulges.any():
+            names.append(f"seam {seam.name}")
+    return f"{names[0]} is round and drawn by chords" if names else ""
+
+
+def _bends(plate: Plate, mesh: Mesh) -> str:
+    """A side or seam that is held and bends, so that one tangent stands for two."""
     joints = mesh.boundary_joints
     start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
     own = (end - start) / mesh.boundary_lengths[:, None]
-    bent = np.abs(side_tangents(plate, mesh) - own[joints]).max(axis=(1, 2)) > BENT
-    for side in mesh.boundary_sides[joints[bent, 0]].tolist():
+    off = np.abs(side_tangents(plate, mesh) - own[joints]).max(axis=(1, 2))
+    for side in mesh.boundary_sides[joints[off > BENT, 0]].tolist():
         if plate.support(mesh.side_names[side]).holds:
-            name = mesh.side_names[side]
-            return "estimate", f"side {name} bends where it is held"
-    for case in cases:
-        for load in case.loads:
-            if isinstance(load, PointForce):
-                off = np.hypot(*(mesh.points - load.at).T).min()
+            return f"side {mesh.side_names[side]} bends where it is held"
+    vertices, edges, away, _ = seam_tangents(plate, mesh)
+    own = mesh.points[mesh.seam_edges[edges]].sum(axis=1) - 2.0 * mesh.points[vertices]
+    own /= np.hypot(*own.T)[:, None]
+    off = np.abs(away - own).max(axis=1)
+    for seam in mesh.seam_numbers[edges[off > BENT]].tolist():
+        return f"seam {mesh.seam_names[seam]} bends where it is held"
+    return ""
+
+
+def _put(plate: Plate, mesh: Mesh, loads: Sequence[Load]) -> str:
+    """A load that is not where, or what, it is stated to be."""
+    shapes = {zone.name: zone.shape.line for zone in plate.outline.zones}
+    lines = {seam.name: seam for seam in plate.outline.seams}
+    for load in loads:
+        match load:
+            case Pressure(zone=str(name)) if shapes[name].bulges.any():
+                return f"zone {name} is round and drawn by chords"
+            case LineForce(along=name) if name in lines and lines[name].bulges.any():
+                return f"seam {name} is round and drawn by chords"
+            case PointForce(at=at):
+                off = float(np.hypot(*(mesh.points - at).T).min())
                 if off > SNAP * plate.outline.size:
-                    return "estimate", "a point force acts within a triangle"
-    return "bound", ""
+                    return "a point force acts within a triangle"
+            case PressureField() if unbalanced(mesh, load).any():
+                return "a pressure is stated as a function, of which samples are known"
+    return ""
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -388,7 +428,10 @@ def _check_energies(state: StaticState, dual: DualState, osc: Floats) -> None:
     """Raise where round-off or a constraint has made the energies cross."""
     primal, above = state.strain_energy, dual.energy
     exact = ~osc.any(axis=0)
-    crossed = exact & (primal > above * (1.0 + CROSSING))
+    # What the same forces could do to a plate of its size that is held at its rim.
+    force = np.abs(state.forces).sum(axis=0) * state.plate.outline.size
+    nothing = ROUND_OFF * force**2 / state.plate.rigidity[0, 0]
+    crossed = exact & (primal > above * (1.0 + CROSSING) + nothing)
     if crossed.any():
         k = int(np.flatnonzero(crossed)[0])
         raise SolveError(

@@ -17,7 +17,7 @@ from kplate.arrays import Bools, Floats
 from kplate.bands import Certified, certify
 from kplate.errors import SolveError
 from kplate.functionals import functional
-from kplate.goals import Goal, Peak, Resultant
+from kplate.goals import Goal, Moment, Peak, Resultant
 from kplate.loads import Case
 from kplate.mesh import Mesh
 from kplate.plate import Plate
@@ -153,7 +153,9 @@ def _unmet(
             columns[f.goal] = column
             column += 1
     for goal in goals:
-        worst = 0.0
+        if not isinstance(goal, Peak) and goal not in columns:
+            continue  # no bounded functional: it holds nothing up
+        worst = bands.get(_words(goal), 0.0)
         for k, case in enumerate(solution.cases):
             if isinstance(goal, Peak):
                 value = solution.peak(goal.quantity, case=case)
@@ -162,15 +164,13 @@ def _unmet(
                     band = solution.peak_band(goal.quantity, case=case)
                     shares += _share(certified.case_gaps[:, k])
                     shares += _share(np.where(band.candidates, band.doubt, 0.0) ** 2)
-            elif goal in columns:
+            else:
                 value = solution.known[goal, case]
                 size = _size(solution, goal, value)
                 width = _half(value) / size if size > 0.0 else 0.0
                 if width > tolerance:
                     shares += _share(certified.case_gaps[:, k])
                     shares += _share(certified.goal_gaps[:, columns[goal]])
-            else:
-                continue  # no bounded functional: an indicator holds nothing up
             worst = max(worst, width)
         bands[_words(goal)] = worst
     return shares, bands
@@ -228,6 +228,8 @@ def _words(goal: Goal) -> str:
             return f"peak {quantity}"
         case Resultant(of=name):
             return f"resultant of {name}"
+        case Moment(at=(x, y), component=component):
+            return f"{component} at ({x:.4g}, {y:.4g})"
     name = "".join(f" {c.lower()}" if c.isupper() else c for c in type(goal).__name__)
     at = getattr(goal, "at", None)
     where = "" if at is None else f" at ({at[0]:.4g}, {at[1]:.4g})"

@@ -7,6 +7,7 @@ over a seam, is left out: its load is then balanced on the average only, which w
 the bands.
 """
 
+import itertools
 from collections.abc import Sequence
 
 import numpy as np
@@ -60,7 +61,7 @@ def _with_seam(
         return outline
     seen.add(key)
     try:
-        return outline.seam(points, name=f"load line {len(seen)}")
+        return outline.seam(points, name=_unused(outline, "load line"))
     except KplateError:
         return outline
 
@@ -75,9 +76,16 @@ def _with_mark(outline: Outline, place: Place) -> Outline:
     if off.min(initial=np.inf) < SNAP * outline.size:
         return outline
     try:
-        return outline.mark(place, name=f"load point {len(outline.marks) + 1}")
+        return outline.mark(place, name=_unused(outline, "load point"))
     except KplateError:
         return outline
+
+
+def _unused(outline: Outline, stem: str) -> str:
+    """The stem with the first number that makes it a name of nothing else."""
+    taken = {*outline.names, *outline.zone_names}
+    numbered = (f"{stem} {number}" for number in itertools.count(1))
+    return next(name for name in numbered if name not in taken)
 
 
 def _waterlines(outline: Outline, load: Hydrostatic) -> list[list[Place]]:

@@ -34,7 +34,6 @@ from kplate.loads import (
     DiscPatch,
     EdgeMoment,
     Hydrostatic,
-    LineForce,
     Load,
     PointForce,
     PointMoment,
@@ -221,7 +220,7 @@ def _room(
     start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
     keep = np.ones(len(start), dtype=bool)
     if edge is not None:
-        keep = ~_same_line(plate, mesh, edge)
+        keep = ~_same_line(plate, mesh, edge) | _turned(mesh, cases)
     if keep.any():
         found.append((float(_distance(place, start[keep], end[keep]).min()), "a side"))
     lines = [(mesh.seam_edges, "a seam"), (_zone_edges(mesh), "the edge of a zone")]
@@ -235,13 +234,6 @@ def _room(
             found.append((off, f"the support {name}"))
     for case in cases:
         found += [_load_room(load, place) for load in case.loads]
-        if edge is not None:
-            own = mesh.side_names[mesh.boundary_sides[edge]]
-            found += [
-                (0.0, f"a load along {own}")
-                for load in case.loads
-                if isinstance(load, EdgeMoment | LineForce) and load.along == own
-            ]
     return min(found)
 
 
@@ -256,6 +248,19 @@ def _same_line(plate: Plate, mesh: Mesh, edge: int) -> Bools:
     own = supports[mesh.boundary_sides[edge]]
     alike = np.array([support == own for support in supports])
     return on & alike[mesh.boundary_sides]
+
+
+def _turned(mesh: Mesh, cases: Sequence[Case]) -> Bools:
+    """Boundary edges along which a moment is applied; m_nn is not zero there."""
+    along = {
+        load.along
+        for case in cases
+        for load in case.loads
+        if isinstance(load, EdgeMoment)
+    }
+    named = np.array([name in along for name in mesh.side_names])
+    turned: Bools = named[mesh.boundary_sides]
+    return turned
 
 
 def _zone_edges(mesh: Mesh) -> Ints:
