@@ -13,6 +13,7 @@ from dataclasses import replace
 
 import numpy as np
 
+from kplate.answers import Step
 from kplate.arrays import Bools, Floats
 from kplate.bands import Certified, certify
 from kplate.errors import SolveError
@@ -22,7 +23,7 @@ from kplate.loads import Case
 from kplate.mesh import Mesh
 from kplate.plate import Plate
 from kplate.refine import refined
-from kplate.solution import Solution, Step
+from kplate.solution import Solution
 from kplate.solve.static import Progress
 from kplate.values import Value
 

@@ -772,7 +772,7 @@ def test_a_load_that_a_support_takes_at_once_has_an_energy_of_nothing():
         assert east.value == pytest.approx(0.0, abs=1e-6)
         assert mean.value == pytest.approx(0.0, abs=1e-12)
         assert found.energies[0].upper < 1e-20
-        assert found.dual.energy[0] == 0.0
+        assert found.dual.energy[0] < 1e-20
 
 
 # Steps of thickness, by HCT.

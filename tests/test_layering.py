@@ -34,7 +34,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"recovery"},
     {"stations", "rims"},
     {"traces"},
-    {"raw", "peaks", "goals", "kernels", "tracelines"},
+    {"answers", "raw", "peaks", "goals", "kernels", "tracelines"},
     {"dualforces"},
     {"reactions", "functionals"},
     {"kernelled"},

@@ -427,7 +427,9 @@ def test_the_peak_of_the_stress_is_that_of_the_fields_and_of_the_file(
     assert probed["vtkValidPointMask"].mean() > 0.99
     largest = max(found[name][reach >= 0.06].max(), probed[name].max())
     assert peak.value == pytest.approx(largest, rel=TOLERANCE)
-    assert np.hypot(*np.subtract(peak.place, (1.0, 1.0))) == pytest.approx(0.06)
+    # Around the peak it is sought on a finer lattice than that of the rim.
+    reach = np.hypot(*np.subtract(peak.place, (1.0, 1.0)))
+    assert 0.06 * (1.0 - 1e-9) <= reach < 0.061
 
 
 @both
@@ -435,7 +437,9 @@ def test_without_discs_the_peak_is_the_largest_value_of_the_field(element):
     solution = solved(element, rectangle(CLAMPED), grid(6), Pressure(-1.0))
     assert solution.excluded == ()
     largest = solution.point_fields()["von Mises [Pa]"].max()
-    assert solution.peak("von Mises").value == largest
+    peak = solution.peak("von Mises").value
+    assert largest <= peak * (1.0 + 1e-9)
+    assert peak < (1.0 + TOLERANCE) * largest
 
 
 def test_no_point_outside_the_disc_is_stressed_more_than_the_peak(notched):
