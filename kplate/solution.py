@@ -30,6 +30,7 @@ from kplate.peaks import (
 )
 from kplate.polygon import SNAP
 from kplate.reactions import CornerForce, Reactions
+from kplate.recovery import SmoothedMoments, element_moments
 from kplate.rims import outside, rim
 from kplate.samples import Lattice
 from kplate.singular import (
@@ -37,7 +38,7 @@ from kplate.singular import (
     shear_places,
 )
 from kplate.solved import Solved
-from kplate.values import Face, Value
+from kplate.values import Face, Kind, Value
 
 _FACES: tuple[Face, Face] = ("top", "bottom")
 
@@ -157,7 +158,8 @@ class Solution(Solved):
         Returns
         -------
         Value
-            Kind "estimate" where balanced moments were found too, "none" elsewhere.
+            Kind "estimate" where balanced moments were found too; "indicator" of DKT
+            moments and stresses where a tolerance was asked for; "none" elsewhere.
             Moments and stresses leave the discs in `excluded` out, but not their rims.
 
         Raises
@@ -301,13 +303,19 @@ class Solution(Solved):
             found = extreme(quantity, self._sharpened(quantity, at, index))
         value, place, face = found
         result = Value(value=value, place=place, face=face, case=case)
-        if self.dual is None or not self.state.element.conforming:
+        kind: Kind = "estimate"
+        if not self.state.element.conforming:
+            if self.tolerance is None or quantity in ("deflection", "shear stress"):
+                return result
+            kind, band = "indicator", self._smoothing_band(quantity, index)
+        elif self.dual is None:
             return result
-        band = self.peak_band(quantity, case=case)
+        else:
+            band = self.peak_band(quantity, case=case)
         size = abs(value)
         low, high = min(band.lower, size), max(band.upper, size)
         low, high = (low, high) if value >= 0.0 else (-high, -low)
-        return replace(result, lower=low, upper=high, kind="estimate")
+        return replace(result, lower=low, upper=high, kind=kind)
 
     def _summit(self, index: int) -> tuple[float, tuple[float, float], None]:
         """Climb from the sample that deflects most to the summit beside it."""
@@ -422,6 +430,27 @@ class Solution(Solved):
             )
         both = zip(found, self._at(rims, index), strict=True)
         return Candidates(*(np.concatenate([a[kept], b]) for a, b in both))
+
+    def _smoothing_band(self, quantity: str, index: int) -> PeakBand:
+        """What smoothing does to the moments of DKT: an indicator of their error."""
+        mesh, recovered = self.mesh, self._recovered
+        assert isinstance(recovered, SmoothedMoments)
+        corners = recovered.nodes.triangles.ravel()
+        owners = np.repeat(np.arange(len(mesh.triangles)), 3)
+        smoothed = Candidates(
+            mesh.points[mesh.triangles.ravel()],
+            recovered.moments[corners, :, index],
+            recovered.shears[corners, :, index],
+            self.plate.thicknesses[mesh.zones[owners]],
+            owners,
+        )
+        own = element_moments(self.state, np.eye(3))[..., index].reshape(-1, 3)
+        _, off = measures(quantity, smoothed, own, smoothed.shears)
+        most = np.zeros(len(mesh.triangles))
+        np.maximum.at(most, owners, off)
+        at = self._candidates(index)
+        values, _ = measures(quantity, at, at.moments, at.shears)
+        return peak_band(mesh, at.triangles, values, most[at.triangles])
 
     def _sharpened(self, quantity: str, at: Candidates, index: int) -> Candidates:
         """Candidates with many more on the triangles where the largest of them lie.

@@ -754,25 +754,25 @@ def test_energies_that_cross_are_refused():
 
 def test_a_load_that_a_support_takes_at_once_has_an_energy_of_nothing():
     """On sides aslant the deflection is round-off; its energy crosses nothing."""
-    goals = [MeanDeflection(), Resultant(of="east"), Resultant(of="west")]
-    square = rectangle({"west": CLAMPED, "east": SIMPLY_SUPPORTED})
-    for turn in (0.0, 0.2, 0.7, 1.3):
+    turned = EdgeMoment(moment=70.0, along="west")
+    pushed = LineForce(force=5e3, along="east")
+    held = {"west": GUIDED, "east": SIMPLY_SUPPORTED}
+    goals = [MeanDeflection(), Resultant(of="east")]
+    crossed = 0
+    for turn in (0.2, 0.7, 1.3):
         c, s = np.cos(turn), np.sin(turn)
         mesh = grid(3)
         mesh = replace(mesh, points=mesh.points @ [[c, s], [-s, c]])
         corners = [(0, 0), (c, s), (c - s, c + s), (-s, c)]
-        plate = replace(square, outline=Outline.polygon(corners, sides=SIDES))
-        loads = (
-            LineForce(force=5e3, along="west"),
-            EdgeMoment(moment=70.0, along="west"),
-        )
-        found = certified(plate, mesh, goals, *loads)
-        mean, east, west = (row[0] for row in found.values)
-        assert west.value == pytest.approx(-5e3, rel=1e-9)
-        assert east.value == pytest.approx(0.0, abs=1e-6)
+        outline = Outline.polygon(corners, sides=SIDES)
+        plate = replace(rectangle(held), outline=outline)
+        found = certified(plate, mesh, goals, turned, pushed)
+        mean, east = (row[0] for row in found.values)
+        assert east.value == pytest.approx(-5e3, rel=1e-9)
         assert mean.value == pytest.approx(0.0, abs=1e-12)
         assert found.energies[0].upper < 1e-20
-        assert found.dual.energy[0] < 1e-20
+        crossed += int(found.state.strain_energy[0] > 1.1 * found.dual.energy[0])
+    assert crossed > 0
 
 
 # Steps of thickness, by HCT.

@@ -347,3 +347,20 @@ def test_the_dual_has_the_forces_of_a_square():
     sides = [side_forces(solution.dual, name, corners)[0] for name in SIDES]
     exact = 0.25 * (1.0 + 4.0 * 0.0649647)
     np.testing.assert_allclose(sides, exact, rtol=2e-3)
+
+
+def test_peaks_of_dkt_carry_an_indicator_where_a_tolerance_is_asked_for():
+    """What smoothing moves; it shrinks with the mesh. Deflections have none."""
+    plate, widths = rectangle(CLAMPED), []
+    for triangles in (500, 4000):
+        solution = solve(
+            plate, [Pressure(-1.0)], element="dkt", tolerance=0.01, triangles=triangles
+        )
+        assert solution.peak("deflection").kind == "none"
+        stress = solution.peak("von Mises")
+        assert stress.kind == "indicator"
+        widths.append(stress.upper - stress.lower)
+        assert stress.lower < 2738.0 < stress.upper  # 6 x 0.05133 x sqrt(0.79) / h^2
+    assert widths[1] < 0.6 * widths[0]
+    alone = solve(plate, [Pressure(-1.0)], element="dkt", triangles=500)
+    assert alone.peak("von Mises").kind == "none"
