@@ -53,6 +53,8 @@ CROSSING = 1e-9
 # Energies of loads that supports take at once are round-off: so small a share of what
 # the loads could do.
 ROUND_OFF = 1e-20
+# No band is narrower than this share of the terms whose sum is the value: round-off.
+SUMMED = 1e-12
 BENT = 1e-9  # tangents that differ by more are not those of the edges
 
 
@@ -157,6 +159,8 @@ def certify(
     width = norms + np.sqrt((osc**2).sum(axis=0))
     pulls = right.forces[:, :c].T @ unknowns  # l_0(u_j)
     given = unknowns[:, :c].T @ right.forces  # l_j(u_0)
+    size = np.abs(right.forces[:, :c]).T @ np.abs(unknowns)
+    size += np.abs(unknowns[:, :c]).T @ np.abs(right.forces)
     values: list[tuple[Value, ...]] = []
     column = c
     for f in functionals:
@@ -176,6 +180,7 @@ def certify(
             centre = pulls[k, column] - work[k, column] + 0.5 * cross[k, column]
             centre = -centre if settled else centre + given[k, column]
             half = width[k] * width[column] - 0.5 * norms[k] * norms[column]
+            half += SUMMED * size[k, column]
             if f.kernel is not None:
                 x, y = f.kernel.centre.tolist()
                 p, gradient = local_pressure(plate, mesh, case, (x, y))
