@@ -33,6 +33,7 @@ MOST_STEPS = 24
 BULK = 0.7
 # Numbers smaller than this share of the largest of their kind need no narrower band.
 SMALL = 0.03
+DISJOINT = "bounds on two meshes exclude each other"
 
 
 def refine_to(
@@ -130,6 +131,8 @@ def _keep_best(known: dict[tuple[Goal, str], Value], certified: Certified) -> No
                 if low <= high:
                     middle = min(max(value.value, low), high)
                     best = replace(value, value=middle, lower=low, upper=high)
+                else:  # one of them is false, whatever the reason
+                    best = replace(value, kind="estimate", reason=DISJOINT)
             known[f.goal, value.case] = best
 
 
