@@ -21,7 +21,7 @@ def main() -> int:
     shown = commands.add_parser("handbook", help="handbook coefficients (default)")
     for one in (parser, shown):
         one.add_argument(
-            "--triangles", type=int, default=20_000, help="about how many to use"
+            "--triangles", type=int, help="about how many to use; else what suits"
         )
         one.add_argument(
             "--all", action="store_true", help="every number of the reference file"
@@ -47,7 +47,7 @@ def main() -> int:
     return 0
 
 
-def handbook(triangles: int, *, every: bool) -> None:
+def handbook(triangles: int | None, *, every: bool) -> None:
     """Print coefficient, computed, deviation and source."""
     header = ("case", "quantity", "reference", "computed", "deviation", "in print")
     line = "{:22s} {:28s} {:>12s} {:>12s} {:>9s} {:>10s}  {}"

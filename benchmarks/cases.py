@@ -147,7 +147,7 @@ def load(problem: dict[str, Any]) -> Any:
 
 
 def rows(
-    problem: dict[str, Any], *, triangles: int, element: str = "auto"
+    problem: dict[str, Any], *, triangles: int | None, element: str = "auto"
 ) -> Iterator[Row]:
     """Solve a problem and set every number beside its reference."""
     solution = kp.solve(
