@@ -101,7 +101,6 @@ def _quadrature_error(
     polar, polar_weights = _polar(kernel)
     s, t = ((polar - kernel.centre) / kernel.radius).T
     total = 0.0
-    sizes = []
     for given, function in zip(
         (values[0], values[1][..., None]),
         (kernel.moments, kernel.pressure),
@@ -114,17 +113,14 @@ def _quadrature_error(
             found = np.einsum("kq,kqa->a", weights * x**i * y**j, given)
             wanted = (polar_weights * s**i * t**j) @ exact
             total += float(np.abs(found - wanted).sum())
-        sizes.append(float((polar_weights @ np.abs(exact)).sum()))
     return 2.0 * total
 
 
 def _polar(kernel: Kernel) -> tuple[Floats, Floats]:
     """Points and weights of a fine rule on the kernel's disc or half disc."""
     r, radial = gauss(40)
-    half = kernel.inward is not None
-    if half:
+    if kernel.inward is not None:
         share, around = gauss(60)
-        assert kernel.inward is not None
         first = np.arctan2(kernel.inward[1], kernel.inward[0]) - 0.5 * np.pi
         angle, around = first + np.pi * share, np.pi * around
     else:
