@@ -155,7 +155,9 @@ class Solved:
         -------
         dict of str to ndarray
             Keys carry the SI unit, such as "deflection [m]"; shapes (n,) or (n, k).
-            Components are listed xx, yy, xy.
+            Components are listed xx, yy, xy. "balanced" ones, where balanced moments
+            were found too, are those of the dual; how far it is from the others is an
+            estimate of their error, not a bound.
         """
         index, samples = self._index(case), self.samples
         bent = samples.bent[:, :, index]
@@ -178,8 +180,13 @@ class Solved:
         fields["von Mises [Pa]"] = von_mises(surface_stress(moments, h, "bottom"))
         if self.dual is not None:
             at = self.mesh.barycentrics(samples.holders, samples.points)
-            own = self.dual.moments_at(samples.holders, at[:, None])
-            fields["balanced moments [N]"] = own[:, 0, :, index]
+            where = samples.holders, at[:, None]
+            for name, values in (
+                ("balanced moments [N]", self.dual.moments_at(*where)),
+                ("balanced shears [N per m]", self.dual.shears_at(*where)),
+                ("balanced deflection [m]", self.dual.deflections_at(*where)),
+            ):
+                fields[name] = values[:, 0, ..., index]
         return fields
 
     @property

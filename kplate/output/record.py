@@ -8,6 +8,7 @@ signs of the package: deflections and forces positive up. What has no finite val
 import csv
 import json
 import math
+import re
 from collections.abc import Iterator, Mapping
 from dataclasses import fields
 from pathlib import Path
@@ -16,6 +17,7 @@ from typing import Any
 from kplate.arrays import Floats
 from kplate.errors import InputError
 from kplate.files import replacing
+from kplate.goals import Goal
 from kplate.loads import (
     Case,
     DiscPatch,
@@ -68,6 +70,8 @@ LOADS: dict[type, tuple[str, dict[str, str]]] = {
     EdgeMoment: ("edge moment", {"moment": "N", "along": ""}),
     SelfWeight: ("self-weight", {"acceleration": "m/s2"}),
 }
+# A list of numbers as `json` breaks it into lines: no text holds a bare line break.
+_NUMBERS = re.compile(r"\[\n[^\[\]{}\"]*\]")
 COLUMNS = (
     "case",
     "kind",
@@ -98,9 +102,9 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
     dict
         "statement" (outline with zones, seams and marks, thickness, material, zones,
         supports, cases), "mesh", "results" (case by case: peaks, energy, reactions),
-        "excluded" (places left out of the peaks of moments and stresses), "tolerance"
-        and "history" (the meshes on the way to it), and what a
-        VTU file cannot hold: "side_names", by their number in it, and "field_names", by
+        "excluded" (places left out of the peaks of moments and stresses), "asked" (goals
+        with their bands, in SI units), "tolerance" and "history" (the meshes on the way
+        to it), and what a VTU file cannot hold: "side_names", by their number in it, and "field_names", by
         their array in it.
     """
     mesh, state = solution.mesh, solution.state
@@ -125,6 +129,10 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
             }
             for excluded in solution.excluded
         ],
+        "asked": [
+            {"goal": type(goal).__name__, **_goal(goal), "case": case, **_value(value)}
+            for (goal, case), value in solution.known.items()
+        ],
         "tolerance": solution.tolerance,
         "history": [
             {
@@ -147,6 +155,8 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
 def write_json(record: Mapping[str, Any], path: Path) -> Path:
     """Write a record as strict JSON: UTF-8, no NaN, the same bytes for the same record.
 
+    Lists of numbers stand on one line each.
+
     Parameters
     ----------
     record : mapping
@@ -168,6 +178,7 @@ def write_json(record: Mapping[str, Any], path: Path) -> Path:
     path = Path(path)
     try:
         text = json.dumps(record, allow_nan=False, ensure_ascii=False, indent=1)
+        text = _NUMBERS.sub(lambda found: " ".join(found[0].split()), text)
         content = f"{text}\n".encode()
     except (TypeError, ValueError) as error:
         raise InputError(
@@ -361,12 +372,24 @@ def _value(value: Value) -> dict[str, Any]:
     return record
 
 
+def _goal(goal: Goal) -> dict[str, Any]:
+    """What a goal is asked of: place, direction, name."""
+    own = {field.name: getattr(goal, field.name) for field in fields(goal)}
+    return {k: _numbers(v) if isinstance(v, tuple) else v for k, v in own.items()}
+
+
 def _reactions(reactions: Reactions) -> dict[str, Any]:
     """Support forces by side, corner and point, and their balance with the loads."""
     return {
         "sides": [
             {"side": side.side, "support": side.support.name}
             | _resultant(side.resultant)
+            | {
+                "stations [m]": [_numbers(place) for place in side.stations],
+                "distance [m]": _numbers(side.distance),
+                "line reaction [N/m]": _numbers(side.line_reaction),
+                "line moment [N]": _numbers(side.line_moment),
+            }
             for side in reactions.sides
         ],
         "corners": [
