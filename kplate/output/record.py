@@ -102,10 +102,10 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
     dict
         "statement" (outline with zones, seams and marks, thickness, material, zones,
         supports, cases), "mesh", "results" (case by case: peaks, energy, reactions),
-        "excluded" (places left out of the peaks of moments and stresses), "asked" (goals
-        with their bands, in SI units), "tolerance" and "history" (the meshes on the way
-        to it), and what a VTU file cannot hold: "side_names", by their number in it, and "field_names", by
-        their array in it.
+        "excluded" (places left out of the peaks of moments and stresses), "asked"
+        (goals with their bands, in SI units), "tolerance" and "history" (the meshes on
+        the way to it), and what a VTU file cannot hold: "side_names", by their number
+        in it, and "field_names", by their array in it.
     """
     mesh, state = solution.mesh, solution.state
     return {

@@ -16,7 +16,6 @@ between two samples (`raw.TOLERANCE`, 5e-3 of the range). Coordinates stay doubl
 from pathlib import Path
 
 import numpy as np
-
 from numpy.typing import NDArray
 
 from kplate.errors import InputError

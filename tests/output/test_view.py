@@ -109,7 +109,9 @@ def test_the_plate_is_bent_by_the_scale_times_the_deflection(stage, cover):
         stage.set_scale(scale)
         for surface in (stage.plate, stage.rim):
             np.testing.assert_array_equal(surface.points[:, :2], cover.field_points)
-            np.testing.assert_allclose(surface.points[:, 2], scale * w, rtol=1e-6, atol=1e-15)
+            np.testing.assert_allclose(
+                surface.points[:, 2], scale * w, rtol=1e-6, atol=1e-15
+            )
     assert not stage.result.fields.points[:, 2].any()  # the nodes themselves stay
 
 
@@ -149,7 +151,9 @@ def test_n_shows_the_next_case_with_its_own_deflection_and_marks(stage, cover):
     press(stage.plotter, "n")
     assert "case jack" in written(stage.plotter)["heading"]
     w = cover.point_fields(case="jack")["deflection [m]"]
-    np.testing.assert_allclose(stage.plate.points[:, 2], stage.scale * w, rtol=1e-6, atol=1e-15)
+    np.testing.assert_allclose(
+        stage.plate.points[:, 2], stage.scale * w, rtol=1e-6, atol=1e-15
+    )
     assert stage.marks.n_points == 2
     under = stage.marks.points[np.argmax(stage.marks.points[:, 0])]
     np.testing.assert_allclose(under[:2], (1.35, 0.4), atol=1e-9)  # on the plate
