@@ -71,6 +71,7 @@ from kplate.solution import Solution
 from kplate.supports import CLAMPED, FREE, GUIDED, SIMPLY_SUPPORTED, Support
 from kplate.validity import Validity, validity
 from kplate.values import Value
+from kplate.woodarmer import design_moments
 
 __all__ = [
     "ALUMINIUM",
@@ -130,6 +131,7 @@ __all__ = [
     "Value",
     "Verdict",
     "check",
+    "design_moments",
     "principal_moments",
     "read_panel",
     "solution_record",

@@ -17,6 +17,7 @@ from kplate.choice import TRIANGLES, choose
 from kplate.describe import describe
 from kplate.errors import InputError
 from kplate.files import replacing
+from kplate.goals import Peak
 from kplate.limits import Outcome, Verdict, governing
 from kplate.output.picture import write_picture
 from kplate.output.record import solution_record, write_json, write_reactions
@@ -27,6 +28,7 @@ from kplate.solution import Solution
 from kplate.solve.static import Progress
 from kplate.supports import Support
 from kplate.validity import FLAG, Validity, validity
+from kplate.woodarmer import DESIGN
 
 CAUTION = (
     "Not checked: welds, bolts, the frame, fatigue, impact, buckling. Results are for "
@@ -110,13 +112,16 @@ def check(
     """
     panel = read_panel(path)
     criterion = panel.limits.stress.criterion if panel.limits.stress else "von Mises"
+    goals = default_goals(panel.plate, criterion)
+    if panel.design:
+        goals = (*goals, *(Peak(quantity=quantity) for quantity in DESIGN))
     solution = solve(
         panel.plate,
         panel.cases,
         triangles=panel.triangles,
         element=panel.element,
         tolerance=panel.tolerance if panel.triangles is None else None,
-        goals=default_goals(panel.plate, criterion),
+        goals=goals,
         progress=progress,
     )
     lines = tuple(table_lines(panel, solution))
@@ -355,7 +360,7 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
             raise InputError(
                 f"{path} is a directory; remove it or choose another --out."
             )
-    record = solution_record(solution, version())
+    record = solution_record(solution, version(), design=panel.design)
     record["panel"] = {
         "name": panel.name,
         "revision": panel.revision,
@@ -388,7 +393,7 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
         title=f"{panel.name}, {_thickness(panel)} {panel.plate.material.name}",
     )
     return (
-        write_vtk(solution, out / f"{name}.vtu"),
+        write_vtk(solution, out / f"{name}.vtu", design=panel.design),
         write_json(record, out / f"{name}.json"),
         write_reactions(solution, out / f"{name}-reactions.csv"),
         picture,

@@ -10,6 +10,7 @@ from kplate.panel import Panel
 from kplate.reactions import CornerForce
 from kplate.solution import Solution
 from kplate.values import Value
+from kplate.woodarmer import DESIGN
 
 CAUTION = (
     "Not checked: welds, bolts, the frame, fatigue, impact, buckling. Results are for "
@@ -58,6 +59,15 @@ def _case_lines(panel: Panel, solution: Solution, case: str) -> Iterator[Line]:
         limit=limits.stress.at_most if limits.stress is not None else None,
         where=at(stress, panel) + (f", {stress.face}" if stress.face else ""),
     )
+    for quantity in DESIGN if panel.design else ():
+        moment = solution.peak(quantity, case=case)
+        yield Line(
+            case=case,
+            quantity=quantity.replace("design", "design moment"),
+            value=moment,
+            unit=units.moment,
+            where=at(moment, panel),
+        )
     reactions = solution.reactions(case=case)
     total = reactions.total.force
     if abs(total) < ROUND_OFF * reactions.magnitude:

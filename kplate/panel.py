@@ -62,6 +62,7 @@ PANEL = {
     "held in plane": '"no"',
     "triangles": "20000",
     "element": '"auto"',
+    "design moments": '"no"',
 }
 
 
@@ -87,6 +88,8 @@ class Panel:
         How many triangles to mesh with, instead of meshing to the tolerance.
     element : str
         Name of the element, or "auto".
+    design : bool
+        Whether design moments of reinforcement are wanted.
     stock : tuple of float
         Thicknesses to choose from in m, as listed; empty where none are stated.
     units : DisplayUnits
@@ -110,6 +113,7 @@ class Panel:
     held_in_plane: bool | None
     triangles: int | None
     element: str
+    design: bool
     stock: tuple[float, ...]
     units: DisplayUnits
     notes: tuple[str, ...]
@@ -159,6 +163,7 @@ def read_panel(path: Path) -> Panel:
         held_in_plane=_held_in_plane(head),
         triangles=_triangles(head),
         element=_element(head),
+        design=_design(head),
         stock=stock,
         units=_display_units(stated.length, stress),
         notes=stated.notes,
@@ -289,6 +294,12 @@ def _element(head: Fields) -> str:
     if "element" not in head:
         return AUTO
     return head.choice("element", (AUTO, *ELEMENTS))
+
+
+def _design(head: Fields) -> bool:
+    """Whether design moments of reinforcement are wanted."""
+    wanted = "design moments" in head
+    return wanted and head.choice("design moments", ("yes", "no")) == "yes"
 
 
 def _display_units(length: Unit, stress: Unit | None) -> DisplayUnits:

@@ -19,6 +19,7 @@ from kplate.mesh import Mesh
 from kplate.recovery import principal_moments, surface_stress, von_mises
 from kplate.rims import stationary
 from kplate.values import Face
+from kplate.woodarmer import DESIGN, design_moments, largest_change
 
 FACTOR = 1.5
 QUANTITIES = (
@@ -121,6 +122,9 @@ def extreme(quantity: str, at: Candidates) -> Extreme:
     elif quantity == "shear stress":
         values = 1.5 * np.hypot(*at.shears.T) / at.thickness
         best = int(np.argmax(values))
+    elif quantity in DESIGN:
+        values = design_moments(at.moments)[:, DESIGN.index(quantity)]
+        best = int(np.argmax(values))
     else:
         values = at.moments[:, ("m_xx", "m_yy", "m_xy").index(quantity)]
         best = int(np.argmax(np.abs(values)))
@@ -146,6 +150,9 @@ def measures(
     if quantity == "shear stress":
         scale = 1.5 / at.thickness
         return scale * np.hypot(*at.shears.T), scale * np.hypot(*(at.shears - shears).T)
+    if quantity in DESIGN:
+        own = design_moments(at.moments)[:, DESIGN.index(quantity)]
+        return own, largest_change(off)
     component = ("m_xx", "m_yy", "m_xy").index(quantity)
     # The whole of the difference: of one component it may be small by chance.
     return np.abs(at.moments[:, component]), np.abs(principal_moments(off)[0]).max(

@@ -39,6 +39,7 @@ from kplate.singular import (
 )
 from kplate.solved import Solved
 from kplate.values import Face, Kind, Value
+from kplate.woodarmer import DESIGN
 
 _FACES: tuple[Face, Face] = ("top", "bottom")
 
@@ -151,7 +152,8 @@ class Solution(Solved):
             "deflection" (largest magnitude, with its sign), "von Mises", "largest
             principal" (largest tension of the two faces), "smallest principal" (largest
             compression), "shear stress", "m_xx", "m_yy" or "m_xy" (largest magnitude,
-            with its sign).
+            with its sign), or a design moment of reinforcement along x and y: "design
+            bottom x", "design bottom y", "design top x" or "design top y".
         case : str, optional
             A load case; the worst of all if left out.
 
@@ -280,10 +282,10 @@ class Solution(Solved):
         return peak_band(self.mesh, samples.holders, np.abs(w), np.abs(w - other))
 
     def _check_quantity(self, quantity: str) -> None:
-        if quantity not in QUANTITIES:
+        if quantity not in (*QUANTITIES, *DESIGN):
             raise InputError(
                 f"there is no quantity {quantity!r}; the quantities are "
-                f"{', '.join(QUANTITIES)}."
+                f"{', '.join((*QUANTITIES, *DESIGN))}."
             )
 
     def _peak(self, quantity: str, index: int) -> Value:

@@ -27,6 +27,7 @@ from kplate.singular import (
 from kplate.solve.dual import DualState
 from kplate.solve.static import StaticState
 from kplate.values import Face
+from kplate.woodarmer import design_moments
 
 _FACES: tuple[Face, Face] = ("top", "bottom")
 
@@ -112,6 +113,13 @@ class Solved:
         """Principal moments (k, 2) in N, larger first, and the angle of the larger."""
         return principal_moments(self.moments(points, case=case))
 
+    def design_moments(self, points: ArrayLike, *, case: str | None = None) -> Floats:
+        """Moments in N to reinforce for along x and y, at points (k, 2) in m, (k, 4).
+
+        Bottom x, bottom y, top x, top y, by Wood and Armer (`kplate.woodarmer`).
+        """
+        return design_moments(self.moments(points, case=case))
+
     def shears(self, points: ArrayLike, *, case: str | None = None) -> Floats:
         """Transverse shears q_x, q_y in N/m at points (k, 2) in m, (k, 2)."""
         found = self._recovered.shears_at(*self.mesh.locate(points))
@@ -148,8 +156,17 @@ class Solved:
         """Work of the loads on their deflections in J: twice the strain energy."""
         return float(self.state.load_work[self._index(case)])
 
-    def point_fields(self, *, case: str | None = None) -> dict[str, Floats]:
+    def point_fields(
+        self, *, case: str | None = None, design: bool = False
+    ) -> dict[str, Floats]:
         """Fields at `field_points`, for files and pictures.
+
+        Parameters
+        ----------
+        case : str, optional
+            The load case; may be left out where there is only one.
+        design : bool, optional
+            Whether the design moments of reinforcement are among them.
 
         Returns
         -------
@@ -178,6 +195,8 @@ class Solved:
                 :, 0
             ]
         fields["von Mises [Pa]"] = von_mises(surface_stress(moments, h, "bottom"))
+        if design:
+            fields["design moments [N]"] = design_moments(moments)
         if self.dual is not None:
             at = self.mesh.barycentrics(samples.holders, samples.points)
             where = samples.holders, at[:, None]

@@ -11,7 +11,7 @@ import kplate
 
 LAYERS = [  # ground floor first; those on one line do not import each other
     {"errors", "arrays"},
-    {"values", "quadrature", "materials", "curves", "linalg"},
+    {"values", "quadrature", "materials", "curves", "linalg", "woodarmer"},
     {"units", "files", "given", "chords", "fitting"},
     {"quantities"},
     {"fields"},

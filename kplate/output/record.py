@@ -39,6 +39,7 @@ from kplate.reactions import CornerForce, Reactions, Resultant, SideReaction
 from kplate.shapes import Circle, ClosedLine
 from kplate.solution import Solution
 from kplate.values import Value
+from kplate.woodarmer import DESIGN
 
 # The quantities of `Solution.peak` with their units.
 PEAKS = {
@@ -87,7 +88,9 @@ COLUMNS = (
 )
 
 
-def solution_record(solution: Solution, version: str) -> dict[str, Any]:
+def solution_record(
+    solution: Solution, version: str, *, design: bool = False
+) -> dict[str, Any]:
     """What was stated and what was found, as plain JSON types.
 
     Parameters
@@ -96,6 +99,8 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
         What to record.
     version : str
         Version of kplate.
+    design : bool, optional
+        Whether to record the peaks of the design moments of reinforcement, too.
 
     Returns
     -------
@@ -119,7 +124,7 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
             "unknowns": state.constraints.numbering.count,
             "element": state.element.name,
         },
-        "results": [_case_results(solution, case) for case in solution.cases],
+        "results": [_case_results(solution, case, design) for case in solution.cases],
         "excluded": [
             {
                 "place [m]": _numbers(excluded.place),
@@ -147,7 +152,7 @@ def solution_record(solution: Solution, version: str) -> dict[str, Any]:
         "field_names": {
             array_name(solution, case, field): {"case": case, "field": field}
             for case in solution.cases
-            for field in solution.point_fields(case=case)
+            for field in solution.point_fields(case=case, design=design)
         },
     }
 
@@ -343,13 +348,14 @@ def _qualified_name(function: Any) -> str:
     return f"{named.__module__}.{named.__qualname__}"
 
 
-def _case_results(solution: Solution, case: str) -> dict[str, Any]:
+def _case_results(solution: Solution, case: str, design: bool) -> dict[str, Any]:
     """What was found in one case."""
+    peaks = PEAKS | (dict.fromkeys(DESIGN, "N") if design else {})
     return {
         "case": case,
         "peaks": {
             f"{quantity} [{unit}]": _value(solution.peak(quantity, case=case))
-            for quantity, unit in PEAKS.items()
+            for quantity, unit in peaks.items()
         },
         "strain energy [J]": _number(solution.strain_energy(case=case)),
         "load work [J]": _number(solution.load_work(case=case)),

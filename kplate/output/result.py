@@ -21,6 +21,7 @@ DEFLECTION = "deflection [m]"
 # What the components of a field are called, by its first word or their number.
 COMPONENTS: dict[str | int, tuple[str, ...]] = {
     "principal": ("larger", "smaller"),
+    "design": ("bottom x", "bottom y", "top x", "top y"),
     2: ("x", "y"),
     3: ("xx", "yy", "xy"),
 }

@@ -26,7 +26,7 @@ NOTHING = -1  # zone of a line, side of a triangle
 THICKNESS = "thickness [m]"
 
 
-def write_vtk(solution: Solution, path: Path) -> Path:
+def write_vtk(solution: Solution, path: Path, *, design: bool = False) -> Path:
     """Write all fields of a solution, in all its cases, as a VTU file.
 
     Parameters
@@ -35,6 +35,9 @@ def write_vtk(solution: Solution, path: Path) -> Path:
         What to write.
     path : Path
         The file, ending in ``.vtu``; one that exists is replaced.
+    design : bool, optional
+        Whether to write the design moments of reinforcement, too: bottom x, bottom y,
+        top x, top y.
 
     Returns
     -------
@@ -60,7 +63,7 @@ def write_vtk(solution: Solution, path: Path) -> Path:
         np.column_stack([points, np.zeros(len(points))]),
         samples.triangles,
         lines=samples.rim,
-        point_data=field_arrays(solution),
+        point_data=field_arrays(solution, design=design),
         cell_data={
             "zone": (mesh.zones[samples.owners], np.full(len(samples.rim), NOTHING)),
             "side": (
@@ -81,10 +84,12 @@ def array_name(solution: Solution, case: str, field: str) -> str:
     return field if len(solution.cases) == 1 else f"{case}: {field}"
 
 
-def field_arrays(solution: Solution) -> dict[str, NDArray[np.float32]]:
+def field_arrays(
+    solution: Solution, *, design: bool = False
+) -> dict[str, NDArray[np.float32]]:
     """Fields of all cases under their names in the file, as they stand there."""
     return {
         array_name(solution, case, field): values.astype(np.float32)
         for case in solution.cases
-        for field, values in solution.point_fields(case=case).items()
+        for field, values in solution.point_fields(case=case, design=design).items()
     }
