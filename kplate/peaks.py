@@ -90,11 +90,7 @@ def peak_band(
     -------
     PeakBand
     """
-    own = np.zeros(len(mesh.triangles))
-    np.maximum.at(own, triangles, differences)
-    at_vertex = np.zeros(len(mesh.points))
-    np.maximum.at(at_vertex, mesh.triangles, own[:, None])
-    doubt = FACTOR * at_vertex[mesh.triangles].max(axis=1)
+    doubt = doubts(mesh, triangles, differences)
     most = np.full(len(mesh.triangles), -np.inf)
     np.maximum.at(most, triangles, values)
     lower = float((values - doubt[triangles]).max())
@@ -102,6 +98,16 @@ def peak_band(
     return PeakBand(
         lower=lower, upper=upper, candidates=most + doubt > lower, doubt=doubt
     )
+
+
+def doubts(mesh: Mesh, triangles: Ints, differences: Floats) -> Floats:
+    """What is taken for the error on each triangle, (n_triangles,)."""
+    own = np.zeros(len(mesh.triangles))
+    np.maximum.at(own, triangles, differences)
+    at_vertex = np.zeros(len(mesh.points))
+    np.maximum.at(at_vertex, mesh.triangles, own[:, None])
+    doubt: Floats = FACTOR * at_vertex[mesh.triangles].max(axis=1)
+    return doubt
 
 
 def extreme(quantity: str, at: Candidates) -> Extreme:

@@ -57,6 +57,13 @@ class RawMoments:
         """Transverse shears in N/m at one point in each triangle, (k, 2, c)."""
         return self._fields(triangles, barycentrics[:, None])[:, 0, _SHEARS]
 
+    def moments_and_shears(
+        self, triangles: Ints, barycentrics: Floats
+    ) -> tuple[Floats, Floats]:
+        """Both at points (q, 3) or (n, q, 3), (n, q, 3, c) and (n, q, 2, c)."""
+        fields = self._fields(triangles, barycentrics)
+        return fields[:, :, _MOMENTS], fields[:, :, _SHEARS]
+
     def corner_moments(self, edges: Ints, ends: Ints) -> Floats:
         """Moments at one end (0 or 1) of boundary edges (k,), (k, 3, c)."""
         mesh = self.state.mesh

@@ -14,7 +14,7 @@ import numpy as np
 
 from kplate import reactions as support_reactions
 from kplate.answers import Growth, Step
-from kplate.arrays import Floats
+from kplate.arrays import Floats, Ints
 from kplate.dualforces import side_forces
 from kplate.errors import InputError
 from kplate.goals import Goal, Peak, Resultant
@@ -29,6 +29,7 @@ from kplate.peaks import (
     peak_band,
 )
 from kplate.polygon import SNAP
+from kplate.raw import RawMoments
 from kplate.reactions import CornerForce, Reactions
 from kplate.recovery import SmoothedMoments, element_moments
 from kplate.rims import outside, rim
@@ -46,7 +47,7 @@ _FACES: tuple[Face, Face] = ("top", "bottom")
 
 # Around peaks: triangles with samples so close to the largest, at most so many of them,
 # are sampled on a lattice of so many steps.
-_CLOSE, _MOST, _FINE = 0.02, 64, 16
+CLOSE, MOST, FINE = 0.02, 64, 16
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -464,10 +465,10 @@ class Solution(Solved):
             return at
         sizes, _ = measures(quantity, at, at.moments, at.shears)
         order = np.argsort(-sizes, kind="stable")
-        close = order[sizes[order] >= (1.0 - _CLOSE) * sizes[order[0]]]
-        triangles = np.unique(at.triangles[close][:_MOST])
+        close = order[sizes[order] >= (1.0 - CLOSE) * sizes[order[0]]]
+        triangles = np.unique(at.triangles[close][:MOST])
         corners = self.mesh.points[self.mesh.triangles[triangles]]
-        inner = Lattice.of(_FINE).barycentrics @ corners
+        inner = Lattice.of(FINE).barycentrics @ corners
         points = inner.reshape(-1, 2)
         case = self.cases[index]
         discs = [e for e in self.excluded if e.case in ("", case)]
@@ -476,6 +477,14 @@ class Solution(Solved):
             return at
         both = zip(at, self._at(points, index), strict=True)
         return Candidates(*(np.concatenate([a, b]) for a, b in both))
+
+    def fields_on(self, triangles: Ints, barycentrics: Floats) -> tuple[Floats, Floats]:
+        """Moments (n, q, 3, c) in N and shears (n, q, 2, c) in N/m of all cases.
+
+        At points (q, 3) or (n, q, 3) of triangles (n,), of a C1 element.
+        """
+        assert isinstance(self._recovered, RawMoments)
+        return self._recovered.moments_and_shears(triangles, barycentrics)
 
     def _at(self, points: Floats, index: int) -> Candidates:
         """Candidates at points (k, 2)."""

@@ -71,3 +71,14 @@ class Value:
             lower=None if self.upper is None else -self.upper,
             upper=None if self.lower is None else -self.lower,
         )
+
+
+def scaled(value: Value, factor: float) -> Value:
+    """A value times a positive factor."""
+    low, high = value.lower, value.upper
+    return replace(
+        value,
+        value=factor * value.value,
+        lower=None if low is None else factor * low,
+        upper=None if high is None else factor * high,
+    )
