@@ -371,6 +371,7 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
     }
     record["verdict"] = {
         "words": checked.verdict.words,
+        "theory": checked.validity.state.words,
         "validity": checked.validity.words,
         "judgements": [
             {
