@@ -4,6 +4,8 @@ from dataclasses import dataclass
 
 from kplate.values import Value
 
+NO_BAND = "no goal has a band"
+
 
 @dataclass(frozen=True, kw_only=True)
 class Growth:
@@ -41,9 +43,10 @@ class Step:
     seconds : float
         Time since the start.
     bands : dict of str to float
-        Half width of each goal's band as a share of its value, the widest of the cases.
+        Half width of each goal's band as a share of its value, the widest of the cases;
+        empty where no goal has a band.
     reached : bool
-        Whether every goal is inside the tolerance.
+        Whether every goal that has a band is inside the tolerance; not where none has.
     """
 
     unknowns: int
@@ -56,4 +59,5 @@ class Step:
     def words(self) -> str:
         """One line: unknowns, band per goal, seconds."""
         bands = ", ".join(f"{name} {100 * b:.2g} %" for name, b in self.bands.items())
-        return f"{self.unknowns} unknowns, {self.seconds:.1f} s: {bands}"
+        known = bands or NO_BAND
+        return f"{self.unknowns} unknowns, {self.seconds:.1f} s: {known}"

@@ -39,7 +39,7 @@ from kplate.kernelled import (
     kernel_forces,
     kernelled_on,
 )
-from kplate.loading import unbalanced
+from kplate.loading import field_doubts, unbalanced
 from kplate.loads import Case, LineForce, Load, PointForce, Pressure, PressureField
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
@@ -162,6 +162,7 @@ def certify(
     given = unknowns[:, :c].T @ right.forces  # l_j(u_0)
     size = np.abs(right.forces[:, :c]).T @ np.abs(unknowns)
     size += np.abs(unknowns[:, :c]).T @ np.abs(right.forces)
+    doubts = _doubts(system, cases, unknowns)
     values: list[tuple[Value, ...]] = []
     column = c
     for f in functionals:
@@ -181,10 +182,9 @@ def certify(
             centre = pulls[k, column] - work[k, column] + 0.5 * cross[k, column]
             centre = -centre if settled else centre + given[k, column]
             half = width[k] * width[column] - 0.5 * norms[k] * norms[column]
-            half += SUMMED * size[k, column]
+            half += SUMMED * size[k, column] + doubts[k, column]
             if f.kernel is not None:
-                x, y = f.kernel.centre.tolist()
-                p, gradient = local_pressure(plate, mesh, case, (x, y))
+                p, gradient = local_pressure(plate, mesh, case, f.kernel)
                 centre += f.kernel.constant(p, gradient)
                 half += kernel_error(state, kernelled[column - c], k)
             own.append(
@@ -203,8 +203,8 @@ def certify(
     energies = tuple(
         Value(
             value=float(state.strain_energy[k]),
-            lower=float(state.strain_energy[k]),
-            upper=float(state.strain_energy[k] + 0.5 * width[k] ** 2),
+            lower=float(state.strain_energy[k] - doubts[k, k]),
+            upper=float(state.strain_energy[k] + 0.5 * width[k] ** 2 + doubts[k, k]),
             kind=kind,
             case=case.name,
             reason=reason,
@@ -276,7 +276,7 @@ def _put(plate: Plate, mesh: Mesh, loads: Sequence[Load]) -> str:
                 off = float(np.hypot(*(mesh.points - at).T).min())
                 if off > SNAP * plate.outline.size:
                     return "a point force acts within a triangle"
-            case PressureField() if unbalanced(mesh, load).any():
+            case PressureField():
                 return "a pressure is stated as a function, of which samples are known"
     return ""
 
@@ -423,6 +423,18 @@ def _oscillations(
     stiff = np.array([_least_stiffness(D) for D in plate.rigidities])[mesh.zones]
     scale = (longest / np.pi) ** 2 / np.sqrt(stiff)
     return rest * scale[:, None]
+
+
+def _doubts(system: StaticSystem, cases: Sequence[Case], unknowns: Floats) -> Floats:
+    """What is not known of the work of cases' stated pressures, (cases, columns)."""
+    found = np.zeros((len(cases), unknowns.shape[1]))
+    for k, case in enumerate(cases):
+        for load in case.loads:
+            if isinstance(load, PressureField):
+                found[k] += field_doubts(
+                    system.element, system.numbering, load, unknowns
+                )
+    return found
 
 
 def _least_stiffness(rigidity: Floats) -> float:

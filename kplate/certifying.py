@@ -106,12 +106,12 @@ def refine_to(
                 triangles=len(mesh.triangles),
                 seconds=time.perf_counter() - start,
                 bands=bands,
-                reached=not unmet.any(),
+                reached=bool(bands) and not unmet.any(),
             )
         )
         if progress is not None:
             progress(steps[-1].words, min(0.99, unknowns / budget))
-        if steps[-1].reached or unknowns >= budget or len(steps) >= MOST_STEPS:
+        if not unmet.any() or unknowns >= budget or len(steps) >= MOST_STEPS:
             return replace(solution, tolerance=tolerance, history=tuple(steps))
         mesh = _bisected(mesh, _bulk(unmet))
 
@@ -146,7 +146,8 @@ def _unmet(
     shares : ndarray, shape (n_triangles,)
         Zero everywhere where every goal is met.
     bands : dict of str to float
-        Half width of each goal's band as a share of its value, the widest of the cases.
+        Half width of each goal's band as a share of its value, the widest of the cases;
+        goals without one are not among them.
     """
     shares = np.zeros(len(solution.mesh.triangles))
     bands: dict[str, float] = {}
@@ -159,11 +160,13 @@ def _unmet(
     for goal in goals:
         if not isinstance(goal, Peak) and goal not in columns:
             continue  # no bounded functional: it holds nothing up
-        worst = bands.get(_words(goal), 0.0)
+        widths = [bands[_words(goal)]] if _words(goal) in bands else []
         for k, case in enumerate(solution.cases):
             if isinstance(goal, Peak):
                 value = solution.peak(goal.quantity, case=case)
-                width = _half(value) / max(abs(value.value), _tiny(value))
+                if value.lower is None:
+                    continue
+                width = _half(value) / max(abs(value.value), np.finfo(float).tiny)
                 if width > tolerance:
                     band = solution.peak_band(goal.quantity, case=case)
                     shares += _share(certified.case_gaps[:, k])
@@ -175,19 +178,16 @@ def _unmet(
                 if width > tolerance:
                     shares += _share(certified.case_gaps[:, k])
                     shares += _share(certified.goal_gaps[:, columns[goal]])
-            worst = max(worst, width)
-        bands[_words(goal)] = worst
+            widths.append(width)
+        if widths:
+            bands[_words(goal)] = max(widths)
     return shares, bands
 
 
 def _half(value: Value) -> float:
-    if value.lower is None or value.upper is None:
-        return 0.0
+    assert value.lower is not None
+    assert value.upper is not None
     return 0.5 * (value.upper - value.lower)
-
-
-def _tiny(value: Value) -> float:
-    return float(np.finfo(float).tiny) if value.lower is not None else 1.0
 
 
 def _size(solution: Solution, goal: Goal, value: Value) -> float:

@@ -6,6 +6,7 @@ from pathlib import Path
 import numpy as np
 
 from kplate.adapt import default_goals, no_bands, solve
+from kplate.answers import NO_BAND
 from kplate.checklines import (
     place_words,
     short,
@@ -325,7 +326,9 @@ def _reached(panel: Panel, solution: Solution) -> list[str]:
     meshes = "1 mesh" if count == 1 else f"{count} meshes"
     line = f"{wanted}: {'' if solution.reached else 'not '}reached"
     line += f", {last.unknowns} unknowns, {meshes}"
-    if not solution.reached:
+    if not last.bands:
+        line = f"{wanted}: {NO_BAND}, {last.unknowns} unknowns, {meshes}"
+    elif not solution.reached:
         widest = max(last.bands, key=lambda name: last.bands[name])
         line = f"tolerance not reached: {widest} {100.0 * last.bands[widest]:.2g} %"
         line += (

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from kplate import kernels
 from kplate.arrays import Bools, Floats, Ints
@@ -34,6 +35,7 @@ from kplate.loads import (
     DiscPatch,
     EdgeMoment,
     Hydrostatic,
+    LineForce,
     Load,
     PointForce,
     PointMoment,
@@ -51,6 +53,8 @@ REACH = 0.95
 COMPONENTS = {"m_xx": (1.0, 0.0, 0.0), "m_yy": (0.0, 1.0, 0.0), "m_xy": (0.0, 0.0, 1.0)}
 # A disc that is left less than this share of the plate's size is no use.
 LEAST = 1e-3
+# A load ends along a side where it is off by no more than this share of the size.
+ROUND_OFF = 1e-12
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -212,18 +216,21 @@ def _room(
 ) -> tuple[float, str]:
     """Radius of the disc around a place in which the plate is smooth, and what ends it.
 
-    Sides (but for the straight piece the place lies on), seams, steps, point supports
-    and whatever of the loads is not linear there.
+    Sides (but for the straight piece the place lies on), seams that are held or carry a
+    force, steps, point supports and whatever of the loads is not linear there. Along
+    that straight piece loads may end: a kernel's disc is only its half inside.
     """
     place = np.asarray(at, dtype=float)
     found = [(math.inf, "nothing")]
     start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
-    keep = np.ones(len(start), dtype=bool)
+    keep, line = np.ones(len(start), dtype=bool), None
     if edge is not None:
+        line = _line(plate, mesh, edge)
         keep = ~_same_line(plate, mesh, edge) | _turned(mesh, cases)
     if keep.any():
         found.append((float(_distance(place, start[keep], end[keep]).min()), "a side"))
-    lines = [(mesh.seam_edges, "a seam"), (_zone_edges(mesh), "the edge of a zone")]
+    seams = mesh.seam_edges[_bearing(plate, mesh, cases)]
+    lines = [(seams, "a seam"), (_zone_edges(mesh), "the edge of a zone")]
     for edges, words in lines:
         if len(edges):
             a, b = np.moveaxis(mesh.points[edges], 1, 0)
@@ -233,17 +240,52 @@ def _room(
             off = float(np.hypot(*(mesh.points[vertex] - place)))
             found.append((off, f"the support {name}"))
     for case in cases:
-        found += [_load_room(load, place) for load in case.loads]
+        found += [_load_room(load, place, line) for load in case.loads]
     return min(found)
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class _Line:
+    """The straight line of a side of a plate of some size: a point and the normal."""
+
+    start: Floats
+    normal: Floats
+    size: float
+
+    def holds(self, points: ArrayLike, within: float) -> Bools:
+        """Whether points (k, 2) are within a share of the size from it."""
+        off = (np.asarray(points, dtype=float) - self.start) @ self.normal
+        on: Bools = np.abs(off) < within * self.size
+        return on
+
+
+def _bearing(plate: Plate, mesh: Mesh, cases: Sequence[Case]) -> Bools:
+    """Seam edges that are held or carry a force; nothing happens at the others."""
+    loaded = {
+        load.along
+        for case in cases
+        for load in case.loads
+        if isinstance(load, LineForce)
+    }
+    bears = [name in loaded or plate.support(name).holds for name in mesh.seam_names]
+    found: Bools = np.array(bears, dtype=bool)[mesh.seam_numbers]
+    return found
+
+
+def _line(plate: Plate, mesh: Mesh, edge: int) -> _Line:
+    """The straight line on which a boundary edge lies."""
+    return _Line(
+        start=mesh.points[mesh.boundary_edges[edge, 0]],
+        normal=np.array(_inward(mesh, edge)),
+        size=plate.outline.size,
+    )
 
 
 def _same_line(plate: Plate, mesh: Mesh, edge: int) -> Bools:
     """Boundary edges on the straight line of one that are held as it is."""
     start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
-    a, b = start[edge], end[edge]
-    normal = np.array([a[1] - b[1], b[0] - a[0]]) / np.hypot(*(b - a))
-    size = SNAP * plate.outline.size
-    on = (np.abs((start - a) @ normal) < size) & (np.abs((end - a) @ normal) < size)
+    line = _line(plate, mesh, edge)
+    on = line.holds(start, SNAP) & line.holds(end, SNAP)
     supports = [plate.support(name) for name in mesh.side_names]
     own = supports[mesh.boundary_sides[edge]]
     alike = np.array([support == own for support in supports])
@@ -272,20 +314,28 @@ def _zone_edges(mesh: Mesh) -> Ints:
     return mesh.edges[low != high]
 
 
-def _load_room(load: Load, place: Floats) -> tuple[float, str]:
-    """Distance from a place to where a load is not linear."""
+def _load_room(load: Load, place: Floats, line: _Line | None) -> tuple[float, str]:
+    """Distance from a place, on a line if any, to where a load is not linear."""
     match load:
         case PointForce(at=at) | PointMoment(at=at):
             return float(np.hypot(*(place - at))), "a point load"
         case RectanglePatch():
-            corners = np.asarray(load.corners)
-            off = _distance(place, corners, np.roll(corners, -1, axis=0)).min()
-            return float(off), "the edge of a patch"
+            start = np.asarray(load.corners)
+            end = np.roll(start, -1, axis=0)
+            sides = _distance(place, start, end)
+            if line is not None:
+                along = line.holds(start, ROUND_OFF) & line.holds(end, ROUND_OFF)
+                sides[along] = math.inf
+            return float(sides.min()), "the edge of a patch"
         case DiscPatch(centre=centre, radius=radius):
             off = abs(float(np.hypot(*(place - centre))) - radius)
             return off, "the edge of a patch"
         case Hydrostatic(level=level, up=up):
             unit = np.asarray(up, dtype=float) / np.hypot(*up)
+            foot = level * unit
+            surface = [foot, np.add(foot, (-unit[1], unit[0]))]
+            if line is not None and line.holds(surface, ROUND_OFF).all():
+                return math.inf, "nothing"
             return abs(float(level - place @ unit)), "the surface of the liquid"
         case PressureField():
             return 0.0, "a pressure that may not be linear"
@@ -293,11 +343,17 @@ def _load_room(load: Load, place: Floats) -> tuple[float, str]:
 
 
 def local_pressure(
-    plate: Plate, mesh: Mesh, case: Case, at: Place
+    plate: Plate, mesh: Mesh, case: Case, kernel: kernels.Kernel
 ) -> tuple[float, tuple[float, float]]:
-    """Pressure in Pa at a place, and its gradient in Pa/m, where it is linear."""
-    place = np.asarray(at, dtype=float)
-    zone = int(mesh.zones[mesh.locate([at])[0][0]])
+    """Pressure in Pa at a kernel's centre and its gradient in Pa/m; it is linear there.
+
+    Where the centre is on a side, at which loads may end, it is looked at inside.
+    """
+    place, back = kernel.centre, np.zeros(2)
+    if kernel.inward is not None:
+        back = -0.5 * kernel.radius * kernel.inward
+        place = kernel.centre - back
+    zone = int(mesh.zones[mesh.locate([place])[0][0]])
     total, gradient = 0.0, np.zeros(2)
     for load in case.loads:
         match load:
@@ -319,6 +375,7 @@ def local_pressure(
             case DiscPatch(force=force, centre=centre, radius=radius):
                 if np.hypot(*(place - centre)) < radius:
                     total += force / (math.pi * radius**2)
+    total += float(gradient @ back)
     return total, (float(gradient[0]), float(gradient[1]))
 
 

@@ -31,7 +31,8 @@ from kplate.loads import (
 )
 from kplate.mesh import Mesh
 from kplate.plate import Plate
-from kplate.quadrature import Rule, gauss, triangle_rule
+from kplate.quadrature import Rule, composite, gauss, triangle_rule
+from kplate.sampling import QUARTERS, Sampled, sampled
 
 BLOCK = 1024  # triangles
 # Share of a patch that may be missing, as round-off, before it is off the plate.
@@ -39,6 +40,7 @@ MISSING = 1e-9
 # Share below which what is not linear of a pressure is round-off.
 ROUND_OFF = 1e-12
 FIELD_DEGREE = 12  # of the rule that looks for it in a stated function
+_FIELD_RULE = triangle_rule(FIELD_DEGREE)
 
 
 class Shape(Protocol):
@@ -118,17 +120,77 @@ def unbalanced(mesh: Mesh, load: Load) -> Floats:
             cut = (depth.min(axis=1) < 0.0) & (depth.max(axis=1) > 0.0)
             most = load.specific_weight * np.maximum(depth.max(axis=1), 0.0)
             return np.where(cut, most**2 * mesh.areas, 0.0)
-        case PressureField(function=function):
-            rule = triangle_rule(FIELD_DEGREE)
-            points = rule.points @ mesh.points[mesh.triangles]
-            pressure = _field_pressure(function(points[..., 0], points[..., 1]), points)
-            mean = (pressure * rule.weights) @ rule.points
-            best = np.linalg.solve(bernstein.masses(1), mean[..., None])[..., 0]
-            off = pressure - best @ rule.points.T
-            squared: Floats = mesh.areas * (off**2 @ rule.weights)
-            small = squared < ROUND_OFF**2 * mesh.areas * (pressure**2 @ rule.weights)
-            return np.where(small, 0.0, squared)
+        case PressureField():
+            return _not_linear(mesh, load)
     return np.zeros(len(mesh.triangles))
+
+
+def field_doubts(
+    element: Shape, numbering: Numbering, load: PressureField, unknowns: Floats
+) -> Floats:
+    """What is not known of the work of a stated pressure on deflections, (c,).
+
+    Where the pressure is not smooth, the sums over the last pieces (`sampling`) and
+    over their quarters differ; the differences are added up without their signs.
+
+    Parameters
+    ----------
+    element, numbering : Shape, Numbering
+        What the unknowns belong to.
+    load : PressureField
+        The pressure.
+    unknowns : ndarray, shape (count, c)
+        Of the deflections.
+
+    Returns
+    -------
+    ndarray, shape (c,)
+        In N m for deflections in m.
+    """
+    mesh, total = numbering.mesh, np.zeros(unknowns.shape[1])
+    known, owner = _sampled(mesh, element, load)
+    pieces, triangles = known.pieces[known.rough], owner[known.owners[known.rough]]
+    fine = composite(QUARTERS, _FIELD_RULE)
+    points = np.concatenate([fine.points, _FIELD_RULE.points])
+    weights = np.concatenate([fine.weights, -_FIELD_RULE.weights])
+    for start in range(0, len(pieces), BLOCK):
+        block = slice(start, start + BLOCK)
+        own, at = triangles[block], points @ pieces[block]
+        rows = _deflection_rows(mesh, element, own, at)
+        w = rows @ unknowns[numbering.table[own]]
+        weighted = _function_at(load, at) * weights * _areas(pieces[block])[:, None]
+        total += np.abs(np.einsum("nq,nqc->nc", weighted, w)).sum(axis=0)
+    return total
+
+
+def _not_linear(mesh: Mesh, load: PressureField) -> Floats:
+    """Square integral of what of a stated pressure is not linear, (n_triangles,)."""
+    rule = _FIELD_RULE
+    corners = mesh.points[mesh.triangles]
+    pressure = _function_at(load, rule.points @ corners)
+    mean = (pressure * rule.weights) @ rule.points
+    best = np.linalg.solve(bernstein.masses(1), mean[..., None])[..., 0]
+    off = pressure - best @ rule.points.T
+    squared: Floats = mesh.areas * (off**2 @ rule.weights)
+    whole = mesh.areas * (pressure**2 @ rule.weights)
+    known = sampled(lambda points: _function_at(load, points), corners)
+    if len(known.pieces):
+        # Of jumps over the pieces, and without the difference of large numbers there.
+        n, areas = len(corners), _areas(known.pieces)
+        at = _FIELD_RULE.points @ known.pieces
+        p, weights = _function_at(load, at), areas[:, None] * _FIELD_RULE.weights
+        shape = mesh.barycentrics(
+            np.repeat(known.owners, at.shape[1]), at.reshape(-1, 2)
+        ).reshape(*p.shape, 3)
+        mean = np.zeros((n, 3))
+        np.add.at(mean, known.owners, np.einsum("kq,kqv->kv", weights * p, shape))
+        mean /= mesh.areas[:, None]
+        best = np.linalg.solve(bernstein.masses(1), mean[..., None])[..., 0]
+        off = p - np.einsum("kqv,kv->kq", shape, best[known.owners])
+        parted = np.zeros(n)
+        np.add.at(parted, known.owners, np.sum(weights * off**2, axis=1))
+        squared = np.where(parted > 0.0, parted, squared)
+    return np.where(squared < ROUND_OFF**2 * whole, 0.0, squared)
 
 
 def _add_pressure(
@@ -141,6 +203,8 @@ def _add_pressure(
         chosen = _zone_triangles(mesh, load.zone)
     if isinstance(load, Hydrostatic):
         chosen = _add_waterline(forces, element, numbering, load)
+    if isinstance(load, PressureField):
+        chosen = _add_rough(forces, element, numbering, load)
     for start in range(0, len(chosen), BLOCK):
         block = chosen[start : start + BLOCK]
         vertices = mesh.points[mesh.triangles[block]]
@@ -162,8 +226,8 @@ def _pressure(load: Load, plate: Plate, points: Floats, zones: Ints) -> Floats:
         case Hydrostatic():
             depth = _depth(load, points)
             return np.where(depth > 0.0, load.specific_weight * depth, 0.0)
-        case PressureField(function=function):
-            return _field_pressure(function(points[..., 0], points[..., 1]), points)
+        case PressureField():
+            return _function_at(load, points)
     raise AssertionError(load)
 
 
@@ -187,8 +251,9 @@ def _zone_triangles(mesh: Mesh, zone: str) -> Ints:
     return np.flatnonzero(mesh.zones == mesh.zone_names.index(zone))
 
 
-def _field_pressure(value: Floats, points: Floats) -> Floats:
-    """Check what a user's function returned."""
+def _function_at(load: PressureField, points: Floats) -> Floats:
+    """Pressure of a user's function at points (..., 2), checked."""
+    value = load.function(points[..., 0], points[..., 1])
     result = np.asarray(value, dtype=float)
     if result.shape not in ((), points.shape[:-1]):
         raise InputError(
@@ -204,6 +269,49 @@ def _field_pressure(value: Floats, points: Floats) -> Floats:
             "it must be finite all over the plate."
         )
     return result
+
+
+def _sampled(mesh: Mesh, element: Shape, load: PressureField) -> tuple[Sampled, Ints]:
+    """Where a stated pressure is not smooth, and the triangles of the owners."""
+    pieces, owner = _pieces(mesh, element)
+    return sampled(lambda points: _function_at(load, points), pieces), owner
+
+
+def _add_rough(
+    forces: Floats, element: Shape, numbering: Numbering, load: PressureField
+) -> Ints:
+    """Add the triangles in which a stated pressure jumps; return the others."""
+    mesh = numbering.mesh
+    known, owner = _sampled(mesh, element, load)
+    chosen = np.ones(len(mesh.triangles), dtype=bool)
+    if len(known.pieces):
+        chosen[owner[known.owners]] = False
+        whole, of = _pieces(mesh, element, np.flatnonzero(~chosen))
+        smooth = ~np.isin(np.flatnonzero(np.isin(owner, of)), known.owners)
+        pieces = np.concatenate([known.pieces, whole[smooth]])
+        triangles = np.concatenate([owner[known.owners], of[smooth]])
+        parts = cutting.Parts(
+            triangles=triangles,
+            points=_FIELD_RULE.points @ pieces,
+            weights=_areas(pieces)[:, None] * _FIELD_RULE.weights,
+        )
+        everything = np.arange(len(mesh.triangles))
+        _add_parts(
+            forces,
+            element,
+            numbering,
+            parts,
+            everything,
+            lambda points: _function_at(load, points),
+        )
+    return np.flatnonzero(chosen)
+
+
+def _areas(pieces: Floats) -> Floats:
+    """Areas in m2 of triangles (n, 3, 2)."""
+    a, b = np.moveaxis(pieces[:, 1:] - pieces[:, :1], 1, 0)
+    areas: Floats = 0.5 * np.abs(a[:, 0] * b[:, 1] - a[:, 1] * b[:, 0])
+    return areas
 
 
 def _depth(load: Hydrostatic, points: Floats) -> Floats:
@@ -296,13 +404,21 @@ def _add_parts(
         block = slice(start, start + step)
         triangles = owner[parts.triangles[block]]
         points = parts.points[block]
-        flat = mesh.barycentrics(np.repeat(triangles, q), points.reshape(-1, 2))
-        rows = element.evaluate(
-            mesh.points[mesh.triangles[triangles]], flat.reshape(-1, q, 3)
-        )[:, :, 0]
+        rows = _deflection_rows(mesh, element, triangles, points)
         weighted = pressure(points) * parts.weights[block]
         own = np.einsum("nq,nqd->nd", weighted, rows)
         add_up(forces, numbering.table[triangles], own[..., None])
+
+
+def _deflection_rows(
+    mesh: Mesh, element: Shape, triangles: Ints, points: Floats
+) -> Floats:
+    """Rows of w at points (n, q, 2) of triangles (n,), (n, q, d)."""
+    n, q = points.shape[:2]
+    flat = mesh.barycentrics(np.repeat(triangles, q), points.reshape(-1, 2))
+    return element.evaluate(
+        mesh.points[mesh.triangles[triangles]], flat.reshape(n, q, 3)
+    )[:, :, 0]
 
 
 def _add_point(

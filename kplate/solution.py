@@ -80,7 +80,10 @@ class Solution(Solved):
 
     @property
     def reached(self) -> bool:
-        """Whether every goal is inside the tolerance that was asked for."""
+        """Whether every goal that has a band is inside the tolerance asked for.
+
+        Not where no goal has one.
+        """
         return bool(self.history) and self.history[-1].reached
 
     def value(self, goal: Goal, *, case: str | None = None) -> Value:

@@ -15,7 +15,7 @@ from numpy.polynomial import Polynomial
 from oracles_series import Band, banded
 from plates import SIDES, grid, rectangle
 
-from kplate import bands
+from kplate import bands, sampling
 from kplate.bands import certify, worth
 from kplate.errors import InputError, SolveError
 from kplate.following import followed
@@ -31,6 +31,7 @@ from kplate.goals import (
     Shear,
     Slope,
 )
+from kplate.kernels import moment_kernel
 from kplate.loads import (
     Case,
     DiscPatch,
@@ -505,6 +506,49 @@ def test_a_patch_that_cuts_triangles_widens_the_band_and_its_answer_stays_inside
         assert half(cut) > 3.0 * half(fit)
 
 
+@pytest.mark.parametrize("element", ["quintic", "hct"])
+def test_a_stated_function_that_jumps_finds_navier_s_patch_inside_its_band(element):
+    """No seam follows it: its jumps are sought by parting triangles."""
+    random = np.random.default_rng(3)
+    goals = [Deflection(at=(0.5, 0.5)), Deflection(at=(0.25, 0.75))]
+    places = [goal.at for goal in goals]
+    plate, mesh = rectangle(SIMPLY_SUPPORTED), grid(4)
+    for _ in range(6):
+        x0, y0 = random.uniform(0.05, 0.4, 2)
+        x1, y1 = random.uniform(0.5, 0.95, 2)
+        size, centre = (x1 - x0, y1 - y0), (0.5 * (x0 + x1), 0.5 * (y0 + y1))
+        force = -700.0 * size[0] * size[1]
+        load = oracles.PatchForce(centre=centre, size=size, force=force)
+        exact = oracles.navier(places, (1, 1), load, rigidity=D)
+
+        def stated(x, y, x0=x0, x1=x1, y0=y0, y1=y1):
+            return np.where((x > x0) & (x < x1) & (y > y0) & (y < y1), -700.0, 0.0)
+
+        found = certified(plate, mesh, goals, PressureField(stated), element=element)
+        for (value,), w in zip(found.values, exact.w, strict=True):
+            assert value.kind == "estimate"
+            assert value.lower <= w <= value.upper
+            # The rule that does not see the jump is off by up to 2 %.
+            assert value.value == pytest.approx(w, rel=2e-3)
+
+
+def test_what_samples_leave_open_of_a_function_widens_the_band(monkeypatch):
+    """The differences of the last pieces are added up, whatever the gaps are."""
+    jump = PressureField(lambda x, y: np.where(x + 0.3 * y < 0.61, PRESSURE, 0.0))
+    goals = [Deflection(at=(0.5, 0.5))]
+    plate, mesh, widths, doubts = rectangle(CLAMPED), grid(4), [], []
+    for deepest in (0, 2, 4):
+        monkeypatch.setattr(sampling, "DEEPEST", deepest)
+        found = certified(plate, mesh, goals, jump)
+        widths.append(half(found.values[0][0]))
+        (energy,) = found.energies
+        doubts.append(found.state.strain_energy[0] - energy.lower)
+    assert widths[0] > widths[1] > widths[2]
+    # Pieces along the jump: twice as many of a quarter of the area, at each parting.
+    rates = np.log2(np.array(doubts[:-1]) / doubts[1:]) / 2.0
+    np.testing.assert_allclose(rates, 1.0, atol=0.5)
+
+
 def test_a_disc_of_pressure_widens_the_band_and_its_answer_stays_inside():
     """The disc as point forces on a polar rule, which is exact for smooth fields."""
     centre, radius, force = np.array((0.42, 0.6)), 0.15, -500.0
@@ -597,8 +641,8 @@ def spoilt(name):
         case "force in a triangle":
             loads = [PointForce(force=-1.0, at=(0.41, 0.33))]
             return square, loads, "a point force acts within a triangle"
-        case "stated function":
-            loads = [PressureField(lambda x, y: np.where(x < 0.437, PRESSURE, 0.0))]
+        case "stated function":  # though all samples of it are linear
+            loads = [PressureField(lambda x, y: 3.0 - 2.0 * x + y)]
             reason = "a pressure is stated as a function, of which samples are known"
             return square, loads, reason
     raise AssertionError(name)
@@ -638,7 +682,6 @@ def test_they_are_bounds_where_what_is_round_or_bent_does_not_matter():
         for load in (
             Pressure(PRESSURE),
             PointForce(force=-1.0, at=tuple(mesh.points[0])),
-            PressureField(lambda x, y: 3.0 - 2.0 * x + y),
         ):
             assert worth(own, mesh, [Case(name="p", loads=[load])]) == ("bound", "")
 
@@ -924,13 +967,78 @@ def test_kernels_keep_off_steps_seams_and_held_points():
     }
     for outline in outlines.values():
         held = dict(square.supports)
-        held |= {mark.name: SIMPLY_SUPPORTED for mark in outline.marks}
+        inside = (*outline.marks, *outline.seams)
+        held |= {own.name: SIMPLY_SUPPORTED for own in inside}
         plate = replace(square, outline=outline, supports=held)
         mesh = mesh_outline(outline, size=0.25)
         goal = Moment(at=AT, component="m_xx")
         assert room(plate, mesh, goal, Pressure(1.0)) == pytest.approx(0.1)
     free = replace(plate, supports=square.supports)  # a mark alone is no obstacle
     assert room(free, mesh, goal, Pressure(1.0)) == pytest.approx(0.4)
+
+
+def test_kernels_pass_seams_that_neither_hold_nor_carry():
+    square = rectangle(SIMPLY_SUPPORTED)
+    outline = square.outline.seam([(0.1, 0.5), (0.9, 0.5)], name="line")
+    plate, goal = replace(square, outline=outline), Moment(at=AT, component="m_xx")
+    mesh = mesh_outline(outline, size=0.25)
+    assert room(plate, mesh, goal, Pressure(1.0)) == pytest.approx(0.4)
+    pull = LineForce(force=1.0, along="line")
+    assert room(plate, mesh, goal, pull) == pytest.approx(0.1)
+    held = replace(plate, supports={**square.supports, "line": GUIDED})
+    assert room(held, mesh, goal, Pressure(1.0)) == pytest.approx(0.1)
+
+
+# Loads that end along the north side of the unit square, and the room at (0.45, 1).
+ALONG = {
+    "patch": (
+        RectanglePatch(force=-500.0, centre=(0.45, 0.8), size=(0.6, 0.4)),
+        oracles.PatchForce(force=-500.0, centre=(0.45, 0.8), size=(0.6, 0.4)),
+        0.3,
+    ),
+    "patch from side to side": (
+        RectanglePatch(force=-500.0, centre=(0.5, 0.7), size=(1.0, 0.6)),
+        oracles.PatchForce(force=-500.0, centre=(0.5, 0.7), size=(1.0, 0.6)),
+        0.45,
+    ),
+    "liquid": (
+        Hydrostatic(level=1.0, specific_weight=-1e3, up=(0.0, 2.0)),
+        oracles.LinearPressure(at_origin=-1e3, gradient=(0.0, 1e3)),
+        0.45,
+    ),
+}
+
+
+@pytest.mark.parametrize("name", ALONG)
+def test_a_load_that_ends_along_a_side_leaves_its_line_reaction_navier_s_value(name):
+    load, same, expected = ALONG[name]
+    plate, goal = rectangle(SIMPLY_SUPPORTED), LineReaction(at=(0.45, 1.0))
+    outline = followed(plate.outline, [Case(name="p", loads=[load])], [goal])
+    assert len(outline.seams) == 1
+    mesh = mesh_outline(outline, size=0.15)
+    assert room(plate, mesh, goal, load) == pytest.approx(expected)
+    exact = oracles.navier([goal.at], (1, 1), same, rigidity=D).effective_shears[0, 1]
+    (value,) = values(plate, mesh, [goal], load)
+    assert value.kind == "bound"
+    assert value.lower <= exact <= value.upper
+    assert half(value) < 1e-3 * exact
+
+
+def test_a_load_that_ends_beside_a_side_or_a_point_inside_still_keeps_kernels_away():
+    plate, mesh = rectangle(SIMPLY_SUPPORTED), grid(4)
+    for gap in (0.01, 1e-9):
+        patch = RectanglePatch(force=1.0, centre=(0.5, 0.7 - gap), size=(0.8, 0.6))
+        liquid = Hydrostatic(level=1.0 - gap, specific_weight=1.0, up=(0.0, 1.0))
+        for load in (patch, liquid):
+            goal, case = LineReaction(at=(0.45, 1.0)), Case(name="p", loads=[load])
+            made = functional(plate, mesh, goal, [case])
+            if gap == 1e-9:
+                assert "leaves no room" in made.reason
+            else:
+                assert made.kernel.radius == pytest.approx(gap * REACH)
+    inside = Moment(at=(0.5, 0.9), component="m_xx")
+    patch = RectanglePatch(force=1.0, centre=(0.5, 0.7), size=(0.8, 0.6))
+    assert room(plate, mesh, inside, patch) == pytest.approx(0.1)
 
 
 def test_kernels_on_an_edge_reach_to_where_the_straight_support_ends():
@@ -1055,6 +1163,11 @@ def test_goals_on_round_sides_are_refused():
     assert str(caught.value) == "side 'rim' is round; ask for this on a straight side."
 
 
+def disc(at):
+    """Any kernel about a place."""
+    return moment_kernel(at, 0.05, (1.0, 0.0, 0.0))
+
+
 def test_the_local_pressure_is_the_sum_of_what_acts_there():
     square = rectangle(SIMPLY_SUPPORTED)
     box = Rectangle(centre=(0.3, 0.3), size=(0.4, 0.4), name="r")
@@ -1076,10 +1189,10 @@ def test_the_local_pressure_is_the_sum_of_what_acts_there():
     ]
     case = Case(name="all", loads=loads)
     own = 10.0 + 100.0 - 10.0 * 0.02 * STEEL.density - 50.0 * 0.7 + 8.0 / 0.02
-    pressure, gradient = local_pressure(plate, mesh, case, (0.3, 0.3))
+    pressure, gradient = local_pressure(plate, mesh, case, disc((0.3, 0.3)))
     assert pressure == pytest.approx(own)
     assert gradient == pytest.approx((0.0, 50.0))
     own = 10.0 - 10.0 * 0.01 * STEEL.density - 50.0 * 0.2 + 1.0 / 0.1**2
-    pressure, gradient = local_pressure(plate, mesh, case, (0.8, 0.8))
+    pressure, gradient = local_pressure(plate, mesh, case, disc((0.8, 0.8)))
     assert pressure == pytest.approx(own)
     assert gradient == pytest.approx((0.0, 50.0))

@@ -347,6 +347,35 @@ def test_goals_of_the_same_words_are_told_by_the_widest():
     assert found[0] == pytest.approx(found[1][::-1])
 
 
+def test_nothing_is_reached_where_no_goal_has_a_band():
+    """One mesh is solved, and the words say what is the case."""
+    under = Moment(at=CENTRE, component="m_xx")
+    load = PointForce(force=-100.0, at=CENTRE)
+    told = []
+    solution = solve(
+        rectangle(CLAMPED),
+        [load],
+        tolerance=0.01,
+        goals=[under],
+        progress=lambda words, done: told.append(words),
+    )
+    (step,) = solution.history
+    assert (step.bands, step.reached, solution.reached) == ({}, False, False)
+    assert step.words.endswith(" s: no goal has a band")
+    assert step.words in told
+
+
+def test_a_peak_that_is_not_known_reaches_nothing():
+    """The disc around the force covers the plate."""
+    goals, force = [Peak(quantity="von Mises")], PointForce(force=1.0, at=CENTRE)
+    solution = solve(
+        rectangle(CLAMPED), [force], tolerance=0.05, goals=goals, excluded_radius=2.0
+    )
+    assert np.isnan(solution.peak("von Mises").value)
+    assert not solution.reached
+    assert solution.history[-1].bands == {}
+
+
 def test_every_case_gets_inside_and_the_widest_is_told():
     cases = [
         Case(name="even", loads=[Pressure(PRESSURE)]),

@@ -275,7 +275,7 @@ def test_a_patch_over_an_edge_is_refused():
         ),
         (
             PressureField(lambda x, y: x[:1]),
-            "a pressure function returned shape (1, 48) for points of shape (32, 48); "
+            "a pressure function returned shape (1, 87) for points of shape (96, 87); "
             "it must return one pressure a point.",
         ),
     ],

@@ -2,6 +2,7 @@
 
 from pathlib import Path
 
+from kplate.answers import NO_BAND
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.solution import Solution
@@ -50,6 +51,8 @@ def write_history(solution: Solution, path: Path) -> Path:
         ]
         if max(widths) > 100.0 * LEAST:
             axes.loglog(unknowns, widths, marker="o", label=name)
+    if not solution.history[-1].bands:
+        axes.set_title(NO_BAND)
     axes.axhline(
         100.0 * solution.tolerance, color="0.3", linestyle="--", label="tolerance"
     )
