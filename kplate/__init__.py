@@ -20,6 +20,8 @@ licensed practice decide.
 
 from kplate.adapt import solve
 from kplate.check import Checked, check
+from kplate.combinations import Combination, preset_combinations
+from kplate.combining import combine
 from kplate.errors import InputError, KplateError, KplateWarning, MeshError, SolveError
 from kplate.goals import (
     ClampingMoment,
@@ -33,7 +35,16 @@ from kplate.goals import (
     Shear,
     Slope,
 )
-from kplate.limits import DeflectionLimit, Judgement, Limits, StressLimit, Verdict
+from kplate.judging import judge
+from kplate.limits import (
+    DeflectionLimit,
+    Judgement,
+    ReactionLimit,
+    StepLimit,
+    StressLimit,
+    StressRangeLimit,
+    Verdict,
+)
 from kplate.loads import (
     Case,
     DiscPatch,
@@ -87,6 +98,7 @@ __all__ = [
     "Checked",
     "Circle",
     "ClampingMoment",
+    "Combination",
     "Deflection",
     "DeflectionLimit",
     "DiscPatch",
@@ -99,7 +111,6 @@ __all__ = [
     "Judgement",
     "KplateError",
     "KplateWarning",
-    "Limits",
     "LineForce",
     "LineReaction",
     "MeanDeflection",
@@ -115,6 +126,7 @@ __all__ = [
     "Polygon",
     "Pressure",
     "PressureField",
+    "ReactionLimit",
     "Rectangle",
     "RectanglePatch",
     "Resultant",
@@ -125,13 +137,18 @@ __all__ = [
     "Slot",
     "Solution",
     "SolveError",
+    "StepLimit",
     "StressLimit",
+    "StressRangeLimit",
     "Support",
     "Validity",
     "Value",
     "Verdict",
     "check",
+    "combine",
     "design_moments",
+    "judge",
+    "preset_combinations",
     "principal_moments",
     "read_panel",
     "solution_record",

@@ -9,10 +9,12 @@ from collections.abc import Sequence
 
 from kplate.certifying import BUDGET, refine_to
 from kplate.choice import AUTO, TRIANGLES, choose
+from kplate.combinations import Combination, expanded
+from kplate.combining import combined
 from kplate.elements import ELEMENTS
 from kplate.errors import InputError
 from kplate.following import followed
-from kplate.goals import Deflection, Goal, Peak, Resultant
+from kplate.goals import Deflection, Goal, Peak, Place, Resultant
 from kplate.guard import mesh_guarded
 from kplate.loads import Case, DiscPatch, Load, PointMoment, RectanglePatch
 from kplate.mesh import Mesh
@@ -42,6 +44,9 @@ PATCH_SHARE = 0.125
 COARSE = {"quintic": 120, "hct": 600}
 RIMS = {"quintic": 1.0, "hct": 0.4}
 FINE_TOLERANCE = 0.005
+# Of places of peaks that are nearer to each other than this share of the span, one gets
+# a vertex: the deflection is flat there, and slim triangles spoil a mesh.
+APART = 0.02
 
 
 def solve(
@@ -55,6 +60,7 @@ def solve(
     balanced: bool = False,
     tolerance: float | None = None,
     goals: Sequence[Goal] | None = None,
+    combinations: Sequence[Combination] = (),
     budget: int = BUDGET,
     progress: Progress | None = None,
 ) -> Solution:
@@ -87,6 +93,9 @@ def solve(
     goals : sequence of Goal, optional
         What must be inside the tolerance, in every case; the peak deflection, the peak
         von Mises stress and the resultant of each support if left out.
+    combinations : sequence of Combination, optional
+        What must be inside the tolerance instead of the cases; the solution is still
+        that of the cases (`kplate.combining.combine` makes one of combinations).
     budget : int, optional
         Unknowns beyond which no finer mesh is made; the bands are then those reached.
     progress : callable, optional
@@ -140,6 +149,7 @@ def solve(
     if size is not None and not (math.isfinite(size) and size > 0.0):
         raise InputError(f"the mesh size is {size:g} m; it must be a positive number.")
     cases = _as_cases(loads)
+    judged = expanded(cases, combinations)
     if size is not None:
         triangles = math.ceil(plate.outline.area / (math.sqrt(3.0) / 4.0 * size**2))
     chosen = choose(plate, element, triangles)
@@ -150,6 +160,7 @@ def solve(
             tolerance,
             goals=default_goals(plate) if goals is None else goals,
             element=chosen.element,
+            combinations=judged,
             start=size,
             budget=budget,
             excluded_radius=excluded_radius,
@@ -187,10 +198,11 @@ def no_bands(cases: Sequence[Case], element: str) -> str:
     return ""
 
 
-def default_goals(plate: Plate, criterion: str = "von Mises") -> tuple[Goal, ...]:
+def default_goals(plate: Plate, *criteria: str) -> tuple[Goal, ...]:
     """Goals where nobody states any.
 
-    Peak deflection, peak stress by a criterion, and the force of each support.
+    Peak deflection, peak stress by each criterion (von Mises if none is given), and
+    the force of each support.
     """
     outline = plate.outline
     names = [
@@ -200,7 +212,7 @@ def default_goals(plate: Plate, criterion: str = "von Mises") -> tuple[Goal, ...
     ]
     return (
         Peak(quantity="deflection"),
-        Peak(quantity=criterion),
+        *(Peak(quantity=own) for own in criteria or ("von Mises",)),
         *(Resultant(of=n) for n in names if plate.support(n).holds_deflection),
     )
 
@@ -212,6 +224,7 @@ def _to_tolerance(
     *,
     goals: Sequence[Goal],
     element: str,
+    combinations: Sequence[Combination],
     start: float | None,
     budget: int,
     excluded_radius: float | None,
@@ -241,9 +254,12 @@ def _to_tolerance(
     if Peak(quantity="deflection") in goals:
         # A vertex where it peaks, so that the deflection there can have a bound.
         first = Solution(state=solve_static(plate, mesh, cases, element=element))
-        tops = [first.peak("deflection", case=case.name) for case in cases]
+        if combinations:
+            first = combined(first, combinations)
+        tops = [first.peak("deflection", case=name) for name in first.cases]
         places = [top.place for top in tops if top.place is not None and top.value]
-        goals = [*goals, *(Deflection(at=at) for at in dict.fromkeys(places))]
+        apart = _apart(places, APART * plate.outline.span)
+        goals = [*goals, *(Deflection(at=at) for at in apart)]
         mesh = mesh_for(goals)
     return refine_to(
         plate,
@@ -252,10 +268,20 @@ def _to_tolerance(
         goals,
         tolerance=tolerance,
         element=element,
+        combinations=combinations,
         budget=budget,
         excluded_radius=excluded_radius,
         progress=progress,
     )
+
+
+def _apart(places: Sequence[Place], least: float) -> list[Place]:
+    """Places without those that are nearer than so much to one before them."""
+    kept: list[Place] = []
+    for place in places:
+        if all(math.dist(place, other) >= least for other in kept):
+            kept.append(place)
+    return kept
 
 
 def _fine(

@@ -29,6 +29,7 @@ import numpy as np
 from kplate import assembly
 from kplate.arrays import Floats, Ints
 from kplate.boundary import seam_tangents, side_tangents
+from kplate.brackets import SUMMED, Brackets
 from kplate.elements import bernstein
 from kplate.errors import SolveError
 from kplate.functionals import Functional, local_pressure, settled_vertices
@@ -56,8 +57,6 @@ CROSSING = 1e-9
 # Energies of loads that supports take at once are round-off: so small a share of what
 # the loads could do.
 ROUND_OFF = 1e-20
-# No band is narrower than this share of the terms whose sum is the value: round-off.
-SUMMED = 1e-12
 BENT = 1e-9  # tangents that differ by more are not those of the edges
 
 
@@ -77,6 +76,8 @@ class Certified:
         The value and band of each goal, for each case.
     energies : tuple of Value
         Strain energy of each case in J.
+    brackets : Brackets
+        What those bands are made of, and those of combinations of the cases.
     case_gaps : ndarray, shape (n_triangles, c)
         Squared norm of each case's gap on each triangle, oscillation included.
     goal_gaps : ndarray, shape (n_triangles, g)
@@ -88,6 +89,7 @@ class Certified:
     functionals: tuple[Functional, ...]
     values: tuple[tuple[Value, ...], ...]
     energies: tuple[Value, ...]
+    brackets: Brackets
     case_gaps: Floats
     goal_gaps: Floats
 
@@ -156,68 +158,49 @@ def certify(
     kind, reason = worth(plate, mesh, cases)
     if kind == "bound":
         _check_energies(state, dual, osc[:, :c])
-    norms = np.sqrt(gaps.sum(axis=0))
-    width = norms + np.sqrt((osc**2).sum(axis=0))
     pulls = right.forces[:, :c].T @ unknowns  # l_0(u_j)
     given = unknowns[:, :c].T @ right.forces  # l_j(u_0)
     size = np.abs(right.forces[:, :c]).T @ np.abs(unknowns)
     size += np.abs(unknowns[:, :c]).T @ np.abs(right.forces)
+    centres = (pulls - work + 0.5 * cross)[:, c:].T
     doubts = _doubts(system, cases, unknowns)
-    values: list[tuple[Value, ...]] = []
-    column = c
-    for f in functionals:
-        if f.reason:
-            values.append(
-                tuple(
-                    Value(value=np.nan, case=case.name, reason=f.reason)
-                    for case in cases
-                )
-            )
+    spare = (SUMMED * size + doubts)[:, c:].T
+    for j, f in enumerate(adjoint):
+        if f.settled:
+            centres[j] *= -1.0
             continue
-        own, (own_kind, why) = [], (kind, reason)
-        if not reason and _put(plate, mesh, f.loads):
-            own_kind, why = "estimate", _put(plate, mesh, f.loads)
-        for k, case in enumerate(cases):
-            settled = bool(f.settled)
-            centre = pulls[k, column] - work[k, column] + 0.5 * cross[k, column]
-            centre = -centre if settled else centre + given[k, column]
-            half = width[k] * width[column] - 0.5 * norms[k] * norms[column]
-            half += SUMMED * size[k, column] + doubts[k, column]
-            if f.kernel is not None:
+        centres[j] += given[:, c + j]
+        if f.kernel is not None:
+            for k, case in enumerate(cases):
                 p, gradient = local_pressure(plate, mesh, case, f.kernel)
-                centre += f.kernel.constant(p, gradient)
-                half += kernel_error(state, kernelled[column - c], k)
-            own.append(
-                Value(
-                    value=float(centre),
-                    lower=float(centre - half),
-                    upper=float(centre + half),
-                    kind=own_kind,
-                    place=getattr(f.goal, "at", None),
-                    case=case.name,
-                    reason=why,
-                )
-            )
-        values.append(tuple(own))
-        column += 1
-    energies = tuple(
-        Value(
-            value=float(state.strain_energy[k]),
-            lower=float(state.strain_energy[k] - doubts[k, k]),
-            upper=float(state.strain_energy[k] + 0.5 * width[k] ** 2 + doubts[k, k]),
-            kind=kind,
-            case=case.name,
-            reason=reason,
-        )
-        for k, case in enumerate(cases)
+                centres[j, k] += f.kernel.constant(p, gradient)
+                spare[j, k] += kernel_error(state, kernelled[j], k)
+    norms = np.sqrt(gaps.sum(axis=0))
+    off = np.sqrt((osc**2).sum(axis=0))
+    brackets = Brackets(
+        kind=kind,
+        reason=reason,
+        functionals=tuple(functionals),
+        put=tuple("" if reason else _put(plate, mesh, f.loads) for f in adjoint),
+        products=cross[:, :c],
+        oscillations=off[:c],
+        goal_norms=norms[c:],
+        goal_oscillations=off[c:],
+        centres=centres,
+        spare=spare,
+        doubts=doubts[:, :c],
     )
+    names, alone = [case.name for case in cases], np.eye(c)
+    values = brackets.values(alone, names)
+    energies = brackets.energies(alone, names, state.strain_energy)
     local = gaps + osc**2
     return Certified(
         state=state,
         dual=dual,
         functionals=tuple(functionals),
-        values=tuple(values),
+        values=values,
         energies=energies,
+        brackets=brackets,
         case_gaps=local[:, :c],
         goal_gaps=local[:, c:],
     )

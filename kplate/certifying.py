@@ -16,6 +16,8 @@ import numpy as np
 from kplate.answers import Step
 from kplate.arrays import Bools, Floats
 from kplate.bands import Certified, certify
+from kplate.combinations import Combination, factor_table
+from kplate.combining import combined
 from kplate.errors import SolveError
 from kplate.functionals import functional
 from kplate.goals import Goal, Moment, Peak, Resultant
@@ -44,6 +46,7 @@ def refine_to(
     *,
     tolerance: float,
     element: str,
+    combinations: Sequence[Combination] = (),
     budget: int = BUDGET,
     excluded_radius: float | None = None,
     progress: Progress | None = None,
@@ -59,11 +62,13 @@ def refine_to(
     cases : sequence of Case
         The load cases.
     goals : sequence of Goal
-        What must be inside the tolerance, in every case.
+        What must be inside the tolerance, in every case, or in every combination.
     tolerance : float
         Half width of the bands as a share of the value.
     element : str
         A C1 element.
+    combinations : sequence of Combination, optional
+        What is judged instead of the cases.
     budget : int, optional
         Unknowns of the plate beyond which no finer mesh is made.
     excluded_radius : float, optional
@@ -97,8 +102,9 @@ def refine_to(
             excluded_radius=excluded_radius,
             known=dict(known),
             energies=certified.energies,
+            brackets=certified.brackets,
         )
-        unmet, bands = _unmet(solution, certified, goals, tolerance)
+        unmet, bands = _unmet(solution, certified, goals, tolerance, combinations)
         unknowns = int(np.count_nonzero(certified.state.constraints.free))
         steps.append(
             Step(
@@ -137,7 +143,11 @@ def _keep_best(known: dict[tuple[Goal, str], Value], certified: Certified) -> No
 
 
 def _unmet(
-    solution: Solution, certified: Certified, goals: Sequence[Goal], tolerance: float
+    solution: Solution,
+    certified: Certified,
+    goals: Sequence[Goal],
+    tolerance: float,
+    combinations: Sequence[Combination],
 ) -> tuple[Floats, dict[str, float]]:
     """What each triangle has of the gaps of unmet goals, and the widest band of each.
 
@@ -153,6 +163,13 @@ def _unmet(
     bands: dict[str, float] = {}
     column = 0
     columns = {}
+    case_gaps = certified.case_gaps
+    if combinations:
+        # Of what is judged: more than its gap on each triangle, by the triangle
+        # inequality, which does to find where gaps are.
+        factors = np.abs(factor_table(solution.state.cases, combinations))
+        case_gaps = (np.sqrt(case_gaps) @ factors) ** 2
+        solution = combined(solution, combinations)
     for f in certified.functionals:
         if not f.reason:
             columns[f.goal] = column
@@ -169,14 +186,14 @@ def _unmet(
                 width = _half(value) / max(abs(value.value), np.finfo(float).tiny)
                 if width > tolerance:
                     band = solution.peak_band(goal.quantity, case=case)
-                    shares += _share(certified.case_gaps[:, k])
+                    shares += _share(case_gaps[:, k])
                     shares += _share(np.where(band.candidates, band.doubt, 0.0) ** 2)
             else:
                 value = solution.known[goal, case]
                 size = _size(solution, goal, value)
                 width = _half(value) / size if size > 0.0 else 0.0
                 if width > tolerance:
-                    shares += _share(certified.case_gaps[:, k])
+                    shares += _share(case_gaps[:, k])
                     shares += _share(certified.goal_gaps[:, columns[goal]])
             widths.append(width)
         if widths:

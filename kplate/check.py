@@ -8,6 +8,7 @@ import numpy as np
 from kplate.adapt import default_goals, no_bands, solve
 from kplate.answers import NO_BAND
 from kplate.checklines import (
+    criteria,
     place_words,
     short,
     signed,
@@ -19,7 +20,14 @@ from kplate.describe import describe
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.goals import Peak
-from kplate.limits import Outcome, Verdict, governing
+from kplate.judging import Judged, judgements, to_judge
+from kplate.limits import (
+    DeflectionLimit,
+    Outcome,
+    StressLimit,
+    Verdict,
+    governing,
+)
 from kplate.output.picture import write_picture
 from kplate.output.record import solution_record, write_json, write_reactions
 from kplate.output.tables import Line, legend, reactions_table, values_table
@@ -48,7 +56,9 @@ class Checked:
     panel : Panel
         What was read.
     solution : Solution
-        What was solved.
+        What was solved, in its load cases.
+    judged : Judged
+        What was judged: the cases, or their combinations.
     lines : tuple of Line
         The numbers of the table.
     verdict : Verdict
@@ -61,6 +71,7 @@ class Checked:
 
     panel: Panel
     solution: Solution
+    judged: Judged
     lines: tuple[Line, ...]
     verdict: Verdict
     validity: Validity
@@ -112,8 +123,7 @@ def check(
         If the panel cannot be meshed or solved.
     """
     panel = read_panel(path)
-    criterion = panel.limits.stress.criterion if panel.limits.stress else "von Mises"
-    goals = default_goals(panel.plate, criterion)
+    goals = default_goals(panel.plate, *criteria(panel))
     if panel.design:
         goals = (*goals, *(Peak(quantity=quantity) for quantity in DESIGN))
     solution = solve(
@@ -123,29 +133,22 @@ def check(
         element=panel.element,
         tolerance=panel.tolerance if panel.triangles is None else None,
         goals=goals,
+        combinations=panel.combinations,
         progress=progress,
     )
-    lines = tuple(table_lines(panel, solution))
-    judgements = tuple(j for line in lines if (j := line.judgement) is not None)
-    places = {excluded.place for excluded in solution.excluded}
-    if panel.limits.stress is None:
-        places = set()
-    if panel.limits.hold_down is not None:
-        places |= {
-            corner.corner.place
-            for case in solution.cases
-            for corner in solution.reactions(case=case).corners
-            if np.isnan(corner.force.value)
-        }
-    found = validity(solution, held_in_plane=panel.held_in_plane)
+    judged = Judged.of(solution, panel.combinations)
+    found_judgements = judgements(judged, panel.limits)
+    lines = tuple(table_lines(panel, judged, found_judgements))
+    found = validity(judged.solution, held_in_plane=panel.held_in_plane)
     verdict = Verdict(
-        judgements=judgements,
-        to_judge=len(places),
+        judgements=found_judgements,
+        to_judge=to_judge(judged, panel.limits),
         flagged=not found.holds,
     )
     checked = Checked(
         panel=panel,
         solution=solution,
+        judged=judged,
         lines=lines,
         verdict=verdict,
         validity=found,
@@ -207,7 +210,7 @@ def _heading(panel: Panel) -> list[str]:
         )
     ]
     others = {m.name for _, m in plate.sections} - {plate.material.name}
-    if others and panel.limits.stress is not None:
+    if others and any(isinstance(own, StressLimit) for own in panel.limits):
         lines.append(
             f"the stress limit is that of {plate.material.name}; it is held against "
             f"zones of {', '.join(sorted(others))} alike"
@@ -228,16 +231,18 @@ def _stated(panel: Panel) -> list[str]:
     """Material and limits as they were stated."""
     material, units = panel.plate.material, panel.units
     words = [f"{material.name}: E {material.E / 1e9:.6g} GPa, nu {material.nu:g}"]
-    limits = panel.limits
-    if limits.deflection is not None:
-        how = f" ({limits.deflection.words})" if limits.deflection.words else ""
-        most = units.deflection.show(limits.deflection.at_most)
-        words.append(f"deflection at most {most}{how}")
-    if limits.stress is not None:
-        strength = units.stress.show(limits.stress.strength)
-        words.append(
-            f"{limits.stress.criterion} at most {strength} / {limits.stress.factor:g}"
-        )
+    for limit in panel.limits:
+        match limit:
+            case DeflectionLimit(at_most=most, words=how):
+                words.append(
+                    f"deflection at most {units.deflection.show(most)}"
+                    f"{f' ({how})' if how else ''}"
+                )
+            case StressLimit(criterion=criterion, factor=factor):
+                strength = limit.strength_at(float(panel.plate.thicknesses.max()))
+                words.append(
+                    f"{criterion} at most {units.stress.show(strength)} / {factor:g}"
+                )
     held = {True: "yes", False: "no", None: "not stated"}[panel.held_in_plane]
     words.append(f"held in plane: {held}")
     return ["; ".join(words)]

@@ -5,55 +5,120 @@ number without a band is judged as it is, and the verdict says so.
 """
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterable
 from dataclasses import dataclass
 from enum import IntEnum
 from typing import Literal
 
+from kplate.combinations import Purpose
 from kplate.errors import InputError
 from kplate.values import Value
 
-Criterion = Literal["von Mises", "largest principal"]
-CRITERIA: tuple[Criterion, ...] = ("von Mises", "largest principal")
+Criterion = Literal["von Mises", "Tresca", "largest principal"]
+CRITERIA: tuple[Criterion, ...] = ("von Mises", "Tresca", "largest principal")
+Component = Literal["stress xx", "stress yy", "stress xy"]
+COMPONENTS: tuple[Component, ...] = ("stress xx", "stress yy", "stress xy")
+Where = Literal["corners", "sides", "points"]
+WHERE: tuple[Where, ...] = ("corners", "sides", "points")
+Sense = Literal["hold-down", "bearing"]
+SENSES: tuple[Sense, ...] = ("hold-down", "bearing")
 
 
 @dataclass(frozen=True, kw_only=True)
 class DeflectionLimit:
-    """The most that a plate may deflect.
+    """The most that a plate may deflect, in service.
 
     Parameters
     ----------
     at_most : float
         Largest magnitude of the deflection in m.
-    words : str
-        How it was stated, such as "span/200".
+    words : str, optional
+        How it was stated, such as "span/200, span 600 mm".
+    source : str, optional
+        Where it comes from.
     """
 
     at_most: float
     words: str = ""
+    source: str = ""
 
     def __post_init__(self) -> None:
         """Check the number."""
         _check_positive("deflection limit", self.at_most)
 
+    @property
+    def purpose(self) -> Purpose:
+        """Of the combinations it is judged in."""
+        return "service"
+
+    @property
+    def quantity(self) -> str:
+        """What it judges, in words."""
+        return "peak deflection"
+
 
 @dataclass(frozen=True, kw_only=True)
-class StressLimit:
-    """The most that a surface stress may reach.
+class StepLimit:
+    """The largest step to what lies beside a free side, in service.
+
+    The neighbour is taken as rigid, so that the step is the deflection of the side.
 
     Parameters
     ----------
-    criterion : {"von Mises", "largest principal"}
-        The stress that is judged, on the worse face.
+    along : str
+        Name of the free side.
+    at_most : float
+        Largest magnitude of the deflection along it in m.
+    words, source : str, optional
+        As in `DeflectionLimit`.
+    """
+
+    along: str
+    at_most: float
+    words: str = ""
+    source: str = ""
+
+    def __post_init__(self) -> None:
+        """Check the number."""
+        _check_positive(f"limit of the step along {self.along}", self.at_most)
+
+    @property
+    def purpose(self) -> Purpose:
+        """Of the combinations it is judged in."""
+        return "service"
+
+    @property
+    def quantity(self) -> str:
+        """What it judges, in words."""
+        return f"step along {self.along}"
+
+
+@dataclass(frozen=True, kw_only=True)
+class StressLimit:
+    """The most that a surface stress may reach, in strength.
+
+    Parameters
+    ----------
+    criterion : {"von Mises", "Tresca", "largest principal"}
+        The stress that is judged, on the worse face: von Mises or Tresca for ductile
+        metal, the largest principal tension for glass and other brittle materials.
     strength : float
         Strength of the material in Pa.
-    factor : float
-        Factor between the strength and the stress allowed.
+    factor : float, optional
+        Partial factor: the stress allowed is the strength divided by it.
+    grades : tuple of (float, float), optional
+        Strengths in Pa up to thicknesses in m, thinnest first, where they go by it;
+        `strength` is then the first.
+    words, source : str, optional
+        As in `DeflectionLimit`.
     """
 
     criterion: Criterion
     strength: float
     factor: float = 1.0
+    grades: tuple[tuple[float, float], ...] = ()
+    words: str = ""
+    source: str = ""
 
     def __post_init__(self) -> None:
         """Check the numbers."""
@@ -65,34 +130,134 @@ class StressLimit:
         _check_positive("strength", self.strength)
         _check_positive("factor of the stress limit", self.factor)
 
+    def strength_at(self, thickness: float) -> float:
+        """Strength in Pa of a plate of this thickness in m.
+
+        Raises
+        ------
+        InputError
+            If it is thicker than the last of the grades.
+        """
+        if not self.grades:
+            return self.strength
+        for most, strength in self.grades:
+            if thickness <= most * (1.0 + 1e-9):
+                return strength
+        raise InputError(
+            f"a thickness of {1e3 * thickness:g} mm has no strength in "
+            f"{self.words or 'the grades'}, which end at {1e3 * self.grades[-1][0]:g} "
+            "mm; state the strength."
+        )
+
+    def allowed(self, thickness: float) -> float:
+        """Largest stress allowed in Pa in a plate of this thickness in m."""
+        return self.strength_at(thickness) / self.factor
+
     @property
-    def at_most(self) -> float:
-        """Largest stress allowed in Pa."""
-        return self.strength / self.factor
+    def purpose(self) -> Purpose:
+        """Of the combinations it is judged in."""
+        return "strength"
+
+    @property
+    def quantity(self) -> str:
+        """What it judges, in words."""
+        return f"peak {self.criterion}"
 
 
 @dataclass(frozen=True, kw_only=True)
-class Limits:
-    """Everything a panel is judged by; what is not stated is not judged.
+class StressRangeLimit:
+    """The most by which a stress may change at a place between service combinations.
 
     Parameters
     ----------
-    deflection : DeflectionLimit, optional
-        Stiffness.
-    stress : StressLimit, optional
-        Strength.
-    hold_down : float, optional
-        The most that a corner may pull on what holds it down, in N.
+    of : str
+        A component on a face, "stress xx", "stress yy" or "stress xy", or a criterion.
+        A criterion has no sign: where a stress reverses, its range is that of the
+        components.
+    at_most : float
+        Largest range in Pa.
+    words, source : str, optional
+        As in `DeflectionLimit`.
     """
 
-    deflection: DeflectionLimit | None = None
-    stress: StressLimit | None = None
-    hold_down: float | None = None
+    of: Component | Criterion
+    at_most: float
+    words: str = ""
+    source: str = ""
 
     def __post_init__(self) -> None:
-        """Check the number."""
-        if self.hold_down is not None:
-            _check_positive("hold-down limit", self.hold_down)
+        """Check the words and the number."""
+        if self.of not in (*COMPONENTS, *CRITERIA):
+            raise InputError(
+                f"stress range of {self.of!r}; it must be one of "
+                f"{', '.join((*COMPONENTS, *CRITERIA))}."
+            )
+        _check_positive("limit of the stress range", self.at_most)
+
+    @property
+    def purpose(self) -> Purpose:
+        """Of the combinations it is judged in."""
+        return "service"
+
+    @property
+    def quantity(self) -> str:
+        """What it judges, in words."""
+        return f"range of {self.of}"
+
+
+@dataclass(frozen=True, kw_only=True)
+class ReactionLimit:
+    """The most that a support may pull the plate down, or push it up.
+
+    Parameters
+    ----------
+    at : {"corners", "sides", "points"}
+        Which supports: corner forces and marks in N, line reactions of sides and seams
+        in N/m.
+    sense : {"hold-down", "bearing"}
+        Hold-down (the support pulls the plate down) is judged in uplift, bearing (it
+        pushes the plate up) in strength.
+    at_most : float
+        In N, or N/m along sides.
+    only : tuple of str, optional
+        Names of the sides, seams or marks judged, where not all are.
+    words, source : str, optional
+        As in `DeflectionLimit`.
+    """
+
+    at: Where
+    sense: Sense
+    at_most: float
+    only: tuple[str, ...] = ()
+    words: str = ""
+    source: str = ""
+
+    def __post_init__(self) -> None:
+        """Check the words and the number."""
+        object.__setattr__(self, "only", tuple(self.only))
+        for word, words in ((self.at, WHERE), (self.sense, SENSES)):
+            if word not in words:
+                raise InputError(
+                    f"limit of reactions {word!r}; it must be one of "
+                    f"{', '.join(words)}."
+                )
+        if self.only and self.at == "corners":
+            raise InputError("corners have no names; a limit on them holds for all.")
+        _check_positive(f"{self.sense} limit", self.at_most)
+
+    @property
+    def purpose(self) -> Purpose:
+        """Of the combinations it is judged in."""
+        return "uplift" if self.sense == "hold-down" else "strength"
+
+    @property
+    def quantity(self) -> str:
+        """What it judges, in words."""
+        what = " and ".join(self.only) or self.at.removesuffix("s")
+        return f"{what} {self.sense}"
+
+
+Limit = DeflectionLimit | StepLimit | StressLimit | StressRangeLimit | ReactionLimit
 
 
 class Outcome(IntEnum):
@@ -115,11 +280,14 @@ class Judgement:
         The number.
     limit : float
         The largest magnitude allowed, in the same units.
+    stated : Limit, optional
+        The limit as stated.
     """
 
     quantity: str
     value: Value
     limit: float
+    stated: Limit | None = None
 
     @property
     def used(self) -> float:
@@ -184,10 +352,22 @@ class Verdict:
         return words
 
 
-def governing(judgements: Sequence[Judgement]) -> Judgement | None:
+def governing(judgements: Iterable[Judgement]) -> Judgement | None:
     """Return the judgement with the largest utilisation."""
     known = [j for j in judgements if not math.isnan(j.used)]
     return max(known, key=lambda j: j.used, default=None)
+
+
+def worst(judgements: Iterable[Judgement]) -> Judgement | None:
+    """Return the judgement that decides: what fails, what is not proven, what governs.
+
+    Of judgements of one limit in several combinations it is the one to show.
+    """
+    return max(
+        judgements,
+        key=lambda j: (j.outcome, math.inf if math.isnan(j.used) else j.used),
+        default=None,
+    )
 
 
 def _magnitudes(value: Value) -> tuple[float, float]:

@@ -275,6 +275,9 @@ class Case:
         How the case is called in tables.
     loads : sequence of loads
         At least one.
+    reverses : bool, optional
+        Whether they act the other way too, as wind does, so that the case is judged
+        with both signs.
 
     Raises
     ------
@@ -284,6 +287,7 @@ class Case:
 
     name: str
     loads: Sequence[Load] = field(default=())
+    reverses: bool = False
 
     def __post_init__(self) -> None:
         """Check that there is something to carry."""

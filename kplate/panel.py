@@ -14,10 +14,11 @@ from typing import Any
 
 from kplate.caseloads import read_cases
 from kplate.choice import AUTO
+from kplate.combinations import Combination
 from kplate.elements import ELEMENTS
 from kplate.errors import InputError
 from kplate.fields import Fields, closest, shown, within
-from kplate.limits import Limits
+from kplate.limits import Limit
 from kplate.loads import Case
 from kplate.outline import Outline
 from kplate.outlines import read_outline
@@ -78,7 +79,9 @@ class Panel:
         Outline, thickness, material and supports.
     cases : tuple of Case
         The load cases, at least one, each name once.
-    limits : Limits
+    combinations : tuple of Combination
+        Factors on the cases; empty where each case is judged for itself.
+    limits : tuple of Limit
         What the panel is judged by.
     tolerance : float, optional
         Width of the bands asked for, as a share.
@@ -108,7 +111,8 @@ class Panel:
     author: str
     plate: Plate
     cases: tuple[Case, ...]
-    limits: Limits
+    combinations: tuple[Combination, ...]
+    limits: tuple[Limit, ...]
     tolerance: float | None
     held_in_plane: bool | None
     triangles: int | None
@@ -158,6 +162,7 @@ def read_panel(path: Path) -> Panel:
         author=head.word("author", default=""),
         plate=plate,
         cases=read_cases(sections["case"], plate),
+        combinations=(),
         limits=limits,
         tolerance=_tolerance(head),
         held_in_plane=_held_in_plane(head),

@@ -16,7 +16,7 @@ import numpy as np
 
 from kplate.arrays import Bools, Floats, Ints
 from kplate.mesh import Mesh
-from kplate.recovery import principal_moments, surface_stress, von_mises
+from kplate.recovery import principal_moments, surface_stress, tresca, von_mises
 from kplate.rims import stationary
 from kplate.values import Face
 from kplate.woodarmer import DESIGN, design_moments, largest_change
@@ -25,6 +25,7 @@ FACTOR = 1.5
 QUANTITIES = (
     "deflection",
     "von Mises",
+    "Tresca",
     "largest principal",
     "smallest principal",
     "shear stress",
@@ -32,6 +33,9 @@ QUANTITIES = (
     "m_yy",
     "m_xy",
 )
+# Criteria that are the same on both faces; norms, so that one of a difference bounds
+# what it changes.
+EVEN = {"von Mises": von_mises, "Tresca": tresca}
 # A summit is sought on stencils of 3 x 3 points, each a third of the last in size.
 _STENCIL = np.array([(i, j) for i in (-1, 0, 1) for j in (-1, 0, 1)]) / 2.0
 _ZOOMS = 8
@@ -113,8 +117,8 @@ def doubts(mesh: Mesh, triangles: Ints, differences: Floats) -> Floats:
 def extreme(quantity: str, at: Candidates) -> Extreme:
     """Extreme value of a quantity among candidates, its place and face."""
     face: Face | None = None
-    if quantity == "von Mises":
-        values = von_mises(surface_stress(at.moments, at.thickness, "bottom"))
+    if quantity in EVEN:
+        values = EVEN[quantity](surface_stress(at.moments, at.thickness, "bottom"))
         best = int(np.argmax(values))
         principal = principal_moments(at.moments[best])[0]
         # The same on both faces; name the one in tension.
@@ -147,8 +151,9 @@ def measures(
     """
     off = at.moments - moments
     bending = 6.0 / at.thickness**2
-    if quantity == "von Mises":
-        return bending * von_mises(at.moments), bending * von_mises(off)
+    if quantity in EVEN:
+        criterion = EVEN[quantity]
+        return bending * criterion(at.moments), bending * criterion(off)
     if quantity in ("largest principal", "smallest principal"):
         sign = 1.0 if quantity == "largest principal" else -1.0
         both = np.stack([_principal(at, side, sign) for side in _FACES])

@@ -254,6 +254,16 @@ def von_mises(stress: Floats) -> Floats:
     return np.sqrt(xx**2 - xx * yy + yy**2 + 3.0 * xy**2)
 
 
+def tresca(stress: Floats) -> Floats:
+    """Tresca's stress, twice the largest shear, of plane stresses (..., 3) in Pa.
+
+    The third principal stress is 0. It is the same on both faces.
+    """
+    first, second = np.moveaxis(principal_moments(stress)[0], -1, 0)
+    largest: Floats = np.maximum(first, 0.0) - np.minimum(second, 0.0)
+    return largest
+
+
 def _parted(mesh: Mesh, section: Ints) -> Ints:
     """Label of the part each corner of each triangle belongs to, (3 n_triangles,).
 

@@ -15,6 +15,7 @@ import numpy as np
 from kplate import reactions as support_reactions
 from kplate.answers import Growth, Step
 from kplate.arrays import Floats, Ints
+from kplate.brackets import Brackets
 from kplate.dualforces import side_forces
 from kplate.errors import InputError
 from kplate.goals import Goal, Peak, Resultant
@@ -71,12 +72,15 @@ class Solution(Solved):
         Half width of bands that was asked for, as a share.
     history : tuple of Step, optional
         The meshes on the way to it.
+    brackets : Brackets, optional
+        What the bands are made of, for those of combinations.
     """
 
     known: Mapping[tuple[Goal, str], Value] = field(default_factory=dict)
     energies: tuple[Value, ...] = ()
     tolerance: float | None = None
     history: tuple[Step, ...] = ()
+    brackets: Brackets | None = None
 
     @property
     def reached(self) -> bool:
@@ -153,11 +157,11 @@ class Solution(Solved):
         Parameters
         ----------
         quantity : str
-            "deflection" (largest magnitude, with its sign), "von Mises", "largest
-            principal" (largest tension of the two faces), "smallest principal" (largest
-            compression), "shear stress", "m_xx", "m_yy" or "m_xy" (largest magnitude,
-            with its sign), or a design moment of reinforcement along x and y: "design
-            bottom x", "design bottom y", "design top x" or "design top y".
+            "deflection" (largest magnitude, with its sign), "von Mises", "Tresca",
+            "largest principal" (largest tension of the two faces), "smallest principal"
+            (largest compression), "shear stress", "m_xx", "m_yy" or "m_xy" (largest
+            magnitude, with its sign), or a design moment of reinforcement along x and
+            y: "design bottom x", "design bottom y", "design top x" or "design top y".
         case : str, optional
             A load case; the worst of all if left out.
 

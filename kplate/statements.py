@@ -9,7 +9,14 @@ from typing import Any, cast
 
 from kplate.errors import InputError
 from kplate.fields import Fields, closest, numbered, refuse_later, shown, some, within
-from kplate.limits import CRITERIA, Criterion, DeflectionLimit, Limits, StressLimit
+from kplate.limits import (
+    CRITERIA,
+    Criterion,
+    DeflectionLimit,
+    Limit,
+    ReactionLimit,
+    StressLimit,
+)
 from kplate.materials import STOCK, Isotropic
 from kplate.outline import Outline
 from kplate.plate import Section
@@ -100,19 +107,28 @@ def read_supports(table: Mapping[str, Any], outline: Outline) -> dict[str, Suppo
 
 def read_limits(
     table: Mapping[str, Any],
-) -> tuple[Limits, tuple[float, ...], Unit | None]:
+) -> tuple[tuple[Limit, ...], tuple[float, ...], Unit | None]:
     """Limits, the stock thicknesses in m, and the unit in which strength is stated."""
     refuse_later("[limits]", table, LATER_LIMITS)
     fields = Fields(where="[limits]", table=table, examples=LIMITS)
-    stress, shown_in = _stress(fields) if "stress" in fields else (None, None)
-    hold_down = fields.positive("hold_down", "force") if "hold_down" in fields else None
-    deflection = _deflection(fields) if "deflection" in fields else None
+    limits: list[Limit] = []
+    shown_in = None
+    if "deflection" in fields:
+        limits.append(_deflection(fields))
+    if "stress" in fields:
+        stress, shown_in = _stress(fields)
+        limits.append(stress)
+    if "hold_down" in fields:
+        most = fields.positive("hold_down", "force")
+        limits += [
+            ReactionLimit(at="corners", sense="hold-down", at_most=most),
+            ReactionLimit(at="points", sense="hold-down", at_most=most),
+        ]
     stock = []
     for place, item in fields.items("stock") if "stock" in fields else ():
         with within(place):
             stock.append(positive(item, "length"))
-    limits = Limits(deflection=deflection, stress=stress, hold_down=hold_down)
-    return limits, tuple(stock), shown_in
+    return tuple(limits), tuple(stock), shown_in
 
 
 def _deflection(limits: Fields) -> DeflectionLimit:

@@ -8,11 +8,14 @@ from kplate.errors import InputError
 from kplate.limits import (
     DeflectionLimit,
     Judgement,
-    Limits,
     Outcome,
+    ReactionLimit,
+    StepLimit,
     StressLimit,
+    StressRangeLimit,
     Verdict,
     governing,
+    worst,
 )
 from kplate.values import Value
 
@@ -86,14 +89,50 @@ def test_limits_are_checked():
         "the deflection limit is -0.003; it must be a positive number."
     )
     with pytest.raises(InputError) as caught:
-        StressLimit(criterion="Tresca", strength=235e6)
+        StressLimit(criterion="Rankine", strength=235e6)
     assert str(caught.value) == (
-        "stress criterion 'Tresca'; it must be one of von Mises, largest principal."
+        "stress criterion 'Rankine'; it must be one of von Mises, Tresca, largest "
+        "principal."
     )
     with pytest.raises(InputError, match="the hold-down limit is 0"):
-        Limits(hold_down=0.0)
+        ReactionLimit(at="corners", sense="hold-down", at_most=0.0)
+    with pytest.raises(InputError, match="limit of the step along north is nan"):
+        StepLimit(along="north", at_most=float("nan"))
+    with pytest.raises(InputError, match="stress range of 'm_xx'; it must be one of"):
+        StressRangeLimit(of="m_xx", at_most=1e6)
+    with pytest.raises(InputError, match="corners have no names"):
+        ReactionLimit(at="corners", sense="bearing", at_most=1.0, only=["south"])
     limit = StressLimit(criterion="von Mises", strength=235e6, factor=1.5)
-    assert limit.at_most == pytest.approx(156.67e6, rel=1e-4)
+    assert limit.allowed(0.006) == pytest.approx(156.67e6, rel=1e-4)
+
+
+def test_a_strength_that_goes_by_thickness_is_looked_up():
+    grades = ((0.016, 235e6), (0.040, 225e6))
+    limit = StressLimit(
+        criterion="von Mises",
+        strength=235e6,
+        factor=1.1,
+        grades=grades,
+        words="S235",
+    )
+    found = [limit.strength_at(h) for h in (0.003, 0.016, 0.0161, 0.04)]
+    assert found == [235e6, 235e6, 225e6, 225e6]
+    assert limit.allowed(0.02) == pytest.approx(225e6 / 1.1)
+    with pytest.raises(InputError) as caught:
+        limit.allowed(0.05)
+    assert str(caught.value) == (
+        "a thickness of 50 mm has no strength in S235, which end at 40 mm; state the "
+        "strength."
+    )
+
+
+def test_what_fails_is_worse_than_what_is_not_known_or_much_used():
+    fails, tight = judged(3.1, 3.0), judged(2.99, 3.0)
+    lost = Judgement(quantity="peak", value=Value(value=float("nan")), limit=3.0)
+    assert worst([tight, lost, fails]) is fails
+    assert worst([tight, lost]) is lost
+    assert worst([judged(1.0, 3.0), tight]) is tight
+    assert worst([]) is None
 
 
 def test_a_band_fits_its_kind():

@@ -11,6 +11,7 @@ import pytest
 from panel_texts import BASE, MESHES, STARTER, changed, read_text, with_load
 
 from kplate.errors import KplateWarning
+from kplate.judging import allowed
 from kplate.limits import StressLimit
 from kplate.loads import (
     DiscPatch,
@@ -59,10 +60,10 @@ def test_a_panel_arrives_in_si_units(read):
     assert patch.centre == pytest.approx((0.4, 0.3), rel=1e-12)
     assert patch.size == pytest.approx((0.2, 0.1), rel=1e-12)
     assert patch.angle == 0.0
-    assert panel.limits.deflection is panel.limits.hold_down is None
-    assert panel.limits.stress == StressLimit(
-        criterion="von Mises", strength=235e6, factor=1.5
+    assert panel.limits == (
+        StressLimit(criterion="von Mises", strength=235e6, factor=1.5),
     )
+    assert panel.combinations == ()
     assert panel.tolerance is panel.held_in_plane is panel.triangles is None
     assert panel.stock == ()
 
@@ -191,7 +192,7 @@ def test_loads_are_positive_up(read, stated, load):
 )
 def test_the_least_of_the_deflection_limits_counts(read, stated, at_most, words):
     text = changed("[limits]", f"[limits]\ndeflection = {stated}")
-    limit = read(text).limits.deflection
+    limit = read(text).limits[0]
     assert limit.at_most == pytest.approx(at_most, rel=1e-12)
     assert limit.words == words
 
@@ -199,7 +200,10 @@ def test_the_least_of_the_deflection_limits_counts(read, stated, at_most, words)
 def test_hold_down_and_stock(read):
     lines = '[limits]\nhold_down = "0.2 kN"\nstock = ["3 mm", "1/4 in", "1 cm"]'
     panel = read(changed("[limits]", lines))
-    assert panel.limits.hold_down == pytest.approx(200.0, rel=1e-12)
+    corners, points = panel.limits[1:]
+    assert (corners.at, corners.sense) == ("corners", "hold-down")
+    assert (points.at, points.sense) == ("points", "hold-down")
+    assert corners.at_most == points.at_most == pytest.approx(200.0, rel=1e-12)
     assert panel.stock == pytest.approx((0.003, 0.00635, 0.010), rel=1e-12)
 
 
@@ -278,8 +282,8 @@ def numbers(panel: Panel) -> list[float]:
     plate, limits = panel.plate, panel.limits
     found = [plate.thickness, plate.material.E, plate.material.density, plate.mass]
     found += [*plate.outline.rim.points.ravel(), *plate.outline.holes[0].centre]
-    found += [plate.outline.holes[0].radius, limits.deflection.at_most]
-    found += [limits.stress.at_most, limits.hold_down, *panel.stock]
+    found += [plate.outline.holes[0].radius, *panel.stock]
+    found += [allowed(plate, limit) for limit in limits]
     for load in panel.cases[0].loads:
         stated = [value for value in vars(load).values() if value is not None]
         found += np.hstack([np.ravel(value) for value in stated]).tolist()
@@ -348,8 +352,9 @@ def test_the_rectangles(name, size, material, support, at_most, stress, stock):
     assert plate.thickness == pytest.approx(0.006, rel=1e-12)
     assert plate.material is material
     assert set(map(plate.support, plate.outline.side_names)) == {support}
-    assert panel.limits.deflection.at_most == pytest.approx(at_most, rel=1e-12)
-    assert panel.limits.stress.at_most == pytest.approx(stress / 1.5, rel=1e-12)
+    deflection, own = (allowed(panel.plate, limit) for limit in panel.limits)
+    assert deflection == pytest.approx(at_most, rel=1e-12)
+    assert own == pytest.approx(stress / 1.5, rel=1e-12)
     assert panel.stock == pytest.approx(np.array(stock) * 1e-3, rel=1e-12)
 
 

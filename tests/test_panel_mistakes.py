@@ -23,7 +23,7 @@ LOAD_1 = "[[case]] 1 'wheel', load 1"
 NAMES = "the names are 'south', 'east', 'north', 'west'."
 HEAD_FIELDS = (
     "name, revision, author, thickness, material, tolerance, held in plane, triangles, "
-    "element"
+    "element, design moments"
 )
 MISTAKES = [
     (
@@ -285,8 +285,7 @@ MISTAKES = [
     (
         changed("von Mises", "Von Mises"),
         "[limits] stress: criterion = 'Von Mises': it must be one of von Mises, "
-        "largest "
-        "principal. Did you mean 'von Mises'?",
+        "Tresca, largest principal. Did you mean 'von Mises'?",
     ),
     (
         changed("[limits]", '[limits]\ndeflection = { at_most = "span/200" }'),

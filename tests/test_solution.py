@@ -108,8 +108,8 @@ def test_unknown_quantities_and_points_off_the_plate_are_refused(square):
         square.peak("stress")
     assert str(caught.value) == (
         "there is no quantity 'stress'; the quantities are deflection, von Mises, "
-        "largest principal, smallest principal, shear stress, m_xx, m_yy, m_xy, design "
-        "bottom x, design bottom y, design top x, design top y."
+        "Tresca, largest principal, smallest principal, shear stress, m_xx, m_yy, "
+        "m_xy, design bottom x, design bottom y, design top x, design top y."
     )
     with pytest.raises(InputError, match=r"point \(2, 2\) m is not on the plate"):
         square.moments([(2.0, 2.0)])

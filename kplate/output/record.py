@@ -45,6 +45,7 @@ from kplate.woodarmer import DESIGN
 PEAKS = {
     "deflection": "m",
     "von Mises": "Pa",
+    "Tresca": "Pa",
     "largest principal": "Pa",
     "smallest principal": "Pa",
     "shear stress": "Pa",
