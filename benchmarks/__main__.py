@@ -1,93 +1,129 @@
-"""Print handbook cases, bands, what elements need, or timings."""
+"""Handbook cases beside what kplate finds; convergence, bands, timings.
+
+``python -m benchmarks`` solves all cases, or those named; the commands below do more.
+"""
 
 import argparse
+import json
+import os
 import sys
+from collections.abc import Iterator, Sequence
+from concurrent.futures import ProcessPoolExecutor
+from functools import partial
+from pathlib import Path
 
-from benchmarks import bands, cases, elements, timing
+from benchmarks import bands, elements, numbers, records, report, timing
+from kplate.elements import ELEMENTS
+from kplate.errors import KplateError
+from kplate.files import replacing
 
-# What a handbook prints, beside what kplate finds: one line for each figure.
-SHOWN = (
-    "ssss_u_1", "ssss_u_1.5", "ssss_u_2", "ssss_h_1", "ssss_p_1", "ssss_patch_1",
-    "cccc_u_1", "cccc_u_1.5", "cccc_u_2", "cccc_h_1", "cscs_u_1", "csss_u_1",
-    "ssfs_u_1", "csfs_u_1", "cfff_u_1", "tri_eq_s_u", "rhomb_c_u_60", "ngon6_c_u",
-    "circ_C_u_nu0.3", "circ_S_u_nu0.3", "ann_0.5_iF_oS_u", "hole_ssss_0.15_0.5_F",
-)  # fmt: skip
+COMMANDS = {
+    "bands": "bands of numbers with straight sides beside their values",
+    "elements": "unknowns and seconds to an error, element by element",
+    "timing": "times of each stage, memory and growth, as ratios of one run",
+}
 
 
-def main() -> int:
-    """Run what the command line asks for."""
-    parser = argparse.ArgumentParser(prog="python -m benchmarks", description=__doc__)
-    commands = parser.add_subparsers(dest="command", metavar="COMMAND")
-    shown = commands.add_parser("handbook", help="handbook coefficients (default)")
-    for one in (parser, shown):
-        one.add_argument(
-            "--triangles", type=int, help="about how many to use; else what suits"
-        )
-        one.add_argument(
-            "--all", action="store_true", help="every number of the reference file"
-        )
-    banded = commands.add_parser("bands", help="bands of numbers with straight sides")
-    banded.add_argument(
-        "--tolerance", type=float, default=0.01, help="half width wanted, as a share"
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run what the command line asks for.
+
+    Returns
+    -------
+    int
+        0; 1 where a case was not solved or a bound is false; 2 for bad input.
+    """
+    words = list(sys.argv[1:] if arguments is None else arguments)
+    try:
+        if words and words[0] in COMMANDS:
+            return _command(words[0], words[1:])
+        return _handbook(words)
+    except KplateError as error:
+        print(error, file=sys.stderr)
+        return 2
+
+
+def _handbook(words: Sequence[str]) -> int:
+    commands = "".join(f"\n  {name:12s}{text}" for name, text in COMMANDS.items())
+    parser = argparse.ArgumentParser(
+        prog="python -m benchmarks",
+        description=__doc__,
+        epilog=f"commands, each with --help:{commands}",
+        formatter_class=argparse.RawDescriptionHelpFormatter,
     )
-    banded.add_argument(
-        "--all", action="store_true", help="every problem of the reference file"
+    parser.add_argument("case", nargs="*", help="names of cases; all if left out")
+    parser.add_argument("--family", help="cases of this family only")
+    parser.add_argument("--list", action="store_true", help="list the cases and stop")
+    parser.add_argument("--element", default="auto", choices=["auto", *ELEMENTS])
+    parser.add_argument(
+        "--tolerance",
+        type=_share,
+        help="half width of bands; 0.1 %% if left out, 1 %% beside round sides",
     )
-    commands.add_parser("elements", help="unknowns and seconds to an error")
-    commands.add_parser("timing", help="ratios measured on this machine")
-    args = parser.parse_args()
-    if args.command == "timing":
-        timing.main()
-    elif args.command == "bands":
-        return int(bands.main(args.tolerance, None if args.all else SHOWN) > 0)
-    elif args.command == "elements":
-        elements.main()
-    else:
-        handbook(args.triangles, every=args.all)
+    parser.add_argument(
+        "--triangles", type=int, help="one mesh of about so many instead of bands"
+    )
+    parser.add_argument("--json", type=Path, metavar="FILE", help="write all numbers")
+    parser.add_argument("--jobs", type=int, default=min(2, os.cpu_count() or 1))
+    args = parser.parse_args(words)
+    problems = records.chosen(args.case, args.family)
+    if args.list:
+        for own in problems:
+            print(f"{own['id']:24s} {own['family']:28s} {own['title']}")
+        return 0
+    run = []
+    for one in _measured(problems, args):
+        run.append(one)
+        print("\n".join(report.lines(one)), flush=True)
+    print("\n".join(report.summary(run)))
+    if args.json:
+        with replacing(args.json) as temporary:
+            temporary.write_text(json.dumps(report.as_json(run), indent=1), "utf-8")
+    return int(not all(one.numbers for one in run))
+
+
+def _measured(
+    problems: Sequence[dict], args: argparse.Namespace
+) -> Iterator[numbers.Measured]:
+    """Measure cases, some at a time, in their order."""
+    how = partial(
+        numbers.measure,
+        tolerance=args.tolerance,
+        element=args.element,
+        triangles=args.triangles,
+    )
+    if args.jobs < 2 or len(problems) < 2:
+        yield from map(how, problems)
+        return
+    with ProcessPoolExecutor(args.jobs) as pool:
+        yield from pool.map(how, problems)
+
+
+def _command(name: str, words: Sequence[str]) -> int:
+    parser = argparse.ArgumentParser(
+        prog=f"python -m benchmarks {name}", description=COMMANDS[name]
+    )
+    if name == "bands":
+        parser.add_argument("case", nargs="*", help="names of cases; all if left out")
+        parser.add_argument("--tolerance", type=_share, default=0.01)
+        args = parser.parse_args(words)
+        names = [records.record(case)["id"] for case in args.case] or None
+        return int(bands.main(args.tolerance, names) > 0)
+    parser.parse_args(words)
+    {"elements": elements.main, "timing": timing.main}[name]()
     return 0
 
 
-def handbook(triangles: int | None, *, every: bool) -> None:
-    """Print coefficient, computed, deviation and source."""
-    header = ("case", "quantity", "reference", "computed", "deviation", "in print")
-    line = "{:22s} {:28s} {:>12s} {:>12s} {:>9s} {:>10s}  {}"
-    print(line.format(*header, "source"))
-    worst: dict[str, list[float]] = {}
-    names = [r["id"] for r in cases.records()] if every else SHOWN
-    for name in names:
-        for row in cases.rows(cases.record(name), triangles=triangles):
-            kind = row.quantity.split(" at ")[0]
-            worst.setdefault(kind, []).append(abs(row.deviation))
-            if not every and row.published is None:
-                continue
-            printed = "-" if row.published is None else f"{row.published:.5g}"
-            source = row.publication or row.source
-            print(
-                line.format(
-                    row.case,
-                    row.quantity,
-                    f"{row.value:.6g}",
-                    f"{row.computed:.6g}",
-                    f"{100.0 * row.deviation:+.2f} %",
-                    printed,
-                    source,
-                )
-            )
-    print("\nkind of quantity        numbers  median deviation  largest")
-    for kind, deviations in worst.items():
-        ordered = sorted(deviations)
-        median = ordered[len(ordered) // 2]
-        print(
-            f"{kind:22s} {len(ordered):8d}  {100.0 * median:14.3f} %  "
-            f"{100.0 * ordered[-1]:6.2f} %"
+def _share(text: str) -> float:
+    """A tolerance: 0.001, or 0.1%."""
+    try:
+        number = float(text.rstrip("% ")) * (0.01 if text.endswith("%") else 1.0)
+    except ValueError:
+        number = 0.0
+    if not 0.0 < number < 1.0:
+        raise argparse.ArgumentTypeError(
+            f"{text!r} is no tolerance; give a share such as 0.001, or 0.1%"
         )
-    print(
-        "\nReference values were computed without finite elements (series, closed "
-        "forms, collocation);\na printed figure marked 'from memory' was recalled, not "
-        "looked up. D = 1, pressure 1, force 1. A deviation is a share of the "
-        "reference, or of 2 %\nof the largest of its kind in the case where that is "
-        "more; + is too large in magnitude."
-    )
+    return number
 
 
 if __name__ == "__main__":

@@ -14,7 +14,7 @@ from typing import Any
 import numpy as np
 
 import kplate as kp
-from benchmarks import cases
+from benchmarks import cases, records
 from kplate.adapt import corner_grading
 from kplate.elements import ELEMENTS
 from kplate.loads import Case
@@ -84,7 +84,7 @@ def main() -> None:
 
 def clamped_moment() -> None:
     """Print how much faster the quintic has the clamped edge moment to 0.1 %."""
-    problem = cases.record("cccc_u_1")
+    problem = records.record("cccc_u_1")
     wanted = [
         item
         for item in problem["quantities"]
@@ -111,7 +111,7 @@ def clamped_moment() -> None:
 def needs(problems: Sequence[str]) -> Iterator[Need]:
     """Measure problems, mesh family by mesh family, element by element."""
     for name in problems:
-        problem = cases.record(name)
+        problem = records.record(name)
         wanted = _wanted(problem)
         for meshes in ("uniform", "graded"):
             for element in ELEMENTS:
@@ -152,8 +152,8 @@ def _runs(
     most: int = MOST,
 ) -> Iterator[tuple[int, float, list[float]]]:
     """Unknowns, CPU seconds and errors on finer and finer meshes."""
-    plate, load = cases.plate(problem), cases.load(problem)
-    case = Case(name="load", loads=[load])
+    plate, loads = cases.plate(problem), cases.loads(problem)
+    case = Case(name="load", loads=loads)
     last = 0
     for count in counts:
         mesh = mesh_outline(

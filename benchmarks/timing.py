@@ -16,7 +16,7 @@ import numpy as np
 from threadpoolctl import threadpool_limits
 
 import kplate as kp
-from benchmarks import cases
+from benchmarks import cases, records
 from kplate import assembly
 from kplate.boundary import constrain
 from kplate.dofs import Numbering
@@ -42,7 +42,7 @@ def solver() -> None:
     print("solve without meshing; 1.0 is one bare CHOLMOD factorisation of the matrix")
     print("unknowns  factorisation  whole solve  stiffness and assembly  peak memory")
     for unknowns in UNKNOWNS:
-        plate = cases.plate(cases.record("ssss_u_1"))
+        plate = cases.plate(records.record("ssss_u_1"))
         mesh = mesh_outline(
             plate.outline, size=size_for(plate.outline, int(unknowns / 1.5))
         )
@@ -88,10 +88,10 @@ def errors() -> None:
     print("\nerror against unknowns, unstructured meshes")
     print("case       unknowns   deflection  centre moment  edge: reaction or moment")
     for name, edge in (("ssss_u_1", "line reaction"), ("cccc_u_1", "m_yy")):
-        problem = cases.record(name)
+        problem = records.record(name)
         for triangles in (500, 2_000, 8_000, 32_000):
             plate = cases.plate(problem)
-            solution = kp.solve(plate, [cases.load(problem)], triangles=triangles)
+            solution = kp.solve(plate, cases.loads(problem), triangles=triangles)
             wanted = {(q["quantity"], tuple(q["at"])): q for q in problem["quantities"]}
             found = []
             for key in (

@@ -12,7 +12,7 @@ import oracles
 import pytest
 from plates import SIDES, grid, rectangle, unit_material
 
-from benchmarks import cases
+from benchmarks import cases, records
 from kplate.adapt import solve
 from kplate.boundary import rigid_motions
 from kplate.elements.triangle import edge_normals
@@ -733,9 +733,9 @@ REFERENCE = [
 @pytest.mark.parametrize("name", REFERENCE)
 def test_corner_forces_of_the_reference_file_are_met(name):
     """At 90 degrees: series and collocation; within 0.3 %."""
-    problem = cases.record(name)
+    problem = records.record(name)
     solution = solve(
-        cases.plate(problem), [cases.load(problem)], element="quintic", triangles=250
+        cases.plate(problem), cases.loads(problem), element="quintic", triangles=250
     )
     wanted = [q for q in problem["quantities"] if q["quantity"] == "corner force"]
     assert wanted
