@@ -1,6 +1,6 @@
 """One public function for each command: solve, judge, write."""
 
-from dataclasses import dataclass, replace
+from dataclasses import asdict, dataclass, replace
 from pathlib import Path
 
 import numpy as np
@@ -20,6 +20,7 @@ from kplate.describe import describe
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.goals import Peak
+from kplate.independent import Independent, independent
 from kplate.judging import Judged, judgements, to_judge
 from kplate.limits import (
     DeflectionLimit,
@@ -65,6 +66,8 @@ class Checked:
         The judgement.
     validity : Validity
         Whether the theory holds.
+    independent : tuple
+        Each case's name and what formulas say beside it.
     files : tuple of Path
         What was written.
     """
@@ -75,6 +78,7 @@ class Checked:
     lines: tuple[Line, ...]
     verdict: Verdict
     validity: Validity
+    independent: tuple[tuple[str, tuple[Independent, ...]], ...] = ()
     files: tuple[Path, ...] = ()
 
     @property
@@ -152,6 +156,7 @@ def check(
         lines=lines,
         verdict=verdict,
         validity=found,
+        independent=tuple((c, independent(solution, case=c)) for c in solution.cases),
     )
     if out is None:
         return checked
@@ -300,6 +305,10 @@ def _closing(checked: Checked) -> list[str]:
             f"supports {signed(reactions.total.force, panel)}, force and moments to "
             f"{max(reactions.imbalance, 1e-16):.0e}"
         )
+    for case, formulas in checked.independent:
+        shown = [own.words(length, panel.units.deflection) for own in formulas]
+        words = "; ".join(shown) or "no formula is near its plate and loads"
+        lines.append(f"independent check of {case}: {words}")
     lines += _reached(panel, solution)
     mark = legend(checked.lines)
     triangles = len(solution.mesh.triangles)
@@ -393,6 +402,12 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
             for j in checked.verdict.judgements
         ],
     }
+    record["independent"] = [
+        asdict(own) | {"ratio": own.ratio, "agrees": own.agrees}
+        for _, formulas in checked.independent
+        for own in formulas
+        if own.value
+    ]
     worst = solution.peak("deflection").case
     picture = write_picture(
         solution,

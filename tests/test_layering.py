@@ -12,7 +12,7 @@ import kplate
 LAYERS = [  # ground floor first; those on one line do not import each other
     {"errors", "arrays"},
     {"values", "quadrature", "materials", "curves", "linalg", "woodarmer"},
-    {"units", "files", "given", "chords", "fitting"},
+    {"units", "files", "given", "chords", "fitting", "handbook"},
     {"quantities"},
     {"fields"},
     {"polygon"},
@@ -46,7 +46,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"extremes"},
     {"certifying", "basis"},
     {"adapt", "superposed"},
-    {"validity", "judging"},
+    {"validity", "judging", "independent"},
     {"output"},
     {"statements", "outlines", "caseloads"},
     {"panel"},
