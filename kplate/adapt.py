@@ -21,6 +21,7 @@ from kplate.mesh import Mesh
 from kplate.meshing import mesh_outline, refined_triangles, size_for
 from kplate.plate import Plate
 from kplate.refine import refined_towards
+from kplate.roundedges import fitted
 from kplate.singular import excluded_places, plate_corners
 from kplate.solution import Solution
 from kplate.solve.dual import solve_dual
@@ -47,6 +48,9 @@ FINE_TOLERANCE = 0.005
 # Of places of peaks that are nearer to each other than this share of the span, one gets
 # a vertex: the deflection is flat there, and slim triangles spoil a mesh.
 APART = 0.02
+# Least number of edges on a full circle that an element follows: on a mesh of one size,
+# and on the first one on the way to a tolerance.
+AROUND, COARSE_AROUND = {"quintic": 32}, {"quintic": 12}
 
 
 def solve(
@@ -175,10 +179,17 @@ def solve(
     outline = plate.outline
     inside = outline.zones or outline.seams or outline.marks
     mesh = (mesh_guarded if inside else mesh_outline)(
-        outline, size=size, fine=fine, graded=corner_grading(plate)
+        outline,
+        size=size,
+        fine=fine,
+        graded=corner_grading(plate),
+        around=AROUND.get(chosen.element),
     )
+    if chosen.element in AROUND:
+        mesh = fitted(mesh)
     state = solve_static(plate, mesh, cases, element=chosen.element, progress=progress)
-    dual = solve_dual(plate, mesh, cases) if balanced else None
+    arcs = state.constraints.numbering.arcs
+    dual = solve_dual(plate, mesh, cases, arcs=arcs) if balanced else None
     return Solution(
         state=state, excluded_radius=excluded_radius, dual=dual, tolerance=tolerance
     )
@@ -240,15 +251,18 @@ def _to_tolerance(
     def mesh_for(wanted: Sequence[Goal]) -> Mesh:
         outline = followed(plate.outline, cases, wanted)
         inside = outline.zones or outline.seams or outline.marks
-        mesh = (mesh_guarded if inside else mesh_outline)(outline, size=size)
+        mesh = (mesh_guarded if inside else mesh_outline)(
+            outline, size=size, around=COARSE_AROUND.get(element)
+        )
         # Discs from twice the radius on: their rims then lie among small triangles.
-        return refined_towards(
+        finer = refined_towards(
             mesh,
             [
                 *((place, least, 0.0) for place, least in graded),
                 *((d.place, share * d.radius, 2.0 * d.radius) for d in discs),
             ],
         )
+        return fitted(finer) if element in AROUND else finer
 
     mesh = mesh_for(goals)
     if Peak(quantity="deflection") in goals:

@@ -14,7 +14,6 @@ from kplate.boundary import Constraints
 from kplate.dofs import Numbering, add_up
 from kplate.elements import Element
 from kplate.elements.triangle import Geometry, edge_normals
-from kplate.mesh import Mesh
 from kplate.pattern import Pattern
 from kplate.plate import Plate
 
@@ -39,12 +38,12 @@ def stiffness(plate: Plate, element: Element, constraints: Constraints) -> sp.cs
         Rows sorted, diagonal included.
     """
     numbering = constraints.numbering
-    own = _turned(element_stiffness(plate, numbering.mesh, element), constraints)
+    own = _turned(element_stiffness(plate, numbering, element), constraints)
     return Pattern(numbering=numbering).matrix(own, constraints.free)
 
 
 def element_stiffness(
-    plate: Plate, mesh: Mesh, element: Element, triangles: Ints | None = None
+    plate: Plate, numbering: Numbering, element: Element, triangles: Ints | None = None
 ) -> Iterator[tuple[Ints, Floats]]:
     """Element stiffness matrices, block by block.
 
@@ -55,7 +54,7 @@ def element_stiffness(
     K : ndarray, shape (n, d, d)
         Their matrices.
     """
-    q = len(element.rule.weights)
+    mesh, q = numbering.mesh, len(element.rule.weights)
     chosen = np.arange(len(mesh.triangles)) if triangles is None else triangles
     for start in range(0, len(chosen), BLOCK):
         block = chosen[start : start + BLOCK]
@@ -64,7 +63,11 @@ def element_stiffness(
         )
         own = plate.rigidities[mesh.zones[block]]
         rigidity = np.broadcast_to(own[:, None], (len(block), q, 3, 3))
-        yield block, element.stiffness(geometry, rigidity)
+        K = element.stiffness(geometry, rigidity)
+        arcs = numbering.arcs.among(block)
+        if len(arcs):
+            K[arcs.rows] = element.shape.round_stiffness(arcs, own[arcs.rows])
+        yield block, K
 
 
 def internal_forces(
@@ -81,7 +84,7 @@ def internal_forces(
     """
     mesh = numbering.mesh
     result = np.zeros_like(unknowns)
-    for block, K in element_stiffness(plate, mesh, element, triangles):
+    for block, K in element_stiffness(plate, numbering, element, triangles):
         table = numbering.table[block]
         vertices = mesh.points[mesh.triangles[block]]
         bent = without_rigid_motion(unknowns[table], vertices, numbering)

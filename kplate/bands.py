@@ -31,6 +31,8 @@ from kplate.arrays import Floats, Ints
 from kplate.boundary import seam_tangents, side_tangents
 from kplate.brackets import SUMMED, Brackets
 from kplate.elements import bernstein
+from kplate.elements.arcs import Arcs
+from kplate.elements.dual_arcs import RoundDual
 from kplate.errors import SolveError
 from kplate.functionals import Functional, local_pressure, settled_vertices
 from kplate.kernelled import (
@@ -41,7 +43,15 @@ from kplate.kernelled import (
     kernelled_on,
 )
 from kplate.loading import field_doubts, unbalanced
-from kplate.loads import Case, LineForce, Load, PointForce, Pressure, PressureField
+from kplate.loads import (
+    Case,
+    EdgeMoment,
+    LineForce,
+    Load,
+    PointForce,
+    Pressure,
+    PressureField,
+)
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
 from kplate.polygon import SNAP
@@ -136,7 +146,7 @@ def certify(
     """
     check_cases(cases)
     system = StaticSystem.of(plate, mesh, element)
-    balance = DualSystem.of(plate, mesh, ORDER)
+    balance = DualSystem.of(plate, mesh, ORDER, system.numbering.arcs)
     adjoint = [f for f in functionals if not f.reason]
     kernelled = {
         j: kernelled_on(mesh, f.kernel, ORDER)
@@ -149,15 +159,16 @@ def certify(
     c = len(cases)
     osc = _oscillations(plate, mesh, cases, adjoint, kernelled)
     gaps, cross, work = _gaps(system, balance, (unknowns, moments), kernelled, c)
+    rims = _left_on_arcs(balance, moments, cases)
     state = system.state_of(cases, right.forces[:, :c], unknowns[:, :c])
     dual = balance.state_of(
         cases,
         right.balanced[:, :, :c],
         (sunk[:, :c], inside[..., :c], moments[..., :c], defect[:, :c]),
     )
-    kind, reason = worth(plate, mesh, cases)
+    kind, reason = worth(plate, mesh, cases, system.numbering.arcs)
     if kind == "bound":
-        _check_energies(state, dual, osc[:, :c])
+        _check_energies(state, dual, osc[:, :c] + rims[:, :c])
     pulls = right.forces[:, :c].T @ unknowns  # l_0(u_j)
     given = unknowns[:, :c].T @ right.forces  # l_j(u_0)
     size = np.abs(right.forces[:, :c]).T @ np.abs(unknowns)
@@ -176,7 +187,7 @@ def certify(
                 centres[j, k] += f.kernel.constant(p, gradient)
                 spare[j, k] += kernel_error(state, kernelled[j], k)
     norms = np.sqrt(gaps.sum(axis=0))
-    off = np.sqrt((osc**2).sum(axis=0))
+    off = np.sqrt((osc**2).sum(axis=0)) + np.sqrt(rims.sum(axis=0))
     brackets = Brackets(
         kind=kind,
         reason=reason,
@@ -193,7 +204,7 @@ def certify(
     names, alone = [case.name for case in cases], np.eye(c)
     values = brackets.values(alone, names)
     energies = brackets.energies(alone, names, state.strain_energy)
-    local = gaps + osc**2
+    local = gaps + osc**2 + rims
     return Certified(
         state=state,
         dual=dual,
@@ -206,18 +217,35 @@ def certify(
     )
 
 
-def worth(plate: Plate, mesh: Mesh, cases: Sequence[Case]) -> tuple[Kind, str]:
-    """What bands on this mesh are worth, and why they are no bounds if they are not."""
+def worth(
+    plate: Plate, mesh: Mesh, cases: Sequence[Case], arcs: Arcs
+) -> tuple[Kind, str]:
+    """What bands on this mesh are worth, and why they are no bounds if they are not.
+
+    `arcs` are the round edges that are followed.
+    """
     loads = [load for case in cases for load in case.loads]
-    reason = _drawn(plate, mesh) or _bends(plate, mesh) or _put(plate, mesh, loads)
+    reason = (
+        _drawn(plate, mesh, arcs)
+        or _bends(plate, mesh)
+        or _put(plate, mesh, loads)
+        or _cut(mesh, loads, arcs)
+    )
     return ("estimate", reason) if reason else ("bound", "")
 
 
-def _drawn(plate: Plate, mesh: Mesh) -> str:
-    """What of the plate is round, so that the mesh draws it by chords."""
+def _drawn(plate: Plate, mesh: Mesh, arcs: Arcs) -> str:
+    """What of the plate is round but drawn by chords."""
     outline = plate.outline
     curved = mesh.boundary_sides[mesh.boundary_circles != STRAIGHT_EDGE]
-    names = [f"side {mesh.side_names[int(side)]}" for side in curved]
+    sides = [mesh.side_names[int(side)] for side in curved]
+    if len(arcs):
+        for side in sides:
+            support = plate.support(side)
+            if support.holds_slope and not support.holds_deflection:
+                return f"side {side} is round and holds the slope alone"
+        sides = []
+    names = [f"side {side}" for side in sides]
     for zone, section in zip(outline.zones, plate.sections[1:], strict=True):
         if section != plate.sections[0] and zone.shape.line.bulges.any():
             names.append(f"zone {zone.name}")
@@ -230,9 +258,9 @@ def _drawn(plate: Plate, mesh: Mesh) -> str:
 def _bends(plate: Plate, mesh: Mesh) -> str:
     """A side or seam that is held and bends, so that one tangent stands for two."""
     joints = mesh.boundary_joints
-    start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
-    own = (end - start) / mesh.boundary_lengths[:, None]
-    off = np.abs(side_tangents(plate, mesh) - own[joints]).max(axis=(1, 2))
+    ends = mesh.boundary_edges[:, 1]
+    own = np.stack([mesh.tangents(joints[:, k], ends) for k in (0, 1)], axis=1)
+    off = np.abs(side_tangents(plate, mesh) - own).max(axis=(1, 2))
     for side in mesh.boundary_sides[joints[off > BENT, 0]].tolist():
         if plate.support(mesh.side_names[side]).holds:
             return f"side {mesh.side_names[side]} bends where it is held"
@@ -261,6 +289,14 @@ def _put(plate: Plate, mesh: Mesh, loads: Sequence[Load]) -> str:
                     return "a point force acts within a triangle"
             case PressureField():
                 return "a pressure is stated as a function, of which samples are known"
+    return ""
+
+
+def _cut(mesh: Mesh, loads: Sequence[Load], arcs: Arcs) -> str:
+    """A load whose edge passes through triangles with a round edge."""
+    for load in loads:
+        if len(arcs) and unbalanced(mesh, load)[arcs.rows].any():
+            return "a load is not linear on triangles at a round side"
     return ""
 
 
@@ -303,6 +339,12 @@ def _right_sides(
             sunk[numbering.at_vertices(vertices)[:, 0], column] = 1.0
             on = numbering.on_edges(mesh.edge_numbers(edges))
             sunk[on[:, : numbering.edge_deflections], column] = 1.0
+            # Of a round edge the first is the constant, the others change its form.
+            curved = np.isin(
+                mesh.edge_numbers(edges),
+                mesh.triangle_edges[numbering.arcs.rows, numbering.arcs.edges],
+            )
+            sunk[on[curved, 1 : numbering.edge_deflections], column] = 0.0
         else:
             forces[:, column] = system.forces(f.loads)
             balanced[:, :, column] = balance.forces(f.loads)
@@ -339,8 +381,20 @@ def _gaps(
         gap = balance.dual.moments(moments[block], rule.points) - bent
         soft = np.linalg.inv(system.plate.rigidities)[mesh.zones[block]]
         weights = mesh.areas[block][:, None] * rule.weights
+        weights[system.numbering.arcs.among(block).rows] = 0.0
         strain = soft[:, None] @ gap * weights[..., None, None]
         gaps[block] = np.einsum("nqaj,nqaj->nj", gap, strain)
+        cross += np.einsum("nqak,nqaj->kj", gap[..., :cases], strain, optimize=True)
+        own = soft[:, None] @ bent * weights[..., None, None]
+        work += np.einsum("nqak,nqaj->kj", bent[..., :cases], own, optimize=True)
+    arcs = system.numbering.arcs
+    if len(arcs):
+        points, weights = arcs.rule
+        bent = _bent(system, unknowns, arcs.rows, points)
+        gap = balance.dual.moments(moments[arcs.rows], points) - bent
+        soft = np.linalg.inv(system.plate.rigidities)[mesh.zones[arcs.rows]]
+        strain = soft[:, None] @ gap * weights[..., None, None]
+        gaps[arcs.rows] = np.einsum("nqaj,nqaj->nj", gap, strain)
         cross += np.einsum("nqak,nqaj->kj", gap[..., :cases], strain, optimize=True)
         own = soft[:, None] @ bent * weights[..., None, None]
         work += np.einsum("nqak,nqaj->kj", bent[..., :cases], own, optimize=True)
@@ -368,16 +422,52 @@ def _gaps(
 def _bent(
     system: StaticSystem, unknowns: Floats, triangles: Ints, points: Floats
 ) -> Floats:
-    """Moments of the elements at points (q, 3) of triangles, (n, q, 3, c)."""
+    """Moments of the elements at points (q, 3) or (n, q, 3), (n, q, 3, c)."""
     numbering = system.numbering
     mesh = numbering.mesh
     vertices = mesh.points[mesh.triangles[triangles]]
     own = assembly.without_rigid_motion(
         unknowns[numbering.table[triangles]], vertices, numbering
     )
-    strain = system.element.shape.fields(vertices, points, own, 2)
+    arcs = numbering.arcs.among(triangles)
+    strain = system.element.shape.fields(vertices, points, own, 2, arcs)
     moments: Floats = system.plate.rigidities[mesh.zones[triangles]][:, None] @ strain
     return moments
+
+
+def _left_on_arcs(
+    balance: DualSystem, moments: Floats, cases: Sequence[Case]
+) -> Floats:
+    """Squares of what is left of m_nn and v_n along arcs, (n_triangles, columns).
+
+    In the norm of the energy: what its work on a deflection of unit energy may be.
+    """
+    mesh, arcs = balance.mesh, balance.constraints.numbering.arcs
+    left = np.zeros((len(mesh.triangles), moments.shape[-1]))
+    if not len(arcs):
+        return left
+    force, moment = (np.zeros((len(arcs), moments.shape[-1])) for _ in range(2))
+    sides = np.full(len(mesh.triangles), -1)
+    curved = mesh.boundary_circles != STRAIGHT_EDGE
+    at = mesh.triangles_at(mesh.boundary_edges[curved])
+    sides[at] = mesh.boundary_sides[curved]
+    for k, case in enumerate(cases):
+        for load in case.loads:
+            if isinstance(load, LineForce | EdgeMoment):
+                own = sides[arcs.rows] == _side_number(mesh, load.along)
+                given = force if isinstance(load, LineForce) else moment
+                amount = load.force if isinstance(load, LineForce) else load.moment
+                given[own, k] += amount
+    found = RoundDual(order=balance.dual.order, arcs=arcs)
+    squares = found.residuals(moments[arcs.rows], force, moment)
+    stiff = np.array([_least_stiffness(D) for D in balance.plate.rigidities])
+    left[arcs.rows] = squares / stiff[mesh.zones[arcs.rows]][:, None]
+    return left
+
+
+def _side_number(mesh: Mesh, name: str) -> int:
+    """Number of a side; -2 for a seam."""
+    return mesh.side_names.index(name) if name in mesh.side_names else -2
 
 
 def _oscillations(

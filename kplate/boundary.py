@@ -24,7 +24,7 @@ from kplate.arrays import Bools, Floats, Ints
 from kplate.dofs import Numbering
 from kplate.elements.triangle import edge_normals
 from kplate.errors import SolveError
-from kplate.mesh import Mesh
+from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
 
 # Directions held to less than this share of the strongest are round-off. Two tangents
@@ -279,10 +279,14 @@ def _side_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:
     joints, tangents = mesh.boundary_joints, side_tangents(plate, mesh)
     holds, clamps = _side_supports(plate, mesh)
     vertices = mesh.boundary_edges[:, 1]
-    return [
-        (vertices, _rows(tangents[:, k], holds[joints[:, k]], clamps[joints[:, k]]))
-        for k in (0, 1)
-    ]
+    found = []
+    for k in (0, 1):
+        edges = joints[:, k]
+        rows = _rows(tangents[:, k], holds[edges], clamps[edges])
+        # Along an arc w,tt is not zero where the slope across it is free.
+        rows[(mesh.boundary_circles[edges] != STRAIGHT_EDGE) & ~clamps[edges], 3] = 0.0
+        found.append((vertices, rows))
+    return found
 
 
 def _seam_rows(plate: Plate, mesh: Mesh) -> list[tuple[Ints, Floats]]:

@@ -25,6 +25,7 @@ from kplate.loads import Case
 from kplate.mesh import Mesh
 from kplate.plate import Plate
 from kplate.refine import refined
+from kplate.roundedges import fitted
 from kplate.solution import Solution
 from kplate.solve.static import Progress
 from kplate.values import Value
@@ -120,6 +121,8 @@ def refine_to(
         if not unmet.any() or unknowns >= budget or len(steps) >= MOST_STEPS:
             return replace(solution, tolerance=tolerance, history=tuple(steps))
         mesh = _bisected(mesh, _bulk(unmet))
+        if len(certified.state.constraints.numbering.arcs):
+            mesh = fitted(mesh)
 
 
 def _keep_best(known: dict[tuple[Goal, str], Value], certified: Certified) -> None:

@@ -90,8 +90,6 @@ def _kinks(plate: Plate) -> str:
     for seam in plate.outline.seams:
         if plate.support(seam.name).holds_slope:
             return f"seam {seam.name} holds the slope"
-    for side in _round_sides(plate):
-        return f"side {side} is round"
     for side in _bent_sides(plate):
         return f"side {side} bends where it is held"
     return ""

@@ -1,11 +1,12 @@
 """Numbers of the unknowns: vertex by vertex, then edge by edge."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
 
 from kplate.arrays import Floats, Ints
+from kplate.elements.arcs import Arcs, no_arcs
 from kplate.mesh import Mesh
 
 
@@ -22,12 +23,15 @@ class Numbering:
     edge_deflections : int, optional
         How many of those on an edge, the first ones, are deflections; the rest are
         slopes along the edge's normal.
+    arcs : Arcs, optional
+        Round edges that the triangles follow; chords stand for them if left out.
     """
 
     mesh: Mesh
     per_vertex: int
     per_edge: int
     edge_deflections: int = 0
+    arcs: Arcs = field(default_factory=no_arcs)
 
     @property
     def count(self) -> int:

@@ -13,6 +13,8 @@ from kplate.mesh import Mesh
 from kplate.quadrature import gauss
 from kplate.solve.dual import DualState
 
+_POINTS = 8  # along an edge; exact on straight ones
+
 
 def edge_moments(dual: DualState, edges: Ints, shares: Floats) -> Floats:
     """Moments in N at shares (q,) of boundary edges (k,), (k, q, 3, c)."""
@@ -30,19 +32,26 @@ def side_forces(dual: DualState, name: str, corners: Sequence[int]) -> Floats:
     mesh = dual.mesh
     own = np.flatnonzero(mesh.boundary_sides == mesh.side_names.index(name))
     start, end = np.moveaxis(mesh.points[mesh.boundary_edges[own]], 1, 0)
-    lengths = mesh.boundary_lengths[own]
-    tangent = (end - start) / lengths[:, None]
-    normal = np.column_stack([tangent[:, 1], -tangent[:, 0]])
-    shares, weights = gauss(dual.order)
+    lengths = mesh.boundary_lengths[own].copy()
+    shares, weights = gauss(_POINTS)
     triangles, barycentrics = _at(mesh, own, shares)
+    normal = np.column_stack([end[:, 1] - start[:, 1], start[:, 0] - end[:, 0]])
+    normals = np.repeat((normal / lengths[:, None])[:, None], len(shares), axis=1)
+    arcs = dual.constraints.numbering.arcs.among(triangles)
+    if len(arcs):
+        lengths[arcs.rows] = arcs.lengths
+        barycentrics[arcs.rows] = arcs.barycentrics(arcs.at(shares)[0])
+        normals[arcs.rows] = arcs.frames(shares)[1]
     shears = dual.shears_at(triangles, barycentrics)
-    total = np.einsum("k,q,ka,kqac->c", lengths, weights, normal, shears, optimize=True)
+    total = np.einsum(
+        "k,q,kqa,kqac->c", lengths, weights, normals, shears, optimize=True
+    )
     ends = edge_moments(dual, own, np.array([0.0, 1.0]))
-    nx, ny = normal.T
-    tx, ty = tangent.T
-    twist = np.stack([nx * tx, ny * ty, nx * ty + ny * tx], axis=-1)
-    m_ns = np.einsum("ka,kqac->kqc", twist, ends)
     vertices = mesh.boundary_edges[own]
+    tangent = np.stack([mesh.tangents(own, vertices[:, k]) for k in (0, 1)], axis=1)
+    tx, ty = np.moveaxis(tangent, -1, 0)
+    twist = np.stack([ty * tx, -tx * ty, ty * ty - tx * tx], axis=-1)
+    m_ns = np.einsum("kqa,kqac->kqc", twist, ends)
     breaks = np.isin(vertices, corners)
     breaks |= np.bincount(vertices.ravel(), minlength=len(mesh.points))[vertices] == 1
     total += m_ns[breaks[:, 0], 0].sum(axis=0) - m_ns[breaks[:, 1], 1].sum(axis=0)

@@ -223,10 +223,13 @@ def _room(
     place = np.asarray(at, dtype=float)
     found = [(math.inf, "nothing")]
     start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
-    keep, line = np.ones(len(start), dtype=bool), None
+    straight = mesh.boundary_circles == STRAIGHT_EDGE
+    keep, line = straight.copy(), None
     if edge is not None:
         line = _line(plate, mesh, edge)
-        keep = ~_same_line(plate, mesh, edge) | _turned(mesh, cases)
+        keep &= ~_same_line(plate, mesh, edge) | _turned(mesh, cases)
+    if not straight.all():
+        found.append((_off_round_edges(mesh, place), "a round side"))
     if keep.any():
         found.append((float(_distance(place, start[keep], end[keep]).min()), "a side"))
     seams = mesh.seam_edges[_bearing(plate, mesh, cases)]
@@ -279,6 +282,18 @@ def _line(plate: Plate, mesh: Mesh, edge: int) -> _Line:
         normal=np.array(_inward(mesh, edge)),
         size=plate.outline.size,
     )
+
+
+def _off_round_edges(mesh: Mesh, place: Floats) -> float:
+    """Distance from a place to the triangles at round edges, or less."""
+    curved = mesh.boundary_circles != STRAIGHT_EDGE
+    triangles = mesh.triangles_at(mesh.boundary_edges[curved])
+    corners = mesh.points[mesh.triangles[triangles]]
+    x, y, radius = mesh.circles[mesh.boundary_circles[curved]].T
+    off = np.abs(np.hypot(place[0] - x, place[1] - y) - radius)
+    for k in range(3):
+        off = np.minimum(off, _distance(place, corners[:, k - 1], corners[:, k]))
+    return float(off.min())
 
 
 def _same_line(plate: Plate, mesh: Mesh, edge: int) -> Bools:

@@ -33,13 +33,14 @@ def mesh_guarded(
     size: float,
     fine: Sequence[tuple[Place, float]] = (),
     graded: Sequence[tuple[Place, float]] = (),
+    around: int | None = None,
     seconds: float = SECONDS,
 ) -> Mesh:
     """Mesh an outline in a second process.
 
     Parameters
     ----------
-    outline, size, fine, graded
+    outline, size, fine, graded, around
         As in `kplate.meshing.mesh_outline`.
     seconds : float
         How long it may take.
@@ -53,7 +54,12 @@ def mesh_guarded(
     InputError, MeshError
         As in `mesh_outline`; MeshError too where the time is up or the process dies.
     """
-    options = {"size": size, "fine": tuple(fine), "graded": tuple(graded)}
+    options = {
+        "size": size,
+        "fine": tuple(fine),
+        "graded": tuple(graded),
+        "around": around,
+    }
     what = f"meshing at size {size:g} m"
     mesh: Mesh = _guarded("mesh", (outline, options), seconds, what)
     return mesh

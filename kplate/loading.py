@@ -14,6 +14,7 @@ from kplate import cutting
 from kplate.arrays import Floats, Ints
 from kplate.dofs import Numbering, add_up
 from kplate.elements import bernstein
+from kplate.elements.arcs import Arcs
 from kplate.elements.triangle import Geometry
 from kplate.errors import InputError
 from kplate.loads import (
@@ -29,7 +30,7 @@ from kplate.loads import (
     RectanglePatch,
     SelfWeight,
 )
-from kplate.mesh import Mesh
+from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
 from kplate.quadrature import Rule, composite, gauss, triangle_rule
 from kplate.sampling import QUARTERS, Sampled, sampled
@@ -41,6 +42,7 @@ MISSING = 1e-9
 ROUND_OFF = 1e-12
 FIELD_DEGREE = 12  # of the rule that looks for it in a stated function
 _FIELD_RULE = triangle_rule(FIELD_DEGREE)
+_SLICES = 24  # of a triangle with a round edge that the edge of a load may cut
 
 
 class Shape(Protocol):
@@ -59,8 +61,12 @@ class Shape(Protocol):
         """Consistent loads of a pressure."""
 
     @property
-    def evaluate(self) -> Callable[[Floats, Floats], Floats]:
+    def evaluate(self) -> Callable[[Floats, Floats, Arcs | None], Floats]:
         """Rows of w and slopes."""
+
+    @property
+    def arc_loads(self) -> Callable[[Arcs, Floats, Floats], Floats]:
+        """Consistent loads of forces and moments along round edges."""
 
 
 def load_vector(
@@ -147,8 +153,8 @@ def field_doubts(
     ndarray, shape (c,)
         In N m for deflections in m.
     """
-    mesh, total = numbering.mesh, np.zeros(unknowns.shape[1])
-    known, owner = _sampled(mesh, element, load)
+    total = np.zeros(unknowns.shape[1])
+    known, owner = _sampled(numbering, element, load)
     pieces, triangles = known.pieces[known.rough], owner[known.owners[known.rough]]
     fine = composite(QUARTERS, _FIELD_RULE)
     points = np.concatenate([fine.points, _FIELD_RULE.points])
@@ -156,7 +162,7 @@ def field_doubts(
     for start in range(0, len(pieces), BLOCK):
         block = slice(start, start + BLOCK)
         own, at = triangles[block], points @ pieces[block]
-        rows = _deflection_rows(mesh, element, own, at)
+        rows = _deflection_rows(numbering, element, own, at)
         w = rows @ unknowns[numbering.table[own]]
         weighted = _function_at(load, at) * weights * _areas(pieces[block])[:, None]
         total += np.abs(np.einsum("nq,nqc->nc", weighted, w)).sum(axis=0)
@@ -211,6 +217,14 @@ def _add_pressure(
         points = rule.points @ vertices
         pressure = _pressure(load, plate, points, mesh.zones[block])
         own = element.load(Geometry(vertices=vertices, rule=rule), pressure)
+        arcs = numbering.arcs.among(block)
+        if len(arcs):
+            points, weights = arcs.rule
+            alone = arcs.alone()
+            rows = element.evaluate(arcs.vertices, points, alone)[:, :, 0]
+            zones = mesh.zones[block[arcs.rows]]
+            pressure = _pressure(load, plate, points @ arcs.vertices, zones)
+            own[arcs.rows] = np.einsum("mq,mqd->md", pressure * weights, rows)
         add_up(forces, numbering.table[block], own[..., None])
 
 
@@ -271,9 +285,11 @@ def _function_at(load: PressureField, points: Floats) -> Floats:
     return result
 
 
-def _sampled(mesh: Mesh, element: Shape, load: PressureField) -> tuple[Sampled, Ints]:
+def _sampled(
+    numbering: Numbering, element: Shape, load: PressureField
+) -> tuple[Sampled, Ints]:
     """Where a stated pressure is not smooth, and the triangles of the owners."""
-    pieces, owner = _pieces(mesh, element)
+    pieces, owner = _pieces(numbering, element)
     return sampled(lambda points: _function_at(load, points), pieces), owner
 
 
@@ -282,11 +298,11 @@ def _add_rough(
 ) -> Ints:
     """Add the triangles in which a stated pressure jumps; return the others."""
     mesh = numbering.mesh
-    known, owner = _sampled(mesh, element, load)
+    known, owner = _sampled(numbering, element, load)
     chosen = np.ones(len(mesh.triangles), dtype=bool)
     if len(known.pieces):
         chosen[owner[known.owners]] = False
-        whole, of = _pieces(mesh, element, np.flatnonzero(~chosen))
+        whole, of = _pieces(numbering, element, np.flatnonzero(~chosen))
         smooth = ~np.isin(np.flatnonzero(np.isin(owner, of)), known.owners)
         pieces = np.concatenate([known.pieces, whole[smooth]])
         triangles = np.concatenate([owner[known.owners], of[smooth]])
@@ -342,7 +358,7 @@ def _add_waterline(
         def pressure(points: Floats) -> Floats:
             return load.specific_weight * _depth(load, points)
 
-        pieces, owner = _pieces(mesh, element, cut)
+        pieces, owner = _pieces(numbering, element, cut)
         for parts in cutting.inside_polygon(pieces, corners):
             _add_parts(forces, element, numbering, parts, owner, pressure)
     return np.flatnonzero(depth.min(axis=1) >= 0.0)
@@ -354,7 +370,7 @@ def _add_patch(
     numbering: Numbering,
     load: RectanglePatch | DiscPatch,
 ) -> None:
-    pieces, owner = _pieces(numbering.mesh, element)
+    pieces, owner = _pieces(numbering, element)
     if isinstance(load, RectanglePatch):
         groups = cutting.inside_polygon(pieces, load.corners)
         area = load.size[0] * load.size[1]
@@ -378,13 +394,26 @@ def _add_patch(
 
 
 def _pieces(
-    mesh: Mesh, element: Shape, triangles: Ints | None = None
+    numbering: Numbering, element: Shape, triangles: Ints | None = None
 ) -> tuple[Floats, Ints]:
-    """Pieces on which w is one polynomial, (m, 3, 2), and their triangles, (m,)."""
+    """Pieces on which w is one polynomial, (m, 3, 2), and their triangles, (m,).
+
+    A triangle with a round edge is cut into thin ones about its apex.
+    """
+    mesh = numbering.mesh
     chosen = np.arange(len(mesh.triangles)) if triangles is None else triangles
-    corners = mesh.points[mesh.triangles[chosen]]
-    pieces = np.einsum("skv,nvc->nskc", element.pieces, corners)
-    return pieces.reshape(-1, 3, 2), np.repeat(chosen, len(element.pieces))
+    arcs = numbering.arcs.among(chosen)
+    straight = np.delete(chosen, arcs.rows)
+    corners = mesh.points[mesh.triangles[straight]]
+    pieces = np.einsum("skv,nvc->nskc", element.pieces, corners).reshape(-1, 3, 2)
+    owner = np.repeat(straight, len(element.pieces))
+    if len(arcs):
+        along, _, _ = arcs.at(np.linspace(0.0, 1.0, _SLICES + 1))
+        apex = np.broadcast_to(arcs.corners[0][:, None], along[:, 1:].shape)
+        thin = np.stack([apex, along[:, :-1], along[:, 1:]], axis=2)
+        pieces = np.concatenate([pieces, thin.reshape(-1, 3, 2)])
+        owner = np.concatenate([owner, np.repeat(chosen[arcs.rows], _SLICES)])
+    return pieces, owner
 
 
 def _add_parts(
@@ -404,20 +433,22 @@ def _add_parts(
         block = slice(start, start + step)
         triangles = owner[parts.triangles[block]]
         points = parts.points[block]
-        rows = _deflection_rows(mesh, element, triangles, points)
+        rows = _deflection_rows(numbering, element, triangles, points)
         weighted = pressure(points) * parts.weights[block]
         own = np.einsum("nq,nqd->nd", weighted, rows)
         add_up(forces, numbering.table[triangles], own[..., None])
 
 
 def _deflection_rows(
-    mesh: Mesh, element: Shape, triangles: Ints, points: Floats
+    numbering: Numbering, element: Shape, triangles: Ints, points: Floats
 ) -> Floats:
     """Rows of w at points (n, q, 2) of triangles (n,), (n, q, d)."""
-    n, q = points.shape[:2]
+    mesh, (n, q) = numbering.mesh, points.shape[:2]
     flat = mesh.barycentrics(np.repeat(triangles, q), points.reshape(-1, 2))
     return element.evaluate(
-        mesh.points[mesh.triangles[triangles]], flat.reshape(n, q, 3)
+        mesh.points[mesh.triangles[triangles]],
+        flat.reshape(n, q, 3),
+        numbering.arcs.among(triangles),
     )[:, :, 0]
 
 
@@ -438,7 +469,9 @@ def _add_point(
     except InputError as error:
         raise InputError(f"{what}: {error}") from error
     rows = element.evaluate(
-        mesh.points[mesh.triangles[triangle]], barycentrics[:, None]
+        mesh.points[mesh.triangles[triangle]],
+        barycentrics[:, None],
+        numbering.arcs.among(triangle),
     )
     if isinstance(load, PointForce):
         own = load.force * rows[:, 0, 0]
@@ -462,6 +495,9 @@ def _add_line(
         stretch = np.ones(len(edges))
     elif load.along in mesh.side_names:
         own = np.flatnonzero(mesh.boundary_sides == mesh.side_names.index(load.along))
+        if len(numbering.arcs):
+            add_along_arcs(forces, element, numbering, load)
+            own = own[mesh.boundary_circles[own] == STRAIGHT_EDGE]
         edges, stretch = mesh.boundary_edges[own], mesh.boundary_stretch[own]
     else:
         names = [*mesh.side_names, *(mesh.seam_names if not seam else ())]
@@ -478,7 +514,9 @@ def _add_line(
     flat = mesh.barycentrics(
         np.repeat(triangles, len(share)), points.reshape(-1, 2)
     ).reshape(len(edges), len(share), 3)
-    rows = element.evaluate(mesh.points[mesh.triangles[triangles]], flat)
+    rows = element.evaluate(
+        mesh.points[mesh.triangles[triangles]], flat, numbering.arcs.among(triangles)
+    )
     amount = (lengths * stretch)[:, None] * weights
     if isinstance(load, LineForce):
         own_forces = load.force * np.einsum("eq,eqd->ed", amount, rows[:, :, 0])
@@ -487,3 +525,22 @@ def _add_line(
         turning = np.einsum("ec,eqcd->eqd", normal, rows[:, :, 1:])
         own_forces = load.moment * np.einsum("eq,eqd->ed", amount, turning)
     add_up(forces, numbering.table[triangles], own_forces[..., None])
+
+
+def add_along_arcs(
+    forces: Floats,
+    element: Shape,
+    numbering: Numbering,
+    load: LineForce | EdgeMoment,
+) -> None:
+    """Add a force or a moment along the round edges of a side to forces (count, 1)."""
+    mesh, arcs = numbering.mesh, numbering.arcs
+    side = mesh.boundary_sides == mesh.side_names.index(load.along)
+    edges = mesh.boundary_edges[side & (mesh.boundary_circles != STRAIGHT_EDGE)]
+    triangles = mesh.triangles_at(edges)
+    own = arcs.among(triangles)
+    force = load.force if isinstance(load, LineForce) else 0.0
+    moment = load.moment if isinstance(load, EdgeMoment) else 0.0
+    ones = np.ones(len(own))
+    found = element.arc_loads(own, force * ones, moment * ones)
+    add_up(forces, numbering.table[triangles[own.rows]], found[..., None])

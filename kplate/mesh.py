@@ -239,8 +239,19 @@ class Mesh:
         return triangles, barycentrics
 
     def covers(self, points: ArrayLike) -> Bools:
-        """Tell which points (k, 2) in m are on the plate, (k,)."""
-        return self._find(_as_points(points))[2]
+        """Tell which points (k, 2) in m are on the plate, (k,).
+
+        Beside a round hole or notch points beyond its rim are not, though a triangle
+        may hold them.
+        """
+        points = _as_points(points)
+        triangles, _, on = self._find(points)
+        hollow = self._hollows[triangles]
+        near = on & (hollow >= 0)
+        circle = self.circles[hollow[near]]
+        reach = np.hypot(*(points[near] - circle[:, :2]).T)
+        on[near] = reach >= circle[:, 2] - OUTSIDE * np.sqrt(self.area)
+        return on
 
     def barycentrics(self, triangles: Ints, points: Floats) -> Floats:
         """Barycentric coordinates of points in given triangles, (k, 3)."""
@@ -250,6 +261,18 @@ class Mesh:
         second = (d[:, 0] * v[:, 1] - d[:, 1] * v[:, 0]) / double
         third = (u[:, 0] * d[:, 1] - u[:, 1] * d[:, 0]) / double
         return np.column_stack([1.0 - second - third, second, third])
+
+    @cached_property
+    def _hollows(self) -> Ints:
+        """Circle that bends into each triangle at an edge of it, or -1."""
+        curved = self.boundary_circles != STRAIGHT_EDGE
+        chords = self.points[self.boundary_edges[curved]]
+        circles = self.boundary_circles[curved]
+        inward = _left_of(chords, self.circles[circles, :2]) <= 0.0
+        hollow = np.full(len(self.triangles), -1)
+        at = self.triangles_at(self.boundary_edges[curved])
+        hollow[at[inward]] = circles[inward]
+        return hollow
 
     @cached_property
     def _bulges(self) -> tuple[Floats, Floats]:

@@ -95,6 +95,7 @@ def mesh_outline(
     size: float,
     fine: Sequence[tuple[Place, float]] = (),
     graded: Sequence[tuple[Place, float]] = (),
+    around: int | None = None,
 ) -> Mesh:
     """Mesh an outline with triangles of one size, finer around some places.
 
@@ -103,13 +104,15 @@ def mesh_outline(
     outline : Outline
         What to mesh.
     size : float
-        Length of the edges in m; shorter on arcs, of which a full circle gets 96 edges
-        at least (48 where there are more than twelve holes).
+        Length of the edges in m; shorter on arcs, see `around`.
     fine : sequence of (place, size)
         Places in m and the length of the edges around them, as far as twelve edges
         reach; from there it grows with the distance.
     graded : sequence of (place, size)
         Places from which the length grows at once.
+    around : int, optional
+        Least number of edges on a full circle; 96 if left out, 48 where there are more
+        than twelve holes, as chords need that stand for arcs.
 
     Returns
     -------
@@ -135,10 +138,12 @@ def mesh_outline(
     with gmsh_model(size) as gmsh:
         try:
             model = _build(gmsh, outline)
-            few = len(outline.holes) <= FEW_HOLES
+            if around is None:
+                few = len(outline.holes) <= FEW_HOLES
+                around = EDGES_ON_CIRCLE if few else EDGES_ON_MANY
             discs = [(*place, WITHIN) for place in fine]
             discs += [(*place, 1.0) for place in graded]
-            _grade(gmsh, size, discs, EDGES_ON_CIRCLE if few else EDGES_ON_MANY)
+            _grade(gmsh, size, discs, around)
             gmsh.model.mesh.generate(2)
         except Exception as error:
             raise MeshError(
@@ -300,7 +305,7 @@ def _grade(
     for least, group in _curve_groups(gmsh, size, around):
         distance = field.add("Distance")
         field.setNumbers(distance, "CurvesList", group)
-        field.setNumber(distance, "Sampling", around)
+        field.setNumber(distance, "Sampling", max(around, EDGES_ON_MANY))
         tags.append(_growing(field, distance, least, size))
     for (x, y), least, within in discs:
         if least < size:

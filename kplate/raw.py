@@ -240,9 +240,13 @@ class RawMoments:
     def _places(self, triangles: Ints, k: int, lattice: Lattice) -> Floats:
         """Points (n, q, 2) of a lattice on piece k of triangles."""
         mesh = self.state.mesh
-        return (lattice.barycentrics @ self._pieces[k]) @ mesh.points[
-            mesh.triangles[triangles]
-        ]
+        at = self._bent(triangles, lattice.barycentrics @ self._pieces[k])
+        return at @ mesh.points[mesh.triangles[triangles]]
+
+    def _bent(self, triangles: Ints, barycentrics: Floats) -> Floats:
+        """Where points (q, 3) lie in triangles with a round edge, (q, 3) or (n, q, 3)."""
+        arcs = self.state.constraints.numbering.arcs.among(triangles)
+        return arcs.bent(barycentrics, len(triangles))
 
     def _lattice_fields(
         self, triangles: Ints, k: int, steps: int
@@ -254,7 +258,7 @@ class RawMoments:
         barycentrics = local @ self._pieces[k]
         for start in range(0, len(triangles), _BLOCK):
             part = triangles[start : start + _BLOCK]
-            yield part, self._fields(part, barycentrics)
+            yield part, self._fields(part, self._bent(part, barycentrics))
 
     def _fields(self, triangles: Ints, barycentrics: Floats) -> Floats:
         """Deflection, slopes, moments and shears at points of triangles.
@@ -268,9 +272,10 @@ class RawMoments:
         bent = assembly.without_rigid_motion(own, vertices, state.constraints.numbering)
         rigidity = state.plate.rigidities[mesh.zones[triangles]][:, None]
         shape = element.shape
-        moments = rigidity @ shape.fields(vertices, barycentrics, bent, 2)
+        arcs = state.constraints.numbering.arcs.among(triangles)
+        moments = rigidity @ shape.fields(vertices, barycentrics, bent, 2, arcs)
         if element.curvature_degree > 1:
-            third = shape.fields(vertices, barycentrics, bent, 3)
+            third = shape.fields(vertices, barycentrics, bent, 3, arcs)
             by_x, by_y = rigidity @ third[:, :, :3], rigidity @ third[:, :, 3:]
             shears = -np.stack(
                 [by_x[:, :, 0] + by_y[:, :, 2], by_x[:, :, 2] + by_y[:, :, 1]], axis=2
@@ -279,7 +284,7 @@ class RawMoments:
             nodes = self._smoothed.nodes.triangles[triangles]
             at = np.broadcast_to(barycentrics, (*moments.shape[:2], 3))
             shears = np.einsum("nqv,nvac->nqac", at, self._smoothed.shears[nodes])
-        jets = shape.fields(vertices, barycentrics, own, 1)
+        jets = shape.fields(vertices, barycentrics, own, 1, arcs)
         return np.concatenate([jets, moments, shears], axis=2)
 
 

@@ -357,8 +357,10 @@ def _edge_at(mesh: Mesh, disc: Excluded) -> float:
 
 
 def _straight(state: StaticState) -> bool:
-    """Whether no held side is round: on chords, traces swing beside a round one."""
+    """Whether no held side is drawn by chords, beside which traces swing."""
     mesh = state.mesh
+    if len(state.constraints.numbering.arcs):
+        return True
     curved = mesh.boundary_sides[mesh.boundary_circles != STRAIGHT_EDGE]
     return not any(
         state.plate.support(mesh.side_names[side]).holds for side in np.unique(curved)

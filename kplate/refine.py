@@ -66,6 +66,20 @@ def refined(mesh: Mesh, marked: ArrayLike) -> Mesh:
     )
 
 
+def parted_at_middles(mesh: Mesh, wanted: Bools) -> Mesh:
+    """Part some triangles in three, from their middles."""
+    old = mesh.triangles[wanted]
+    new = len(mesh.points) + np.arange(len(old))
+    a, b, c = old.T
+    parts = [np.column_stack(own) for own in ((a, b, new), (b, c, new), (c, a, new))]
+    return replace(
+        mesh,
+        points=np.vstack([mesh.points, mesh.points[old].mean(axis=1)]),
+        triangles=np.concatenate([mesh.triangles[~wanted], *parts]),
+        zones=np.concatenate([mesh.zones[~wanted], np.tile(mesh.zones[wanted], 3)]),
+    )
+
+
 def refined_towards(
     mesh: Mesh, places: Sequence[tuple[tuple[float, float], float, float]]
 ) -> Mesh:

@@ -5,7 +5,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from kplate.arrays import Bools, Floats
-from kplate.mesh import Mesh
+from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.singular import Excluded
 
 RIM_SAMPLES = 64  # points on the rim of an excluded disc
@@ -33,8 +33,26 @@ def rim(mesh: Mesh, disc: Excluded) -> Floats:
     for t in ((-b - root) / a, (-b + root) / a):
         hit = (b * b > a * c) & (t >= 0.0) & (t <= 1.0)
         ends.append(start[hit] + t[hit, None] * step[hit])
+    ends.append(_meetings(mesh, disc))
     points = np.concatenate([around, *ends])
     return points[mesh.covers(points)]
+
+
+def _meetings(mesh: Mesh, disc: Excluded) -> Floats:
+    """Where a disc's rim meets the circles of round boundary edges, (k, 2)."""
+    curved = np.unique(mesh.boundary_circles[mesh.boundary_circles != STRAIGHT_EDGE])
+    found = []
+    for x, y, radius in mesh.circles[curved]:
+        arm = np.array([x, y]) - disc.place
+        gap = float(np.hypot(*arm))
+        if abs(radius - disc.radius) < gap < radius + disc.radius:
+            along = (gap**2 + disc.radius**2 - radius**2) / (2.0 * gap)
+            off = np.sqrt(max(disc.radius**2 - along**2, 0.0))
+            unit = arm / gap
+            normal = np.array([-unit[1], unit[0]])
+            for sign in (1.0, -1.0):
+                found.append(disc.place + along * unit + sign * off * normal)
+    return np.reshape(found, (-1, 2))
 
 
 def stationary(places: Floats, values: Floats) -> Floats | None:

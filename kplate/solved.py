@@ -264,7 +264,9 @@ class Solved:
 
     def _bent_at(self, triangles: Ints, barycentrics: Floats, index: int) -> Floats:
         rows = self.state.element.evaluate(
-            self.mesh.points[self.mesh.triangles[triangles]], barycentrics[:, None]
+            self.mesh.points[self.mesh.triangles[triangles]],
+            barycentrics[:, None],
+            self.state.constraints.numbering.arcs.among(triangles),
         )[:, 0]
         table = self.state.constraints.numbering.table[triangles]
         return np.einsum("krd,kd->kr", rows, self.state.unknowns[table, index])

@@ -34,6 +34,7 @@ def traced(
             "edm,ed->m", found.motions[found.unknowns[own]], found.nodal[own, :, index]
         )
         at = found.numbering.at_vertices(found.vertices)[:, 0]
+        brought = brought + found.left[own, :, index].sum(axis=0)
         brought = brought + (shares * meeting[k]) @ found.motions[at]
         parts.append(_along_line(found, line, own, brought, index))
     return parts
@@ -44,7 +45,6 @@ def _along_line(
 ) -> LinePart:
     """Stations of a line, several on each edge, and what it brings there."""
     number = {tuple(pair): k for k, pair in zip(own, line.edges.tolist(), strict=True)}
-    points = found.numbering.mesh.points
     share = np.arange(STATIONS + 1) / STATIONS
     places: list[Floats] = []
     distances: list[Floats] = []
@@ -57,17 +57,15 @@ def _along_line(
         edges = np.array(
             [number[p if f else p[::-1]] for p, f in zip(pairs, forward, strict=True)]
         )
-        ahead, behind = points[chain[:-1]], points[chain[1:]]
+        at, lengths = found.places(edges, share)
+        at[~forward] = at[~forward, ::-1]
         v = found.line_reaction(edges, share)[:, :, index]
         m = found.line_moment(edges, share)[:, :, index]
         # The moment counts about the normal on the right of the stretch.
         v[~forward], m[~forward] = v[~forward, ::-1], -m[~forward, ::-1]
         if found.shears.shape[1] == CUBIC:
             v = _means(found, edges, index, closed=bool(chain[0] == chain[-1]))
-        step = behind - ahead
-        lengths = np.hypot(*step.T)
         first = start + np.concatenate([[0.0], np.cumsum(lengths)[:-1]])
-        at = ahead[:, None] + share[:, None] * step[:, None]
         along = first[:, None] + share * lengths[:, None]
         # The end of each edge is the start of the next.
         for values, to in ((along, distances), (v, reactions), (m, moments)):

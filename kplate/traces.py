@@ -31,6 +31,7 @@ from kplate.boundary import (
     side_tangents,
 )
 from kplate.dofs import Numbering
+from kplate.elements.arcs import Arcs
 from kplate.elements.triangle import edge_normals
 from kplate.mesh import Mesh
 from kplate.plate import Plate
@@ -43,6 +44,7 @@ RELUCTANCE = 1e-4
 SLACK = 1e-13
 # Tangents that differ by less than this are one.
 ONE = 1e-12
+_POINTS = 12  # of the quadrature along round edges
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -67,6 +69,8 @@ class HeldEdges:
     tangents : ndarray, shape (m, 2, 2)
         Unit tangents held at the beginning and at the end: the edge's own, or at a bend
         that of both its edges, and on a circle the circle's.
+    curvatures : ndarray, shape (m,)
+        Of round edges that are followed, in 1/m, positive where they bulge out; else 0.
     """
 
     lines: Ints
@@ -77,6 +81,7 @@ class HeldEdges:
     senses: Floats
     ends: Bools
     tangents: Floats
+    curvatures: Floats
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -102,6 +107,9 @@ class Traces:
         Vertices with a force of their own.
     forces : ndarray, shape (k, c)
         Those forces R in N.
+    left : ndarray, shape (m, 3, c)
+        Work on w = 1, x and y of what else each edge brings: where it is round, to
+        unknowns that are free.
     """
 
     numbering: Numbering
@@ -112,11 +120,25 @@ class Traces:
     nodal: Floats
     vertices: Ints
     forces: Floats
+    left: Floats
 
     @cached_property
     def motions(self) -> Floats:
         """Unknowns of w = 1, x and y, (count, 3)."""
         return rigid_motions(self.numbering)
+
+    def places(self, edges: Ints, shares: Floats) -> tuple[Floats, Floats]:
+        """Places in m at shares (q,) of edges (k,), (k, q, 2), and lengths, (k,)."""
+        mesh = self.numbering.mesh
+        start, end = np.moveaxis(mesh.points[self.held.edges[edges]], 1, 0)
+        places = start[:, None] + shares[:, None] * (end - start)[:, None]
+        lengths = np.hypot(*(end - start).T)
+        curved = np.flatnonzero(self.held.curvatures[edges])
+        if curved.size:
+            at = mesh.triangles_at(self.held.edges[edges[curved]])
+            arcs = self.numbering.arcs.among(at)
+            places[curved], lengths[curved] = arcs.at(shares)[0], arcs.lengths
+        return places, lengths
 
     def line_reaction(self, edges: Ints, shares: Floats) -> Floats:
         """v_n in N/m at shares (q,) of the lengths of edges (k,), (k, q, c)."""
@@ -129,8 +151,11 @@ class Traces:
         return _values(basis, shares) @ self.couples[edges]
 
 
-def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
-    """Held edges of sides, then of seams, and how they join."""
+def held_edges(plate: Plate, mesh: Mesh, arcs: Arcs | None = None) -> HeldEdges:
+    """Held edges of sides, then of seams, and how they join.
+
+    `arcs` are the round edges that are followed.
+    """
     sides = len(mesh.side_names)
     edges = np.concatenate([mesh.boundary_edges, mesh.seam_edges])
     lines = np.concatenate([mesh.boundary_sides, sides + mesh.seam_numbers])
@@ -157,6 +182,13 @@ def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
     joints[b] = joints[a]
     senses[b] = np.where(a[1] == b[1], -1.0, 1.0)
     ends[a] = ends[b] = False
+    curvatures = np.zeros(len(edges))
+    if arcs is not None and len(arcs):
+        numbers = mesh.triangle_edges[arcs.rows, arcs.edges]
+        bow = np.zeros(len(mesh.edges))
+        bow[numbers] = arcs.curvatures
+        own = slice(0, len(mesh.boundary_edges))
+        curvatures[own] = bow[mesh.edge_numbers(mesh.boundary_edges)]
     kept = (holds | clamps)[lines]
     return HeldEdges(
         lines=lines[kept],
@@ -167,6 +199,7 @@ def held_edges(plate: Plate, mesh: Mesh) -> HeldEdges:
         senses=senses[kept],
         ends=ends[kept],
         tangents=held[kept],
+        curvatures=curvatures[kept],
     )
 
 
@@ -185,7 +218,7 @@ def solve_traces(state: StaticState, carrying: Ints) -> Traces:
     Traces
     """
     numbering, mesh = state.constraints.numbering, state.mesh
-    held = held_edges(state.plate, mesh)
+    held = held_edges(state.plate, mesh, numbering.arcs)
     jets = numbering.per_vertex // 3 + 1  # w along an edge is a cubic or a quintic
     lengths, on_w, on_slope = _virtual(state, held, jets)
     own = numbering.at_vertices(held.edges)
@@ -197,6 +230,7 @@ def solve_traces(state: StaticState, carrying: Ints) -> Traces:
     couple_work = on_slope.swapaxes(1, 2) @ (
         by_length * _products(jets - 1, halfway=True)
     )
+    _round_work(state, held, shear_work, couple_work)
     shear_map, couple_map = _maps(held, lengths, jets)
     vertices, sizes = _ends(state, held, lengths, carrying)
     count = shear_map[0].max(initial=-1) + 1
@@ -226,7 +260,58 @@ def solve_traces(state: StaticState, carrying: Ints) -> Traces:
         nodal=shear_work @ shears + couple_work @ couples,
         vertices=vertices,
         forces=sizes[:, None] * found[len(found) - len(vertices) :],
+        left=_left(state, held, A @ found),
     )
+
+
+def _round_work(
+    state: StaticState, held: HeldEdges, shear_work: Floats, couple_work: Floats
+) -> None:
+    """Work along round edges, in place: there w is no polynomial of the length."""
+    numbering, mesh = state.constraints.numbering, state.mesh
+    curved = np.flatnonzero(held.curvatures)
+    if not curved.size:
+        return
+    p, jets = numbering.per_vertex, shear_work.shape[2] // 2
+    triangles = mesh.triangles_at(held.edges[curved])
+    arcs = numbering.arcs.unheld().among(triangles)
+    shares, weights = gauss(_POINTS)
+    points = arcs.barycentrics(arcs.at(shares)[0])
+    rows = state.element.evaluate(arcs.vertices, points, arcs)
+    _, normal = arcs.frames(shares)
+    slope = np.einsum("mqc,mqcd->mqd", normal, rows[:, :, 1:])
+    columns = np.concatenate(
+        [
+            p * arcs.order[:, 1:2] + np.arange(p),
+            p * arcs.order[:, 2:] + np.arange(p),
+            3 * p + arcs.edges[:, None],
+        ],
+        axis=1,
+    )[:, None]
+    for work, values, basis in (
+        (shear_work, rows[:, :, 0], _basis(jets, halfway=False)),
+        (couple_work, slope, _basis(jets - 1, halfway=True)),
+    ):
+        own = np.take_along_axis(values, columns, axis=2)
+        along = _values(basis, shares) * weights[:, None]
+        work[curved] = arcs.lengths[:, None, None] * (own.swapaxes(1, 2) @ along)
+
+
+def _left(state: StaticState, held: HeldEdges, brought: Floats) -> Floats:
+    """Work on w = 1, x and y of what edges do not bring yet, (m, 3, c).
+
+    It is what free unknowns of the triangles at held round edges get.
+    """
+    numbering, mesh = state.constraints.numbering, state.mesh
+    left = np.zeros((len(held.edges), 3, brought.shape[1]))
+    curved = np.flatnonzero(held.curvatures)
+    if curved.size:
+        table = numbering.table[mesh.triangles_at(held.edges[curved])]
+        shared = np.bincount(table.ravel(), minlength=numbering.count)[table]
+        rest = (state.support_forces - brought)[table] / shared[..., None]
+        motions = rigid_motions(numbering)[table]
+        left[curved] = np.einsum("mda,mdc->mac", motions, rest)
+    return left
 
 
 def _virtual(
@@ -250,6 +335,10 @@ def _virtual(
     lengths = np.hypot(*step.T)
     tangent = step / lengths[:, None]
     normal = np.column_stack([tangent[:, 1], -tangent[:, 0]])
+    bow = held.curvatures
+    curved = bow != 0.0
+    half = np.arcsin(0.5 * lengths[curved] * np.abs(bow[curved]))
+    lengths[curved] = 2.0 * half / np.abs(bow[curved])
     on_w = np.zeros((m, 2 * jets, 2 * p + 1))
     on_slope = np.zeros((m, 2 * jets - 1, 2 * p + 1))
     for end in (0, 1):
@@ -264,6 +353,9 @@ def _virtual(
         if jets == 3:
             w[:, 2, 3:] = second_derivative(along, along)
             slope[:, 1, 3:] = second_derivative(along, across)
+            # Along an arc the tangent turns to the inside, the normal to the tangent.
+            w[:, 2, 1:3] -= across * (bow * lengths**2)[:, None]
+            slope[:, 1, 1:3] += along * bow[:, None]
     triangles = mesh.triangles_at(held.edges)
     corners = mesh.triangles[triangles]
     on = (corners[:, :, None] == held.edges[:, None]).any(axis=2)
@@ -380,11 +472,25 @@ def _held_directions(state: StaticState, held: HeldEdges) -> sp.csr_array:
         (values.ravel(), (rows.ravel(), columns.ravel())),
         shape=(len(at), numbering.count),
     )
+    # Along arcs w,tt does work, though it is free where the slope across is.
+    round_edges = np.flatnonzero((held.curvatures != 0.0) & ~held.clamps)
+    ends = held.edges[round_edges]
+    bent, first = np.unique(ends, return_index=True)
+    tangents = held.tangents[round_edges].reshape(-1, 2)[first]
+    columns = numbering.at_vertices(bent)[:, 3:]
+    along = np.column_stack(
+        [tangents[:, 0] ** 2, tangents[:, 0] * tangents[:, 1], tangents[:, 1] ** 2]
+    )
+    rows = np.broadcast_to(np.arange(len(bent))[:, None], columns.shape)
+    bows = sp.coo_array(
+        (along.ravel(), (rows.ravel(), columns.ravel())),
+        shape=(len(bent), numbering.count),
+    )
     m = len(constraints.on_edges)
     edges = sp.coo_array(
         (np.ones(m), (np.arange(m), constraints.on_edges)), shape=(m, numbering.count)
     )
-    return sp.vstack([vertices, edges], format="csr")
+    return sp.vstack([vertices, bows, edges], format="csr")
 
 
 @lru_cache

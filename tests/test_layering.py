@@ -27,7 +27,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"guard"},
     {"outlinefiles"},
     {"plate"},
-    {"dofs", "choice"},
+    {"dofs", "choice", "roundedges"},
     {"boundary", "singular", "pattern"},
     {"assembly", "loading"},
     {"solve"},

@@ -10,6 +10,7 @@ from typing import Any
 
 from kplate.arrays import Floats
 from kplate.elements import dkt, hct, quintic
+from kplate.elements.arcs import Arcs
 from kplate.elements.piecewise import Piecewise
 from kplate.elements.triangle import Geometry
 from kplate.quadrature import Rule
@@ -47,10 +48,13 @@ class Element:
     geometric : callable
         (geometry with `load_rule`, in-plane forces (n, q, 3)) to (n, d, d).
     evaluate : callable
-        (vertices, barycentrics (q, 3) or (n, q, 3)) to the rows of w and slopes
-        (n, q, 3, d).
+        (vertices, barycentrics (q, 3) or (n, q, 3), round edges if any) to the rows of
+        w and slopes (n, q, 3, d).
+    arc_loads : callable
+        (round edges, line force (m,), edge moment (m,)) to (m, d).
     curvature : callable
-        (vertices, barycentrics (q, 3) or (n, q, 3)) to (n, q, 3, d).
+        (vertices, barycentrics (q, 3) or (n, q, 3), round edges if any) to
+        (n, q, 3, d).
     third_derivatives : callable
         The same to the derivatives of the curvatures by x and y, (n, q, 2, 3, d); of
         those of the deflection where the element is not conforming.
@@ -70,8 +74,9 @@ class Element:
     load: Callable[[Geometry, Floats], Floats]
     mass: Callable[[Geometry, Floats], Floats]
     geometric: Callable[[Geometry, Floats], Floats]
-    evaluate: Callable[[Floats, Floats], Floats]
-    curvature: Callable[[Floats, Floats], Floats]
+    evaluate: Callable[..., Floats]
+    arc_loads: Callable[[Arcs, Floats, Floats], Floats]
+    curvature: Callable[..., Floats]
     third_derivatives: Callable[[Floats, Floats], Floats]
 
 
@@ -90,6 +95,7 @@ def _conforming(shape: Piecewise, **named: Any) -> Element:
         mass=shape.mass,
         geometric=shape.geometric,
         evaluate=shape.evaluate,
+        arc_loads=shape.arc_loads,
         curvature=shape.curvature,
         third_derivatives=shape.third_derivatives,
         **named,
@@ -113,6 +119,7 @@ ELEMENTS = {
         mass=hct.REDUCED.mass,
         geometric=hct.REDUCED.geometric,
         evaluate=hct.REDUCED.evaluate,
+        arc_loads=hct.REDUCED.arc_loads,
         curvature=dkt.curvature,
         third_derivatives=hct.REDUCED.third_derivatives,
     ),

@@ -43,6 +43,8 @@ import numpy as np
 
 from kplate.arrays import Floats, Ints, read_only_floats, read_only_ints
 from kplate.elements import bernstein
+from kplate.elements.arcs import Arcs
+from kplate.elements.dual_arcs import RoundDual
 from kplate.elements.piecewise import curvature_of_pairs
 from kplate.elements.triangle import (
     EDGES,
@@ -174,18 +176,26 @@ class Dual:
         """Barycentric vertices of the one piece on which w is one polynomial."""
         return read_only_floats([np.eye(3)])
 
-    def condense(self, vertices: Floats, rigidity: Floats) -> Condensed:
+    def condense(
+        self, vertices: Floats, rigidity: Floats, arcs: Arcs | None = None
+    ) -> Condensed:
         """Eliminate the moments and the unknowns inside, triangle by triangle.
 
-        vertices (n, 3, 2) in m, rigidity (n, 3, 3) in N m.
+        vertices (n, 3, 2) in m, rigidity (n, 3, 3) in N m; of those with round edges
+        `arcs` over the true regions.
         """
-        R = self._coupling(vertices)
+        R = self._coupling(vertices, arcs)
         n, _, o, whole = R.shape
         left = self.left
         D: Floats = rigidity / area(vertices)[:, None, None]
         bent = (D @ R.reshape(n, 3, o * whole)).reshape(R.shape)
         coupling = R.reshape(n, 3 * o, whole)
         bending = (self._inverse_masses @ bent).reshape(n, 3 * o, whole)
+        if arcs is not None and len(arcs):
+            own = rigidity[arcs.rows] @ R[arcs.rows].reshape(-1, 3, o * whole)
+            masses = RoundDual(order=self.order, arcs=arcs).masses[:, None]
+            solved = np.linalg.solve(masses, own.reshape(-1, 3, o, whole))
+            bending[arcs.rows] = solved.reshape(-1, 3 * o, whole)
         K: Floats = coupling.swapaxes(1, 2) @ bending
         inside = K[:, left:, left:]
         relief = np.linalg.inv(inside) @ K[:, left:, :left]
@@ -197,9 +207,9 @@ class Dual:
             relief=relief,
         )
 
-    def coupling(self, vertices: Floats) -> Floats:
+    def coupling(self, vertices: Floats, arcs: Arcs | None = None) -> Floats:
         """The coupling of moment ordinates with all unknowns, (n, o, 3, whole)."""
-        return self._coupling(vertices).swapaxes(1, 2)
+        return self._coupling(vertices, arcs).swapaxes(1, 2)
 
     def load(self, geometry: Geometry, pressure: Floats) -> Floats:
         """Consistent loads of a pressure.
@@ -213,11 +223,14 @@ class Dual:
         loads[:, self._columns] = forces @ bernstein.values(self.order + 1, rule.points)
         return self._counted_by_edge(loads, vertices)
 
-    def evaluate(self, vertices: Floats, barycentrics: Floats) -> Floats:
+    def evaluate(
+        self, vertices: Floats, barycentrics: Floats, arcs: Arcs | None = None
+    ) -> Floats:
         """Deflection and its slopes at points (q, 3) or (n, q, 3) of triangles.
 
         Returns (n, q, 3, whole): the rows that turn unknowns into w, dw/dx, dw/dy, of
-        which the last two jump from triangle to triangle.
+        which the last two jump from triangle to triangle. The deflections of round
+        edges work along these alone.
         """
         shape = np.broadcast_shapes(barycentrics.shape, (len(vertices), 1, 1))
         by = bernstein.gradients(self.order + 1, barycentrics)
@@ -225,7 +238,26 @@ class Dual:
         rows = np.zeros((*shape[:-1], 3, self.whole))
         rows[..., 0, self._columns] = bernstein.values(self.order + 1, barycentrics)
         rows[..., 1:, self._columns] = g.swapaxes(1, 2)[:, None] @ by
+        if arcs is not None:
+            for e in range(3):
+                own = arcs.rows[arcs.edges == e]
+                first = self._first(e)
+                rows[own, ..., first : first + self.edge_deflections] = 0.0
         return self._counted_by_edge(rows, vertices)
+
+    def arc_loads(self, arcs: Arcs, force: Floats, moment: Floats) -> Floats:
+        """Work of a line force in N/m and an edge moment in N along arcs, (m,) each.
+
+        Returns (m, whole).
+        """
+        on_w, on_slope = RoundDual(order=self.order, arcs=arcs).loads(force, moment)
+        rows = np.zeros((len(arcs), self.whole))
+        for e in range(3):
+            own = np.flatnonzero(arcs.edges == e)
+            first = self._first(e)
+            rows[own, first : first + self.edge_deflections] = on_w[own]
+            rows[own, self._slopes(e)] = on_slope[own]
+        return rows
 
     def outward_slopes(self, vertices: Floats, edges: Ints, shares: Floats) -> Floats:
         """Outward slope on one edge (n,) of each triangle, the edge's own unknowns.
@@ -272,7 +304,13 @@ class Dual:
         rows = rows.swapaxes(2, 3).reshape(n, -1, 3 * o)
         return rows @ ordinates.reshape(n, 3 * o, c)
 
-    def energy(self, vertices: Floats, rigidity: Floats, ordinates: Floats) -> Floats:
+    def energy(
+        self,
+        vertices: Floats,
+        rigidity: Floats,
+        ordinates: Floats,
+        arcs: Arcs | None = None,
+    ) -> Floats:
         """Complementary energy of moments in J, half the integral of m : D^-1 m.
 
         vertices (n, 3, 2), rigidity (n, 3, 3), ordinates (n, o, 3, c); returns (n, c).
@@ -285,9 +323,18 @@ class Dual:
             curvatures,
             optimize=True,
         )
-        return 0.5 * area(vertices)[:, None] * products
+        energies: Floats = 0.5 * area(vertices)[:, None] * products
+        if arcs is not None and len(arcs):
+            energies[arcs.rows] = 0.5 * np.einsum(
+                "nop,nomc,npmc->nc",
+                RoundDual(order=self.order, arcs=arcs).masses,
+                ordinates[arcs.rows],
+                curvatures[arcs.rows],
+                optimize=True,
+            )
+        return energies
 
-    def _coupling(self, vertices: Floats) -> Floats:
+    def _coupling(self, vertices: Floats, arcs: Arcs | None = None) -> Floats:
         """The coupling, moment by moment, (n, 3, o, whole).
 
         Its integrals are those of a table times factors of each triangle. With the
@@ -305,7 +352,30 @@ class Dual:
             factors[:, :, 6 + 3 * e : 9 + 3 * e] = m_nn[:, :, None] * turning[:, None]
             factors[:, :, 15 + e] = m_nn * (2.0 * A * steep)[:, None]
         R = factors.reshape(3 * n, -1) @ self._table.reshape(len(self._table), -1)
-        return self._counted_by_edge(R.reshape(n, 3, -1, self.whole), vertices)
+        R = self._counted_by_edge(R.reshape(n, 3, -1, self.whole), vertices)
+        if arcs is not None and len(arcs):
+            R[arcs.rows] = self._around_arcs(R[arcs.rows], arcs)
+        return R
+
+    def _around_arcs(self, straight: Floats, arcs: Arcs) -> Floats:
+        """The coupling where an edge is round, from that of straight triangles."""
+        found = RoundDual(order=self.order, arcs=arcs)
+        change = np.zeros_like(straight)
+        change[..., self._columns] = found.inner_change()
+        R = straight + self._counted_by_edge(change, arcs.vertices)
+        chords, twists = found.chord_work(), found.end_twists()
+        on_w, on_slope = found.deflection_rows(), found.slope_rows()
+        for e in range(3):
+            own = np.flatnonzero(arcs.edges == e)
+            for end, vertex, sign in ((0, EDGES[e][0], -1.0), (1, EDGES[e][1], 1.0)):
+                ordinate = int(np.flatnonzero(self._columns == vertex)[0])
+                R[own, :, :, vertex] += (
+                    sign * twists[own, end] - chords[own, :, :, ordinate]
+                )
+            first = self._first(e)
+            R[own, :, :, first : first + self.edge_deflections] = on_w[own]
+            R[own, :, :, self._slopes(e)] = on_slope[own]
+        return R
 
     @cached_property
     def _table(self) -> Floats:

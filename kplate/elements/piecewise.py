@@ -15,8 +15,10 @@ import numpy as np
 
 from kplate.arrays import Bools, Floats
 from kplate.elements import bernstein
+from kplate.elements.arcs import Arcs
+from kplate.elements.lifts import lift
 from kplate.elements.triangle import Geometry, area, barycentric_gradients
-from kplate.quadrature import Rule, composite, triangle_rule
+from kplate.quadrature import Rule, composite, gauss, triangle_rule
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -32,11 +34,18 @@ class Piecewise:
     ordinates : callable
         Vertices (n, 3, 2) to the matrices (n, s, k, d) that turn unknowns into the
         ordinates of each piece.
+    on_arcs : callable, optional
+        Round edges and the matrices (m, k, d) of the straight triangles to those of
+        the true ones, of an element of one piece that can follow arcs.
+
+    Where a function takes `arcs`, they are the round edges of the triangles at hand,
+    whose barycentrics then reach beyond the straight triangles (`Arcs.bent`).
     """
 
     degree: int
     pieces: Floats
     ordinates: Callable[[Floats], Floats]
+    on_arcs: Callable[[Arcs, Floats], Floats] | None = None
 
     @cached_property
     def rule(self) -> Rule:
@@ -48,12 +57,14 @@ class Piecewise:
         """Quadrature of loads and masses: exact for two deflections multiplied."""
         return composite(self.pieces, triangle_rule(2 * self.degree))
 
-    def evaluate(self, vertices: Floats, barycentrics: Floats) -> Floats:
+    def evaluate(
+        self, vertices: Floats, barycentrics: Floats, arcs: Arcs | None = None
+    ) -> Floats:
         """Deflection and slopes at points (q, 3) or (n, q, 3) of triangles (n, 3, 2).
 
         Returns (n, q, 3, d): the rows that turn unknowns into w, dw/dx, dw/dy.
         """
-        C = self.ordinates(vertices)
+        C = self._net(vertices, arcs)
         shape = np.broadcast_shapes(barycentrics.shape, (len(C), 1, 1))
         result = np.zeros((*shape[:-1], 3, C.shape[-1]))
         for k, local, own in self._parts(barycentrics):
@@ -63,21 +74,25 @@ class Piecewise:
             rows[:, :, 0] = bernstein.values(self.degree, local)
             rows[:, :, 1:] = g.swapaxes(-1, -2)[:, None] @ by
             result += (rows * own[..., None, None]) @ C[:, None, k]
+        self._take_off(result, C, barycentrics, arcs, 1)
         return result
 
-    def curvature(self, vertices: Floats, barycentrics: Floats) -> Floats:
+    def curvature(
+        self, vertices: Floats, barycentrics: Floats, arcs: Arcs | None = None
+    ) -> Floats:
         """Curvatures ``w,xx, w,yy, 2 w,xy`` at points of triangles (n, 3, 2).
 
         Barycentrics (q, 3), the same in every triangle, or (n, q, 3); returns
         (n, q, 3, d).
         """
-        C = self.ordinates(vertices)
+        C = self._net(vertices, arcs)
         shape = np.broadcast_shapes(barycentrics.shape, (len(C), 1, 1))
         result = np.zeros((*shape[:-1], 3, C.shape[-1]))
         for k, local, own in self._parts(barycentrics):
             bends = curvature_of_pairs(self._gradients(vertices, k))
             by = bernstein.hessians(self.degree, local) * own[..., None, None]
             result += (bends[:, None] @ by) @ C[:, None, k]
+        self._take_off(result, C, barycentrics, arcs, 2)
         return result
 
     def third_derivatives(self, vertices: Floats, barycentrics: Floats) -> Floats:
@@ -100,15 +115,20 @@ class Piecewise:
         return result
 
     def fields(
-        self, vertices: Floats, barycentrics: Floats, unknowns: Floats, order: int
+        self,
+        vertices: Floats,
+        barycentrics: Floats,
+        unknowns: Floats,
+        order: int,
+        arcs: Arcs | None = None,
     ) -> Floats:
         """What unknowns (n, d, c) make at points of triangles, without their rows.
 
         Barycentrics (q, 3) or (n, q, 3). Order 1 returns w and its slopes (n, q, 3, c);
         2 the curvatures (n, q, 3, c); 3 their derivatives by x, then by y,
-        (n, q, 6, c).
+        (n, q, 6, c), of the polynomials alone.
         """
-        C = self.ordinates(vertices)
+        C = self._net(vertices, arcs)
         n, c = len(C), unknowns.shape[-1]
         q = barycentrics.shape[-2]
         result = np.zeros((n, q, 6 if order == 3 else 3, c))
@@ -133,6 +153,10 @@ class Piecewise:
             flat = rows.reshape(*rows.shape[:-3], -1, rows.shape[-1])
             found = (flat @ net).reshape(n, q, rows.shape[-2], c)
             result += turn[:, None] @ found
+        if order < 3 and arcs is not None and arcs.held.any():
+            own = arcs.rows[arcs.held]
+            taken = self._lifted(C, barycentrics, arcs, order)
+            result[own] -= taken @ unknowns[own][:, None]
         return result
 
     def curvature_load(
@@ -150,6 +174,15 @@ class Piecewise:
             net = pairs.reshape(len(C), -1) @ by.reshape(-1, by.shape[-1])
             total += np.einsum("nk,nkd->nd", net, C[:, k])
         return total
+
+    def round_stiffness(self, arcs: Arcs, rigidity: Floats) -> Floats:
+        """Stiffness (m, d, d) of true triangles, for a rigidity (m, 3, 3) in N m."""
+        points, weights = arcs.rule
+        alone = arcs.alone()
+        B = self.curvature(arcs.vertices, points, alone)
+        m, q, _, d = B.shape
+        weighted = (rigidity[:, None] @ B) * weights[..., None, None]
+        return B.reshape(m, 3 * q, d).swapaxes(1, 2) @ weighted.reshape(m, 3 * q, d)
 
     def stiffness(self, geometry: Geometry, rigidity: Floats) -> Floats:
         """Element stiffness matrices.
@@ -194,6 +227,22 @@ class Piecewise:
             total += np.einsum("nk,nkd->nd", forces @ shape, C[:, k], optimize=True)
         return total
 
+    def arc_loads(self, arcs: Arcs, force: Floats, moment: Floats) -> Floats:
+        """Consistent loads of a line force in N/m and an edge moment in N along arcs.
+
+        The moment works on the slope along the outward normal; both (m,), returns
+        (m, d).
+        """
+        shares, weights = gauss(2 * self.degree)
+        alone = arcs.alone()
+        points = arcs.barycentrics(arcs.at(shares)[0])
+        rows = self.evaluate(arcs.vertices, points, alone)
+        _, normal = arcs.frames(shares)
+        work = force[:, None, None] * rows[:, :, 0] + moment[:, None, None] * (
+            np.einsum("mqc,mqcd->mqd", normal, rows[:, :, 1:])
+        )
+        return np.einsum("m,q,mqd->md", arcs.lengths, weights, work)
+
     def mass(self, geometry: Geometry, density: Floats) -> Floats:
         """Consistent masses of w alone; rotary inertia is left out.
 
@@ -231,6 +280,34 @@ class Piecewise:
                 C[:, k],
             )
         return total
+
+    def _net(self, vertices: Floats, arcs: Arcs | None) -> Floats:
+        """Ordinates of the unknowns, (n, s, k, d)."""
+        C = self.ordinates(vertices)
+        if arcs is not None and len(arcs):
+            assert self.on_arcs is not None
+            C[arcs.rows, 0] = self.on_arcs(arcs, C[arcs.rows, 0])
+        return C
+
+    def _lifted(
+        self, C: Floats, barycentrics: Floats, arcs: Arcs, order: int
+    ) -> Floats:
+        """Rows of what is taken off in held triangles, so that w vanishes on arcs."""
+        held = arcs.chosen(arcs.held)
+        at = barycentrics if barycentrics.ndim == 2 else barycentrics[held.rows]
+        at = np.broadcast_to(at, (len(held), *at.shape[-2:]))
+        return lift(held, self.degree, C[held.rows, 0], at, order)
+
+    def _take_off(
+        self,
+        result: Floats,
+        C: Floats,
+        barycentrics: Floats,
+        arcs: Arcs | None,
+        order: int,
+    ) -> None:
+        if arcs is not None and arcs.held.any():
+            result[arcs.rows[arcs.held]] -= self._lifted(C, barycentrics, arcs, order)
 
     @cached_property
     def _shares(self) -> Floats:

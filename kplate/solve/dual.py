@@ -24,11 +24,12 @@ from kplate.arrays import Floats, Ints
 from kplate.assembly import BLOCK
 from kplate.boundary import Constraints, check_held, constrain
 from kplate.dofs import Numbering, add_up
+from kplate.elements.arcs import Arcs, no_arcs
 from kplate.elements.dual import DUALS, Condensed, Dual
 from kplate.errors import InputError, SolveError
 from kplate.linalg import Factor
 from kplate.loads import Case, EdgeMoment, Load, PointMoment
-from kplate.mesh import Mesh
+from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.pattern import Pattern
 from kplate.plate import Plate
 from kplate.quadrature import gauss
@@ -93,7 +94,10 @@ class DualState:
         """Complementary energy of each triangle in J, (n, c)."""
         mesh = self.mesh
         return self.dual.energy(
-            mesh.points[mesh.triangles], self.plate.rigidities[mesh.zones], self.moments
+            mesh.points[mesh.triangles],
+            self.plate.rigidities[mesh.zones],
+            self.moments,
+            self.constraints.numbering.arcs,
         )
 
     @property
@@ -160,8 +164,10 @@ class DualSystem:
     factor: Factor
 
     @classmethod
-    def of(cls, plate: Plate, mesh: Mesh, order: int = 3) -> "DualSystem":
-        """Assemble and factor.
+    def of(
+        cls, plate: Plate, mesh: Mesh, order: int = 3, arcs: Arcs | None = None
+    ) -> "DualSystem":
+        """Assemble and factor; `arcs` are the round edges to follow, if any.
 
         Raises
         ------
@@ -179,10 +185,12 @@ class DualSystem:
             per_vertex=dual.per_vertex,
             per_edge=dual.per_edge,
             edge_deflections=dual.edge_deflections,
+            arcs=no_arcs() if arcs is None else arcs,
         )
         constraints = constrain(plate, numbering)
         stiffnesses = (
-            (block, parts.stiffness) for block, parts in _condensed(plate, mesh, dual)
+            (block, parts.stiffness)
+            for block, parts in _condensed(plate, numbering, dual)
         )
         matrix = Pattern(numbering=numbering).matrix(stiffnesses, constraints.free)
         return cls(
@@ -202,7 +210,7 @@ class DualSystem:
         InputError
             If a load is a couple at a point, whose moments have no finite energy.
         """
-        return _loads(self.plate, self.mesh, self.dual, loads)
+        return _loads(self.plate, self.constraints.numbering, self.dual, loads)
 
     def state(self, cases: Sequence[Case], forces: Floats) -> DualState:
         """Balance the forces (n, whole, c) of load cases."""
@@ -274,7 +282,12 @@ class DualSystem:
 
 
 def solve_dual(
-    plate: Plate, mesh: Mesh, cases: Sequence[Case], *, order: int = 3
+    plate: Plate,
+    mesh: Mesh,
+    cases: Sequence[Case],
+    *,
+    order: int = 3,
+    arcs: Arcs | None = None,
 ) -> DualState:
     """Find the balanced moments of least complementary energy on a given mesh.
 
@@ -288,6 +301,8 @@ def solve_dual(
         At least one.
     order : int
         Degree of the moments, 2 or 3.
+    arcs : Arcs, optional
+        Round edges to follow (`kplate.roundedges`); chords stand for them if left out.
 
     Returns
     -------
@@ -303,7 +318,7 @@ def solve_dual(
         it that round-off leaves the moments unbalanced.
     """
     check_cases(cases)
-    system = DualSystem.of(plate, mesh, order)
+    system = DualSystem.of(plate, mesh, order, arcs)
     forces = np.stack([system.forces(case.loads) for case in cases], axis=-1)
     return system.state(cases, forces)
 
@@ -327,10 +342,10 @@ def _follow(
     defect : ndarray, shape (count, c)
         Forces that these do not balance.
     """
-    mesh, moments = numbering.mesh, moments.copy()
+    moments = moments.copy()
     moved = np.empty((len(forces), dual.whole - dual.left, step.shape[1]))
     defect = np.zeros_like(step)
-    for block, parts in _condensed(plate, mesh, dual):
+    for block, parts in _condensed(plate, numbering, dual):
         missing = forces[block] - parts.internal_forces(moments[block])
         whole = parts.whole(step[numbering.table[block]], missing)
         moments[block] += parts.moments(whole)
@@ -341,13 +356,15 @@ def _follow(
 
 
 def _condensed(
-    plate: Plate, mesh: Mesh, dual: Dual
+    plate: Plate, numbering: Numbering, dual: Dual
 ) -> Iterator[tuple[Ints, Condensed]]:
     """Condensed triangles, block by block; making them again is cheap, memory not."""
+    mesh = numbering.mesh
     for start in range(0, len(mesh.triangles), BLOCK):
         block = np.arange(start, min(start + BLOCK, len(mesh.triangles)))
         rigidity = plate.rigidities[mesh.zones[block]]
-        yield block, dual.condense(mesh.points[mesh.triangles[block]], rigidity)
+        vertices = mesh.points[mesh.triangles[block]]
+        yield block, dual.condense(vertices, rigidity, numbering.arcs.among(block))
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -365,9 +382,17 @@ class _Apart(Numbering):
         return np.arange(self.count).reshape(-1, self.whole)
 
 
-def _loads(plate: Plate, mesh: Mesh, dual: Dual, loads: Sequence[Load]) -> Floats:
+def _loads(
+    plate: Plate, numbering: Numbering, dual: Dual, loads: Sequence[Load]
+) -> Floats:
     """Consistent loads of each triangle, (n, whole)."""
-    apart = _Apart(mesh=mesh, per_vertex=0, per_edge=0, whole=dual.whole)
+    apart = _Apart(
+        mesh=numbering.mesh,
+        per_vertex=0,
+        per_edge=0,
+        whole=dual.whole,
+        arcs=numbering.arcs,
+    )
     for load in loads:
         if isinstance(load, PointMoment):
             raise InputError(
@@ -394,6 +419,9 @@ def _add_edge_moment(
             f"{', '.join(mesh.side_names)}."
         )
     side = mesh.boundary_sides == mesh.side_names.index(load.along)
+    if len(apart.arcs):
+        side &= mesh.boundary_circles == STRAIGHT_EDGE
+        loading.add_along_arcs(forces[:, None], dual, apart, load)
     edges = mesh.boundary_edges[side]
     triangles = mesh.triangles_at(edges)
     own = mesh.triangle_edges[triangles] == mesh.edge_numbers(edges)[:, None]

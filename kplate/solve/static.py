@@ -1,7 +1,7 @@
 """Static bending: one factorisation, any number of load cases."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -9,13 +9,15 @@ import numpy as np
 from kplate import assembly, loading
 from kplate.arrays import Floats, Ints
 from kplate.boundary import Constraints, check_held, constrain
-from kplate.dofs import Numbering
+from kplate.dofs import Numbering, add_up
 from kplate.elements import ELEMENTS, Element
+from kplate.elements.arcs import Arcs, no_arcs
 from kplate.errors import InputError, SolveError
 from kplate.linalg import Factor
 from kplate.loads import Case, Load
 from kplate.mesh import Mesh
 from kplate.plate import Plate
+from kplate.roundedges import round_edges
 
 Progress = Callable[[str, float], None]
 
@@ -60,7 +62,7 @@ class StaticState:
     def strain_energy(self) -> Floats:
         """Strain energy of each case in J, summed over the triangles, (c,)."""
         numbering, total = self.constraints.numbering, np.zeros(len(self.cases))
-        for block, K in assembly.element_stiffness(self.plate, self.mesh, self.element):
+        for block, K in assembly.element_stiffness(self.plate, numbering, self.element):
             bent = assembly.without_rigid_motion(
                 self.unknowns[numbering.table[block]],
                 self.mesh.points[self.mesh.triangles[block]],
@@ -114,7 +116,10 @@ class StaticSystem:
             )
         chosen = ELEMENTS[element]
         numbering = Numbering(
-            mesh=mesh, per_vertex=chosen.per_vertex, per_edge=chosen.per_edge
+            mesh=mesh,
+            per_vertex=chosen.per_vertex,
+            per_edge=chosen.per_edge,
+            arcs=arcs_followed(plate, mesh, chosen),
         )
         check_held(plate, mesh)
         constraints = constrain(plate, numbering)
@@ -167,7 +172,7 @@ class StaticSystem:
             constraints=self.constraints,
             unknowns=unknowns,
             forces=forces,
-            support_forces=self._support_forces(unknowns, forces),
+            support_forces=self._support_forces(cases, unknowns, forces),
         )
 
     def _back(self, right: Floats) -> Floats:
@@ -183,14 +188,43 @@ class StaticSystem:
             self.plate, self.element, self.numbering, unknowns, triangles
         )
 
-    def _support_forces(self, unknowns: Floats, forces: Floats) -> Floats:
-        """Residual at the supported unknowns, zero elsewhere, (count, c)."""
+    def _support_forces(
+        self, cases: Sequence[Case], unknowns: Floats, forces: Floats
+    ) -> Floats:
+        """Residual at the supported unknowns, zero elsewhere, (count, c).
+
+        At held round edges it is that of plain polynomials, which do not vanish along
+        them, so that line reactions do work; they work a little on free unknowns too.
+        """
         supported = np.zeros(self.numbering.count, dtype=bool)
         supported[self.constraints.supported] = True
         near = np.flatnonzero(supported[self.numbering.table].any(axis=1))
         inner = self._inner(unknowns, near)
         result = np.zeros_like(forces)
         result[supported] = inner[supported] - forces[supported]
+        if self.numbering.arcs.held.any():
+            result += self._plain_work(unknowns)
+            plain = replace(self.numbering, arcs=self.numbering.arcs.unheld())
+            for k, case in enumerate(cases):
+                own = loading.load_vector(self.plate, self.element, plain, case.loads)
+                result[:, k] -= own - forces[:, k]
+        return result
+
+    def _plain_work(self, unknowns: Floats) -> Floats:
+        """Work of the moments on what is taken off in triangles at held arcs."""
+        numbering = self.numbering
+        arcs = numbering.arcs.chosen(numbering.arcs.held)
+        points, weights = arcs.rule
+        table = numbering.table[arcs.rows]
+        bent = assembly.without_rigid_motion(unknowns[table], arcs.vertices, numbering)
+        held, free = (
+            self.element.curvature(arcs.vertices, points, own)
+            for own in (arcs.alone(), arcs.unheld().alone())
+        )
+        rigidity = self.plate.rigidities[numbering.mesh.zones[arcs.rows]][:, None]
+        moments = rigidity @ (held @ bent[:, None]) * weights[..., None, None]
+        result = np.zeros_like(unknowns)
+        add_up(result, table, np.einsum("mqad,mqac->mdc", free - held, moments))
         return result
 
 
@@ -236,6 +270,13 @@ def solve_static(
     forces = np.column_stack([system.forces(case.loads) for case in cases])
     report("solution", 0.7)
     return system.state(cases, forces)
+
+
+def arcs_followed(plate: Plate, mesh: Mesh, element: Element) -> Arcs:
+    """Round edges of a mesh that an element follows; chords stand for the others."""
+    if element.shape.on_arcs is None or not element.conforming:
+        return no_arcs()
+    return round_edges(plate, mesh)
 
 
 def check_cases(cases: Sequence[Case]) -> None:
