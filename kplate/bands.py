@@ -31,7 +31,7 @@ from kplate.arrays import Floats, Ints
 from kplate.boundary import seam_tangents, side_tangents
 from kplate.brackets import SUMMED, Brackets
 from kplate.elements import bernstein
-from kplate.elements.arcs import Arcs
+from kplate.elements.arcs import Arcs, no_arcs
 from kplate.elements.dual_arcs import RoundDual
 from kplate.errors import SolveError
 from kplate.functionals import Functional, local_pressure, settled_vertices
@@ -218,12 +218,13 @@ def certify(
 
 
 def worth(
-    plate: Plate, mesh: Mesh, cases: Sequence[Case], arcs: Arcs
+    plate: Plate, mesh: Mesh, cases: Sequence[Case], arcs: Arcs | None = None
 ) -> tuple[Kind, str]:
     """What bands on this mesh are worth, and why they are no bounds if they are not.
 
-    `arcs` are the round edges that are followed.
+    `arcs` are the round edges that are followed; chords stand for the others.
     """
+    arcs = no_arcs() if arcs is None else arcs
     loads = [load for case in cases for load in case.loads]
     reason = (
         _drawn(plate, mesh, arcs)

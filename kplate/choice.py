@@ -1,12 +1,12 @@
 """Which element suits a plate.
 
-The C1 quintic reaches a given error with the fewest unknowns by far, but it has one
-curvature at a vertex and straight edges. So ``"auto"`` means
+The C1 quintic reaches a given error with the fewest unknowns by far, and follows round
+edges, but it has one curvature at a vertex. So ``"auto"`` means
 
-- ``quintic`` on plates of straight sides and one section;
+- ``quintic`` on plates of one section;
 - ``hct`` where the thickness or material changes or a seam holds the slope (moments
-  jump at both), or a held side bends or any is round (one tangent at a vertex leaves w
-  not quite 0 along the edges, which the quintic answers with false shears);
+  jump at both), or a held side bends (one tangent at a vertex leaves w not quite 0
+  along the edges, which the quintic answers with false shears);
 - ``dkt`` beyond `MOST` triangles.
 """
 
@@ -83,7 +83,7 @@ def choose(plate: Plate, element: str = AUTO, triangles: int | None = None) -> C
 
 
 def _kinks(plate: Plate) -> str:
-    """Words for what one curvature at a vertex, or straight edges, do not suit."""
+    """Words for what one curvature at a vertex does not suit."""
     for number, zone in enumerate(plate.outline.zones, start=1):
         if plate.sections[number] != plate.sections[0]:
             return f"thickness or material changes at zone {zone.name}"
@@ -105,13 +105,3 @@ def _bent_sides(plate: Plate) -> list[str]:
             if bend and own.holds and own == before:
                 found.append(side)
     return found
-
-
-def _round_sides(plate: Plate) -> list[str]:
-    """Names of the sides with an arc in them, in order."""
-    found: dict[str, None] = {}
-    for line in plate.outline.boundaries:
-        for side, bulge in zip(line.sides, line.bulges, strict=True):
-            if bulge != 0.0:
-                found[side] = None
-    return list(found)

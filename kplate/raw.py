@@ -244,7 +244,7 @@ class RawMoments:
         return at @ mesh.points[mesh.triangles[triangles]]
 
     def _bent(self, triangles: Ints, barycentrics: Floats) -> Floats:
-        """Where points (q, 3) lie in triangles with a round edge, (q, 3) or (n, q, 3)."""
+        """Where points (q, 3) of straight triangles lie in round ones, if any are."""
         arcs = self.state.constraints.numbering.arcs.among(triangles)
         return arcs.bent(barycentrics, len(triangles))
 

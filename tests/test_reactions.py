@@ -145,7 +145,7 @@ def test_a_supported_hole_rim_is_a_side_of_its_own():
     solution = solve(plate, [Pressure(-1e3)], triangles=3000)
     (side,) = solution.reactions().sides
     assert side.side == "ring"
-    assert side.resultant.force == pytest.approx(1e3 * solution.mesh.area, rel=1e-10)
+    assert side.resultant.force == pytest.approx(1e3 * plate.outline.area, rel=1e-10)
     load = 1e3 * np.pi * (1.0 - 0.3**2)
     around = 2 * np.pi * 0.3
     ratio = side.line_reaction[:-1] / (load / around)

@@ -214,7 +214,7 @@ class Arcs:
         return result
 
     def cone(self, barycentrics: Floats) -> tuple[Floats, Floats]:
-        """t and s (m, q) of points given by barycentrics (m, q, 3)."""
+        """T and s (m, q) of points given by barycentrics (m, q, 3)."""
         apex, middle = self.corners[0], self.chords[0]
         height = middle - apex
         length = np.hypot(*height.T)[:, None]

@@ -243,13 +243,13 @@ class RoundDual:
         """Legendre's polynomials to degree k of tau, and their derivatives by it."""
         tau = self._chordwise[0]
         legendre = np.polynomial.legendre
-        table = legendre.legvander(tau, self.order)
+        table: Floats = legendre.legvander(tau, self.order).astype(np.float64)
         down = legendre.legder(np.eye(self.order + 1))
         return table, table[..., :-1] @ down
 
     @cached_property
     def _deflections(self) -> tuple[Floats, Floats]:
-        """v = P_j(tau) and dv/dn at the points, (m, q, k) each."""
+        """V = P_j(tau) and dv/dn at the points, (m, q, k) each."""
         _, _, along, _, half = self._chordwise
         P, dP = self._legendre
         k = self.order
@@ -257,15 +257,16 @@ class RoundDual:
 
     @cached_property
     def _slopes(self) -> tuple[Floats, Floats]:
-        """v = y P_j(tau) and dv/dn at the points, (m, q, k + 1) each."""
+        """V = y P_j(tau) and dv/dn at the points, (m, q, k + 1) each."""
         _, y, along, across, half = self._chordwise
         P, dP = self._legendre
         v = y[..., None] * P
-        return v, across[..., None] * P + (y * along / half)[..., None] * dP
+        slope: Floats = across[..., None] * P + (y * along / half)[..., None] * dP
+        return v, slope
 
     @cached_property
     def _rotations(self) -> Floats:
-        """r = n . y, P_1, ... P_k at the points, (m, q, k + 1)."""
+        """R = n . y, P_1, ... P_k at the points, (m, q, k + 1)."""
         P = self._legendre[0].copy()
         P[..., 0] = self._chordwise[3]
         return P

@@ -154,9 +154,9 @@ class Piecewise:
             found = (flat @ net).reshape(n, q, rows.shape[-2], c)
             result += turn[:, None] @ found
         if order < 3 and arcs is not None and arcs.held.any():
-            own = arcs.rows[arcs.held]
+            rows_held = arcs.rows[arcs.held]
             taken = self._lifted(C, barycentrics, arcs, order)
-            result[own] -= taken @ unknowns[own][:, None]
+            result[rows_held] -= taken @ unknowns[rows_held][:, None]
         return result
 
     def curvature_load(
