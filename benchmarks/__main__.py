@@ -9,15 +9,26 @@ import os
 import sys
 from collections.abc import Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
+from dataclasses import asdict
 from functools import partial
 from pathlib import Path
 
-from benchmarks import bands, elements, numbers, records, report, timing
+from benchmarks import (
+    bands,
+    convergence,
+    elements,
+    numbers,
+    plots,
+    records,
+    report,
+    timing,
+)
 from kplate.elements import ELEMENTS
 from kplate.errors import KplateError
 from kplate.files import replacing
 
 COMMANDS = {
+    "convergence": "error of one number against unknowns, element by element",
     "bands": "bands of numbers with straight sides beside their values",
     "elements": "unknowns and seconds to an error, element by element",
     "timing": "times of each stage, memory and growth, as ratios of one run",
@@ -76,8 +87,7 @@ def _handbook(words: Sequence[str]) -> int:
         print("\n".join(report.lines(one)), flush=True)
     print("\n".join(report.summary(run)))
     if args.json:
-        with replacing(args.json) as temporary:
-            temporary.write_text(json.dumps(report.as_json(run), indent=1), "utf-8")
+        _write(args.json, json.dumps(report.as_json(run), indent=1))
     return int(not all(one.numbers for one in run))
 
 
@@ -108,9 +118,56 @@ def _command(name: str, words: Sequence[str]) -> int:
         args = parser.parse_args(words)
         names = [records.record(case)["id"] for case in args.case] or None
         return int(bands.main(args.tolerance, names) > 0)
+    if name == "convergence":
+        return _convergence(parser, words)
+    if name == "timing":
+        return _timing(parser, words)
     parser.parse_args(words)
-    {"elements": elements.main, "timing": timing.main}[name]()
+    elements.main()
     return 0
+
+
+def _timing(parser: argparse.ArgumentParser, words: Sequence[str]) -> int:
+    parser.add_argument(
+        "--quick", action="store_true", help="to 100,000 unknowns, under a minute"
+    )
+    parser.add_argument("--element", default="dkt", choices=list(ELEMENTS))
+    parser.add_argument("--json", type=Path, metavar="FILE", help="write the numbers")
+    parser.add_argument("--svg", type=Path, metavar="FILE", help="write the plot")
+    args = parser.parse_args(words)
+    found = timing.main(timing.QUICK if args.quick else timing.SIZES, args.element)
+    if not args.quick:
+        print("\n".join(timing.commands()))
+    if args.json:
+        _write(args.json, json.dumps([asdict(one) for one in found], indent=1))
+    if args.svg:
+        _write(args.svg, plots.timing_plot(found))
+    return 0
+
+
+def _convergence(parser: argparse.ArgumentParser, words: Sequence[str]) -> int:
+    parser.add_argument("case", help="name of the case")
+    parser.add_argument(
+        "--number", type=int, help="which of its numbers; without it they are listed"
+    )
+    parser.add_argument("--most", type=int, default=convergence.MOST, help="unknowns")
+    parser.add_argument("--svg", type=Path, metavar="FILE", help="write the plot")
+    args = parser.parse_args(words)
+    problem = records.record(args.case)
+    if args.number is None:
+        for number, item in enumerate(problem["quantities"], start=1):
+            print(f"{number:3d}  {item['coefficient']} at {item['place']}")
+        return 0
+    own = convergence.study(problem, args.number, args.most)
+    print("\n".join(convergence.lines(own)))
+    if args.svg:
+        _write(args.svg, plots.convergence_plot(own))
+    return 0
+
+
+def _write(path: Path, text: str) -> None:
+    with replacing(path) as temporary:
+        temporary.write_text(text, "utf-8")
 
 
 def _share(text: str) -> float:

@@ -9,7 +9,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from benchmarks import numbers, records, report
+from benchmarks import convergence, numbers, plots, records, report, timing
 from benchmarks.__main__ import main
 from kplate.errors import InputError
 
@@ -240,3 +240,58 @@ def test_there_are_enough_numbers_with_sources():
     assert all(figure.publication for figure in figures)
     assert all(records.method(item) != "none known" for item in items)
     assert sum(not figure.from_memory for figure in figures) > 20
+
+
+@pytest.mark.slow
+def test_a_study_shows_orders_and_what_adapting_saves(tmp_path, capsys):
+    """The clamped edge moment: order 4 of the quintic, 2 of HCT; bands hold."""
+    own = convergence.study(records.record("cccc_u_1"), 4, most=8_000)
+    series = {(one.element, one.meshes): one for one in own.series}
+    least = 10.0 * own.resolution
+    assert series["quintic", "even"].order(least) == pytest.approx(4.2, abs=0.8)
+    assert series["hct", "even"].order(least) == pytest.approx(2.3, abs=0.8)
+    assert series["dkt", "even"].order(least) == pytest.approx(1.3, abs=0.6)
+    adapted = series["quintic", "adaptive"].runs
+    assert all(run.error <= run.half_band for run in adapted)
+    even = [run for run in series["quintic", "even"].runs if run.error > 1e-5]
+    assert adapted[-1].unknowns < even[-1].unknowns
+    assert adapted[-1].error < 0.1 * even[-1].error
+    text = plots.convergence_plot(own)
+    assert text.startswith("<svg")
+    assert "quintic, half band" in text
+    assert 'xlink:href="http' not in text
+
+
+def test_the_numbers_of_a_case_are_listed(capsys):
+    assert main(["convergence", "cccc_u_1"]) == 0
+    assert "  4  M/(q*a^2) at mid edge x=0" in capsys.readouterr().out
+    assert main(["convergence", "cccc_u_1", "--number", "99"]) == 2
+    assert "has numbers 1 to 9, not 99" in capsys.readouterr().err
+
+
+def test_an_order_is_the_slope_through_finer_runs():
+    runs = [
+        convergence.Run(unknowns=n, error=n**-1.5, half_band=None, seconds=0.0)
+        for n in (1, 2, 100, 200, 400, 800)
+    ]
+    own = convergence.Series(element="hct", meshes="even", runs=tuple(runs))
+    assert own.order(0.0) == pytest.approx(3.0)
+    assert own.order(3e-4) is None  # two runs of the finer ones are above
+
+
+def test_a_timing_adds_up(capsys):
+    """No time is judged: they belong to the machine."""
+    first, second = timing.measure(2_000), timing.measure(6_000)
+    for own in (first, second):
+        assert own.unknowns == pytest.approx(2_000 if own is first else 6_000, rel=0.3)
+        assert own.ratio > 1.0
+        assert own.bare == own.stages["ordering"] + own.stages["factor"]
+        assert 0.0 < own.memory <= own.memory_all
+    text = "\n".join(
+        [*map(timing.lines_of, (first, second)), *timing.summary((first, second))]
+    )
+    assert "growth exponent of solve" in text
+    assert "aim 1.7" in text
+    assert plots.timing_plot((first, second)).startswith("<svg")
+    slow = replace(second, unknowns=4 * first.unknowns, solve=8.0 * first.solve)
+    assert timing.exponent((first, slow)) == pytest.approx(1.5)

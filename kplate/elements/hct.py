@@ -20,12 +20,21 @@ Wright-Patterson AFB, 1965; P. G. Ciarlet, "The Finite Element Method for Ellipt
 Problems", North-Holland, 1978, ch. 6 (both from memory).
 """
 
+from functools import lru_cache
+
 import numpy as np
 
-from kplate.arrays import Floats
+from kplate.arrays import Bools, Floats
 from kplate.elements import bernstein
 from kplate.elements.piecewise import Piecewise
-from kplate.elements.triangle import EDGES, barycentric_gradients, edge_normals
+from kplate.elements.triangle import (
+    EDGES,
+    Geometry,
+    area,
+    barycentric_gradients,
+    edge_normals,
+)
+from kplate.quadrature import Rule
 
 DEGREE = 3
 _CENTROID = np.full(3, 1 / 3)
@@ -78,6 +87,64 @@ def reduced_ordinates(vertices: Floats) -> Floats:
         for v in ends:
             whole[:, 9 + k, 3 * v + 1 : 3 * v + 3] = 0.5 * normals[:, k]
     return ordinates(vertices) @ whole[:, None]
+
+
+def reduced_load(geometry: Geometry, pressure: Floats) -> Floats:
+    """Consistent loads of the reduced triangle, as `REDUCED.load` gives them.
+
+    The forces on the ordinates are taken back to the unknowns one by one instead of by
+    the matrices of `reduced_ordinates`: a sixth of the time.
+    """
+    vertices, rule = geometry.vertices, geometry.rule
+    forces = pressure * area(vertices)[:, None] * rule.weights
+    holder, shape = _shapes(rule)
+    place = bernstein.position(DEGREE)
+    net = [(forces[:, own] @ shape[own]).T for own in holder]  # (10, n) each
+    centroid, normals = vertices.mean(axis=1), edge_normals(vertices)
+    centre = sum(own[place[0, 0, 3]] for own in net) / 3.0
+    around = [centre.copy() for _ in range(3)]
+    for k, (i, j) in enumerate(EDGES):
+        around[i] += net[k][place[1, 0, 2]]
+        around[j] += net[k][place[0, 1, 2]]
+    value = [around[v] / 3.0 for v in range(3)]  # of what is beside a vertex inwards
+    slopes = [value[v][:, None] * (centroid - vertices[:, v]) / 3.0 for v in range(3)]
+    for k, (i, j) in enumerate(EDGES):
+        edge = vertices[:, j] - vertices[:, i]
+        corners = np.stack([vertices[:, i], vertices[:, j], centroid], axis=1)
+        d = np.einsum("nvc,nc->vn", barycentric_gradients(corners), normals[:, k])
+        middle = net[k][place[1, 1, 1]] + (around[i] + around[j]) / 3.0
+        middle = middle / d[2]
+        half = -0.5 * middle
+        # Through the ordinate amid the piece, on those beside it (see `_middle`).
+        ends = {
+            i: net[k][place[3, 0, 0]] + half * d[0],
+            j: net[k][place[0, 3, 0]] + half * d[1],
+        }
+        outer = {
+            i: net[k][place[2, 1, 0]] + half * d[1] - middle * d[0],
+            j: net[k][place[1, 2, 0]] + half * d[0] - middle * d[1],
+        }
+        inward = {
+            i: net[k][place[2, 0, 1]] + half * d[2],
+            j: net[k][place[0, 2, 1]] + half * d[2],
+        }
+        across = (middle / 3.0)[:, None] * normals[:, k]  # 4/3 of half the two slopes
+        for v, arm in ((i, edge), (j, -edge)):
+            value[v] = value[v] + ends[v] + outer[v] + inward[v]
+            slopes[v] = slopes[v] + across + outer[v][:, None] * (arm / 3.0)
+            slopes[v] += inward[v][:, None] * ((centroid - vertices[:, v]) / 3.0)
+    columns = [np.column_stack([value[v], slopes[v]]) for v in range(3)]
+    return np.concatenate(columns, axis=1)
+
+
+@lru_cache
+def _shapes(rule: Rule) -> tuple[list[Bools], Floats]:
+    """Points of a rule that each piece holds, and the polynomials of it there."""
+    local = [rule.points @ np.linalg.inv(piece) for piece in PIECES]
+    holder = np.argmax([own.min(axis=-1) for own in local], axis=0)
+    shape = np.array([bernstein.values(DEGREE, own) for own in local])
+    chosen = shape[holder, np.arange(len(holder))]
+    return [holder == k for k in range(3)], chosen
 
 
 HCT = Piecewise(degree=DEGREE, pieces=PIECES, ordinates=ordinates)

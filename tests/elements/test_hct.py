@@ -214,3 +214,15 @@ def test_uniform_pressure_on_an_equilateral_triangle_loads_its_vertices_evenly()
     assert couples == pytest.approx(couples.mean(), rel=1e-12)
     assert couples.min() > 0.0
     assert_equal(np.einsum("vc,vc->v", f[:, 1:], around), 0.0)
+
+
+@given(triangles(), numbers(48))
+def test_loads_of_the_reduced_triangle_are_those_of_its_ordinates(X, pressure):
+    rule = hct.REDUCED.load_rule
+    geometry = Geometry(vertices=X[None], rule=rule)
+    p = np.resize(np.asarray(pressure), (1, len(rule.weights)))
+    whole = hct.REDUCED.load(geometry, p)
+    scale = np.tile([1.0, size_of(X), size_of(X)], 3) * abs(area(X[None])[0])
+    np.testing.assert_allclose(
+        hct.reduced_load(geometry, p) / scale, whole / scale, atol=1e-12
+    )
