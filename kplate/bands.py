@@ -28,10 +28,8 @@ import numpy as np
 
 from kplate import assembly
 from kplate.arrays import Floats, Ints
-from kplate.boundary import seam_tangents, side_tangents
 from kplate.brackets import SUMMED, Brackets
 from kplate.elements import bernstein
-from kplate.elements.arcs import Arcs, no_arcs
 from kplate.elements.dual_arcs import RoundDual
 from kplate.errors import SolveError
 from kplate.functionals import Functional, local_pressure, settled_vertices
@@ -42,23 +40,20 @@ from kplate.kernelled import (
     kernel_forces,
     kernelled_on,
 )
-from kplate.loading import field_doubts, unbalanced
 from kplate.loads import (
     Case,
     EdgeMoment,
     LineForce,
-    Load,
-    PointForce,
-    Pressure,
     PressureField,
 )
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
-from kplate.polygon import SNAP
 from kplate.quadrature import composite, triangle_rule
 from kplate.solve.dual import DualState, DualSystem
 from kplate.solve.static import StaticState, StaticSystem, check_cases
-from kplate.values import Kind, Value
+from kplate.unbalanced import field_doubts, unbalanced
+from kplate.values import Value
+from kplate.worth import misplaced, worth
 
 BLOCK = 512  # triangles
 ORDER = 3  # of the dual: it carries linear pressures exactly
@@ -67,7 +62,6 @@ CROSSING = 1e-9
 # Energies of loads that supports take at once are round-off: so small a share of what
 # the loads could do.
 ROUND_OFF = 1e-20
-BENT = 1e-9  # tangents that differ by more are not those of the edges
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -192,7 +186,7 @@ def certify(
         kind=kind,
         reason=reason,
         functionals=tuple(functionals),
-        put=tuple("" if reason else _put(plate, mesh, f.loads) for f in adjoint),
+        put=tuple("" if reason else misplaced(plate, mesh, f.loads) for f in adjoint),
         products=cross[:, :c],
         oscillations=off[:c],
         goal_norms=norms[c:],
@@ -215,90 +209,6 @@ def certify(
         case_gaps=local[:, :c],
         goal_gaps=local[:, c:],
     )
-
-
-def worth(
-    plate: Plate, mesh: Mesh, cases: Sequence[Case], arcs: Arcs | None = None
-) -> tuple[Kind, str]:
-    """What bands on this mesh are worth, and why they are no bounds if they are not.
-
-    `arcs` are the round edges that are followed; chords stand for the others.
-    """
-    arcs = no_arcs() if arcs is None else arcs
-    loads = [load for case in cases for load in case.loads]
-    reason = (
-        _drawn(plate, mesh, arcs)
-        or _bends(plate, mesh)
-        or _put(plate, mesh, loads)
-        or _cut(mesh, loads, arcs)
-    )
-    return ("estimate", reason) if reason else ("bound", "")
-
-
-def _drawn(plate: Plate, mesh: Mesh, arcs: Arcs) -> str:
-    """What of the plate is round but drawn by chords."""
-    outline = plate.outline
-    curved = mesh.boundary_sides[mesh.boundary_circles != STRAIGHT_EDGE]
-    sides = [mesh.side_names[int(side)] for side in curved]
-    if len(arcs):
-        for side in sides:
-            support = plate.support(side)
-            if support.holds_slope and not support.holds_deflection:
-                return f"side {side} is round and holds the slope alone"
-        sides = []
-    names = [f"side {side}" for side in sides]
-    for zone, section in zip(outline.zones, plate.sections[1:], strict=True):
-        if section != plate.sections[0] and zone.shape.line.bulges.any():
-            names.append(f"zone {zone.name}")
-    for seam in outline.seams:
-        if plate.support(seam.name).holds and seam.bulges.any():
-            names.append(f"seam {seam.name}")
-    return f"{names[0]} is round and drawn by chords" if names else ""
-
-
-def _bends(plate: Plate, mesh: Mesh) -> str:
-    """A side or seam that is held and bends, so that one tangent stands for two."""
-    joints = mesh.boundary_joints
-    ends = mesh.boundary_edges[:, 1]
-    own = np.stack([mesh.tangents(joints[:, k], ends) for k in (0, 1)], axis=1)
-    off = np.abs(side_tangents(plate, mesh) - own).max(axis=(1, 2))
-    for side in mesh.boundary_sides[joints[off > BENT, 0]].tolist():
-        if plate.support(mesh.side_names[side]).holds:
-            return f"side {mesh.side_names[side]} bends where it is held"
-    vertices, edges, away, _ = seam_tangents(plate, mesh)
-    own = mesh.points[mesh.seam_edges[edges]].sum(axis=1) - 2.0 * mesh.points[vertices]
-    own /= np.hypot(*own.T)[:, None]
-    off = np.abs(away - own).max(axis=1)
-    for seam in mesh.seam_numbers[edges[off > BENT]].tolist():
-        return f"seam {mesh.seam_names[seam]} bends where it is held"
-    return ""
-
-
-def _put(plate: Plate, mesh: Mesh, loads: Sequence[Load]) -> str:
-    """A load that is not where, or what, it is stated to be."""
-    shapes = {zone.name: zone.shape.line for zone in plate.outline.zones}
-    lines = {seam.name: seam for seam in plate.outline.seams}
-    for load in loads:
-        match load:
-            case Pressure(zone=str(name)) if shapes[name].bulges.any():
-                return f"zone {name} is round and drawn by chords"
-            case LineForce(along=name) if name in lines and lines[name].bulges.any():
-                return f"seam {name} is round and drawn by chords"
-            case PointForce(at=at):
-                off = float(np.hypot(*(mesh.points - at).T).min())
-                if off > SNAP * plate.outline.size:
-                    return "a point force acts within a triangle"
-            case PressureField():
-                return "a pressure is stated as a function, of which samples are known"
-    return ""
-
-
-def _cut(mesh: Mesh, loads: Sequence[Load], arcs: Arcs) -> str:
-    """A load whose edge passes through triangles with a round edge."""
-    for load in loads:
-        if len(arcs) and unbalanced(mesh, load)[arcs.rows].any():
-            return "a load is not linear on triangles at a round side"
-    return ""
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

@@ -13,7 +13,6 @@ import numpy as np
 from kplate import cutting
 from kplate.arrays import Floats, Ints
 from kplate.dofs import Numbering, add_up
-from kplate.elements import bernstein
 from kplate.elements.arcs import Arcs
 from kplate.elements.triangle import Geometry
 from kplate.errors import InputError
@@ -32,16 +31,14 @@ from kplate.loads import (
 )
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
-from kplate.quadrature import Rule, composite, gauss, triangle_rule
-from kplate.sampling import QUARTERS, Sampled, sampled
+from kplate.quadrature import Rule, gauss, triangle_rule
+from kplate.sampling import Sampled, sampled
 
 BLOCK = 1024  # triangles
 # Share of a patch that may be missing, as round-off, before it is off the plate.
 MISSING = 1e-9
-# Share below which what is not linear of a pressure is round-off.
-ROUND_OFF = 1e-12
 FIELD_DEGREE = 12  # of the rule that looks for it in a stated function
-_FIELD_RULE = triangle_rule(FIELD_DEGREE)
+FIELD_RULE = triangle_rule(FIELD_DEGREE)
 _SLICES = 24  # of a triangle with a round edge that the edge of a load may cut
 
 
@@ -94,111 +91,6 @@ def load_vector(
     return forces[:, 0]
 
 
-def unbalanced(mesh: Mesh, load: Load) -> Floats:
-    """Square integral, or more, of what of a pressure is not linear on each triangle.
-
-    Returns
-    -------
-    ndarray, shape (n_triangles,)
-        In N^2/m^2; 0 where the pressure is linear on the triangle.
-    """
-    match load:
-        case RectanglePatch() | DiscPatch():
-            if isinstance(load, RectanglePatch):
-                groups = cutting.inside_polygon(
-                    mesh.points[mesh.triangles], load.corners
-                )
-                height = load.force / (load.size[0] * load.size[1])
-            else:
-                groups = cutting.inside_disc(
-                    mesh.points[mesh.triangles], load.centre, load.radius
-                )
-                height = load.force / (np.pi * load.radius**2)
-            covered = np.zeros(len(mesh.triangles))
-            for parts in groups:
-                np.add.at(covered, parts.triangles, parts.weights.sum(axis=1))
-            # Nothing, or the pressure everywhere, is a linear one.
-            off = np.minimum(covered, mesh.areas - covered)
-            off[off < ROUND_OFF * mesh.areas] = 0.0
-            return height**2 * off
-        case Hydrostatic():
-            depth = _depth(load, mesh.points[mesh.triangles])
-            cut = (depth.min(axis=1) < 0.0) & (depth.max(axis=1) > 0.0)
-            most = load.specific_weight * np.maximum(depth.max(axis=1), 0.0)
-            return np.where(cut, most**2 * mesh.areas, 0.0)
-        case PressureField():
-            return _not_linear(mesh, load)
-    return np.zeros(len(mesh.triangles))
-
-
-def field_doubts(
-    element: Shape, numbering: Numbering, load: PressureField, unknowns: Floats
-) -> Floats:
-    """What is not known of the work of a stated pressure on deflections, (c,).
-
-    Where the pressure is not smooth, the sums over the last pieces (`sampling`) and
-    over their quarters differ; the differences are added up without their signs.
-
-    Parameters
-    ----------
-    element, numbering : Shape, Numbering
-        What the unknowns belong to.
-    load : PressureField
-        The pressure.
-    unknowns : ndarray, shape (count, c)
-        Of the deflections.
-
-    Returns
-    -------
-    ndarray, shape (c,)
-        In N m for deflections in m.
-    """
-    total = np.zeros(unknowns.shape[1])
-    known, owner = _sampled(numbering, element, load)
-    pieces, triangles = known.pieces[known.rough], owner[known.owners[known.rough]]
-    fine = composite(QUARTERS, _FIELD_RULE)
-    points = np.concatenate([fine.points, _FIELD_RULE.points])
-    weights = np.concatenate([fine.weights, -_FIELD_RULE.weights])
-    for start in range(0, len(pieces), BLOCK):
-        block = slice(start, start + BLOCK)
-        own, at = triangles[block], points @ pieces[block]
-        rows = _deflection_rows(numbering, element, own, at)
-        w = rows @ unknowns[numbering.table[own]]
-        weighted = _function_at(load, at) * weights * _areas(pieces[block])[:, None]
-        total += np.abs(np.einsum("nq,nqc->nc", weighted, w)).sum(axis=0)
-    return total
-
-
-def _not_linear(mesh: Mesh, load: PressureField) -> Floats:
-    """Square integral of what of a stated pressure is not linear, (n_triangles,)."""
-    rule = _FIELD_RULE
-    corners = mesh.points[mesh.triangles]
-    pressure = _function_at(load, rule.points @ corners)
-    mean = (pressure * rule.weights) @ rule.points
-    best = np.linalg.solve(bernstein.masses(1), mean[..., None])[..., 0]
-    off = pressure - best @ rule.points.T
-    squared: Floats = mesh.areas * (off**2 @ rule.weights)
-    whole = mesh.areas * (pressure**2 @ rule.weights)
-    known = sampled(lambda points: _function_at(load, points), corners)
-    if len(known.pieces):
-        # Of jumps over the pieces, and without the difference of large numbers there.
-        n, areas = len(corners), _areas(known.pieces)
-        at = _FIELD_RULE.points @ known.pieces
-        p, weights = _function_at(load, at), areas[:, None] * _FIELD_RULE.weights
-        shape = mesh.barycentrics(
-            np.repeat(known.owners, at.shape[1]), at.reshape(-1, 2)
-        ).reshape(*p.shape, 3)
-        mean = np.zeros((n, 3))
-        np.add.at(mean, known.owners, np.einsum("kq,kqv->kv", weights * p, shape))
-        mean /= mesh.areas[:, None]
-        best = np.linalg.solve(bernstein.masses(1), mean[..., None])[..., 0]
-        off = p - np.einsum("kqv,kv->kq", shape, best[known.owners])
-        parted = np.zeros(n)
-        np.add.at(parted, known.owners, np.sum(weights * off**2, axis=1))
-        squared = np.where(parted > 0.0, parted, squared)
-    return np.where(squared < ROUND_OFF**2 * whole, 0.0, squared)
-
-
 def _add_pressure(
     forces: Floats, element: Shape, numbering: Numbering, plate: Plate, load: Load
 ) -> None:
@@ -238,10 +130,10 @@ def _pressure(load: Load, plate: Plate, points: Floats, zones: Ints) -> Floats:
             own = weights[np.searchsorted(np.unique(zones), zones)] * acceleration
             return np.broadcast_to(own[:, None], points.shape[:-1])
         case Hydrostatic():
-            depth = _depth(load, points)
+            depth = depth_at(load, points)
             return np.where(depth > 0.0, load.specific_weight * depth, 0.0)
         case PressureField():
-            return _function_at(load, points)
+            return function_at(load, points)
     raise AssertionError(load)
 
 
@@ -265,7 +157,7 @@ def _zone_triangles(mesh: Mesh, zone: str) -> Ints:
     return np.flatnonzero(mesh.zones == mesh.zone_names.index(zone))
 
 
-def _function_at(load: PressureField, points: Floats) -> Floats:
+def function_at(load: PressureField, points: Floats) -> Floats:
     """Pressure of a user's function at points (..., 2), checked."""
     value = load.function(points[..., 0], points[..., 1])
     result = np.asarray(value, dtype=float)
@@ -285,12 +177,12 @@ def _function_at(load: PressureField, points: Floats) -> Floats:
     return result
 
 
-def _sampled(
+def pieces_sampled(
     numbering: Numbering, element: Shape, load: PressureField
 ) -> tuple[Sampled, Ints]:
     """Where a stated pressure is not smooth, and the triangles of the owners."""
     pieces, owner = _pieces(numbering, element)
-    return sampled(lambda points: _function_at(load, points), pieces), owner
+    return sampled(lambda points: function_at(load, points), pieces), owner
 
 
 def _add_rough(
@@ -298,7 +190,7 @@ def _add_rough(
 ) -> Ints:
     """Add the triangles in which a stated pressure jumps; return the others."""
     mesh = numbering.mesh
-    known, owner = _sampled(numbering, element, load)
+    known, owner = pieces_sampled(numbering, element, load)
     chosen = np.ones(len(mesh.triangles), dtype=bool)
     if len(known.pieces):
         chosen[owner[known.owners]] = False
@@ -308,8 +200,8 @@ def _add_rough(
         triangles = np.concatenate([owner[known.owners], of[smooth]])
         parts = cutting.Parts(
             triangles=triangles,
-            points=_FIELD_RULE.points @ pieces,
-            weights=_areas(pieces)[:, None] * _FIELD_RULE.weights,
+            points=FIELD_RULE.points @ pieces,
+            weights=piece_areas(pieces)[:, None] * FIELD_RULE.weights,
         )
         everything = np.arange(len(mesh.triangles))
         _add_parts(
@@ -318,19 +210,19 @@ def _add_rough(
             numbering,
             parts,
             everything,
-            lambda points: _function_at(load, points),
+            lambda points: function_at(load, points),
         )
     return np.flatnonzero(chosen)
 
 
-def _areas(pieces: Floats) -> Floats:
+def piece_areas(pieces: Floats) -> Floats:
     """Areas in m2 of triangles (n, 3, 2)."""
     a, b = np.moveaxis(pieces[:, 1:] - pieces[:, :1], 1, 0)
     areas: Floats = 0.5 * np.abs(a[:, 0] * b[:, 1] - a[:, 1] * b[:, 0])
     return areas
 
 
-def _depth(load: Hydrostatic, points: Floats) -> Floats:
+def depth_at(load: Hydrostatic, points: Floats) -> Floats:
     """Depth in m below the liquid's surface."""
     up = np.asarray(load.up, dtype=float)
     return load.level - points @ (up / np.hypot(*up))
@@ -341,7 +233,7 @@ def _add_waterline(
 ) -> Ints:
     """Add the triangles that the liquid's surface cuts; return those wholly wet."""
     mesh = numbering.mesh
-    depth = _depth(load, mesh.points[mesh.triangles])
+    depth = depth_at(load, mesh.points[mesh.triangles])
     cut = np.flatnonzero((depth.min(axis=1) < 0.0) & (depth.max(axis=1) > 0.0))
     if cut.size:
         up = np.asarray(load.up, dtype=float)
@@ -356,7 +248,7 @@ def _add_waterline(
         ]
 
         def pressure(points: Floats) -> Floats:
-            return load.specific_weight * _depth(load, points)
+            return load.specific_weight * depth_at(load, points)
 
         pieces, owner = _pieces(numbering, element, cut)
         for parts in cutting.inside_polygon(pieces, corners):
@@ -426,20 +318,19 @@ def _add_parts(
 ) -> None:
     """Add a pressure over parts of triangles."""
     assert callable(pressure)
-    mesh = numbering.mesh
     q = parts.points.shape[1]
     step = max(1, 8 * BLOCK // q)
     for start in range(0, len(parts.triangles), step):
         block = slice(start, start + step)
         triangles = owner[parts.triangles[block]]
         points = parts.points[block]
-        rows = _deflection_rows(numbering, element, triangles, points)
+        rows = deflection_rows(numbering, element, triangles, points)
         weighted = pressure(points) * parts.weights[block]
         own = np.einsum("nq,nqd->nd", weighted, rows)
         add_up(forces, numbering.table[triangles], own[..., None])
 
 
-def _deflection_rows(
+def deflection_rows(
     numbering: Numbering, element: Shape, triangles: Ints, points: Floats
 ) -> Floats:
     """Rows of w at points (n, q, 2) of triangles (n,), (n, q, d)."""

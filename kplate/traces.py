@@ -17,13 +17,13 @@ Signs: n on the right of an edge as it is listed; v_n and R positive up.
 """
 
 from dataclasses import dataclass
-from functools import cached_property, lru_cache
-from math import perm
+from functools import cached_property
 
 import numpy as np
 import scipy.sparse as sp
 
-from kplate.arrays import Bools, Floats, Ints, read_only_floats
+from kplate import hermite
+from kplate.arrays import Bools, Floats, Ints
 from kplate.boundary import (
     rigid_motions,
     seam_tangents,
@@ -142,13 +142,13 @@ class Traces:
 
     def line_reaction(self, edges: Ints, shares: Floats) -> Floats:
         """v_n in N/m at shares (q,) of the lengths of edges (k,), (k, q, c)."""
-        basis = _basis(self.shears.shape[1] // 2, halfway=False)
-        return _values(basis, shares) @ self.shears[edges]
+        basis = hermite.basis(self.shears.shape[1] // 2, halfway=False)
+        return hermite.values(basis, shares) @ self.shears[edges]
 
     def line_moment(self, edges: Ints, shares: Floats) -> Floats:
         """m_nn in N at shares (q,) of the lengths of edges (k,), (k, q, c)."""
-        basis = _basis(self.couples.shape[1] // 2, halfway=True)
-        return _values(basis, shares) @ self.couples[edges]
+        basis = hermite.basis(self.couples.shape[1] // 2, halfway=True)
+        return hermite.values(basis, shares) @ self.couples[edges]
 
 
 def held_edges(plate: Plate, mesh: Mesh, arcs: Arcs | None = None) -> HeldEdges:
@@ -226,9 +226,11 @@ def solve_traces(state: StaticState, carrying: Ints) -> Traces:
     on_edge = numbering.on_edges(mesh.edge_numbers(held.edges))
     unknowns = np.concatenate([own, on_edge], axis=1)
     by_length = lengths[:, None, None]
-    shear_work = on_w.swapaxes(1, 2) @ (by_length * _products(jets, halfway=False))
+    shear_work = on_w.swapaxes(1, 2) @ (
+        by_length * hermite.products(jets, halfway=False)
+    )
     couple_work = on_slope.swapaxes(1, 2) @ (
-        by_length * _products(jets - 1, halfway=True)
+        by_length * hermite.products(jets - 1, halfway=True)
     )
     _round_work(state, held, shear_work, couple_work)
     shear_map, couple_map = _maps(held, lengths, jets)
@@ -289,11 +291,11 @@ def _round_work(
         axis=1,
     )[:, None]
     for work, values, basis in (
-        (shear_work, rows[:, :, 0], _basis(jets, halfway=False)),
-        (couple_work, slope, _basis(jets - 1, halfway=True)),
+        (shear_work, rows[:, :, 0], hermite.basis(jets, halfway=False)),
+        (couple_work, slope, hermite.basis(jets - 1, halfway=True)),
     ):
         own = np.take_along_axis(values, columns, axis=2)
-        along = _values(basis, shares) * weights[:, None]
+        along = hermite.values(basis, shares) * weights[:, None]
         work[curved] = arcs.lengths[:, None, None] * (own.swapaxes(1, 2) @ along)
 
 
@@ -491,39 +493,3 @@ def _held_directions(state: StaticState, held: HeldEdges) -> sp.csr_array:
         (np.ones(m), (np.arange(m), constraints.on_edges)), shape=(m, numbering.count)
     )
     return sp.vstack([vertices, bows, edges], format="csr")
-
-
-@lru_cache
-def _basis(jets: int, *, halfway: bool) -> Floats:
-    """Polynomials on [0, 1] of jets at 0, at 1 and, if so, the value at 1/2.
-
-    Returns
-    -------
-    ndarray, shape (k, k)
-        Coefficients of rising powers, one polynomial a row.
-    """
-    count = 2 * jets + halfway
-    power = np.arange(count)
-    rows: list[Floats] = []
-    for place in (0.0, 1.0):
-        for j in range(jets):
-            falling = np.array([float(perm(k, j)) for k in power.tolist()])
-            steep = falling * place ** np.maximum(power - j, 0)
-            rows.append(steep.astype(np.float64))
-    if halfway:
-        rows.append((0.5**power).astype(np.float64))
-    return read_only_floats(np.linalg.inv(np.array(rows)).T)
-
-
-@lru_cache
-def _products(jets: int, *, halfway: bool) -> Floats:
-    """Integrals over [0, 1] of products of the basis, (k, k)."""
-    basis = _basis(jets, halfway=halfway)
-    s, weights = gauss(len(basis))
-    values = _values(basis, s)
-    return read_only_floats(values.T @ (weights[:, None] * values))
-
-
-def _values(basis: Floats, shares: Floats) -> Floats:
-    """Values of the basis at shares (q,), (q, k)."""
-    return shares[:, None] ** np.arange(len(basis)) @ basis.T

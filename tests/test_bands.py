@@ -16,7 +16,7 @@ from oracles_series import Band, banded
 from plates import SIDES, grid, rectangle
 
 from kplate import bands, sampling
-from kplate.bands import certify, worth
+from kplate.bands import certify
 from kplate.errors import InputError, SolveError
 from kplate.following import followed
 from kplate.functionals import REACH, functional, local_pressure
@@ -53,6 +53,7 @@ from kplate.quadrature import triangle_rule
 from kplate.refine import refined
 from kplate.shapes import Circle, Rectangle
 from kplate.supports import CLAMPED, FREE, GUIDED, SIMPLY_SUPPORTED
+from kplate.worth import worth
 
 D = 1e4  # N m, of `plates.rectangle`
 PRESSURE = -1e3

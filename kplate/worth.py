@@ -1,0 +1,104 @@
+"""What bands on a mesh are worth: bounds, or estimates and why.
+
+A bound needs a deflection that the supports allow, moments in balance, and a mesh and
+loads that are those of the plate as stated.
+"""
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from kplate.boundary import seam_tangents, side_tangents
+from kplate.elements.arcs import Arcs, no_arcs
+from kplate.loads import Case, LineForce, Load, PointForce, Pressure, PressureField
+from kplate.mesh import STRAIGHT_EDGE, Mesh
+from kplate.plate import Plate
+from kplate.polygon import SNAP
+from kplate.unbalanced import unbalanced
+from kplate.values import Kind
+
+BENT = 1e-9  # tangents that differ by more are not those of the edges
+
+
+def worth(
+    plate: Plate, mesh: Mesh, cases: Sequence[Case], arcs: Arcs | None = None
+) -> tuple[Kind, str]:
+    """What bands on this mesh are worth, and why they are no bounds if they are not.
+
+    `arcs` are the round edges that are followed; chords stand for the others.
+    """
+    arcs = no_arcs() if arcs is None else arcs
+    loads = [load for case in cases for load in case.loads]
+    reason = (
+        _drawn(plate, mesh, arcs)
+        or _bends(plate, mesh)
+        or misplaced(plate, mesh, loads)
+        or _cut(mesh, loads, arcs)
+    )
+    return ("estimate", reason) if reason else ("bound", "")
+
+
+def _drawn(plate: Plate, mesh: Mesh, arcs: Arcs) -> str:
+    """What of the plate is round but drawn by chords."""
+    outline = plate.outline
+    curved = mesh.boundary_sides[mesh.boundary_circles != STRAIGHT_EDGE]
+    sides = [mesh.side_names[int(side)] for side in curved]
+    if len(arcs):
+        for side in sides:
+            support = plate.support(side)
+            if support.holds_slope and not support.holds_deflection:
+                return f"side {side} is round and holds the slope alone"
+        sides = []
+    names = [f"side {side}" for side in sides]
+    for zone, section in zip(outline.zones, plate.sections[1:], strict=True):
+        if section != plate.sections[0] and zone.shape.line.bulges.any():
+            names.append(f"zone {zone.name}")
+    for seam in outline.seams:
+        if plate.support(seam.name).holds and seam.bulges.any():
+            names.append(f"seam {seam.name}")
+    return f"{names[0]} is round and drawn by chords" if names else ""
+
+
+def _bends(plate: Plate, mesh: Mesh) -> str:
+    """A side or seam that is held and bends, so that one tangent stands for two."""
+    joints = mesh.boundary_joints
+    ends = mesh.boundary_edges[:, 1]
+    own = np.stack([mesh.tangents(joints[:, k], ends) for k in (0, 1)], axis=1)
+    off = np.abs(side_tangents(plate, mesh) - own).max(axis=(1, 2))
+    for side in mesh.boundary_sides[joints[off > BENT, 0]].tolist():
+        if plate.support(mesh.side_names[side]).holds:
+            return f"side {mesh.side_names[side]} bends where it is held"
+    vertices, edges, away, _ = seam_tangents(plate, mesh)
+    own = mesh.points[mesh.seam_edges[edges]].sum(axis=1) - 2.0 * mesh.points[vertices]
+    own /= np.hypot(*own.T)[:, None]
+    off = np.abs(away - own).max(axis=1)
+    for seam in mesh.seam_numbers[edges[off > BENT]].tolist():
+        return f"seam {mesh.seam_names[seam]} bends where it is held"
+    return ""
+
+
+def misplaced(plate: Plate, mesh: Mesh, loads: Sequence[Load]) -> str:
+    """A load that is not where, or what, it is stated to be."""
+    shapes = {zone.name: zone.shape.line for zone in plate.outline.zones}
+    lines = {seam.name: seam for seam in plate.outline.seams}
+    for load in loads:
+        match load:
+            case Pressure(zone=str(name)) if shapes[name].bulges.any():
+                return f"zone {name} is round and drawn by chords"
+            case LineForce(along=name) if name in lines and lines[name].bulges.any():
+                return f"seam {name} is round and drawn by chords"
+            case PointForce(at=at):
+                off = float(np.hypot(*(mesh.points - at).T).min())
+                if off > SNAP * plate.outline.size:
+                    return "a point force acts within a triangle"
+            case PressureField():
+                return "a pressure is stated as a function, of which samples are known"
+    return ""
+
+
+def _cut(mesh: Mesh, loads: Sequence[Load], arcs: Arcs) -> str:
+    """A load whose edge passes through triangles with a round edge."""
+    for load in loads:
+        if len(arcs) and unbalanced(mesh, load)[arcs.rows].any():
+            return "a load is not linear on triangles at a round side"
+    return ""
