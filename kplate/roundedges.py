@@ -14,8 +14,8 @@ from kplate.plate import Plate
 from kplate.refine import parted_at_middles, refined
 
 # Least share of a triangle's area that a ray may sweep at an arc: below it the
-# triangle is bisected.
-_STEEP = 0.15
+# triangle is bisected, for the quadrature to be exact to 1e-9.
+_STEEP = 0.3
 # An arc turns by no more than this, in rad, for the lift and the quadrature to be exact
 # to round-off.
 _MOST_TURN = 1.1

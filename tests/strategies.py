@@ -39,7 +39,7 @@ def triangles(draw):
     Its angles are at least 11 degrees.
     """
     apex = draw(st.tuples(st.floats(-0.5, 1.5), st.floats(0.3, 1.5)))
-    return _placed(draw, [(0.0, 0.0), (1.0, 0.0), apex])
+    return placed(draw, [(0.0, 0.0), (1.0, 0.0), apex])
 
 
 @st.composite
@@ -50,7 +50,7 @@ def kites(draw):
     """
     above = draw(st.tuples(st.floats(-0.5, 1.5), st.floats(0.3, 1.5)))
     below = draw(st.tuples(st.floats(-0.5, 1.5), st.floats(-1.5, -0.3)))
-    points = _placed(draw, [(0.0, 0.0), (1.0, 0.0), above, below])
+    points = placed(draw, [(0.0, 0.0), (1.0, 0.0), above, below])
     starts = draw(st.tuples(st.integers(0, 2), st.integers(0, 2)))
     first, second = np.roll([0, 1, 2], starts[0]), np.roll([1, 0, 3], starts[1])
     return points, np.array([first, second])
@@ -125,6 +125,7 @@ def size_of(vertices):
     return float(np.hypot(*(vertices - np.roll(vertices, 1, axis=0)).T).max())
 
 
-def _placed(draw, corners):
+def placed(draw, corners):
+    """Corners (k, 2) turned, scaled and shifted at random."""
     turn, size, shift = draw(similarities())
     return size * np.array(corners) @ turn.T + shift
