@@ -475,7 +475,8 @@ class Solution(Solved):
         close = order[sizes[order] >= (1.0 - CLOSE) * sizes[order[0]]]
         triangles = np.unique(at.triangles[close][:MOST])
         corners = self.mesh.points[self.mesh.triangles[triangles]]
-        inner = Lattice.of(FINE).barycentrics @ corners
+        arcs = self.state.constraints.numbering.arcs.among(triangles)
+        inner = arcs.bent(Lattice.of(FINE).barycentrics, len(triangles)) @ corners
         points = inner.reshape(-1, 2)
         case = self.cases[index]
         discs = [e for e in self.excluded if e.case in ("", case)]
