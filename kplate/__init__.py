@@ -77,7 +77,9 @@ from kplate.panel import Panel, read_panel
 from kplate.plate import Plate, Section
 from kplate.polygon import Polygon
 from kplate.recovery import principal_moments
+from kplate.sensitivity import Parameter, Sensitivity, sensitivities
 from kplate.shapes import Circle, Ellipse, Rectangle, Slot
+from kplate.sizing import Size, Sizing, Stock, size
 from kplate.solution import Solution
 from kplate.supports import CLAMPED, FREE, GUIDED, SIMPLY_SUPPORTED, Support
 from kplate.validity import Validity, validity
@@ -119,6 +121,7 @@ __all__ = [
     "Moment",
     "Outline",
     "Panel",
+    "Parameter",
     "Peak",
     "Plate",
     "PointForce",
@@ -132,12 +135,16 @@ __all__ = [
     "Resultant",
     "Section",
     "SelfWeight",
+    "Sensitivity",
     "Shear",
+    "Size",
+    "Sizing",
     "Slope",
     "Slot",
     "Solution",
     "SolveError",
     "StepLimit",
+    "Stock",
     "StressLimit",
     "StressRangeLimit",
     "Support",
@@ -151,6 +158,8 @@ __all__ = [
     "preset_combinations",
     "principal_moments",
     "read_panel",
+    "sensitivities",
+    "size",
     "solution_record",
     "solve",
     "validity",

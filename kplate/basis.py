@@ -30,6 +30,7 @@ from kplate.samples import Lattice
 from kplate.singular import Excluded
 from kplate.solution import CLOSE, FINE, MOST, Solution
 from kplate.values import Value, scaled
+from kplate.woodarmer import DESIGN
 
 # A summit is sought by so many steps at most, until one is this share of a triangle.
 _NEWTON, _SLIGHT = 12, 1e-9
@@ -222,7 +223,8 @@ class Basis:
         sizes, offs : ndarray, shape (n_triangles, n_units)
             In norms that no measure of the quantity exceeds.
         """
-        kind = quantity if quantity in ("von Mises", "shear stress") else "principal"
+        alone = ("largest principal", "smallest principal", "m_xx", "m_yy", "m_xy")
+        kind = "principal" if quantity in alone else quantity
         if kind not in self._bounds:
             samples, n = self._samples, len(self.solution.mesh.triangles)
             if kind == "shear stress":
@@ -412,24 +414,32 @@ class Basis:
         )
 
 
-def _lever(quantity: str, thickness: Floats) -> Floats:
-    """What turns a measure into the norm of the moments or shears it is made of."""
-    if quantity in ("von Mises", "largest principal", "smallest principal"):
-        return thickness**2 / 6.0
+def power(quantity: str) -> int:
+    """Power of the thickness that a quantity of given moments or loads falls with."""
+    if quantity == "deflection":
+        return 3
     if quantity == "shear stress":
-        return thickness / 1.5
-    return np.ones_like(thickness)
+        return 1
+    return 0 if quantity in ("m_xx", "m_yy", "m_xy", *DESIGN) else 2
+
+
+def _lever(quantity: str, thickness: Floats) -> Floats:
+    """What turns a measure into one of the moments or shears it is made of."""
+    own = power(quantity)
+    return thickness**own / {0: 1.0, 1: 1.5, 2: 6.0}[own]
 
 
 def _norm(kind: str, fields: Floats) -> Floats:
-    """Norms of moments or shears (n, a, c), (n, c)."""
+    """Norms of moments or shears (n, a, c), (n, c), that no measure exceeds."""
     own = fields.swapaxes(1, 2)
     if kind == "von Mises":
         return von_mises(own)
-    if kind == "principal":
-        return np.abs(principal_moments(own)[0]).max(axis=-1)
-    sizes: Floats = np.hypot(own[..., 0], own[..., 1])
-    return sizes
+    if kind == "shear stress":
+        sizes: Floats = np.hypot(own[..., 0], own[..., 1])
+        return sizes
+    # One of the principal moments, or two of them where they are added.
+    largest: Floats = np.abs(principal_moments(own)[0]).max(axis=-1)
+    return largest if kind == "principal" else 2.0 * largest
 
 
 def _terms(places: Floats, degree: int) -> Floats:

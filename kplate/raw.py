@@ -18,6 +18,7 @@ import numpy as np
 
 from kplate import assembly
 from kplate.arrays import Bools, Floats, Ints
+from kplate.mesh import Mesh
 from kplate.recovery import SmoothedMoments, smoothed_moments, von_mises
 from kplate.samples import Lattice, Samples
 from kplate.singular import Excluded, plate_corners
@@ -66,15 +67,7 @@ class RawMoments:
 
     def corner_moments(self, edges: Ints, ends: Ints) -> Floats:
         """Moments at one end (0 or 1) of boundary edges (k,), (k, 3, c)."""
-        mesh = self.state.mesh
-        own = mesh.boundary_edges[edges]
-        triangles = mesh.triangles_at(own)
-        vertex = own[np.arange(len(own)), ends]
-        barycentrics = (mesh.triangles[triangles] == vertex[:, None]).astype(float)
-        towards = mesh.barycentrics(triangles, mesh.points[own].mean(axis=1))
-        return self.moments_at(
-            triangles, barycentrics + INSIDE * (towards - barycentrics)
-        )
+        return self.moments_at(*corner_places(self.state.mesh, edges, ends))
 
     @cached_property
     def samples(self) -> Samples:
@@ -286,6 +279,16 @@ class RawMoments:
             shears = np.einsum("nqv,nvac->nqac", at, self._smoothed.shears[nodes])
         jets = shape.fields(vertices, barycentrics, own, 1, arcs)
         return np.concatenate([jets, moments, shears], axis=2)
+
+
+def corner_places(mesh: Mesh, edges: Ints, ends: Ints) -> tuple[Ints, Floats]:
+    """Triangles at boundary edges (k,), and one end (0 or 1) in each, (k, 3)."""
+    own = mesh.boundary_edges[edges]
+    triangles = mesh.triangles_at(own)
+    vertex = own[np.arange(len(own)), ends]
+    barycentrics = (mesh.triangles[triangles] == vertex[:, None]).astype(float)
+    towards = mesh.barycentrics(triangles, mesh.points[own].mean(axis=1))
+    return triangles, barycentrics + INSIDE * (towards - barycentrics)
 
 
 def _with_stress(values: Floats) -> Floats:

@@ -18,7 +18,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from kplate.arrays import Floats
+from kplate.arrays import Floats, Ints
 from kplate.boundary import rigid_motions
 from kplate.dualforces import edge_moments
 from kplate.loads import PointForce
@@ -232,8 +232,7 @@ def _corner_forces(
         if corner.place in ends:
             reason = "no finite value: end of an edge moment"
         elif not corner.unbounded:
-            edges = mesh.boundary_joints[joint]
-            tangents = mesh.tangents(edges, np.full(2, vertex))
+            edges, tangents = corner_edges(mesh, corner)
             # The arriving edge ends at the corner, the leaving one begins there.
             moments = recovered.corner_moments(edges, np.array([1, 0]))[:, :, index]
             m_ns = _twist(moments, tangents)
@@ -254,6 +253,14 @@ def _corner_forces(
             force = replace(force, lower=jump - off, upper=jump + off, kind="indicator")
         found.append((CornerForce(corner=corner, force=force), vertex))
     return found
+
+
+def corner_edges(mesh: Mesh, corner: Corner) -> tuple[Ints, Floats]:
+    """Boundary edges that arrive at a corner and leave it, and their tangents there."""
+    joint = _joint_at(mesh, corner)
+    edges = mesh.boundary_joints[joint]
+    vertex = mesh.boundary_edges[joint, 1]
+    return edges, mesh.tangents(edges, np.full(2, vertex))
 
 
 def _joint_at(mesh: Mesh, corner: Corner) -> int:

@@ -17,9 +17,9 @@ from functools import cached_property
 import numpy as np
 
 from kplate.arrays import Floats
-from kplate.basis import Basis
+from kplate.basis import Basis, power
 from kplate.errors import InputError
-from kplate.goals import Deflection, MeanDeflection, Slope
+from kplate.goals import Deflection, Goal, MeanDeflection, Slope
 from kplate.loads import Case, Load, SelfWeight
 from kplate.plate import Plate
 from kplate.reactions import CornerForce, PointReaction, Reactions, Resultant
@@ -31,14 +31,6 @@ from kplate.solve.static import StaticState
 from kplate.values import Kind, Value, scaled
 
 KINDS: tuple[Kind, ...] = ("bound", "estimate", "indicator", "none")  # worse and worse
-# Powers of the thickness with which peaks go; moments stay.
-POWERS = {
-    "deflection": -3,
-    "von Mises": -2,
-    "largest principal": -2,
-    "smallest principal": -2,
-    "shear stress": -1,
-}
 WEIGHT = "self-weight"  # name of the unit case
 
 
@@ -135,13 +127,11 @@ class Superposed(Solution):
             )
         bends = (own.plate.thickness / plate.thickness) ** 3
         state = own.state
-        known = {}
-        for goal in dict.fromkeys(goal for goal, _ in own.known):
-            unit = [own.known[goal, case] for case in own.cases]
-            lengthens = isinstance(goal, Deflection | MeanDeflection | Slope)
-            for case, weight in zip(cases, weights.T, strict=True):
-                total = added(unit, weight * (bends if lengthens else 1.0))
-                known[goal, case.name] = replace(total, case=case.name)
+        names = [case.name for case in cases]
+        known, energies = _bands(own, weights, names)
+        for goal, name in known:
+            if isinstance(goal, Deflection | MeanDeflection | Slope):
+                known[goal, name] = scaled(known[goal, name], bends)
         summed = StaticState(
             plate=plate,
             cases=tuple(cases),
@@ -155,7 +145,7 @@ class Superposed(Solution):
             basis=basis,
             weights=weights,
             state=summed,
-            energies=_energies(own.energies, summed, weights, bends),
+            energies=tuple(scaled(energy, bends) for energy in energies),
             dual=_summed_dual(own.dual, plate, cases, weights, bends),
             excluded_radius=own.excluded_radius,
             known=known,
@@ -185,7 +175,7 @@ class Superposed(Solution):
         case = self.cases[index]
         discs = [e for e in self.excluded if e.case in ("", case)]
         value = self.basis.peak(quantity, self.weights[:, index], discs, case)
-        return scaled(value, self._scale ** -POWERS.get(quantity, 0))
+        return scaled(value, self._scale ** power(quantity))
 
     def _reactions(self, index: int) -> Reactions:
         known = self._known_reactions
@@ -238,30 +228,32 @@ def added(values: Sequence[Value], weights: Floats) -> Value:
     )
 
 
-def _energies(
-    energies: Sequence[Value], state: StaticState, weights: Floats, bends: float
-) -> tuple[Value, ...]:
-    """Strain energies of sums: the norm of a gap is no more than the sum of norms."""
-    if not energies:
-        return ()
-    above = [(own.upper or own.value) - own.value for own in energies]
-    gap = np.sqrt(2.0 * np.maximum(above, 0.0)) @ np.abs(weights)
-    found = []
-    for k, case in enumerate(state.cases):
-        entering = [own for own, w in zip(energies, weights[:, k], strict=True) if w]
-        worst = max(entering or energies, key=lambda own: KINDS.index(own.kind))
-        own = float(state.strain_energy[k])
-        has_band = worst.kind != "none"
-        found.append(
-            replace(
-                worst,
-                value=own,
-                lower=own if has_band else None,
-                upper=own + 0.5 * bends * float(gap[k]) ** 2 if has_band else None,
-                case=case.name,
-            )
+def _bands(
+    unit: Solution, weights: Floats, names: Sequence[str]
+) -> tuple[dict[tuple[Goal, str], Value], tuple[Value, ...]]:
+    """Goals and strain energies of sums of unit cases, at their thickness.
+
+    From the gaps of the sums where they are known; otherwise bands add up.
+    """
+    known: dict[tuple[Goal, str], Value] = {}
+    brackets = unit.brackets
+    if brackets is not None:
+        rows = brackets.values(weights, names)
+        for f, row in zip(brackets.functionals, rows, strict=True):
+            known |= {(f.goal, value.case): value for value in row}
+        state = unit.state
+        summed = replace(
+            state,
+            cases=tuple(Case(name=name, loads=state.cases[0].loads) for name in names),
+            unknowns=state.unknowns @ weights,
+            forces=state.forces @ weights,
         )
-    return tuple(found)
+        return known, brackets.energies(weights, names, summed.strain_energy)
+    for goal in dict.fromkeys(goal for goal, _ in unit.known):
+        parts = [unit.known[goal, case] for case in unit.cases]
+        for name, weight in zip(names, weights.T, strict=True):
+            known[goal, name] = replace(added(parts, weight), case=name)
+    return known, ()
 
 
 def _summed_dual(
