@@ -19,9 +19,11 @@ licensed practice decide.
 """
 
 from kplate.adapt import solve
+from kplate.asking import Ask
 from kplate.check import Checked, check
 from kplate.combinations import Combination, preset_combinations
 from kplate.combining import combine
+from kplate.envelope import Envelope
 from kplate.errors import InputError, KplateError, KplateWarning, MeshError, SolveError
 from kplate.goals import (
     ClampingMoment,
@@ -96,6 +98,7 @@ __all__ = [
     "STAINLESS_STEEL",
     "STEEL",
     "STOCK",
+    "Ask",
     "Case",
     "Checked",
     "Circle",
@@ -106,6 +109,7 @@ __all__ = [
     "DiscPatch",
     "EdgeMoment",
     "Ellipse",
+    "Envelope",
     "Goal",
     "Hydrostatic",
     "InputError",

@@ -4,11 +4,11 @@ A force or pressure says up or down, an edge moment which face it stretches, a c
 which way it lifts the plate; a sign is refused. Every quantity has its unit.
 """
 
-from collections.abc import Collection, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from kplate.errors import InputError
-from kplate.fields import Fields, closest, numbered, shown, some, within
+from kplate.fields import Fields, named, numbered, shown, some, within
 from kplate.loads import (
     STANDARD_GRAVITY,
     Case,
@@ -28,7 +28,11 @@ from kplate.plate import Plate
 from kplate.quantities import positive, quantity, two_lengths
 
 # What each table may hold, each field with a value as it is written.
-CASE = {"name": '"wheel"', "loads": '[{ pressure = "5 kPa down" }]'}
+CASE = {
+    "name": '"wheel"',
+    "loads": '[{ pressure = "5 kPa down" }]',
+    "reverses": '"yes"',
+}
 GRAVITY = {"gravity": '"9.81 m/s^2"'}
 AT = {"at": '["400 mm", "300 mm"]'}
 # The field that leads tells the kind.
@@ -76,8 +80,11 @@ def read_cases(tables: Sequence[Any], plate: Plate) -> tuple[Case, ...]:
         loads = [
             _load(f"{where}, load {j}", item, plate) for j, item in enumerate(stated, 1)
         ]
+        reverses = False
+        if "reverses" in fields:
+            reverses = fields.choice("reverses", ("yes", "no")) == "yes"
         with within(where):
-            cases[name] = Case(name=name, loads=loads)
+            cases[name] = Case(name=name, loads=loads, reverses=reverses)
     return tuple(cases.values())
 
 
@@ -114,19 +121,19 @@ def _pressure(fields: Fields, outline: Outline) -> Pressure:
     pressure = fields.directed("pressure", "pressure")
     if "on" not in fields:
         return Pressure(pressure)
-    return Pressure(pressure, zone=_named(fields, "on", outline.zone_names, "zone"))
+    return Pressure(pressure, zone=named(fields, "on", outline.zone_names, "zone"))
 
 
 def _line(fields: Fields, outline: Outline) -> LineForce:
     force = fields.directed("line", "line force")
     names = (*outline.side_names, *(seam.name for seam in outline.seams))
-    return LineForce(force=force, along=_named(fields, "along", names, "side or seam"))
+    return LineForce(force=force, along=named(fields, "along", names, "side or seam"))
 
 
 def _edge_moment(fields: Fields, outline: Outline) -> EdgeMoment:
     moment = fields.positive("edge_moment", "line moment")
     sign = STRETCHES[fields.choice("stretches", STRETCHES)]
-    along = _named(fields, "along", outline.side_names, "side")
+    along = named(fields, "along", outline.side_names, "side")
     return EdgeMoment(moment=sign * moment, along=along)
 
 
@@ -183,7 +190,7 @@ def _place(fields: Fields, outline: Outline) -> tuple[float, float]:
     """Read where a load acts: x and y with their units, or a mark."""
     if isinstance(fields.value("at"), str):
         marks = {mark.name: mark.at for mark in outline.marks}
-        return marks[_named(fields, "at", marks, "mark")]
+        return marks[named(fields, "at", marks, "mark")]
     places = fields.items("at")
     if len(places) != 2:
         raise fields.refuse("at", f"it takes x and y, {AT['at']}, or a mark's name.")
@@ -208,12 +215,3 @@ def _patch(fields: Fields) -> tuple[float, float] | tuple[float]:
                 '"disc 150 mm".'
             )
         return lengths
-
-
-def _named(fields: Fields, key: str, names: Collection[str], what: str) -> str:
-    """Return the name of something in the outline."""
-    name = fields.word(key)
-    if name in names:
-        return name
-    there = f"the names are {some(names)}" if names else "there is none"
-    raise fields.refuse(key, f"there is no such {what}; {there}.{closest(name, names)}")

@@ -2,13 +2,16 @@
 
 from dataclasses import asdict, dataclass, replace
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
 from kplate.adapt import default_goals, no_bands, solve
 from kplate.answers import NO_BAND
+from kplate.asklines import asked_rows, asked_unit
 from kplate.checklines import (
     criteria,
+    extremes_rows,
     place_words,
     short,
     signed,
@@ -23,15 +26,28 @@ from kplate.goals import Peak
 from kplate.independent import Independent, independent
 from kplate.judging import Judged, judgements, to_judge
 from kplate.limits import (
-    DeflectionLimit,
     Outcome,
     StressLimit,
     Verdict,
     governing,
 )
+from kplate.limitwords import combination_lines, limit_words, stated_lines
+from kplate.output.asked import write_asked, write_line_plot
 from kplate.output.picture import write_picture
-from kplate.output.record import solution_record, write_json, write_reactions
-from kplate.output.tables import Line, legend, reactions_table, values_table
+from kplate.output.record import (
+    case_record,
+    solution_record,
+    write_json,
+    write_reactions,
+)
+from kplate.output.tables import (
+    Line,
+    asked_table,
+    extremes_table,
+    legend,
+    reactions_table,
+    values_table,
+)
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
 from kplate.solution import Solution
@@ -89,10 +105,16 @@ class Checked:
     @property
     def text(self) -> str:
         """What the command prints."""
+        what, units = "case", self.panel.units
+        supports = reactions_table(support_rows(self.solution), units)
+        if self.judged.combinations:
+            what = "combination"
+            supports = extremes_table(extremes_rows(self.judged, units), units)
         parts = [
-            "\n".join(_heading(self.panel)),
-            values_table(self.lines),
-            reactions_table(support_rows(self.solution), self.panel.units),
+            "\n".join([*_heading(self.panel), *combination_lines(self.judged)]),
+            values_table(self.lines, what),
+            asked_table(asked_rows(self.panel, self.judged), what),
+            supports,
             "\n".join(_closing(self)),
         ]
         return "\n\n".join(part for part in parts if part)
@@ -109,8 +131,8 @@ def check(
         The panel file.
     out : Path, optional
         Directory for the results, made where it is missing: fields (.vtu), record
-        (.json), reactions (.csv) and a picture (.png) under the panel file's name;
-        nothing is written if left out.
+        (.json), reactions (.csv), a picture (.png), what was asked for (.csv) and
+        lines drawn (.png) under the panel file's name; nothing is written if left out.
     progress : callable, optional
         Called with a stage and the fraction done.
 
@@ -128,6 +150,7 @@ def check(
     """
     panel = read_panel(path)
     goals = default_goals(panel.plate, *criteria(panel))
+    goals += tuple(goal for ask in panel.asks for goal in ask.goals)
     if panel.design:
         goals = (*goals, *(Peak(quantity=quantity) for quantity in DESIGN))
     solution = solve(
@@ -228,29 +251,7 @@ def _heading(panel: Panel) -> list[str]:
             f"bends, turning less than {degrees:.3g} degrees, taken with one tangent: "
             f"{', '.join(bends)} {length.symbol}"
         )
-    lines += _stated(panel)
-    return lines
-
-
-def _stated(panel: Panel) -> list[str]:
-    """Material and limits as they were stated."""
-    material, units = panel.plate.material, panel.units
-    words = [f"{material.name}: E {material.E / 1e9:.6g} GPa, nu {material.nu:g}"]
-    for limit in panel.limits:
-        match limit:
-            case DeflectionLimit(at_most=most, words=how):
-                words.append(
-                    f"deflection at most {units.deflection.show(most)}"
-                    f"{f' ({how})' if how else ''}"
-                )
-            case StressLimit(criterion=criterion, factor=factor):
-                strength = limit.strength_at(float(panel.plate.thicknesses.max()))
-                words.append(
-                    f"{criterion} at most {units.stress.show(strength)} / {factor:g}"
-                )
-    held = {True: "yes", False: "no", None: "not stated"}[panel.held_in_plane]
-    words.append(f"held in plane: {held}")
-    return ["; ".join(words)]
+    return lines + stated_lines(panel)
 
 
 def _bends(panel: Panel) -> list[str]:
@@ -282,9 +283,9 @@ def _closing(checked: Checked) -> list[str]:
     lines = ["   ".join([f"{checked.verdict.words}.", *plain]), *flags]
     worst = governing(checked.verdict.judgements)
     if worst is not None:
-        lines.append(
-            f"governs: {worst.quantity}, case {worst.value.case}, used {worst.used:.2f}"
-        )
+        what = "combination" if checked.judged.combinations else "case"
+        case = f", {what} {worst.value.case}" if worst.value.case else ""
+        lines.append(f"governs: {worst.quantity}{case}, used {worst.used:.2f}")
     for excluded in solution.excluded:
         only = f", case {excluded.case}" if excluded.case else ""
         place, radius = (
@@ -363,10 +364,13 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
             f"the directory {out} cannot be made ({error.strerror}); choose another "
             "with --out."
         ) from error
-    panel, solution = checked.panel, checked.solution
+    panel, solution = checked.panel, checked.judged.solution
     name = panel.path.stem
+    lines = [ask for ask in panel.asks if ask.is_line]
+    drawn = [f"{name}-line-{k}.png" for k in range(1, len(lines) + 1)]
     targets = [f"{name}.png", f"{name}.vtu", f"{name}.json", f"{name}-reactions.csv"]
-    for target in targets:
+    asked = f"{name}-asked.csv"
+    for target in [*targets, *([asked] if panel.asks else []), *drawn]:
         path = out / target
         if path.exists() and path.samefile(panel.path):
             raise InputError(
@@ -377,7 +381,50 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
             raise InputError(
                 f"{path} is a directory; remove it or choose another --out."
             )
-    record = solution_record(solution, version(), design=panel.design)
+    worst = solution.peak("deflection").case
+    picture = write_picture(
+        solution,
+        out / f"{name}.png",
+        case=worst,
+        units=panel.units,
+        title=f"{panel.name}, {_thickness(panel)} {panel.plate.material.name}",
+    )
+    files = [
+        write_vtk(solution, out / f"{name}.vtu", design=panel.design),
+        write_json(_record(checked), out / f"{name}.json"),
+        write_reactions(solution, out / f"{name}-reactions.csv"),
+        picture,
+    ]
+    if panel.asks:
+        files.append(write_asked(solution, panel.asks, out / asked))
+    files += [
+        write_line_plot(
+            solution,
+            ask,
+            out / target,
+            length=panel.units.length,
+            units=[asked_unit(quantity, panel.units) for quantity in ask.values],
+            title=f"{panel.name}: {ask.name}",
+        )
+        for ask, target in zip(lines, drawn, strict=True)
+    ]
+    return tuple(files)
+
+
+def _record(checked: Checked) -> dict[str, Any]:
+    """The record of what was stated, found and judged."""
+    panel, judged = checked.panel, checked.judged
+    record = solution_record(judged.solution, version(), design=panel.design)
+    record["statement"]["cases"] = [case_record(case) for case in panel.cases]
+    record["combinations"] = [
+        {
+            "name": own.name,
+            "purpose": own.purpose,
+            "factors": dict(own.factors),
+            "source": own.source,
+        }
+        for own in judged.combinations
+    ]
     record["panel"] = {
         "name": panel.name,
         "revision": panel.revision,
@@ -390,6 +437,7 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
         "words": checked.verdict.words,
         "theory": checked.validity.state.words,
         "validity": checked.validity.words,
+        "limits": [limit_words(panel, limit) for limit in panel.limits],
         "judgements": [
             {
                 "case": j.value.case,
@@ -408,20 +456,7 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
         for own in formulas
         if own.value
     ]
-    worst = solution.peak("deflection").case
-    picture = write_picture(
-        solution,
-        out / f"{name}.png",
-        case=worst,
-        units=panel.units,
-        title=f"{panel.name}, {_thickness(panel)} {panel.plate.material.name}",
-    )
-    return (
-        write_vtk(solution, out / f"{name}.vtu", design=panel.design),
-        write_json(record, out / f"{name}.json"),
-        write_reactions(solution, out / f"{name}-reactions.csv"),
-        picture,
-    )
+    return record
 
 
 def _thickness(panel: Panel) -> str:

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from kplate.combinations import Purpose
+from kplate.envelope import Envelope
 from kplate.extremes import corner_extreme, point_extreme, side_extreme
 from kplate.goals import Deflection
 from kplate.judging import Judged
@@ -25,7 +26,7 @@ from kplate.output.tables import Line
 from kplate.panel import Panel
 from kplate.reactions import CornerForce
 from kplate.solution import Solution
-from kplate.units import Unit
+from kplate.units import DisplayUnits, Unit
 from kplate.values import Value
 from kplate.woodarmer import DESIGN
 
@@ -54,7 +55,7 @@ def table_lines(
             yield from _Rows(panel, judged, own, case).lines()
     for judgement in ranges:
         yield Line(
-            case="all",
+            case="service" if judged.combinations else "all",
             quantity=judgement.quantity,
             value=judgement.value,
             unit=panel.units.stress,
@@ -294,6 +295,24 @@ def support_rows(
             (case, point.mark, point.force, np.nan, np.nan)
             for point in reactions.points
         ]
+    return rows
+
+
+def extremes_rows(
+    judged: Judged, units: DisplayUnits
+) -> list[tuple[str, Value, Value, str]]:
+    """What each support brings over all combinations, with its line reactions."""
+    rows = []
+    size, symbol = units.line_force.size, units.line_force.symbol
+    for own in Envelope(solution=judged.solution).supports():
+        words = "-"
+        if own.line is not None and not np.isnan(own.line.largest).all():
+            least = float(np.nanmin(own.line.smallest)) / size
+            most = float(np.nanmax(own.line.largest)) / size
+            words = f"{least:+.3g} to {most:+.3g} {symbol}"
+        if np.isnan(own.most.value):
+            words = own.most.reason
+        rows.append((own.name, own.most, own.least, words))
     return rows
 
 

@@ -245,6 +245,23 @@ def numbered(section: str, number: int, table: Any) -> str:
     return f"{section} {number}" + (f" {shown(name)}" if isinstance(name, str) else "")
 
 
+def named(fields: Fields, key: str, names: Collection[str], what: str) -> str:
+    """Return the name of something that is there."""
+    name = fields.word(key)
+    if name in names:
+        return name
+    there = f"the names are {some(names)}" if names else "there is none"
+    raise fields.refuse(key, f"there is no such {what}; {there}.{closest(name, names)}")
+
+
+def several(fields: Fields, key: str, examples: Mapping[str, str]) -> list[Fields]:
+    """Return the tables of a field that holds one or a list of them."""
+    if isinstance(fields.value(key), list):
+        return fields.tables(key, examples)
+    where = f"{fields.where} {key}"
+    return [Fields(where=where, table=fields.value(key), examples=examples)]
+
+
 def refuse_later(where: str, table: Mapping[str, Any], later: Collection[str]) -> None:
     """Refuse fields that this version does not read yet."""
     for key in table:

@@ -113,14 +113,9 @@ def judge(
 def judgements(judged: Judged, limits: Sequence[Limit]) -> tuple[Judgement, ...]:
     """Each limit in each case or combination of its purpose."""
     found: list[Judgement] = []
+    check_limits(judged.solution.plate, limits, judged.combinations)
     for limit in limits:
         names = judged.names(limit.purpose)
-        if not names:
-            raise InputError(
-                f"a limit on {limit.quantity} is judged in combinations for "
-                f"{limit.purpose}, of which there are none; add one."
-            )
-        check_limit(judged.solution.plate, limit)
         if isinstance(limit, StressRangeLimit):
             values = [stress_range(judged.solution, limit.of, cases=names)]
         else:
@@ -189,15 +184,29 @@ def to_judge(judged: Judged, limits: Sequence[Limit]) -> int:
     return len(places)
 
 
-def check_limit(plate: Plate, limit: Limit) -> None:
-    """Refuse a limit that does not fit the plate.
+def check_limits(
+    plate: Plate, limits: Sequence[Limit], combinations: Sequence[Combination]
+) -> None:
+    """Refuse limits that fit neither the plate nor the combinations.
 
     Raises
     ------
     InputError
-        If a step is judged along a side that is not there or is held, or a name is
-        that of no support.
+        If no combination serves a limit's purpose, a step is judged along a side that
+        is not there or is held, or a name is that of no support.
     """
+    served = {combination.purpose for combination in combinations}
+    for limit in limits:
+        if served and not served & {limit.purpose, "every"}:
+            raise InputError(
+                f"a limit on {limit.quantity} is judged in combinations for "
+                f"{limit.purpose}, of which there are none; add one."
+            )
+        _check_limit(plate, limit)
+        allowed(plate, limit)
+
+
+def _check_limit(plate: Plate, limit: Limit) -> None:
     if isinstance(limit, StepLimit):
         sides = plate.outline.side_names
         if limit.along not in sides:

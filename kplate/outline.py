@@ -284,6 +284,13 @@ class Outline:
         rim, *holes = (line.region.exterior.coords for line in self.boundaries)
         return shapely.Polygon(rim, holes)
 
+    def covers(self, place: tuple[float, float]) -> bool:
+        """Whether a place in m is on the plate, its rim included."""
+        import shapely
+
+        off = self.region.distance(shapely.Point(place))
+        return bool(off <= SNAP * self.size)
+
     def crossed(
         self, start: tuple[float, float], end: tuple[float, float]
     ) -> list[list[tuple[float, float]]]:

@@ -12,12 +12,16 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from kplate.asking import Ask
 from kplate.caseloads import read_cases
 from kplate.choice import AUTO
+from kplate.combinationfields import idle_cases, read_asks, read_combinations
 from kplate.combinations import Combination
 from kplate.elements import ELEMENTS
 from kplate.errors import InputError
 from kplate.fields import Fields, closest, shown, within
+from kplate.judging import check_limits
+from kplate.limitfields import read_limits
 from kplate.limits import Limit
 from kplate.loads import Case
 from kplate.outline import Outline
@@ -25,7 +29,6 @@ from kplate.outlines import read_outline
 from kplate.plate import Plate
 from kplate.quantities import share, unit
 from kplate.statements import (
-    read_limits,
     read_material,
     read_supports,
     read_zones,
@@ -44,14 +47,11 @@ SECTIONS = {
     "mark": "[[mark]]",
     "supports": "[supports]",
     "case": "[[case]]",
-    "limits": "[limits]",
-}
-NEEDED = ("panel", "outline", "case")
-# What a panel file is to hold one day.
-LATER = {
     "combination": "[[combination]]",
+    "limits": "[limits]",
     "ask": "[[ask]]",
 }
+NEEDED = ("panel", "outline", "case")
 # The fields of [panel], each with a value as it is written.
 PANEL = {
     "name": '"pit cover"',
@@ -83,6 +83,8 @@ class Panel:
         Factors on the cases; empty where each case is judged for itself.
     limits : tuple of Limit
         What the panel is judged by.
+    asks : tuple of Ask
+        Points and lines where values are wanted.
     tolerance : float, optional
         Width of the bands asked for, as a share.
     held_in_plane : bool, optional
@@ -113,6 +115,7 @@ class Panel:
     cases: tuple[Case, ...]
     combinations: tuple[Combination, ...]
     limits: tuple[Limit, ...]
+    asks: tuple[Ask, ...]
     tolerance: float | None
     held_in_plane: bool | None
     triangles: int | None
@@ -155,15 +158,20 @@ def read_panel(path: Path) -> Panel:
     head = Fields(where="[panel]", table=sections["panel"], examples=PANEL)
     stated = read_outline(sections, path.parent)
     plate = _plate(head, sections, stated.outline)
-    limits, stock, stress = read_limits(sections.get("limits", {}))
+    cases = read_cases(sections["case"], plate)
+    combinations = read_combinations(sections.get("combination", []), cases)
+    limits, stock, stress = read_limits(sections.get("limits", {}), plate)
+    with within("[limits]"):
+        check_limits(plate, limits, combinations)
     return Panel(
         name=head.word("name"),
         revision=head.word("revision", default=""),
         author=head.word("author", default=""),
         plate=plate,
-        cases=read_cases(sections["case"], plate),
-        combinations=(),
+        cases=cases,
+        combinations=combinations,
         limits=limits,
+        asks=read_asks(sections.get("ask", []), plate.outline, stated.length),
         tolerance=_tolerance(head),
         held_in_plane=_held_in_plane(head),
         triangles=_triangles(head),
@@ -171,7 +179,7 @@ def read_panel(path: Path) -> Panel:
         design=_design(head),
         stock=stock,
         units=_display_units(stated.length, stress),
-        notes=stated.notes,
+        notes=(*stated.notes, *idle_cases(cases, combinations)),
         path=path,
         digest=_digest(content, stated.file),
     )
@@ -248,8 +256,6 @@ def _table(content: bytes, path: Path) -> dict[str, Any]:
 def _sections(table: dict[str, Any]) -> dict[str, Any]:
     """Check that the file holds the sections it may and must, as tables or lists."""
     for key, value in table.items():
-        if key in LATER:
-            raise InputError(f"{LATER[key]} is not read by this version; take it out.")
         if key not in SECTIONS:
             raise InputError(
                 f"unknown section {shown(key)}; the sections are "

@@ -129,17 +129,31 @@ def extreme(quantity: str, at: Candidates) -> Extreme:
         face = max(_FACES, key=lambda f: (sign * both[_FACES.index(f)]).max())
         values = both[_FACES.index(face)]
         best = int(np.argmax(sign * values))
-    elif quantity == "shear stress":
-        values = 1.5 * np.hypot(*at.shears.T) / at.thickness
-        best = int(np.argmax(values))
-    elif quantity in DESIGN:
-        values = design_moments(at.moments)[:, DESIGN.index(quantity)]
-        best = int(np.argmax(values))
     else:
-        values = at.moments[:, ("m_xx", "m_yy", "m_xy").index(quantity)]
+        values = local(quantity, at)
         best = int(np.argmax(np.abs(values)))
     x, y = at.places[best].tolist()
     return float(values[best]), (x, y), face
+
+
+def local(quantity: str, at: Candidates) -> Floats:
+    """A quantity but the deflection at each place, with its sign, (k,).
+
+    Of the principal stresses it is the extreme one of both faces.
+    """
+    values: Floats
+    if quantity in EVEN:
+        values = EVEN[quantity](surface_stress(at.moments, at.thickness, "bottom"))
+    elif quantity in ("largest principal", "smallest principal"):
+        sign = 1.0 if quantity == "largest principal" else -1.0
+        values = sign * np.max([_principal(at, face, sign) for face in _FACES], axis=0)
+    elif quantity == "shear stress":
+        values = 1.5 * np.hypot(*at.shears.T) / at.thickness
+    elif quantity in DESIGN:
+        values = design_moments(at.moments)[:, DESIGN.index(quantity)]
+    else:
+        values = at.moments[:, ("m_xx", "m_yy", "m_xy").index(quantity)]
+    return values
 
 
 def measures(

@@ -118,6 +118,49 @@ loads = [
     { force = "1 kN down", over = "disc 50 mm", at = "stud" },
     { liquid = "1000 kg/m^3", level = "0.5 m", pushes = "down" },
 ]
+
+[[case]]
+name = "wind"
+loads = [{ pressure = "0.8 kPa up" }]
+reverses = "yes"
+
+[[combination]]
+preset = "EN 1990 STR"
+permanent = ["all"]
+variable = ["wind"]
+
+[[combination]]
+name = "storm"
+purpose = "service"
+factors = { all = 1, wind = 0.6 }
+
+[[combination]]
+name = "lift"
+purpose = "uplift"
+factors = { all = 0.9, wind = 1.5 }
+
+[limits]
+deflection = [
+    { span = "side ladder", at_most = ["span/200", "4 mm"] },
+    { cantilever = "300 mm", preset = "walkway ISO 14122-2" },
+]
+step = { along = "notch", preset = "walkway ISO 14122-2" }
+stress = { preset = "steel S235 EN 10025-2", factor = "steel" }
+stress_range = { of = "stress xx", at_most = "80 MPa" }
+hold_down = { corners = "500 N", sides = "4 kN/m" }
+bearing = { points = "8 kN", only = ["pin"] }
+
+[[ask]]
+name = "camera"
+at = "stud"
+values = ["deflection", "von Mises"]
+
+[[ask]]
+name = "line"
+from = [500, 450]
+to = ["0.8 m", 450]
+stations = 5
+values = ["m_xx"]
 """  # noqa: E501  TOML keeps an inline table on one line
 LOAD = BASE.partition("loads = [")[2].partition("]\n\n[limits]")[0]
 

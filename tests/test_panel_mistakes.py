@@ -19,7 +19,23 @@ def read(tmp_path):
     return partial(read_text, tmp_path)
 
 
-LOAD_1 = "[[case]] 1 'wheel', load 1"
+CASE_1 = "[[case]] 1 'wheel'"
+LOAD_1 = f"{CASE_1}, load 1"
+STRESS = 'stress = { criterion = "von Mises", strength = "235 MPa", factor = 1.5 }'
+
+
+def with_limit(limit: str) -> str:
+    return changed("[limits]", f"[limits]\n{limit}")
+
+
+def with_combination(text: str) -> str:
+    return changed("[limits]", f"[[combination]]\n{text}\n\n[limits]")
+
+
+def with_ask(text: str) -> str:
+    return f"{BASE}\n[[ask]]\n{text}\n"
+
+
 NAMES = "the names are 'south', 'east', 'north', 'west'."
 HEAD_FIELDS = (
     "name, revision, author, thickness, material, tolerance, held in plane, triangles, "
@@ -308,14 +324,231 @@ MISTAKES = [
         '["6 mm", "8 mm", "10 mm"].',
     ),
     (
-        BASE + '[[ask]]\nname = "middle"\n',
-        "[[ask]] is not read by this version; take it out.",
-    ),
-    (
         changed("[limits]", "[limit]"),
         "unknown section 'limit'; the sections are [panel], [outline], [[hole]], "
-        "[[zone]], [[seam]], [[mark]], [supports], [[case]], [limits]. "
-        "Did you mean 'limits'?",
+        "[[zone]], [[seam]], [[mark]], [supports], [[case]], [[combination]], "
+        "[limits], [[ask]]. Did you mean 'limits'?",
+    ),
+    (
+        changed("[[case]]", "[[case]]\nreverses = true"),
+        f"{CASE_1}: reverses = true: it must be one of yes, no.",
+    ),
+    (
+        with_limit('deflection = { span = "side nroth", at_most = "span/200" }'),
+        "[limits] deflection: span = 'side nroth': there is no such side; the sides "
+        "are 'south', 'east', 'north', 'west'.",
+    ),
+    (
+        with_limit('deflection = { span = "0 mm", at_most = "span/200" }'),
+        "[limits] deflection: span = '0 mm': it must be a positive length.",
+    ),
+    (
+        with_limit(
+            'deflection = { span = "1 m", cantilever = "1 m", at_most = "span/200" }'
+        ),
+        "[limits] deflection: cantilever and span exclude each other; keep one.",
+    ),
+    (
+        with_limit('deflection = { cantilever = "1 m", at_most = "4 mm" }'),
+        "[limits] deflection: cantilever = '1 m': at_most does not use it; take it "
+        "out.",
+    ),
+    (
+        with_limit('deflection = { preset = "walkway", span = "1 m" }'),
+        "[limits] deflection: preset = 'walkway': it must be one of walkway ISO "
+        "14122-2, flooring BS 4592-0, floor EN 1993-1-1 France, total, floor EN "
+        "1993-1-1 France, variable, floor IBC, live, floor IBC, dead and live, glass "
+        "EN 16612, bolted flat cover.",
+    ),
+    (
+        with_limit('deflection = { preset = "glass EN 16612" }'),
+        '[limits] deflection: span is missing; add span = "600 mm".',
+    ),
+    (
+        with_limit('deflection = { preset = "bolted flat cover", span = "1 m" }'),
+        "[limits] deflection: span = '1 m': preset does not use it; take it out.",
+    ),
+    (
+        with_limit(
+            'deflection = { preset = "glass EN 16612", span = "1 m", at_most = "4 mm" }'
+        ),
+        "[limits] deflection: preset and at_most exclude each other; keep one.",
+    ),
+    (
+        with_limit('deflection = [{ at_most = "3 mm" }, { at_most = "3" }]'),
+        "[limits] deflection, item 2: at_most = '3': a length needs a unit, such as "
+        '"10 mm".',
+    ),
+    (
+        with_limit("deflection = []"),
+        "[limits] deflection = an empty list: it must be a list with entries, such as "
+        '{ span = "600 mm", at_most = "span/200" }.',
+    ),
+    (
+        with_limit('step = { along = "south", at_most = "4 mm" }'),
+        "[limits]: side 'south' is clamped: it does not move; judge the step along a "
+        "free side.",
+    ),
+    (
+        with_limit('step = { along = "nroth", at_most = "4 mm" }'),
+        "[limits] step: along = 'nroth': there is no such side; the names are 'south', "
+        "'east', 'north', 'west'. Did you mean 'north'?",
+    ),
+    (
+        with_limit('step = { along = "north" }'),
+        '[limits] step: at_most is missing; add at_most = "4 mm".',
+    ),
+    (
+        with_limit('step = { along = "north", preset = "walkway" }'),
+        "[limits] step: preset = 'walkway': it must be one of walkway ISO 14122-2.",
+    ),
+    (
+        changed(STRESS, 'stress = { preset = "S235", factor = 1.0 }'),
+        "[limits] stress: preset = 'S235': it must be one of steel S235 EN 10025-2, "
+        "steel S275 EN 10025-2, steel S355 EN 10025-2, stainless 1.4301, aluminium "
+        "5083, float glass.",
+    ),
+    (
+        changed(STRESS, 'stress = { preset = "float glass" }'),
+        "[limits] stress: factor is missing; add factor = 1.5.",
+    ),
+    (
+        changed(STRESS, 'stress = { preset = "float glass", factor = "glas" }'),
+        "[limits] stress: factor = 'glas': it must be one of steel, annealed glass.",
+    ),
+    (
+        changed(
+            STRESS, 'stress = { preset = "steel S235 EN 10025-2", factor = 1.5 }'
+        ).replace('"10 mm"', '"70 mm"'),
+        "[limits]: a thickness of 70 mm has no strength in steel S235 EN 10025-2, "
+        "which end at 63 mm; state the strength.",
+    ),
+    (
+        with_limit('stress_range = { of = "xx", at_most = "80 MPa" }'),
+        "[limits] stress_range: of = 'xx': it must be one of stress xx, stress yy, "
+        "stress xy, von Mises, Tresca, largest principal.",
+    ),
+    (
+        with_limit("hold_down = { }"),
+        '[limits] hold_down states no limit; give one such as corners = "200 N".',
+    ),
+    (
+        with_limit('hold_down = { sides = "2 kN" }'),
+        "[limits] hold_down: sides = '2 kN': 'kN' is no unit of line force; write it "
+        'such as "2 kN/m".',
+    ),
+    (
+        with_limit('hold_down = { corners = "2 kN", only = ["south"] }'),
+        "[limits] hold_down: corners have no names; a limit on them holds for all.",
+    ),
+    (
+        with_limit('bearing = { sides = "2 kN/m", only = ["north"] }'),
+        "[limits]: limit on bearing: 'north' is none of the held sides; they are "
+        "south.",
+    ),
+    (
+        with_combination('name = "A"\nfactors = { wheel = 1.5 }'),
+        "[[combination]] 1 'A': purpose is missing; add purpose = \"uplift\".",
+    ),
+    (
+        with_combination('name = "A"\npurpose = "ULS"\nfactors = { wheel = 1.5 }'),
+        "[[combination]] 1 'A': purpose = 'ULS': it must be one of strength, service, "
+        "uplift.",
+    ),
+    (
+        with_combination('name = "A"\npurpose = "strength"\nfactors = { weel = 1.5 }'),
+        "[[combination]] 1 'A' factors: weel = 1.5: there is no such case; the cases "
+        "are 'wheel'. Did you mean 'wheel'?",
+    ),
+    (
+        with_combination('name = "A"\npurpose = "strength"\nfactors = { wheel = "2" }'),
+        "[[combination]] 1 'A' factors: wheel = '2': it must be a number, without "
+        "quotes and unit.",
+    ),
+    (
+        with_combination('name = "A"\npurpose = "strength"\nfactors = [1.5]'),
+        "[[combination]] 1 'A': factors = [1.5]: it must be a table such as { weight = "
+        "0.9, wind = 1.5 }.",
+    ),
+    (
+        with_combination('name = "A"\npurpose = "strength"\nfactors = { wheel = 0 }'),
+        "[[combination]] 1 'A': combination 'A' has no factor but 0; give at least "
+        "one.",
+    ),
+    (
+        with_combination('name = "A"\npurpose = "service"\nfactors = { wheel = 1 }'),
+        "[limits]: a limit on peak von Mises is judged in combinations for strength, "
+        "of which there are none; add one.",
+    ),
+    (
+        with_combination('preset = "EN 1990"\nvariable = ["wheel"]'),
+        "[[combination]] 1: preset = 'EN 1990': it must be one of EN 1990 STR, EN 1990 "
+        "EQU, EN 1990 characteristic. Did you mean 'EN 1990 STR'?",
+    ),
+    (
+        with_combination('preset = "EN 1990 STR"\nvariable = ["crane"]'),
+        "[[combination]] 1: variable = ['crane']: there is no case 'crane'; the cases "
+        "are 'wheel'.",
+    ),
+    (
+        with_combination('preset = "EN 1990 STR"\nvariable = ["wheel", "wheel"]'),
+        "[[combination]] 1: variable = ['wheel', 'wheel']: it names 'wheel' twice; "
+        "once will do.",
+    ),
+    (
+        with_combination(
+            'preset = "EN 1990 STR"\nvariable = ["wheel"]\npermanent = ["wheel"]'
+        ),
+        "[[combination]] 1: 'wheel' cannot be permanent and variable; keep one.",
+    ),
+    (
+        with_combination('preset = "EN 1990 STR"'),
+        "[[combination]] 1: preset EN 1990 STR has no cases; name permanent or "
+        "variable.",
+    ),
+    (
+        with_ask('name = "a"\nat = [900, 300]\nvalues = ["m_xx"]'),
+        "[[ask]] 1 'a': (900, 300) mm is not on the plate; move it.",
+    ),
+    (
+        with_ask('name = "a"\nat = "bolt"\nvalues = ["m_xx"]'),
+        "[[ask]] 1 'a': at = 'bolt': there is no such mark; there is none.",
+    ),
+    (
+        with_ask('name = "a"\nat = [400, 300]\nvalues = ["m_x"]'),
+        "[[ask]] 1 'a': values = ['m_x']: there is no value 'm_x'; the values are "
+        "deflection, slope_x, slope_y, m_xx, m_yy, m_xy, q_x, q_y, von Mises, Tresca, "
+        "largest principal, smallest principal, shear stress. Did you mean 'm_xy'?",
+    ),
+    (
+        with_ask('name = "a"\nat = [400, 300]'),
+        '[[ask]] 1 \'a\': values is missing; add values = ["deflection", "m_xx"].',
+    ),
+    (
+        with_ask('name = "a"\nfrom = [0, 0]\nvalues = ["m_xx"]'),
+        "[[ask]] 1 'a': to is missing; add to = [800, 300].",
+    ),
+    (
+        with_ask('name = "a"\nfrom = [0, 0]\nto = [0, 0]\nvalues = ["m_xx"]'),
+        "[[ask]] 1 'a': a: give one place, or two different ends of a line.",
+    ),
+    (
+        with_ask(
+            'name = "a"\nfrom = [0, 0]\nto = [9, 9]\nstations = 1\nvalues = ["m_xx"]'
+        ),
+        "[[ask]] 1 'a': stations = 1: it must lie between 2 and 1000.",
+    ),
+    (
+        with_ask('name = "a"\nat = [0, 0]\nto = [9, 9]\nvalues = ["m_xx"]'),
+        "[[ask]] 1 'a': unknown field 'at'; the fields are name, from, to, stations, "
+        "values.",
+    ),
+    (
+        with_ask(
+            'name = "a"\nat = [1, 1]\nvalues = ["m_xx"]\n'
+            '[[ask]]\nname = "a"\nat = [2, 2]\nvalues = ["m_xx"]'
+        ),
+        "[[ask]] 2 'a': another point or line has this name; give each its own.",
     ),
     ("[panel]\n", "section [outline] is missing; add it."),
 ]

@@ -18,7 +18,7 @@ ALONE = [
     *("material = {", "triangles", "element", "chords", "snap", "fillets", "reliefs"),
     *('parts = [{ side = "ladder", name = "hinge", from = "10', "expect"),
     *('parts = [{ side = "ladder", name = "hinge", from = [1100', "{ liquid"),
-    *("{ edge_moment", "{ moment"),
+    *("{ edge_moment", "{ moment", "step", "stress_range", "bearing"),
 ]
 TOGETHER = [
     ("fillets", "reliefs", 'parts = [{ side = "ladder", name = "hinge", from = "10'),
@@ -30,6 +30,21 @@ TOGETHER = [
     (
         *("[[mark]]", 'name = "bolt"', "at = [1000", "bolt = "),
         '{ force = "50 N up", at = "bolt"',
+    ),
+    (
+        "[[combination]]              # many",
+        *('preset = "EN 1990', "permanent", "variable"),
+        "[[combination]]              # or",
+        *('name = "crowd"', 'purpose = "service"', "factors = { visitors = 1.0"),
+        "[[combination]]              # and",
+        *('name = "empty"', 'purpose = "uplift"', "factors = { visitors = 0.9"),
+    ),
+    (
+        "[[ask]]                      # a point",
+        *('name = "camera"', "at = [900", 'values = ["deflection", "m_xx"]'),
+        "[[ask]]                      # a line",
+        *('name = "cross-section"', "from = [0, 100", "to = [1200", "stations"),
+        'values = ["deflection"]',
     ),
 ]
 INSTEAD = [

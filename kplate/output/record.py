@@ -264,7 +264,7 @@ def _statement(solution: Solution) -> dict[str, Any]:
         },
         "bend_turn [rad]": _number(plate.bend_turn),
         "mass [kg]": None if plate.mass is None else _number(plate.mass),
-        "cases": [_case(case) for case in solution.state.cases],
+        "cases": [case_record(case) for case in solution.state.cases],
     }
 
 
@@ -321,8 +321,13 @@ def _material(material: Isotropic) -> dict[str, Any]:
     }
 
 
-def _case(case: Case) -> dict[str, Any]:
-    return {"name": case.name, "loads": [_load(load) for load in case.loads]}
+def case_record(case: Case) -> dict[str, Any]:
+    """A load case as plain JSON types."""
+    record: dict[str, Any] = {"name": case.name}
+    record["loads"] = [_load(load) for load in case.loads]
+    if case.reverses:
+        record["reverses"] = True
+    return record
 
 
 def _load(load: Load) -> dict[str, Any]:

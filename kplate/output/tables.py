@@ -46,10 +46,82 @@ class Line:
         return Judgement(quantity=self.quantity, value=self.value, limit=self.limit)
 
 
-def values_table(lines: Sequence[Line]) -> str:
+@dataclass(frozen=True, kw_only=True)
+class AskedRow:
+    """One number that was asked for.
+
+    Parameters
+    ----------
+    name, quantity : str
+        What was asked, and what of it.
+    value : Value
+        The number, SI, with its case.
+    unit : Unit
+        What it is shown in.
+    where : str
+        Place in words.
+    """
+
+    name: str
+    quantity: str
+    value: Value
+    unit: Unit
+    where: str
+
+
+def asked_table(rows: Sequence[AskedRow], what: str = "case") -> str:
+    """Table of what was asked for, with signs; empty where nothing was."""
+    if not rows:
+        return ""
+    shown = [
+        (
+            row.name,
+            row.quantity,
+            _signed(row.value, row.unit),
+            band(row.value),
+            row.value.case,
+            row.where,
+        )
+        for row in rows
+    ]
+    return _columns(("asked", "quantity", "value", "band", what, "where"), shown)
+
+
+def extremes_table(
+    rows: Sequence[tuple[str, Value, Value, str]], units: DisplayUnits
+) -> str:
+    """Table of what each support brings over all combinations.
+
+    Rows hold the support, the force that pushes the plate up the most and the least,
+    and its line reactions in words.
+    """
+    shown = [
+        (
+            name,
+            _signed(most, units.force),
+            most.case,
+            _signed(least, units.force),
+            least.case,
+            line,
+        )
+        for name, most, least, line in rows
+    ]
+    header = ("support", "pushes up at most", "in", "at least", "in", "line reactions")
+    return _columns(header, shown)
+
+
+def _signed(value: Value, unit: Unit) -> str:
+    """A number with its sign and unit."""
+    if math.isnan(value.value):
+        return "-"
+    return f"{value.value / unit.size:+.4g} {unit.symbol}"
+
+
+def values_table(lines: Sequence[Line], what: str = "case") -> str:
     """Table of values, bands, limits and where.
 
-    Magnitudes are shown; a sign that matters is in the quantity or in the place.
+    Magnitudes are shown; a sign that matters is in the quantity or in the place. `what`
+    is what the numbers are of, a case or a combination.
     """
     rows = []
     for line in lines:
@@ -63,7 +135,7 @@ def values_table(lines: Sequence[Line]) -> str:
         rows.append(
             (line.case, line.quantity, shown, band(line.value), limit, used, line.where)
         )
-    header = ("case", "quantity", "value", "band", "limit", "used", "where")
+    header = (what, "quantity", "value", "band", "limit", "used", "where")
     return _columns(header, rows)
 
 
