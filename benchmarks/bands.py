@@ -17,6 +17,7 @@ from typing import Any
 import kplate as kp
 from benchmarks import cases, records
 from benchmarks.asking import Asked, ask, combined
+from benchmarks.energies import Energy, energy
 from kplate.errors import SolveError
 
 LINE = "{:22s} {:28s} {:>13s} {:>13s} {:>13s} {:>13s} {:>4s} {:>7s}"
@@ -71,6 +72,7 @@ class Tally:
     unreached: list[str] = field(default_factory=list)
     unknowns: list[int] = field(default_factory=list)
     seconds: list[float] = field(default_factory=list)
+    energies: list[Energy] = field(default_factory=list)
 
 
 def main(tolerance: float, names: Sequence[str] | None = None) -> int:
@@ -87,7 +89,8 @@ def main(tolerance: float, names: Sequence[str] | None = None) -> int:
             first = (band.case, band.quantity)
             print(LINE.format(*first, *cells, mark, ratio), flush=True)
     _print_counts(tally, tolerance, time.perf_counter() - start)
-    return len(_false(tally))
+    outside = [e for e in tally.energies if not e.inside]
+    return len(_false(tally)) + len(outside)
 
 
 def straight(names: Sequence[str] | None = None) -> Iterator[dict[str, Any]]:
@@ -124,6 +127,11 @@ def bands(problem: dict[str, Any], tolerance: float, tally: Tally) -> Iterator[B
     tally.unknowns.append(solution.history[-1].unknowns)
     if not solution.reached:
         tally.unreached.append(name)
+    try:
+        found = energy(problem, plate, cases.loads(problem), solution.energies[0])
+        tally.energies.append(found)
+    except SolveError as error:
+        tally.failed.append((f"{name} (finer)", str(error)))
     for one in asked:
         if one.reason:
             continue
@@ -185,6 +193,7 @@ def _print_counts(tally: Tally, tolerance: float, seconds: float) -> None:
             f"half width / true error: median {statistics.median(ratios):.3g}, "
             f"largest {ratios[-1]:.3g}, smallest {ratios[0]:.3g} ({len(ratios)} bounds)"
         )
+    _print_energies(tally)
     if tally.unknowns:
         print(
             f"unknowns: median {statistics.median(tally.unknowns):.0f}, largest "
@@ -193,3 +202,30 @@ def _print_counts(tally: Tally, tolerance: float, seconds: float) -> None:
             f"{max(tally.seconds):.2f}, sum {sum(tally.seconds):.1f}; {seconds:.0f} s "
             "in all"
         )
+
+
+def _print_energies(tally: Tally) -> None:
+    """Print the gap beside the true error of each energy, by source."""
+    line = "{:22s} {:>16s} {:>16s} {:>16s} {:>4s} {:>6s}  {}"
+    print("\nenergies for D = 1; gap / true error in the norm of the energy")
+    print(line.format("case", "lower", "upper", "reference", "in", "eff.", "source"))
+    for own in tally.energies:
+        cells = (f"{x:.10g}" for x in (own.lower, own.upper, own.reference))
+        ratio = "-" if math.isnan(own.effectivity) else f"{own.effectivity:.3f}"
+        print(
+            line.format(
+                own.case, *cells, "yes" if own.inside else "NO", ratio, own.source
+            )
+        )
+    for source in dict.fromkeys(own.source for own in tally.energies):
+        ratios = sorted(
+            own.effectivity
+            for own in tally.energies
+            if own.source == source and not math.isnan(own.effectivity)
+        )
+        if ratios:
+            print(
+                f"by {source}: median {statistics.median(ratios):.3f}, smallest "
+                f"{ratios[0]:.3f}, largest {ratios[-1]:.3f} ({len(ratios)} energies)"
+            )
+    print()
