@@ -6,13 +6,15 @@ the places that have no finite moment; bands are not estimated.
 
 import math
 from collections.abc import Sequence
+from dataclasses import replace
 
 from kplate.certifying import BUDGET, refine_to
 from kplate.choice import AUTO, TRIANGLES, choose
+from kplate.coarser import MESHES
 from kplate.combinations import Combination, expanded
 from kplate.combining import combined
 from kplate.elements import ELEMENTS
-from kplate.errors import InputError
+from kplate.errors import InputError, MeshError, SolveError
 from kplate.following import followed
 from kplate.goals import Deflection, Goal, Peak, Place, Resultant
 from kplate.guard import mesh_guarded
@@ -93,7 +95,8 @@ def solve(
     tolerance : float, optional
         Half width of the bands as a share of the values, such as 0.01: the mesh is
         refined until every goal is inside it. Without one a single mesh is solved and
-        no band is made; with DKT, too, whose peaks of stress then carry an indicator.
+        no band is made; with DKT, too, whose deflections, stresses and reactions then
+        carry an indicator, which takes a third more time.
     goals : sequence of Goal, optional
         What must be inside the tolerance, in every case; the peak deflection, the peak
         von Mises stress and the resultant of each support if left out.
@@ -175,6 +178,26 @@ def solve(
         size = size_for(plate.outline, wanted)
     if progress is not None:
         progress("mesh", 0.0)
+    mesh = _single_mesh(plate, cases, size, excluded_radius, chosen.element)
+    state = solve_static(plate, mesh, cases, element=chosen.element, progress=progress)
+    arcs = state.constraints.numbering.arcs
+    dual = solve_dual(plate, mesh, cases, arcs=arcs) if balanced else None
+    solution = Solution(
+        state=state, excluded_radius=excluded_radius, dual=dual, tolerance=tolerance
+    )
+    if tolerance is None or state.element.conforming:
+        return solution
+    return replace(solution, coarser=_coarser(solution, size))
+
+
+def _single_mesh(
+    plate: Plate,
+    cases: Sequence[Case],
+    size: float,
+    excluded_radius: float | None,
+    element: str,
+) -> Mesh:
+    """A mesh of one size, finer where moments are not finite."""
     fine = _fine(plate, cases, size, excluded_radius)
     outline = plate.outline
     inside = outline.zones or outline.seams or outline.marks
@@ -183,16 +206,23 @@ def solve(
         size=size,
         fine=fine,
         graded=corner_grading(plate),
-        around=AROUND.get(chosen.element),
+        around=AROUND.get(element),
     )
-    if chosen.element in AROUND:
-        mesh = fitted(mesh)
-    state = solve_static(plate, mesh, cases, element=chosen.element, progress=progress)
-    arcs = state.constraints.numbering.arcs
-    dual = solve_dual(plate, mesh, cases, arcs=arcs) if balanced else None
-    return Solution(
-        state=state, excluded_radius=excluded_radius, dual=dual, tolerance=tolerance
-    )
+    return fitted(mesh) if element in AROUND else mesh
+
+
+def _coarser(solution: Solution, size: float) -> tuple[Solution, ...]:
+    """The same on the coarser meshes of an indicator; nothing where they fail."""
+    plate, cases = solution.plate, solution.state.cases
+    radius, found = solution.excluded_radius, []
+    for times in MESHES:
+        try:
+            mesh = _single_mesh(plate, cases, times * size, radius, "dkt")
+            state = solve_static(plate, mesh, cases, element="dkt")
+        except (MeshError, SolveError):
+            return ()
+        found.append(Solution(state=state, excluded_radius=radius))
+    return tuple(found)
 
 
 def no_bands(cases: Sequence[Case], element: str) -> str:
@@ -246,7 +276,7 @@ def _to_tolerance(
     share = RIMS[element] if tolerance > FINE_TOLERANCE else 0.5 * RIMS[element]
     stressed = any(isinstance(g, Peak) and g.quantity != "deflection" for g in goals)
     discs = excluded_places(plate, cases, excluded_radius) if stressed else ()
-    graded = corner_grading(plate, error=min(CORNER_ERROR, 0.1 * tolerance))
+    graded = corner_grading(plate, error=tolerance)
 
     def mesh_for(wanted: Sequence[Goal]) -> Mesh:
         outline = followed(plate.outline, cases, wanted)

@@ -3,8 +3,8 @@
 The first mesh is graded beforehand towards corners by their Williams exponents. On each
 mesh the plate and its dual are solved for all cases and goals with one factorisation
 each. Triangles that together make most of the gaps of unmet goals are bisected twice,
-until every goal is inside the tolerance or the budget is spent. Bounds of all meshes
-hold, so that the best ends are kept.
+once where little is missing, until every goal is inside the tolerance or the budget is
+spent. Bounds of all meshes hold, so that the best ends are kept.
 """
 
 import time
@@ -34,6 +34,8 @@ BUDGET = 100_000  # unknowns of the plate
 MOST_STEPS = 24
 # Share of the gaps that the triangles to be bisected make (Doerfler's marking).
 BULK = 0.7
+# Bands wider than this many tolerances have their triangles bisected twice, not once.
+FAR = 2.0
 # Numbers smaller than this share of the largest of their kind need no narrower band.
 SMALL = 0.03
 DISJOINT = "bounds on two meshes exclude each other"
@@ -120,7 +122,8 @@ def refine_to(
             progress(steps[-1].words, min(0.99, unknowns / budget))
         if not unmet.any() or unknowns >= budget or len(steps) >= MOST_STEPS:
             return replace(solution, tolerance=tolerance, history=tuple(steps))
-        mesh = _bisected(mesh, _bulk(unmet))
+        far = max(bands.values()) > FAR * tolerance
+        mesh = _bisected(mesh, _bulk(unmet), twice=far)
         if len(certified.state.constraints.numbering.arcs):
             mesh = fitted(mesh)
 
@@ -237,9 +240,11 @@ def _bulk(shares: Floats) -> Bools:
     return marked
 
 
-def _bisected(mesh: Mesh, marked: Bools) -> Mesh:
-    """Bisect the marked triangles, and their parts once more."""
+def _bisected(mesh: Mesh, marked: Bools, *, twice: bool) -> Mesh:
+    """Bisect the marked triangles, and their parts once more if wanted."""
     finer = refined(mesh, marked)
+    if not twice:
+        return finer
     middles = finer.points[finer.triangles].mean(axis=1)
     owners, _ = mesh.locate(middles)
     return refined(finer, marked[owners])

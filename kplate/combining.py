@@ -107,4 +107,5 @@ def combined(solution: Solution, judged: Sequence[Combination]) -> Solution:
         known=known,
         energies=energies,
         brackets=None,
+        coarser=tuple(combined(own, judged) for own in solution.coarser),
     )

@@ -16,8 +16,16 @@ import numpy as np
 
 from kplate.arrays import Bools, Floats, Ints
 from kplate.mesh import Mesh
-from kplate.recovery import principal_moments, surface_stress, tresca, von_mises
+from kplate.recovery import (
+    SmoothedMoments,
+    element_moments,
+    principal_moments,
+    surface_stress,
+    tresca,
+    von_mises,
+)
 from kplate.rims import stationary
+from kplate.solve.static import StaticState
 from kplate.values import Face
 from kplate.woodarmer import DESIGN, design_moments, largest_change
 
@@ -183,6 +191,30 @@ def measures(
     return np.abs(at.moments[:, component]), np.abs(principal_moments(off)[0]).max(
         axis=1
     )
+
+
+def smoothing(
+    quantity: str, state: StaticState, recovered: SmoothedMoments, index: int
+) -> Floats:
+    """What smoothing does to a quantity of DKT at most, of one case, (n_triangles,).
+
+    An indicator of its error.
+    """
+    mesh = state.mesh
+    corners = recovered.nodes.triangles.ravel()
+    owners = np.repeat(np.arange(len(mesh.triangles)), 3)
+    smoothed = Candidates(
+        mesh.points[mesh.triangles.ravel()],
+        recovered.moments[corners, :, index],
+        recovered.shears[corners, :, index],
+        state.plate.thicknesses[mesh.zones[owners]],
+        owners,
+    )
+    own = element_moments(state, np.eye(3))[..., index].reshape(-1, 3)
+    _, off = measures(quantity, smoothed, own, smoothed.shears)
+    most = np.zeros(len(mesh.triangles))
+    np.maximum.at(most, owners, off)
+    return most
 
 
 def climb(

@@ -16,6 +16,7 @@ from kplate import reactions as support_reactions
 from kplate.answers import Growth, Step
 from kplate.arrays import Floats, Ints
 from kplate.brackets import Brackets
+from kplate.coarser import compared, indicated
 from kplate.dualforces import side_forces
 from kplate.errors import InputError
 from kplate.goals import Goal, Peak, Resultant
@@ -28,11 +29,12 @@ from kplate.peaks import (
     extreme,
     measures,
     peak_band,
+    smoothing,
 )
 from kplate.polygon import SNAP
 from kplate.raw import RawMoments
 from kplate.reactions import CornerForce, Reactions
-from kplate.recovery import SmoothedMoments, element_moments
+from kplate.recovery import SmoothedMoments
 from kplate.rims import outside, rim
 from kplate.samples import Lattice
 from kplate.singular import (
@@ -74,6 +76,9 @@ class Solution(Solved):
         The meshes on the way to it.
     brackets : Brackets, optional
         What the bands are made of, for those of combinations.
+    coarser : tuple of Solution, optional
+        Of an element without bands, the same on meshes of two and four times the edge
+        (`kplate.coarser`).
     """
 
     known: Mapping[tuple[Goal, str], Value] = field(default_factory=dict)
@@ -81,6 +86,7 @@ class Solution(Solved):
     tolerance: float | None = None
     history: tuple[Step, ...] = ()
     brackets: Brackets | None = None
+    coarser: tuple["Solution", ...] = ()
 
     @property
     def reached(self) -> bool:
@@ -169,7 +175,7 @@ class Solution(Solved):
         -------
         Value
             Kind "estimate" where balanced moments were found too; "indicator" of DKT
-            moments and stresses where a tolerance was asked for; "none" elsewhere.
+            where a tolerance was asked for, but of shear stress; "none" elsewhere.
             Moments and stresses leave the discs in `excluded` out, but not their rims.
 
         Raises
@@ -315,9 +321,17 @@ class Solution(Solved):
         result = Value(value=value, place=place, face=face, case=case)
         kind: Kind = "estimate"
         if not self.state.element.conforming:
+            if quantity == "deflection" and self.coarser:
+                tops = [own.peak(quantity, case=case).value for own in self.coarser]
+                return indicated(result, *tops)
             if self.tolerance is None or quantity in ("deflection", "shear stress"):
                 return result
-            kind, band = "indicator", self._smoothing_band(quantity, index)
+            assert isinstance(self._recovered, SmoothedMoments)
+            most = smoothing(quantity, self.state, self._recovered, index)
+            at = self._candidates(index)
+            values, _ = measures(quantity, at, at.moments, at.shears)
+            band = peak_band(self.mesh, at.triangles, values, most[at.triangles])
+            kind = "indicator"
         elif self.dual is None:
             return result
         else:
@@ -359,7 +373,9 @@ class Solution(Solved):
                 replace(point, force=self._banded(point.force, point.mark, case))
                 for point in found.points
             )
-            known[index] = replace(found, points=points)
+            found = replace(found, points=points)
+            others = [own.reactions(case=case) for own in self.coarser]
+            known[index] = compared(found, others) if others else found
         return known[index]
 
     def _banded(self, force: Value, name: str, case: str) -> Value:
@@ -376,7 +392,8 @@ class Solution(Solved):
         """Force in N, positive up, that a side, seam or mark brings, with its band.
 
         A bound where no other support meets it and the plate was solved to a tolerance;
-        an indicator, from the balanced moments, on other sides; no band elsewhere.
+        an indicator, from the balanced moments, on other sides; of DKT an indicator
+        from coarser meshes; no band elsewhere.
 
         Raises
         ------
@@ -392,7 +409,8 @@ class Solution(Solved):
             if side.side == name:
                 force = Value(value=side.resultant.force, case=self.cases[index])
                 force = self._banded(force, name, self.cases[index])
-                if force.kind != "none" or name not in self.mesh.side_names:
+                seam = name not in self.mesh.side_names
+                if force.kind != "none" or (seam and not self.coarser):
                     return force
                 return self._indicated(force, name, index)
         held = [own.side for own in found.sides] + [own.mark for own in found.points]
@@ -401,7 +419,11 @@ class Solution(Solved):
         )
 
     def _indicated(self, force: Value, name: str, index: int) -> Value:
-        """A side's force with what the balanced moments make of it."""
+        """A side's force with what balanced moments or coarser meshes make of it."""
+        if self.coarser:
+            case = self.cases[index]
+            forces = [own.resultant(name, case=case).value for own in self.coarser]
+            return indicated(force, *forces)
         if self.dual is None or not self.state.element.conforming:
             return force
         points = self.mesh.points
@@ -440,27 +462,6 @@ class Solution(Solved):
             )
         both = zip(found, self._at(rims, index), strict=True)
         return Candidates(*(np.concatenate([a[kept], b]) for a, b in both))
-
-    def _smoothing_band(self, quantity: str, index: int) -> PeakBand:
-        """What smoothing does to the moments of DKT: an indicator of their error."""
-        mesh, recovered = self.mesh, self._recovered
-        assert isinstance(recovered, SmoothedMoments)
-        corners = recovered.nodes.triangles.ravel()
-        owners = np.repeat(np.arange(len(mesh.triangles)), 3)
-        smoothed = Candidates(
-            mesh.points[mesh.triangles.ravel()],
-            recovered.moments[corners, :, index],
-            recovered.shears[corners, :, index],
-            self.plate.thicknesses[mesh.zones[owners]],
-            owners,
-        )
-        own = element_moments(self.state, np.eye(3))[..., index].reshape(-1, 3)
-        _, off = measures(quantity, smoothed, own, smoothed.shears)
-        most = np.zeros(len(mesh.triangles))
-        np.maximum.at(most, owners, off)
-        at = self._candidates(index)
-        values, _ = measures(quantity, at, at.moments, at.shears)
-        return peak_band(mesh, at.triangles, values, most[at.triangles])
 
     def _sharpened(self, quantity: str, at: Candidates, index: int) -> Candidates:
         """Candidates with many more on the triangles where the largest of them lie.

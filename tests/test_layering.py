@@ -38,7 +38,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"answers", "raw", "peaks", "goals", "kernels", "tracelines"},
     {"dualforces"},
     {"reactions", "functionals"},
-    {"kernelled", "brackets", "worth"},
+    {"kernelled", "brackets", "worth", "coarser"},
     {"bands"},
     {"solved"},
     {"solution", "following"},

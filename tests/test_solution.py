@@ -1,5 +1,7 @@
 """What a user asks: values at points, peaks, cases, excluded places."""
 
+from dataclasses import replace
+
 import numpy as np
 import oracles
 import pytest
@@ -350,18 +352,48 @@ def test_the_dual_has_the_forces_of_a_square():
     np.testing.assert_allclose(sides, exact, rtol=2e-3)
 
 
-def test_peaks_of_dkt_carry_an_indicator_where_a_tolerance_is_asked_for():
-    """What smoothing moves; it shrinks with the mesh. Deflections have none."""
-    plate, widths = rectangle(CLAMPED), []
+def test_dkt_carries_indicators_where_a_tolerance_is_asked_for():
+    """Stress: what smoothing moves. Deflection: what coarser meshes tell."""
+    plate, load, widths = rectangle(CLAMPED), Pressure(-1.0), []
     for triangles in (500, 4000):
         solution = solve(
-            plate, [Pressure(-1.0)], element="dkt", tolerance=0.01, triangles=triangles
+            plate, [load], element="dkt", tolerance=0.01, triangles=triangles
         )
-        assert solution.peak("deflection").kind == "none"
+        deflection = solution.peak("deflection")
         stress = solution.peak("von Mises")
-        assert stress.kind == "indicator"
-        widths.append(stress.upper - stress.lower)
+        assert deflection.kind == stress.kind == "indicator"
+        assert solution.peak("shear stress").kind == "none"
+        assert deflection.lower < -1.265319087e-7 < deflection.upper  # p a^4 / D
         assert stress.lower < 2738.0 < stress.upper  # 6 x 0.05133 x sqrt(0.79) / h^2
-    assert widths[1] < 0.6 * widths[0]
-    alone = solve(plate, [Pressure(-1.0)], element="dkt", triangles=500)
-    assert alone.peak("von Mises").kind == "none"
+        widths.append([own.upper - own.lower for own in (deflection, stress)])
+    assert widths[1][0] < 0.25 * widths[0][0]
+    assert widths[1][1] < 0.6 * widths[0][1]
+    alone = solve(plate, [load], element="dkt", triangles=500)
+    assert alone.coarser == ()
+    assert {alone.peak(q).kind for q in ("deflection", "von Mises")} == {"none"}
+
+
+def test_reactions_of_dkt_carry_indicators_that_hold_navier_s():
+    """Sides bear 0.32483 each less the corners, which pull with 0.0649647."""
+    plate = rectangle(SIMPLY_SUPPORTED)
+    solution = solve(
+        plate, [Pressure(-1.0)], element="dkt", tolerance=0.01, triangles=2000
+    )
+    for corner in solution.reactions().corners:
+        assert corner.force.kind == "indicator"
+        assert corner.force.lower < -0.0649647 < corner.force.upper
+    assert solution.hold_down()[0].kind == "indicator"
+    force = solution.resultant("north")
+    assert force.kind == "indicator"
+    assert force.upper - force.lower < 0.02 * force.value
+    column = replace(plate, outline=plate.outline.mark((0.5, 0.5), name="column"))
+    column = replace(column, supports={**plate.supports, "column": SIMPLY_SUPPORTED})
+    solution = solve(
+        column, [Pressure(-1.0)], element="dkt", tolerance=0.01, triangles=2000
+    )
+    (point,) = solution.reactions().points
+    assert point.force.kind == "indicator"
+    assert solution.resultant("column") == point.force
+    fine = solve(column, [Pressure(-1.0)], triangles=3000)
+    (exact,) = fine.reactions().points
+    assert point.force.lower < exact.force.value < point.force.upper
