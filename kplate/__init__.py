@@ -21,6 +21,7 @@ licensed practice decide.
 from kplate.adapt import solve
 from kplate.asking import Ask
 from kplate.check import Checked, check
+from kplate.choosing import Sized, choose_thickness
 from kplate.combinations import Combination, preset_combinations
 from kplate.combining import combine
 from kplate.envelope import Envelope
@@ -142,6 +143,7 @@ __all__ = [
     "Sensitivity",
     "Shear",
     "Size",
+    "Sized",
     "Sizing",
     "Slope",
     "Slot",
@@ -156,6 +158,7 @@ __all__ = [
     "Value",
     "Verdict",
     "check",
+    "choose_thickness",
     "combine",
     "design_moments",
     "judge",

@@ -15,6 +15,7 @@ from typing import Any, NamedTuple
 import numpy as np
 
 from kplate.arrays import Bools, Floats, Ints
+from kplate.elements.arcs import Arcs
 from kplate.peaks import (
     FACTOR,
     Candidates,
@@ -318,6 +319,8 @@ class Basis:
                     return None
                 triangles, inside = mesh.locate(place[None])
                 holder = int(triangles[0])
+            if len(self._arcs(np.array([holder]))):
+                return None  # no polynomial beside a round edge
             centre, unit, coefficients = self._polynomial(holder, inside[0])
             w, slope, bend = _jet((place - centre) / unit, coefficients @ weights)
             if not (np.linalg.det(bend) > 0.0 and bend[0, 0] * w < 0.0):
@@ -365,17 +368,23 @@ class Basis:
         state, mesh = self.solution.state, self.solution.mesh
         triangles, barycentrics = mesh.locate(points)
         vertices = mesh.points[mesh.triangles[triangles]]
-        rows = state.element.evaluate(vertices, barycentrics[:, None])[:, 0, 0]
+        arcs = self._arcs(triangles)
+        rows = state.element.evaluate(vertices, barycentrics[:, None], arcs)[:, 0, 0]
         own = state.unknowns[state.constraints.numbering.table[triangles]] @ weights
         deflections: Floats = np.einsum("kd,kd->k", rows, own)
         return deflections
+
+    def _arcs(self, triangles: Ints) -> Arcs:
+        """Round edges of triangles."""
+        return self.solution.state.constraints.numbering.arcs.among(triangles)
 
     def _lattices(self, triangles: Ints) -> Parts:
         """Fine lattices on triangles."""
         new = [t for t in triangles.tolist() if t not in self._pool]
         if new:
             lattice = Lattice.of(FINE).barycentrics
-            whole, q = self._parts_on(np.array(new), lattice), len(lattice)
+            bent = self._arcs(np.array(new)).bent(lattice, len(new))
+            whole, q = self._parts_on(np.array(new), bent), len(lattice)
             for i, t in enumerate(new):
                 own = slice(i * q, (i + 1) * q)
                 columns: Any = whole

@@ -111,7 +111,7 @@ class Checked:
             what = "combination"
             supports = extremes_table(extremes_rows(self.judged, units), units)
         parts = [
-            "\n".join([*_heading(self.panel), *combination_lines(self.judged)]),
+            "\n".join([*heading(self.panel), *combination_lines(self.judged)]),
             values_table(self.lines, what),
             asked_table(asked_rows(self.panel, self.judged), what),
             supports,
@@ -213,7 +213,7 @@ def version() -> str:
     return metadata.version("kplate")
 
 
-def _heading(panel: Panel) -> list[str]:
+def heading(panel: Panel) -> list[str]:
     """Identity, and the panel as it was understood."""
     plate, length = panel.plate, panel.units.length
     title = f"{panel.name}, {_thickness(panel)} {plate.material.name}"

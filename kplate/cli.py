@@ -73,6 +73,9 @@ def _parser() -> argparse.ArgumentParser:
         help="directory for the results; results/NAME if left out",
     )
     command.set_defaults(run=_check)
+    command = commands.add_parser("size", help="the thinnest of the stock that passes")
+    command.add_argument("file", type=Path, help="panel file (TOML)")
+    command.set_defaults(run=_size)
     command = commands.add_parser("new", help="write a starter panel file")
     command.add_argument("file", type=Path, help="panel file to write")
     command.set_defaults(run=_new)
@@ -90,6 +93,14 @@ def _check(args: argparse.Namespace) -> int:
     written = ", ".join(str(path) for path in checked.files)
     _say(f"{checked.text}\nwritten: {written}")
     return checked.status
+
+
+def _size(args: argparse.Namespace) -> int:
+    from kplate.choosing import choose_thickness
+
+    sized = choose_thickness(args.file, progress=_show_step)
+    _say(sized.text)
+    return sized.status
 
 
 def _show_step(stage: str, done: float) -> None:

@@ -46,6 +46,8 @@ LIMITS = {
     "hold_down": '"200 N"',
     "bearing": '{ sides = "2 kN/m" }',
     "stock": '["6 mm", "8 mm", "10 mm"]',
+    "under_tolerance": '"0.3 mm"',
+    "corrosion": '"1 mm"',
 }
 DEFLECTION = {
     "span": '"600 mm"',
@@ -100,6 +102,16 @@ def read_limits(
         with within(place):
             stock.append(positive(item, "length"))
     return tuple(dict.fromkeys(limits)), tuple(stock), shown_in
+
+
+def read_allowances(table: Mapping[str, Any]) -> tuple[float, float]:
+    """What a plate may lack of its nominal thickness in m: as rolled, by corrosion."""
+    fields = Fields(where="[limits]", table=table, examples=LIMITS)
+    under, corrosion = (
+        fields.positive(name, "length") if name in fields else 0.0
+        for name in ("under_tolerance", "corrosion")
+    )
+    return under, corrosion
 
 
 def _deflection(fields: Fields, outline: Outline) -> DeflectionLimit:

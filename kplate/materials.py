@@ -125,27 +125,3 @@ STOCK = {
         GLASS,
     )
 }
-
-# Yield strengths in Pa up to nominal thicknesses in m: EN 10025-2, as read in a public
-# copy.
-YIELD_EN_10025_2 = {
-    "steel S235": ((0.016, 235e6), (0.040, 225e6), (0.063, 215e6)),
-    "steel S275": ((0.016, 275e6), (0.040, 265e6), (0.063, 255e6)),
-    "steel S355": ((0.016, 355e6), (0.040, 345e6), (0.063, 335e6)),
-}
-
-
-def graded_strength(name: str, thickness: float) -> float | None:
-    """Yield strength in Pa of a steel by its nominal thickness in m.
-
-    ``None`` where none is known: of other materials, and beyond 63 mm.
-
-    Examples
-    --------
-    >>> graded_strength("steel S235", 0.020)
-    225000000.0
-    """
-    for most, strength in YIELD_EN_10025_2.get(name, ()):
-        if thickness <= most * (1.0 + 1e-9):
-            return strength
-    return None

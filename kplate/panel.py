@@ -21,7 +21,7 @@ from kplate.elements import ELEMENTS
 from kplate.errors import InputError
 from kplate.fields import Fields, closest, shown, within
 from kplate.judging import check_limits
-from kplate.limitfields import read_limits
+from kplate.limitfields import read_allowances, read_limits
 from kplate.limits import Limit
 from kplate.loads import Case
 from kplate.outline import Outline
@@ -97,6 +97,8 @@ class Panel:
         Whether design moments of reinforcement are wanted.
     stock : tuple of float
         Thicknesses to choose from in m, as listed; empty where none are stated.
+    under_tolerance, corrosion : float
+        What may be missing of a thickness of the stock in m, as it comes and later.
     units : DisplayUnits
         The units to show it in, from those of the file.
     notes : tuple of str
@@ -122,6 +124,8 @@ class Panel:
     element: str
     design: bool
     stock: tuple[float, ...]
+    under_tolerance: float
+    corrosion: float
     units: DisplayUnits
     notes: tuple[str, ...]
     path: Path
@@ -163,6 +167,7 @@ def read_panel(path: Path) -> Panel:
     limits, stock, stress = read_limits(sections.get("limits", {}), plate)
     with within("[limits]"):
         check_limits(plate, limits, combinations)
+    under_tolerance, corrosion = read_allowances(sections.get("limits", {}))
     return Panel(
         name=head.word("name"),
         revision=head.word("revision", default=""),
@@ -178,6 +183,8 @@ def read_panel(path: Path) -> Panel:
         element=_element(head),
         design=_design(head),
         stock=stock,
+        under_tolerance=under_tolerance,
+        corrosion=corrosion,
         units=_display_units(stated.length, stress),
         notes=(*stated.notes, *idle_cases(cases, combinations)),
         path=path,

@@ -223,17 +223,17 @@ class _Problem:
     def _row(self, reading: _Reading) -> Floats:
         """How a reading changes with the unknowns, (count,)."""
         mesh, element = self.solution.mesh, self.state.element
-        table = self.system.numbering.table
+        table, arcs = self.system.numbering.table, self.system.numbering.arcs
         row = np.zeros(self.system.numbering.count)
         if reading.at is not None:
             triangles, inside = mesh.locate([reading.at])
             vertices = mesh.points[mesh.triangles[triangles]]
-            np.add.at(
-                row, table[triangles[0]], element.evaluate(vertices, inside)[0, 0, 0]
-            )
+            own = element.evaluate(vertices, inside, arcs.among(triangles))[0, 0, 0]
+            np.add.at(row, table[triangles[0]], own)
         if len(reading.triangles):
             vertices = mesh.points[mesh.triangles[reading.triangles]]
-            bent = element.curvature(vertices, reading.inside[:, None])[:, 0]
+            own_arcs = arcs.among(reading.triangles)
+            bent = element.curvature(vertices, reading.inside[:, None], own_arcs)[:, 0]
             rigidity = self.solution.plate.rigidities[mesh.zones[reading.triangles]]
             own = np.einsum("ka,kab,kbd->kd", reading.slopes, rigidity, bent)
             np.add.at(row, table[reading.triangles], own)

@@ -35,8 +35,8 @@ from kplate.limits import (
     governing,
 )
 from kplate.loads import Case, SelfWeight
-from kplate.materials import graded_strength
 from kplate.plate import Plate
+from kplate.presets import STRENGTHS
 from kplate.solve.static import Progress
 from kplate.superposed import Superposed, follows, unit_cases
 from kplate.validity import Validity, validity
@@ -474,14 +474,31 @@ class _Family:
 def allowed_at(plate: Plate, limit: StressLimit, nominal: float) -> float:
     """Largest stress allowed in Pa at a nominal thickness in m.
 
-    The least of what the limit states and of what a material of the plate's name is
-    known to have at the thickness.
+    The least of what the limit states and of what the plate's steels have at the
+    thickness.
     """
     strength = limit.strength_at(nominal)
     if limit.criterion != "largest principal":
         for h, material in plate.sections:
             thickest = nominal if h == plate.thickness else h
-            known = graded_strength(material.name, thickest)
+            known = steel_strength(material.name, thickest)
             if known is not None:
                 strength = min(strength, known)
     return strength / limit.factor
+
+
+def steel_strength(name: str, nominal: float) -> float | None:
+    """Yield strength in Pa of a steel by its nominal thickness in m, EN 10025-2.
+
+    ``None`` where none is known: of other materials, and beyond 63 mm.
+
+    Examples
+    --------
+    >>> steel_strength("steel S235", 0.020)
+    225000000.0
+    """
+    preset = STRENGTHS.get(f"{name} EN 10025-2")
+    for most, strength in preset.grades if preset is not None else ():
+        if nominal <= most * (1.0 + 1e-9):
+            return strength
+    return None

@@ -27,7 +27,6 @@ from kplate.samples import Samples
 from kplate.singular import shear_places
 from kplate.solution import Solution
 from kplate.solve.dual import DualState
-from kplate.solve.static import StaticState
 from kplate.values import Kind, Value, scaled
 
 KINDS: tuple[Kind, ...] = ("bound", "estimate", "indicator", "none")  # worse and worse
@@ -132,11 +131,10 @@ class Superposed(Solution):
         for goal, name in known:
             if isinstance(goal, Deflection | MeanDeflection | Slope):
                 known[goal, name] = scaled(known[goal, name], bends)
-        summed = StaticState(
+        summed = replace(
+            state,
             plate=plate,
             cases=tuple(cases),
-            element=state.element,
-            constraints=state.constraints,
             unknowns=bends * (state.unknowns @ weights),
             forces=state.forces @ weights,
             support_forces=state.support_forces @ weights,
@@ -265,11 +263,10 @@ def _summed_dual(
 ) -> DualState | None:
     if dual is None:
         return None
-    return DualState(
+    return replace(
+        dual,
         plate=plate,
         cases=tuple(cases),
-        order=dual.order,
-        constraints=dual.constraints,
         unknowns=bends * (dual.unknowns @ weights),
         inside=bends * (dual.inside @ weights),
         moments=dual.moments @ weights,

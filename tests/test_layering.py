@@ -46,8 +46,8 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"extremes", "asking"},
     {"certifying", "basis"},
     {"adapt", "superposed", "sensitivity"},
-    {"validity", "judging", "independent"},
-    {"sizing", "envelope", "presets"},
+    {"validity", "judging", "independent", "presets"},
+    {"sizing", "envelope"},
     {"output"},
     {"statements", "outlines", "caseloads"},
     {"limitfields", "combinationfields"},
@@ -55,6 +55,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"checklines", "limitwords"},
     {"asklines"},
     {"check"},
+    {"choosing"},
     {"cli"},
     {"__main__"},
 ]

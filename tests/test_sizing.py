@@ -23,12 +23,12 @@ from kplate.limits import (
     StressLimit,
 )
 from kplate.loads import STANDARD_GRAVITY, Case, Pressure, RectanglePatch, SelfWeight
-from kplate.materials import STEEL, graded_strength
+from kplate.materials import STEEL
 from kplate.outline import Outline
 from kplate.panel import read_panel
 from kplate.plate import Plate, Section
 from kplate.shapes import Rectangle
-from kplate.sizing import Stock, allowed_at, size
+from kplate.sizing import Stock, allowed_at, size, steel_strength
 from kplate.solution import Solution
 from kplate.solve.static import solve_static
 from kplate.supports import SIMPLY_SUPPORTED
@@ -284,11 +284,11 @@ def test_strength_goes_by_the_nominal_thickness():
     """EN 10025-2: S235 235, 225, 215 MPa to 16, 40, 63 mm."""
     limit = LIMITS[1]
     for h, strength in ((0.016, 235e6), (0.0161, 225e6), (0.04, 225e6), (0.06, 215e6)):
-        assert graded_strength("steel S235", h) == strength
+        assert steel_strength("steel S235", h) == strength
         assert allowed_at(cover(), limit, h) == pytest.approx(strength / 1.5)
-    assert graded_strength("steel S355", 0.03) == 345e6
-    assert graded_strength("steel S235", 0.064) is None
-    assert graded_strength("float glass", 0.01) is None
+    assert steel_strength("steel S355", 0.03) == 345e6
+    assert steel_strength("steel S235", 0.064) is None
+    assert steel_strength("float glass", 0.01) is None
     low = replace(limit, strength=100e6)
     assert allowed_at(cover(), low, 0.06) == pytest.approx(100e6 / 1.5)
     cases = [Case(name="p", loads=[CROWD])]

@@ -84,7 +84,7 @@ def asked_table(rows: Sequence[AskedRow], what: str = "case") -> str:
         )
         for row in rows
     ]
-    return _columns(("asked", "quantity", "value", "band", what, "where"), shown)
+    return columns(("asked", "quantity", "value", "band", what, "where"), shown)
 
 
 def extremes_table(
@@ -107,7 +107,7 @@ def extremes_table(
         for name, most, least, line in rows
     ]
     header = ("support", "pushes up at most", "in", "at least", "in", "line reactions")
-    return _columns(header, shown)
+    return columns(header, shown)
 
 
 def _signed(value: Value, unit: Unit) -> str:
@@ -136,7 +136,7 @@ def values_table(lines: Sequence[Line], what: str = "case") -> str:
             (line.case, line.quantity, shown, band(line.value), limit, used, line.where)
         )
     header = (what, "quantity", "value", "band", "limit", "used", "where")
-    return _columns(header, rows)
+    return columns(header, rows)
 
 
 def reactions_table(
@@ -161,7 +161,7 @@ def reactions_table(
             line = f"{line} {symbol}"
         shown.append((case, name, force, band(value), line))
     header = ("case", "support", "pushes up", "band", "largest line reaction")
-    return _columns(header, shown)
+    return columns(header, shown)
 
 
 def band(value: Value) -> str:
@@ -183,7 +183,7 @@ def legend(lines: Sequence[Line]) -> str:
     return "no mark: bound   ~ estimate   ? indicator"
 
 
-def _columns(header: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
+def columns(header: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
     """Lay out columns without rules."""
     from rich.console import Console
     from rich.table import Table
