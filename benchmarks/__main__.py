@@ -18,11 +18,13 @@ from benchmarks import (
     convergence,
     elements,
     numbers,
+    page,
     plots,
     records,
     report,
     timing,
 )
+from kplate.check import version
 from kplate.elements import ELEMENTS
 from kplate.errors import KplateError
 from kplate.files import replacing
@@ -30,9 +32,17 @@ from kplate.files import replacing
 COMMANDS = {
     "convergence": "error of one number against unknowns, element by element",
     "bands": "bands of numbers with straight sides beside their values",
+    "page": "all of it as one HTML file: every case, convergence, times",
     "elements": "unknowns and seconds to an error, element by element",
     "timing": "times of each stage, memory and growth, as ratios of one run",
 }
+# Numbers whose convergence the page shows: a clamped edge moment, a corner force, and
+# deflections of plates with obtuse and re-entrant corners.
+STUDIES = (("cccc_u_1", 4), ("ssss_u_1", 6), ("rhomb_c_u_30", 1), ("lshape_S_u", 1))
+TIMES = (
+    "CPU seconds of one thread on a machine that others used at the same time; dkt on "
+    "a square. Quote ratios only."
+)
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
@@ -68,12 +78,13 @@ def _handbook(words: Sequence[str]) -> int:
     parser.add_argument(
         "--tolerance",
         type=_share,
-        help="half width of bands; 0.1 %% if left out, 1 %% beside round sides",
+        help="half width of bands; 0.1 %% if left out",
     )
     parser.add_argument(
         "--triangles", type=int, help="one mesh of about so many instead of bands"
     )
     parser.add_argument("--json", type=Path, metavar="FILE", help="write all numbers")
+    parser.add_argument("--html", type=Path, metavar="FILE", help="write a page")
     parser.add_argument("--jobs", type=int, default=min(2, os.cpu_count() or 1))
     args = parser.parse_args(words)
     problems = records.chosen(args.case, args.family)
@@ -88,7 +99,41 @@ def _handbook(words: Sequence[str]) -> int:
     print("\n".join(report.summary(run)))
     if args.json:
         _write(args.json, json.dumps(report.as_json(run), indent=1))
+    if args.html:
+        _write(args.html, page.page(run, version=version()))
     return int(not all(one.numbers for one in run))
+
+
+def _page(parser: argparse.ArgumentParser, words: Sequence[str]) -> int:
+    parser.add_argument(
+        "--out", type=Path, default=Path(__file__).with_name("page.html")
+    )
+    parser.add_argument(
+        "--timing",
+        type=Path,
+        metavar="FILE",
+        help="times written by `timing --json`, instead of taking those to 100,000",
+    )
+    parser.add_argument("--jobs", type=int, default=min(2, os.cpu_count() or 1))
+    args = parser.parse_args(words)
+    args.tolerance, args.element, args.triangles = None, "auto", None
+    run = []
+    for one in _measured(records.records(), args):
+        run.append(one)
+        print(f"{len(run)}/{len(records.records())} {one.problem['id']}", flush=True)
+    studies = []
+    for name, number in STUDIES:
+        print(f"convergence of {name}", flush=True)
+        studies.append(convergence.study(records.record(name), number))
+    if args.timing:
+        stated = json.loads(args.timing.read_text("utf-8"))
+        timings = [timing.Timing(**one) for one in stated]
+    else:
+        timings = timing.main(timing.QUICK)
+    text = page.page(run, studies, timings, version=version(), words=TIMES)
+    _write(args.out, text)
+    print(f"written: {args.out} ({len(text) / 1000:.0f} kB)")
+    return 0
 
 
 def _measured(
@@ -120,6 +165,8 @@ def _command(name: str, words: Sequence[str]) -> int:
         return int(bands.main(args.tolerance, names) > 0)
     if name == "convergence":
         return _convergence(parser, words)
+    if name == "page":
+        return _page(parser, words)
     if name == "timing":
         return _timing(parser, words)
     parser.parse_args(words)

@@ -19,8 +19,7 @@ from benchmarks.asking import Asked, ask, combined
 from benchmarks.bands import is_round
 from kplate.errors import KplateError
 
-# Half widths asked for: round sides have no narrow bands where chords stand for them.
-STRAIGHT, ROUND = 1e-3, 1e-2
+TOLERANCE = 1e-3  # half width of the bands asked for
 NEAR = 1e-3  # a deviation below is within 0.1 %
 BUDGET = 12_000  # unknowns beyond which round plates are not refined for their bands
 BAR = 0.02  # of the largest of its kind: what is smaller is measured against that
@@ -176,7 +175,7 @@ def measure(
     problem : dict
         Its record.
     tolerance : float, optional
-        Half width of the bands asked for; 0.1 % if left out, 1 % beside round sides.
+        Half width of the bands asked for; 0.1 % if left out.
     element : str
         As for `kplate.solve`.
     triangles : int, optional
@@ -219,8 +218,7 @@ def _banded(
     goals = tuple(dict.fromkeys(goal for one in asked for goal in one.goals))
     if not goals:
         return None, ""
-    if tolerance is None:
-        tolerance = ROUND if is_round(problem) else STRAIGHT
+    tolerance = TOLERANCE if tolerance is None else tolerance
     more = {"budget": BUDGET} if is_round(problem) else {}
     try:
         solution = kp.solve(

@@ -75,6 +75,12 @@ class Misprint:
     excluded: bool
 
     @property
+    def cut(self) -> bool:
+        """Whether its last digit is cut off where it should be rounded."""
+        assert self.number.value is not None
+        return self.units < 1.0 and abs(self.figure.published) < abs(self.number.value)
+
+    @property
     def words(self) -> str:
         """The evidence in one sentence."""
         own = self.number
@@ -86,7 +92,9 @@ class Misprint:
         return (
             f"printed {self.figure.published:.6g} in {self.figure.words}, value "
             f"{own.value:.8g} ({own.digits} digits: {own.method}), "
-            f"{self.units:.1f} units of the last printed digit off{proof}"
+            f"{self.units:.1f} units of the last printed digit off"
+            + ", cut off, not rounded" * self.cut
+            + proof
         )
 
 
@@ -189,7 +197,8 @@ def summary(run: Sequence[Measured]) -> Iterator[str]:
     found = misprints(run)
     yield (
         f"\n{len(found)} figures in print that the values do not round to "
-        "(misprints, short series, or wrongly recalled):"
+        "(misprints, short series, or wrongly recalled; "
+        f"{sum(one.cut for one in found)} cut off where they should be rounded):"
     )
     for one in found:
         own = one.number

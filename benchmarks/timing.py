@@ -179,7 +179,7 @@ def measure(size: int, element: str = "dkt") -> Timing:
     numbering = Numbering(mesh=mesh, per_vertex=own.per_vertex, per_edge=own.per_edge)
     constraints = constrain(plate, numbering)
     stages["stiffness"], _ = _best(
-        lambda: [None for _ in assembly.element_stiffness(plate, mesh, own)], runs
+        lambda: [None for _ in assembly.element_stiffness(plate, numbering, own)], runs
     )
     made, lower = _best(lambda: assembly.stiffness(plate, own, constraints), runs)
     stages["assembly"] = max(made - stages["stiffness"], 0.0)

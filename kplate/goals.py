@@ -14,21 +14,41 @@ Place = tuple[float, float]
 
 @dataclass(frozen=True, kw_only=True)
 class Deflection:
-    """The deflection w in m at a place."""
+    """The deflection w in m at a place.
+
+    Parameters
+    ----------
+    at : tuple of float
+        The place in m, on the plate.
+    """
 
     at: Place
 
 
 @dataclass(frozen=True, kw_only=True)
 class MeanDeflection:
-    """The mean deflection in m of a zone, or of the whole plate if left out."""
+    """The mean deflection in m of a zone, or of the whole plate.
+
+    Parameters
+    ----------
+    zone : str, optional
+        Name of the zone; the whole plate if left out.
+    """
 
     zone: str | None = None
 
 
 @dataclass(frozen=True, kw_only=True)
 class Slope:
-    """The slope of w at a place in a direction (a unit vector)."""
+    """The slope of w at a place in a direction.
+
+    Parameters
+    ----------
+    at : tuple of float
+        The place in m, inside the plate.
+    direction : tuple of float
+        A unit vector.
+    """
 
     at: Place
     direction: Place
@@ -36,7 +56,15 @@ class Slope:
 
 @dataclass(frozen=True, kw_only=True)
 class Moment:
-    """A moment in N at a place inside."""
+    """A moment in N at a place inside.
+
+    Parameters
+    ----------
+    at : tuple of float
+        The place in m, inside the plate.
+    component : {"m_xx", "m_yy", "m_xy"}
+        Which.
+    """
 
     at: Place
     component: Component
@@ -44,7 +72,15 @@ class Moment:
 
 @dataclass(frozen=True, kw_only=True)
 class Shear:
-    """The transverse shear q in N/m at a place inside, on a face with this normal."""
+    """The transverse shear q in N/m at a place inside, on a face.
+
+    Parameters
+    ----------
+    at : tuple of float
+        The place in m, inside the plate.
+    direction : tuple of float
+        The face's normal, a unit vector.
+    """
 
     at: Place
     direction: Place
@@ -52,14 +88,26 @@ class Shear:
 
 @dataclass(frozen=True, kw_only=True)
 class ClampingMoment:
-    """The moment m_nn in N at a place on a straight clamped side."""
+    """The moment m_nn in N at a place on a straight clamped side.
+
+    Parameters
+    ----------
+    at : tuple of float
+        The place in m, on the side.
+    """
 
     at: Place
 
 
 @dataclass(frozen=True, kw_only=True)
 class LineReaction:
-    """The effective shear v_n in N/m at a place on a straight simply supported side."""
+    """The effective shear v_n in N/m on a straight simply supported side.
+
+    Parameters
+    ----------
+    at : tuple of float
+        The place in m, on the side.
+    """
 
     at: Place
 
@@ -70,6 +118,11 @@ class Resultant:
 
     Of a side with its corner forces where no other support meets it, without them
     elsewhere.
+
+    Parameters
+    ----------
+    of : str
+        Name of the side, seam or mark.
     """
 
     of: str
@@ -77,7 +130,13 @@ class Resultant:
 
 @dataclass(frozen=True, kw_only=True)
 class Peak:
-    """The extreme value of a quantity of `Solution.peak` over the plate."""
+    """The extreme value of a quantity over the plate.
+
+    Parameters
+    ----------
+    quantity : str
+        One of those of `Solution.peak`.
+    """
 
     quantity: str
 

@@ -111,6 +111,11 @@ class StressLimit:
         `strength` is then the first.
     words, source : str, optional
         As in `DeflectionLimit`.
+
+    Raises
+    ------
+    InputError
+        If a number or a word is out of range.
     """
 
     criterion: Criterion
@@ -178,6 +183,11 @@ class StressRangeLimit:
         Largest range in Pa.
     words, source : str, optional
         As in `DeflectionLimit`.
+
+    Raises
+    ------
+    InputError
+        If a number or a word is out of range.
     """
 
     of: Component | Criterion
@@ -223,6 +233,11 @@ class ReactionLimit:
         Names of the sides, seams or marks judged, where not all are.
     words, source : str, optional
         As in `DeflectionLimit`.
+
+    Raises
+    ------
+    InputError
+        If a number or a word is out of range.
     """
 
     at: Where

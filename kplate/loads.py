@@ -49,6 +49,11 @@ class Hydrostatic:
     up : tuple of float
         The direction in the plate's plane that points out of the liquid; its length
         does not matter. A panel that stands on its south side has (0, 1).
+
+    Raises
+    ------
+    InputError
+        If a number is not finite, or the direction has no length.
     """
 
     level: float

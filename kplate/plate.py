@@ -34,6 +34,11 @@ class Section:
         Thickness in m, about the same middle plane; the plate's if left out.
     material : Isotropic, optional
         Material; the plate's if left out.
+
+    Raises
+    ------
+    InputError
+        If the thickness is not a positive number.
     """
 
     thickness: float | None = None

@@ -221,7 +221,13 @@ class Polygon:
         return low, high
 
     def parted(self, side: str, name: str, fractions: tuple[float, float]) -> "Polygon":
-        """Give the part of a side between two shares of its length its own name."""
+        """Give the part of a side between two shares of its length its own name.
+
+        Raises
+        ------
+        InputError
+            If the shares do not rise from 0 to 1, or the side is in several stretches.
+        """
         low, high = fractions
         if not (0.0 <= low < high <= 1.0):
             raise InputError(

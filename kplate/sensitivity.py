@@ -53,7 +53,7 @@ class Parameter:
     number : int
         Which of the case's loads, from 0.
     value : float
-        What it is.
+        What it is, in m, Pa, or 1 as a share.
     """
 
     kind: Kind

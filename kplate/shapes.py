@@ -95,6 +95,11 @@ class Slot(Shape):
         Name of its rim.
     angle : float
         By how much its length is turned from the x axis, in rad.
+
+    Raises
+    ------
+    InputError
+        If a number is not finite or not positive, or it is no longer than wide.
     """
 
     centre: tuple[float, float]
@@ -140,6 +145,11 @@ class Rectangle(Shape):
         Radius of its corners in m; sharp if 0.
     angle : float
         By how much its first length is turned from the x axis, in rad.
+
+    Raises
+    ------
+    InputError
+        If a number is not finite or not positive, or the corners are too round.
     """
 
     centre: tuple[float, float]

@@ -90,7 +90,7 @@ class Validity:
         Share of the bending that is not like that of a strip, from 0 to 1; the largest
         of the cases whose deflection is not small.
     steepest : float
-        Largest slope of all cases.
+        Largest slope of all cases in rad.
     corner_forces : bool
         Whether corners bring forces, for which they must be held.
     """

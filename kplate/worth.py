@@ -14,6 +14,7 @@ from kplate.loads import Case, LineForce, Load, PointForce, Pressure, PressureFi
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
 from kplate.polygon import SNAP
+from kplate.shapes import Ellipse
 from kplate.unbalanced import unbalanced
 from kplate.values import Kind
 
@@ -41,6 +42,9 @@ def worth(
 def _drawn(plate: Plate, mesh: Mesh, arcs: Arcs) -> str:
     """What of the plate is round but drawn by chords."""
     outline = plate.outline
+    for line in outline.lines:
+        if isinstance(line, Ellipse):
+            return f"ellipse {line.name} is drawn by arcs"
     curved = mesh.boundary_sides[mesh.boundary_circles != STRAIGHT_EDGE]
     sides = [mesh.side_names[int(side)] for side in curved]
     if len(arcs):

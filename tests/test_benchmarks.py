@@ -9,12 +9,21 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from benchmarks import convergence, numbers, plots, records, report, timing
+from benchmarks import (
+    convergence,
+    drawings,
+    numbers,
+    page,
+    plots,
+    records,
+    report,
+    timing,
+)
 from benchmarks.__main__ import main
 from kplate.errors import InputError
 
 # Deviations of numbers that have a band from their values, as shares: what is measured,
-# doubled. The tolerance asked for is 0.1 % of straight sides and 1 % of round ones.
+# doubled.
 BANDED = 1.5e-4
 # Numbers read from one mesh: corner forces, sides that are free or guided.
 READ = 6e-4
@@ -295,3 +304,51 @@ def test_a_timing_adds_up(capsys):
     assert plots.timing_plot((first, second)).startswith("<svg")
     slow = replace(second, unknowns=4 * first.unknowns, solve=8.0 * first.solve)
     assert timing.exponent((first, slow)) == pytest.approx(1.5)
+
+
+def test_the_page_stands_alone_and_holds_every_number():
+    names = ("sffs_u_1", "cccc_u_1", "cyl_ss")
+    run = [numbers.measure(records.record(n), tolerance=0.05) for n in names]
+    times = [timing.measure(n) for n in (1_000, 2_000)]
+    text = page.page(run, timings=times, version="1.2.3", words="on & off")
+    assert text.startswith("<!doctype html>")
+    assert "kplate 1.2.3 beside handbooks" in text
+    assert "on &amp; off" in text
+    assert page.sentence(run) in text
+    for mark in ("<script", "<img", "<link", "@import", "url(h", 'href="http', "src="):
+        assert mark not in text
+    for one in run:
+        assert f"<b>{one.problem['id']}</b>" in text
+        for own in one.numbers:
+            assert f"<td>{own.computed:.7g}" in text
+    assert "printed 0.0231 in TW, Table 35 (from memory), value 0.022905091" in text
+    assert "in exact" not in text
+    assert text.count("<svg") >= 2 + len(run)
+
+
+def test_a_cut_figure_is_told_from_a_wrong_one():
+    problem = records.record("cccc_u_1")
+    cut, wrong = number(0.0012653, 0.0012653, 0.00126), number(1.0, 0.0229, 0.0231)
+    found = report.misprints([numbers.Measured(problem=problem, numbers=(cut, wrong))])
+    assert [one.cut for one in found] == [False, True]
+    assert "cut off, not rounded" in found[1].words
+
+
+@pytest.mark.slow
+def test_an_ellipse_is_drawn_by_arcs_and_its_bands_are_estimates():
+    """They are bounds for the arcs, which are 4e-6 off in the deflection."""
+    found = numbers.measure(records.record("ellipse_C_2.0"), tolerance=0.01).numbers
+    assert found[0].deviation == pytest.approx(4.2e-6, rel=0.3)
+    assert {number.kind for number in found} == {"estimate", "none"}
+
+
+def test_a_small_drawing_shows_each_support_once():
+    from benchmarks import cases
+
+    text = drawings.thumbnail(cases.plate(records.record("ann_0.5_iG_oS_u")))
+    assert text.count("class=ks") == 2  # two half circles
+    assert text.count("class=kg") == 2
+    assert " 0 0 0 " in text  # arcs of a circle run to the left
+    text = drawings.thumbnail(cases.plate(records.record("corner4_p_1")))
+    assert text.count("class=kf") == 4
+    assert text.count("<circle") == 4
