@@ -19,6 +19,8 @@ from kplate.unbalanced import unbalanced
 from kplate.values import Kind
 
 BENT = 1e-9  # tangents that differ by more are not those of the edges
+# Arcs of so many radii that meet along one side stand for another curve.
+MANY = 3
 
 
 def worth(
@@ -53,6 +55,8 @@ def _drawn(plate: Plate, mesh: Mesh, arcs: Arcs) -> str:
             if support.holds_slope and not support.holds_deflection:
                 return f"side {side} is round and holds the slope alone"
         sides = []
+        for side in _other_curves(mesh):
+            return f"side {side} is no circle but followed by arcs"
     names = [f"side {side}" for side in sides]
     for zone, section in zip(outline.zones, plate.sections[1:], strict=True):
         if section != plate.sections[0] and zone.shape.line.bulges.any():
@@ -61,6 +65,23 @@ def _drawn(plate: Plate, mesh: Mesh, arcs: Arcs) -> str:
         if plate.support(seam.name).holds and seam.bulges.any():
             names.append(f"seam {seam.name}")
     return f"{names[0]} is round and drawn by chords" if names else ""
+
+
+def _other_curves(mesh: Mesh) -> list[str]:
+    """Sides with a run of arcs of many radii: they stand for an ellipse or a spline."""
+    circles = mesh.boundary_circles
+    arriving, leaving = mesh.boundary_joints.T
+    first, second = circles[arriving], circles[leaving]
+    both = (first != STRAIGHT_EDGE) & (second != STRAIGHT_EDGE) & (first != second)
+    sides = mesh.boundary_sides[arriving]
+    both &= sides == mesh.boundary_sides[leaving]
+    found = []
+    for side in np.unique(sides[both]):
+        own = both & (sides == side)
+        radii = mesh.circles[np.concatenate([first[own], second[own]]), 2]
+        if len(np.unique(np.round(radii / radii.max(), 9))) >= MANY:
+            found.append(mesh.side_names[side])
+    return found
 
 
 def _bends(plate: Plate, mesh: Mesh) -> str:
