@@ -32,6 +32,7 @@ NOTHING = 1e-3
 # Samples lie this share of a piece inside it, which settles on which side of a kink.
 INSIDE = 1e-9
 _BLOCK = 1024  # triangles
+_COARSE = 4  # steps of a lattice on which the deflection alone is sampled
 _BENT, _MOMENTS, _SHEARS = slice(0, 3), slice(3, 6), slice(6, 8)  # parts of all fields
 
 
@@ -68,6 +69,24 @@ class RawMoments:
     def corner_moments(self, edges: Ints, ends: Ints) -> Floats:
         """Moments at one end (0 or 1) of boundary edges (k,), (k, 3, c)."""
         return self.moments_at(*corner_places(self.state.mesh, edges, ends))
+
+    @cached_property
+    def deflections(self) -> tuple[Floats, Ints, Floats]:
+        """Places (n, 2) over the plate, triangles that hold them, w (n, c), in m."""
+        mesh, numbering = self.state.mesh, self.state.constraints.numbering
+        found = []
+        for start in range(0, len(mesh.triangles), _BLOCK):
+            part = np.arange(start, min(start + _BLOCK, len(mesh.triangles)))
+            at = self._bent(part, Lattice.of(_COARSE).barycentrics)
+            vertices = mesh.points[mesh.triangles[part]]
+            own = self.state.unknowns[numbering.table[part]]
+            arcs = numbering.arcs.among(part)
+            w = self.state.element.shape.fields(vertices, at, own, 1, arcs)[:, :, 0]
+            holders = np.repeat(part, w.shape[1])
+            places = (at @ vertices).reshape(-1, 2)
+            found.append((places, holders, w.reshape(len(holders), -1)))
+        parts = [np.concatenate(own) for own in zip(*found, strict=True)]
+        return parts[0], parts[1].astype(np.int64), parts[2]
 
     @cached_property
     def samples(self) -> Samples:

@@ -42,6 +42,7 @@ from kplate.singular import (
     shear_places,
 )
 from kplate.solved import Solved
+from kplate.summits import deflected, deflection_band
 from kplate.values import Face, Kind, Value
 from kplate.woodarmer import DESIGN
 
@@ -279,21 +280,14 @@ class Solution(Solved):
             )
         index = self._index(case)
         if quantity == "deflection":
-            return self._deflection_band(index)
+            assert isinstance(self._recovered, RawMoments)
+            return deflection_band(self.state, self.dual, self._recovered, index)
         at = self._sharpened(quantity, self._candidates(index), index)
         own = self.mesh.barycentrics(at.triangles, at.places)[:, None]
         moments = self.dual.moments_at(at.triangles, own)[:, 0, :, index]
         shears = self.dual.shears_at(at.triangles, own)[:, 0, :, index]
         values, differences = measures(quantity, at, moments, shears)
         return peak_band(self.mesh, at.triangles, values, differences)
-
-    def _deflection_band(self, index: int) -> PeakBand:
-        assert self.dual is not None
-        samples = self.samples
-        own = self.mesh.barycentrics(samples.holders, samples.points)[:, None]
-        other = self.dual.deflections_at(samples.holders, own)[:, 0, index]
-        w = samples.bent[:, 0, index]
-        return peak_band(self.mesh, samples.holders, np.abs(w), np.abs(w - other))
 
     def _check_quantity(self, quantity: str) -> None:
         if quantity not in (*QUANTITIES, *DESIGN):
@@ -343,15 +337,13 @@ class Solution(Solved):
 
     def _summit(self, index: int) -> tuple[float, tuple[float, float], None]:
         """Climb from the sample that deflects most to the summit beside it."""
-        samples, case = self.samples, self.cases[index]
-        w = samples.bent[:, 0, index]
-        best = int(np.argmax(np.abs(w)))
-        size = float(np.sqrt(2.0 * self.mesh.areas[samples.holders[best]]))
+        places, holders, w = deflected(self._recovered, index)
+        case, best = self.cases[index], int(np.argmax(np.abs(w)))
         value, place = climb(
             lambda points: self.deflection(points, case=case),
             self.mesh,
-            (float(w[best]), samples.points[best]),
-            size,
+            (float(w[best]), places[best]),
+            float(np.sqrt(2.0 * self.mesh.areas[holders[best]])),
         )
         return value, place, None
 

@@ -18,6 +18,8 @@ from kplate.shapes import Ellipse
 from kplate.unbalanced import unbalanced
 from kplate.values import Kind
 
+# Units in the last place by which the ends of an edge may be off.
+ENDS = 8.0 * float(np.finfo(float).eps)
 BENT = 1e-9  # tangents that differ by more are not those of the edges
 # Arcs of so many radii that meet along one side stand for another curve.
 MANY = 3
@@ -90,6 +92,9 @@ def _bends(plate: Plate, mesh: Mesh) -> str:
     ends = mesh.boundary_edges[:, 1]
     own = np.stack([mesh.tangents(joints[:, k], ends) for k in (0, 1)], axis=1)
     off = np.abs(side_tangents(plate, mesh) - own).max(axis=(1, 2))
+    # Short edges know their direction no better than their ends their places.
+    shortest = mesh.boundary_lengths[joints].min(axis=1)
+    off -= ENDS * np.abs(mesh.points).max() / shortest
     for side in mesh.boundary_sides[joints[off > BENT, 0]].tolist():
         if plate.support(mesh.side_names[side]).holds:
             return f"side {mesh.side_names[side]} bends where it is held"

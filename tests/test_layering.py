@@ -40,7 +40,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"reactions", "functionals"},
     {"kernelled", "brackets", "worth", "coarser"},
     {"bands"},
-    {"solved"},
+    {"solved", "summits"},
     {"solution", "following"},
     {"combining", "limits"},
     {"extremes", "asking"},
