@@ -14,8 +14,11 @@ p - Pp with P the projection on linear functions, adds to each norm the oscillat
 p with quartics, not by Pp itself; computed over triangles of many shapes, slim ones
 too, what that needs is less than a tenth of it.
 
-The band is a bound where the deflection is conforming and the moments balance: on
-straight sides and with the C1 elements.
+The band is a bound where the deflection is conforming and the moments balance: with the
+C1 elements on straight sides, and with the quintic on arcs of circles too. There the
+moments balance but for what is left of m_nn and v_n along arcs, r; a bound rho of its
+work on a deflection of unit energy (`elements.dual_arcs`) makes half the width
+``(||G0|| + rho0) (||Gj|| + rhoj) - ||G0|| ||Gj|| / 2``.
 
 Source: W. Prager, J. L. Synge, "Approximations in elasticity based on the concept of
 function space", Quarterly of Applied Mathematics 5 (1947) 241-269 (from memory).

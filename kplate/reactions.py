@@ -5,7 +5,7 @@ the unknowns less the loads, so that with the loads they balance to round-off. A
 vertex they are a force R and two couples, paired with w and its slopes. A corner force
 is the jump of m_ns there (arriving side less leaving side); the rest of R belongs to
 the sides. Line reactions of C1 elements are found in the space of their edge traces
-(`kplate.traces`); those of DKT, and of all where a held side is round, from windows of
+(`kplate.traces`); those of DKT, and of HCT where a held side is round, from windows of
 vertices (`kplate.stations`).
 
 Signs: forces and line reactions v_n positive when the support pushes the plate up; a
