@@ -4,6 +4,7 @@ What is a linear functional of the deflection can be given to the solver as a go
 that it has a band; criteria are read off the fields, without one.
 """
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -14,6 +15,7 @@ from kplate.arrays import Floats
 from kplate.errors import InputError
 from kplate.goals import Deflection, Goal, Moment, Place, Shear, Slope
 from kplate.peaks import Candidates, local
+from kplate.singular import shear_places
 from kplate.solution import Solution
 from kplate.values import Value
 
@@ -151,7 +153,8 @@ def values_at(
     -------
     ndarray, shape (k,)
         In SI units, with its sign; principal stresses are the extreme ones of both
-        faces. Within a disc that is left out of peaks it depends on the mesh.
+        faces. Moments, shears and stresses are nan within the discs that are left out
+        of peaks (`left_out`).
 
     Raises
     ------
@@ -167,9 +170,11 @@ def values_at(
     axis = ("x", "y").index(quantity[-1]) if quantity[-1] in "xy" else 0
     if quantity.startswith("slope"):
         return solution.slopes(points, case=case)[:, axis]
-    if quantity in ("q_x", "q_y"):
-        return solution.shears(points, case=case)[:, axis]
     places = np.asarray(points, dtype=float)
+    lost = [bool(left_out(solution, quantity, (x, y), case)) for x, y in places]
+    if quantity in ("q_x", "q_y"):
+        shears = solution.shears(points, case=case)[:, axis]
+        return np.where(lost, np.nan, shears)
     triangles, _ = solution.mesh.locate(places)
     at = Candidates(
         places,
@@ -178,7 +183,23 @@ def values_at(
         solution.plate.thicknesses[solution.mesh.zones[triangles]],
         triangles,
     )
-    return local(quantity, at)
+    return np.where(lost, np.nan, local(quantity, at))
+
+
+def left_out(
+    solution: Solution, quantity: str, place: Place, case: str | None = None
+) -> str:
+    """Why a quantity has no value to report at a place; empty where it has one."""
+    if quantity in ("deflection", "slope_x", "slope_y"):
+        return ""
+    discs = [disc for disc in solution.excluded if disc.case in ("", case or disc.case)]
+    if quantity in ("q_x", "q_y", "shear stress"):
+        radius = solution.excluded_radius or solution.plate.thickness
+        discs += shear_places(solution.plate, radius)
+    for disc in discs:
+        if math.dist(disc.place, place) < disc.radius * (1.0 - 1e-9):
+            return f"no finite value: {disc.reason}"
+    return ""
 
 
 def asked_values(
@@ -196,7 +217,9 @@ def asked_values(
             known = None if goal is None else solution.known.get((goal, case))
             if known is None or known.kind == "none":
                 value = values_at(solution, quantity, ask.points[:1], case=case)
-                reason = "" if known is None else f"no band: {known.reason}"
+                reason = left_out(solution, quantity, ask.places[0], case)
+                if known is not None and not reason:
+                    reason = f"no band: {known.reason}"
                 known = Value(
                     value=float(value[0]), place=ask.places[0], case=case, reason=reason
                 )

@@ -4,7 +4,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from kplate.asking import ASKED, Ask, asked_values, values_at
+from kplate.asking import ASKED, Ask, asked_values, left_out, values_at
 from kplate.checklines import at
 from kplate.judging import Judged
 from kplate.output.tables import AskedRow
@@ -73,11 +73,19 @@ def _values(judged: Judged, ask: Ask, quantity: str) -> Iterator[Value]:
             found.append(asked_values(solution, ask, cases=[case])[quantity, case])
             continue
         along = values_at(solution, quantity, ask.points, case=case)
-        ends = [int(np.argmax(along)), int(np.argmin(along))]
+        if np.isnan(along).all():
+            reason = left_out(solution, quantity, ask.places[0], case)
+            found.append(Value(value=np.nan, case=case, reason=reason))
+            continue
+        ends = [int(np.nanargmax(along)), int(np.nanargmin(along))]
         for best in dict.fromkeys(ends[_ENDS.get(quantity, slice(2))]):
             x, y = ask.points[best].tolist()
             found.append(Value(value=float(along[best]), place=(x, y), case=case))
-    if judged.combinations:
+    lost = [value for value in found if np.isnan(value.value)]
+    if lost:
+        yield lost[0]
+        found = [value for value in found if not np.isnan(value.value)]
+    if found and judged.combinations:
         most = max(found, key=lambda value: value.value)
         least = min(found, key=lambda value: value.value)
         both = [most] if most.value == least.value else [most, least]

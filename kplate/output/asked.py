@@ -7,7 +7,7 @@ from typing import Any
 
 import numpy as np
 
-from kplate.asking import ASKED, Ask, asked_values, values_at
+from kplate.asking import ASKED, Ask, asked_values, left_out, values_at
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.solution import Solution
@@ -74,7 +74,7 @@ def _rows(solution: Solution, ask: Ask) -> Iterator[dict[str, Any]]:
                 value = asked_values(solution, ask, cases=[case])[quantity, case]
                 x, y = ask.places[0]
                 row |= {"x [m]": x, "y [m]": y, "distance [m]": 0.0}
-                row |= {"value": value.value, "band": value.kind}
+                row |= {"value": _known(value.value), "band": value.kind}
                 row |= {"lower": value.lower, "upper": value.upper}
                 yield row | {"remark": value.reason}
                 continue
@@ -83,7 +83,13 @@ def _rows(solution: Solution, ask: Ask) -> Iterator[dict[str, Any]]:
                 ask.points.tolist(), ask.distance.tolist(), along.tolist(), strict=True
             ):
                 row |= {"x [m]": x, "y [m]": y, "distance [m]": distance}
-                yield row | {"value": number, "band": "none"}
+                remark = left_out(solution, quantity, (x, y), case)
+                yield row | {"value": _known(number), "band": "none", "remark": remark}
+
+
+def _known(number: float) -> float | str:
+    """A number, blank where there is none."""
+    return "" if np.isnan(number) else number
 
 
 def write_line_plot(
