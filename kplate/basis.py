@@ -14,6 +14,7 @@ from typing import Any, NamedTuple
 
 import numpy as np
 
+from kplate import assembly
 from kplate.arrays import Bools, Floats, Ints
 from kplate.elements.arcs import Arcs
 from kplate.peaks import (
@@ -118,6 +119,23 @@ class Basis:
         if key not in self._found:
             self._found[key] = self._peak(quantity, shape, discs)
         return replace(scaled(self._found[key], size), case=case)
+
+    @cached_property
+    def works(self) -> Floats:
+        """Work in J of each unit case's moments on the curvatures of each."""
+        state = self.solution.state
+        numbering, mesh = state.constraints.numbering, self.solution.mesh
+        total = np.zeros((len(state.cases),) * 2)
+        for block, K in assembly.element_stiffness(
+            state.plate, numbering, state.element
+        ):
+            bent = assembly.without_rigid_motion(
+                state.unknowns[numbering.table[block]],
+                mesh.points[mesh.triangles[block]],
+                numbering,
+            )
+            total += np.einsum("nic,nid->cd", bent, K @ bent)
+        return total
 
     def _peak(self, quantity: str, weights: Floats, discs: Sequence[Excluded]) -> Value:
         if quantity == "deflection":

@@ -127,7 +127,7 @@ class Superposed(Solution):
         bends = (own.plate.thickness / plate.thickness) ** 3
         state = own.state
         names = [case.name for case in cases]
-        known, energies = _bands(own, weights, names)
+        known, energies = _bands(basis, weights, names)
         for goal, name in known:
             if isinstance(goal, Deflection | MeanDeflection | Slope):
                 known[goal, name] = scaled(known[goal, name], bends)
@@ -227,26 +227,21 @@ def added(values: Sequence[Value], weights: Floats) -> Value:
 
 
 def _bands(
-    unit: Solution, weights: Floats, names: Sequence[str]
+    basis: Basis, weights: Floats, names: Sequence[str]
 ) -> tuple[dict[tuple[Goal, str], Value], tuple[Value, ...]]:
     """Goals and strain energies of sums of unit cases, at their thickness.
 
     From the gaps of the sums where they are known; otherwise bands add up.
     """
     known: dict[tuple[Goal, str], Value] = {}
+    unit = basis.solution
     brackets = unit.brackets
     if brackets is not None:
         rows = brackets.values(weights, names)
         for f, row in zip(brackets.functionals, rows, strict=True):
             known |= {(f.goal, value.case): value for value in row}
-        state = unit.state
-        summed = replace(
-            state,
-            cases=tuple(Case(name=name, loads=state.cases[0].loads) for name in names),
-            unknowns=state.unknowns @ weights,
-            forces=state.forces @ weights,
-        )
-        return known, brackets.energies(weights, names, summed.strain_energy)
+        least = 0.5 * np.einsum("km,kl,lm->m", weights, basis.works, weights)
+        return known, brackets.energies(weights, names, least)
     for goal in dict.fromkeys(goal for goal, _ in unit.known):
         parts = [unit.known[goal, case] for case in unit.cases]
         for name, weight in zip(names, weights.T, strict=True):
