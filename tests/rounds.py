@@ -73,3 +73,18 @@ def around(arcs, shares=ALONG):
     points.append((x, y) + radius * out)
     steps.append(radius * turn * along)
     return np.array(points), np.array(steps)
+
+
+def from_shares(arcs, t, s):
+    """Points (q, 2) at t along the ray to the point s of the arc."""
+    apex = arcs.vertices[0, arcs.edges[0]]
+    return apex + np.asarray(t)[:, None] * (around(arcs, np.asarray(s))[0][2] - apex)
+
+
+def fine_rule(arcs):
+    """Points (q, 2) of the true region, and weights in m2, of a fine tensor rule."""
+    t, s = (own.ravel() for own in np.meshgrid(ALONG, ALONG, indexing="ij"))
+    rims, steps = around(arcs, s)
+    ray = rims[2] - arcs.vertices[0, arcs.edges[0]]
+    cross = ray[:, 0] * steps[2][:, 1] - ray[:, 1] * steps[2][:, 0]
+    return from_shares(arcs, t, s), np.outer(WEIGHT, WEIGHT).ravel() * t * cross

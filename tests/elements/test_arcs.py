@@ -9,7 +9,6 @@ import numpy as np
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 from rounds import (
-    ALONG,
     CLAMPED,
     FREE,
     HELD,
@@ -17,6 +16,8 @@ from rounds import (
     WEIGHT,
     arc_on,
     around,
+    fine_rule,
+    from_shares,
     round_triangles,
     true_area,
     turns,
@@ -82,12 +83,6 @@ def held_as_asked(arcs, u):
     if held == CLAMPED:
         u[18 + arcs.edges[0]] = 0.0
     return u
-
-
-def from_shares(arcs, t, s):
-    """Points (q, 2) at t along the ray to the point s of the arc."""
-    apex = arcs.vertices[0, arcs.edges[0]]
-    return apex + np.asarray(t)[:, None] * (around(arcs, np.asarray(s))[0][2] - apex)
 
 
 def barycentrics(arcs, points):
@@ -343,14 +338,6 @@ def test_stiffness_is_the_work_of_curvatures(arcs, u, D):
     found = u @ QUINTIC.round_stiffness(arcs, D)[0] @ u
     scale = exact + 1e-3 * np.abs(D).max() / size**2
     assert_equal(found / scale, exact / scale)
-
-
-def fine_rule(arcs):
-    t, s = (own.ravel() for own in np.meshgrid(ALONG, ALONG, indexing="ij"))
-    rims, steps = around(arcs, s)
-    ray = rims[2] - arcs.vertices[0, arcs.edges[0]]
-    cross = ray[:, 0] * steps[2][:, 1] - ray[:, 1] * steps[2][:, 0]
-    return from_shares(arcs, t, s), np.outer(WEIGHT, WEIGHT).ravel() * t * cross
 
 
 # The lift.
