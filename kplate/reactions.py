@@ -204,7 +204,7 @@ def reactions(
         case=case,
         sides=tuple(_side_reactions(state, recovered, index, (found, excluded))),
         corners=tuple(corner_force for corner_force, _ in found),
-        points=_point_reactions(state, motions, index),
+        points=_point_reactions(state, recovered, motions, index),
         load=_resultant(motions.T @ loads),
         total=_resultant(motions.T @ brought),
         **_balance(state, motions, brought, loads),
@@ -278,15 +278,26 @@ def _twist(moments: Floats, tangents: Floats) -> Floats:
 
 
 def _point_reactions(
-    state: StaticState, motions: Floats, index: int
+    state: StaticState,
+    recovered: SmoothedMoments | RawMoments,
+    motions: Floats,
+    index: int,
 ) -> tuple[PointReaction, ...]:
-    """Reactions of held marks that lie on no held line."""
+    """Reactions of held marks that lie on no held line.
+
+    Less what a held round edge opposite brings to the vertex.
+    """
     mesh, numbering = state.mesh, state.constraints.numbering
     found = []
     for name, vertex in _point_supports(state):
         support = state.plate.support(name)
         own = int(numbering.at_vertices(np.array(vertex))[0])
         brought = float(state.support_forces[own, index])  # couples are a line's
+        if (
+            isinstance(recovered, RawMoments)
+            and state.constraints.numbering.arcs.held.any()
+        ):
+            brought -= float(recovered.traces.brought_to(own)[index])
         x, y = mesh.points[vertex]
         force = Value(
             value=brought, place=(float(x), float(y)), case=state.cases[index].name

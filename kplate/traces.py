@@ -140,6 +140,11 @@ class Traces:
             places[curved], lengths[curved] = arcs.at(shares)[0], arcs.lengths
         return places, lengths
 
+    def brought_to(self, unknown: int) -> Floats:
+        """What v_n and m_nn along held edges do to one unknown, (c,)."""
+        brought: Floats = self.nodal[self.unknowns == unknown].sum(axis=0)
+        return brought
+
     def line_reaction(self, edges: Ints, shares: Floats) -> Floats:
         """v_n in N/m at shares (q,) of the lengths of edges (k,), (k, q, c)."""
         basis = hermite.basis(self.shears.shape[1] // 2, halfway=False)
@@ -232,7 +237,10 @@ def solve_traces(state: StaticState, carrying: Ints) -> Traces:
     couple_work = on_slope.swapaxes(1, 2) @ (
         by_length * hermite.products(jets - 1, halfway=True)
     )
-    _round_work(state, held, shear_work, couple_work)
+    if held.curvatures.any():
+        unknowns, shear_work, couple_work = _round_work(
+            state, held, (unknowns, shear_work, couple_work)
+        )
     shear_map, couple_map = _maps(held, lengths, jets)
     vertices, sizes = _ends(state, held, lengths, carrying)
     count = shear_map[0].max(initial=-1) + 1
@@ -262,19 +270,23 @@ def solve_traces(state: StaticState, carrying: Ints) -> Traces:
         nodal=shear_work @ shears + couple_work @ couples,
         vertices=vertices,
         forces=sizes[:, None] * found[len(found) - len(vertices) :],
-        left=_left(state, held, A @ found),
+        left=_left(state, held, unknowns, A @ found),
     )
 
 
 def _round_work(
-    state: StaticState, held: HeldEdges, shear_work: Floats, couple_work: Floats
-) -> None:
-    """Work along round edges, in place: there w is no polynomial of the length."""
+    state: StaticState, held: HeldEdges, straight: tuple[Ints, Floats, Floats]
+) -> tuple[Ints, Floats, Floats]:
+    """The same along round edges too: there w is no polynomial of the length.
+
+    It is not that of the edge's own unknowns alone either, so that each edge gets the
+    others of its triangle; along straight ones they do no work.
+    """
     numbering, mesh = state.constraints.numbering, state.mesh
-    curved = np.flatnonzero(held.curvatures)
-    if not curved.size:
-        return
+    unknowns, shear_work, couple_work = straight
+    m, count = unknowns.shape
     p, jets = numbering.per_vertex, shear_work.shape[2] // 2
+    curved = np.flatnonzero(held.curvatures)
     triangles = mesh.triangles_at(held.edges[curved])
     arcs = numbering.arcs.unheld().among(triangles)
     shares, weights = gauss(_POINTS)
@@ -282,37 +294,48 @@ def _round_work(
     rows = state.element.evaluate(arcs.vertices, points, arcs)
     _, normal = arcs.frames(shares)
     slope = np.einsum("mqc,mqcd->mqd", normal, rows[:, :, 1:])
-    columns = np.concatenate(
-        [
-            p * arcs.order[:, 1:2] + np.arange(p),
-            p * arcs.order[:, 2:] + np.arange(p),
-            3 * p + arcs.edges[:, None],
-        ],
-        axis=1,
-    )[:, None]
+    found = np.repeat(unknowns[:, :1], 3 * p + 3, axis=1)
+    found[:, :count] = unknowns
+    found[curved] = numbering.table[triangles]
+    works = []
     for work, values, basis in (
         (shear_work, rows[:, :, 0], hermite.basis(jets, halfway=False)),
         (couple_work, slope, hermite.basis(jets - 1, halfway=True)),
     ):
-        own = np.take_along_axis(values, columns, axis=2)
         along = hermite.values(basis, shares) * weights[:, None]
-        work[curved] = arcs.lengths[:, None, None] * (own.swapaxes(1, 2) @ along)
+        own = np.zeros((m, 3 * p + 3, work.shape[2]))
+        own[:, :count] = work
+        own[curved] = arcs.lengths[:, None, None] * (values.swapaxes(1, 2) @ along)
+        works.append(own)
+    return found, works[0], works[1]
 
 
-def _left(state: StaticState, held: HeldEdges, brought: Floats) -> Floats:
+def _left(
+    state: StaticState, held: HeldEdges, unknowns: Ints, brought: Floats
+) -> Floats:
     """Work on w = 1, x and y of what edges do not bring yet, (m, 3, c).
 
-    It is what free unknowns of the triangles at held round edges get.
+    It is what free unknowns of the triangles at held round edges get, in even shares of
+    the edges that have them. What point supports bring is theirs.
     """
-    numbering, mesh = state.constraints.numbering, state.mesh
-    left = np.zeros((len(held.edges), 3, brought.shape[1]))
-    curved = np.flatnonzero(held.curvatures)
-    if curved.size:
-        table = numbering.table[mesh.triangles_at(held.edges[curved])]
-        shared = np.bincount(table.ravel(), minlength=numbering.count)[table]
-        rest = (state.support_forces - brought)[table] / shared[..., None]
-        motions = rigid_motions(numbering)[table]
-        left[curved] = np.einsum("mda,mdc->mac", motions, rest)
+    m, numbering = len(held.edges), state.constraints.numbering
+    left = np.zeros((m, 3, brought.shape[1]))
+    if not held.curvatures.any():
+        return left
+    rest = state.support_forces - brought
+    marks = np.setdiff1d(state.mesh.mark_vertices, held.edges)
+    rest[numbering.at_vertices(marks)[:, 0]] = 0.0
+    number = np.repeat(np.arange(m), unknowns.shape[1])
+    has = sp.coo_array(
+        (np.ones(unknowns.size), (number, unknowns.ravel())),
+        shape=(m, numbering.count),
+    ).tocsr()
+    has.data[:] = 1.0
+    shared = np.maximum(has.sum(axis=0), 1.0)
+    motions = rigid_motions(numbering)
+    for a in range(3):
+        own = has @ ((motions[:, a] / shared)[:, None] * rest)
+        left[:, a] = np.asarray(own)
     return left
 
 
