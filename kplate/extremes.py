@@ -183,7 +183,9 @@ def stress_range(
         close = close[ranges[close] >= (1.0 - _CLOSE) * ranges[close[0]]]
         fine = np.unique(holders[close][:_MOST])
         corners = mesh.points[mesh.triangles[fine]]
-        inner = (Lattice.of(_FINE).barycentrics @ corners).reshape(-1, 2)
+        arcs = solution.state.constraints.numbering.arcs.among(fine)
+        lattice = arcs.bent(Lattice.of(_FINE).barycentrics, len(fine))
+        inner = (lattice @ corners).reshape(-1, 2)
         inner = inner[outside(inner, discs, 1.0)]
         if len(inner):
             parts.append(_sampled(solution, inner, names))
