@@ -359,6 +359,11 @@ def _add_point(
         triangle, barycentrics = mesh.locate([load.at])
     except InputError as error:
         raise InputError(f"{what}: {error}") from error
+    if not mesh.covers([load.at])[0]:
+        raise InputError(
+            f"{what}: point ({load.at[0]:.6g}, {load.at[1]:.6g}) m is not on the "
+            "plate; it lies in a hole."
+        )
     rows = element.evaluate(
         mesh.points[mesh.triangles[triangle]],
         barycentrics[:, None],
