@@ -68,10 +68,12 @@ def annulus(
     supports: tuple[str, str],
     *,
     pressure: float = 1.0,
+    forces: tuple[float, float] = (0.0, 0.0),
+    moments: tuple[float, float] = (0.0, 0.0),
     nu: float = 0.3,
     rigidity: float = 1.0,
 ) -> RadialState:
-    """Ring plate under an even pressure, closed form.
+    """Ring plate under an even pressure, forces and moments on its rims, closed form.
 
     Parameters
     ----------
@@ -81,6 +83,8 @@ def annulus(
         Inner and outer radius in m.
     supports : (str, str)
         Of the inner and the outer rim: "clamped", "simply supported" or "free".
+    forces, moments : (float, float)
+        On the inner and the outer rim, in N/m up, and in N as m_rr; where they work.
 
     Returns
     -------
@@ -91,8 +95,15 @@ def annulus(
     rows = np.concatenate(
         [_radial_conditions(rims, s, nu)[:, :, k] for k, s in enumerate(supports)]
     )
+    given = [0.0] * 4
+    for k, support in enumerate(supports):
+        first = 2 * k
+        if support == FREE:  # (lap w)' is -q_r; the inner rim's own shear is -q_r too
+            given[first : first + 2] = moments[k], forces[k] * (1.0 - 2.0 * k)
+        elif support == SIMPLY_SUPPORTED:
+            given[first + 1] = moments[k]
     c = np.append(np.zeros(4), pressure / 64)
-    c[:4] = np.linalg.solve(rows[:, :4], -rows @ c)
+    c[:4] = np.linalg.solve(rows[:, :4], given - rows @ c)
     return _radial_state(r, c, nu, rigidity)
 
 
