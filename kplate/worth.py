@@ -8,9 +8,21 @@ from collections.abc import Sequence
 
 import numpy as np
 
+from kplate import cutting
 from kplate.boundary import seam_tangents, side_tangents
 from kplate.elements.arcs import Arcs, no_arcs
-from kplate.loads import Case, LineForce, Load, PointForce, Pressure, PressureField
+from kplate.loading import depth_at
+from kplate.loads import (
+    Case,
+    DiscPatch,
+    Hydrostatic,
+    LineForce,
+    Load,
+    PointForce,
+    Pressure,
+    PressureField,
+    RectanglePatch,
+)
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
 from kplate.polygon import SNAP
@@ -18,6 +30,7 @@ from kplate.shapes import Ellipse
 from kplate.unbalanced import unbalanced
 from kplate.values import Kind
 
+ALONG = 65  # places along an arc at which a load is looked at
 # Units in the last place by which the ends of an edge may be off.
 ENDS = 8.0 * float(np.finfo(float).eps)
 BENT = 1e-9  # tangents that differ by more are not those of the edges
@@ -129,6 +142,27 @@ def misplaced(plate: Plate, mesh: Mesh, loads: Sequence[Load]) -> str:
 def _cut(mesh: Mesh, loads: Sequence[Load], arcs: Arcs) -> str:
     """A load whose edge passes through triangles with a round edge."""
     for load in loads:
-        if len(arcs) and unbalanced(mesh, load)[arcs.rows].any():
+        if len(arcs) and (
+            unbalanced(mesh, load)[arcs.rows].any() or _at_bulges(load, arcs)
+        ):
             return "a load is not linear on triangles at a round side"
     return ""
+
+
+def _at_bulges(load: Load, arcs: Arcs) -> bool:
+    """Whether the edge of a load passes between arcs and their chords."""
+    along, _, _ = arcs.at(np.linspace(0.0, 1.0, ALONG))
+    ends = along[:, 1:-1], along[:, 2:]
+    first = np.broadcast_to(along[:, :1], ends[0].shape)
+    bulges = np.stack([first, *ends], axis=2)[arcs.turn > 0.0].reshape(-1, 3, 2)
+    match load:
+        case Hydrostatic():
+            depth = depth_at(load, along)
+            return bool(((depth.min(axis=1) < 0.0) & (depth.max(axis=1) > 0.0)).any())
+        case RectanglePatch():
+            groups = cutting.inside_polygon(bulges, load.corners)
+        case DiscPatch():
+            groups = cutting.inside_disc(bulges, load.centre, load.radius)
+        case _:
+            return False
+    return any(len(parts.triangles) > 0 for parts in groups)
