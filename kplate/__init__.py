@@ -24,6 +24,7 @@ from kplate.check import Checked, check
 from kplate.choosing import Sized, choose_thickness
 from kplate.combinations import Combination, preset_combinations
 from kplate.combining import combine
+from kplate.comparing import Comparison, compare
 from kplate.envelope import Envelope
 from kplate.errors import InputError, KplateError, KplateWarning, MeshError, SolveError
 from kplate.goals import (
@@ -38,6 +39,8 @@ from kplate.goals import (
     Shear,
     Slope,
 )
+from kplate.independent import Independent, independent
+from kplate.influence import InfluenceSurface, influence
 from kplate.judging import judge
 from kplate.limits import (
     DeflectionLimit,
@@ -80,6 +83,7 @@ from kplate.panel import Panel, read_panel
 from kplate.plate import Plate, Section
 from kplate.polygon import Polygon
 from kplate.recovery import principal_moments
+from kplate.roaming import Roamed, Roaming, roam
 from kplate.sensitivity import Parameter, Sensitivity, sensitivities
 from kplate.shapes import Circle, Ellipse, Rectangle, Slot
 from kplate.sizing import Size, Sizing, Stock, size
@@ -105,6 +109,7 @@ __all__ = [
     "Circle",
     "ClampingMoment",
     "Combination",
+    "Comparison",
     "Deflection",
     "DeflectionLimit",
     "DiscPatch",
@@ -113,6 +118,8 @@ __all__ = [
     "Envelope",
     "Goal",
     "Hydrostatic",
+    "Independent",
+    "InfluenceSurface",
     "InputError",
     "Isotropic",
     "Judgement",
@@ -138,6 +145,8 @@ __all__ = [
     "Rectangle",
     "RectanglePatch",
     "Resultant",
+    "Roamed",
+    "Roaming",
     "Section",
     "SelfWeight",
     "Sensitivity",
@@ -160,11 +169,15 @@ __all__ = [
     "check",
     "choose_thickness",
     "combine",
+    "compare",
     "design_moments",
+    "independent",
+    "influence",
     "judge",
     "preset_combinations",
     "principal_moments",
     "read_panel",
+    "roam",
     "sensitivities",
     "size",
     "solution_record",

@@ -26,13 +26,23 @@ from kplate.loads import (
 from kplate.outline import Outline
 from kplate.plate import Plate
 from kplate.quantities import positive, quantity, two_lengths
+from kplate.roaming import Roaming
 
 # What each table may hold, each field with a value as it is written.
 CASE = {
     "name": '"wheel"',
     "loads": '[{ pressure = "5 kPa down" }]',
     "reverses": '"yes"',
+    "roaming": '{ force = "1.5 kN down", over = "200 mm x 200 mm", step = "100 mm" }',
 }
+ROAMING = {
+    "force": '"1.5 kN down"',
+    "over": '"200 mm x 200 mm"',
+    "angle": '"30 deg"',
+    "on": '"panel"',
+    "step": '"100 mm"',
+}
+PANEL = "panel"  # what a patch roams on where that is no zone
 GRAVITY = {"gravity": '"9.81 m/s^2"'}
 AT = {"at": '["400 mm", "300 mm"]'}
 # The field that leads tells the kind.
@@ -67,25 +77,68 @@ LIFTS = {"+x": (0.0, -1.0), "-x": (0.0, 1.0), "+y": (1.0, 0.0), "-y": (-1.0, 0.0
 STRETCHES = {"bottom": 1.0, "top": -1.0}
 
 
-def read_cases(tables: Sequence[Any], plate: Plate) -> tuple[Case, ...]:
-    """Load cases of a plate, each name once."""
-    cases: dict[str, Case] = {}
+def read_cases(
+    tables: Sequence[Any], plate: Plate
+) -> tuple[tuple[Case, ...], tuple[Roaming, ...]]:
+    """Load cases of a plate, each name once, and those with a patch that roams."""
+    cases: dict[str, Case | Roaming] = {}
     for i, table in enumerate(tables, 1):
         where = numbered("[[case]]", i, table)
         fields = Fields(where=where, table=table, examples=CASE)
         name = fields.word("name")
         if name in cases:
             raise InputError(f"{where}: another case has this name; give each its own.")
-        stated = [item for _, item in fields.items("loads")]
+        roams = "roaming" in fields
+        stated = []
+        if "loads" in fields or not roams:
+            stated = [item for _, item in fields.items("loads")]
         loads = [
             _load(f"{where}, load {j}", item, plate) for j, item in enumerate(stated, 1)
         ]
         reverses = False
         if "reverses" in fields:
             reverses = fields.choice("reverses", ("yes", "no")) == "yes"
+        if roams and reverses:
+            raise fields.refuse(
+                "reverses", "a patch that roams acts one way; state a second case."
+            )
+        if roams:
+            cases[name] = _roaming(name, fields, loads, plate.outline)
+            continue
         with within(where):
             cases[name] = Case(name=name, loads=loads, reverses=reverses)
-    return tuple(cases.values())
+    return (
+        tuple(case for case in cases.values() if isinstance(case, Case)),
+        tuple(case for case in cases.values() if isinstance(case, Roaming)),
+    )
+
+
+def _roaming(
+    name: str, case: Fields, loads: Sequence[Load], outline: Outline
+) -> Roaming:
+    """Read a patch that roams over the panel or a zone."""
+    fields = Fields(
+        where=f"{case.where} roaming", table=case.value("roaming"), examples=ROAMING
+    )
+    force, lengths = fields.directed("force", "force"), _patch(fields)
+    zone = None
+    if "on" in fields and fields.word("on") != PANEL:
+        zone = named(fields, "on", (PANEL, *outline.zone_names), "zone")
+    patch: RectanglePatch | DiscPatch
+    if len(lengths) == 2:
+        turn = fields.angle("angle")
+        patch = RectanglePatch(force=force, centre=(0.0, 0.0), size=lengths, angle=turn)
+    elif "angle" in fields:
+        raise fields.refuse("angle", "only a rectangle can be turned; take it out.")
+    else:
+        patch = DiscPatch(force=force, centre=(0.0, 0.0), radius=0.5 * lengths[0])
+    return Roaming(
+        name=name,
+        patch=patch,
+        step=fields.positive("step", "length"),
+        zone=zone,
+        loads=tuple(loads),
+    )
 
 
 def _load(where: str, table: Any, plate: Plate) -> Load:

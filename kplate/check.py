@@ -26,7 +26,11 @@ from kplate.goals import Peak
 from kplate.independent import Independent, independent
 from kplate.judging import Judged, judgements, to_judge
 from kplate.limits import (
+    DeflectionLimit,
+    Judgement,
     Outcome,
+    ReactionLimit,
+    StepLimit,
     StressLimit,
     Verdict,
     governing,
@@ -50,6 +54,7 @@ from kplate.output.tables import (
 )
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
+from kplate.placing import Placed, placed
 from kplate.solution import Solution
 from kplate.solve.static import Progress
 from kplate.supports import Support
@@ -82,6 +87,8 @@ class Checked:
         The judgement.
     validity : Validity
         Whether the theory holds.
+    placed : Placed
+        Where roaming patches were set down.
     independent : tuple
         Each case's name and what formulas say beside it.
     files : tuple of Path
@@ -94,6 +101,7 @@ class Checked:
     lines: tuple[Line, ...]
     verdict: Verdict
     validity: Validity
+    placed: Placed
     independent: tuple[tuple[str, tuple[Independent, ...]], ...] = ()
     files: tuple[Path, ...] = ()
 
@@ -148,7 +156,8 @@ def check(
     MeshError, SolveError
         If the panel cannot be meshed or solved.
     """
-    panel = read_panel(path)
+    where = placed(read_panel(path), progress=progress)
+    panel = where.panel
     goals = default_goals(panel.plate, *criteria(panel))
     goals += tuple(goal for ask in panel.asks for goal in ask.goals)
     if panel.design:
@@ -179,6 +188,7 @@ def check(
         lines=lines,
         verdict=verdict,
         validity=found,
+        placed=where,
         independent=tuple((c, independent(solution, case=c)) for c in solution.cases),
     )
     if out is None:
@@ -306,6 +316,7 @@ def _closing(checked: Checked) -> list[str]:
             f"supports {signed(reactions.total.force, panel)}, force and moments to "
             f"{max(reactions.imbalance, 1e-16):.0e}"
         )
+    lines += checked.placed.words
     for case, formulas in checked.independent:
         shown = [own.words(length, panel.units.deflection) for own in formulas]
         words = "; ".join(shown) or "no formula is near its plate and loads"
@@ -444,12 +455,28 @@ def _record(checked: Checked) -> dict[str, Any]:
                 "quantity": j.quantity,
                 "value": None if np.isnan(j.value.value) else j.value.value,
                 "limit": j.limit,
+                "unit": _si_unit(j),
                 "used": None if np.isnan(j.used) else j.used,
                 "outcome": j.outcome.name.lower().replace("_", " "),
             }
             for j in checked.verdict.judgements
         ],
     }
+    record["roaming"] = [
+        {
+            "case": own.roaming.name,
+            "places": len(own.places),
+            "step [m]": own.roaming.step,
+            "on": own.roaming.zone,
+            "solves": own.solves,
+            "governing": [
+                {"quantity": g.quantity, "place [m]": list(g.place)}
+                | {"value": None if np.isnan(g.value.value) else g.value.value}
+                for g in own.governing
+            ],
+        }
+        for own in checked.placed.roamed
+    ]
     record["independent"] = [
         asdict(own) | {"ratio": own.ratio, "agrees": own.agrees}
         for _, formulas in checked.independent
@@ -457,6 +484,16 @@ def _record(checked: Checked) -> dict[str, Any]:
         if own.value
     ]
     return record
+
+
+def _si_unit(judgement: Judgement) -> str:
+    """Unit of a limit in the record."""
+    match judgement.stated:
+        case DeflectionLimit() | StepLimit():
+            return "m"
+        case ReactionLimit(at=where):
+            return "N/m" if where == "sides" else "N"
+    return "Pa"
 
 
 def _thickness(panel: Panel) -> str:

@@ -79,6 +79,10 @@ def _parser() -> argparse.ArgumentParser:
     command = commands.add_parser("new", help="write a starter panel file")
     command.add_argument("file", type=Path, help="panel file to write")
     command.set_defaults(run=_new)
+    command = commands.add_parser("compare", help="what changed between two results")
+    command.add_argument("file", type=Path, metavar="OLD", help="record (.json)")
+    command.add_argument("new", type=Path, metavar="NEW", help="record (.json)")
+    command.set_defaults(run=_compare)
     command = commands.add_parser("view", help="show a result in a 3-D window")
     command.add_argument("file", type=Path, help="fields (.vtu) written by check")
     command.set_defaults(run=_view)
@@ -114,6 +118,14 @@ def _new(args: argparse.Namespace) -> int:
 
     _say(f"written: {new_panel(args.file)}; now run: kplate check {args.file}")
     return 0
+
+
+def _compare(args: argparse.Namespace) -> int:
+    from kplate.comparing import compare
+
+    comparison = compare(args.file, args.new)
+    _say(comparison.text)
+    return comparison.status
 
 
 def _view(args: argparse.Namespace) -> int:

@@ -58,6 +58,7 @@ Relation = Literal["same", "upper", "lower", "compares"]
 AGREES, SLIP = 0.02, 0.005
 ENOUGH = 2000  # pieces of triangles, for pressures
 DISCS = 200  # places tried for the disc inside
+WEAK = 10.0  # a lower bound exceeded by this factor says nothing and is left out
 MARGIN = 1e-3  # for what chords of arcs miss
 ROUND_OFF = 1e-9
 
@@ -173,7 +174,10 @@ def independent(solution: Solution, *, case: str) -> tuple[Independent, ...]:
     same = judge.same()
     if same is not None:
         return (same,)
-    found = [judge.upper(), judge.lower(), judge.compares()]
+    lower = judge.lower()
+    if lower is not None and lower.agrees and lower.ratio > WEAK:
+        lower = None
+    found = [judge.upper(), lower, judge.compares()]
     return tuple(own for own in found if own is not None)
 
 

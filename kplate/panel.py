@@ -28,6 +28,7 @@ from kplate.outline import Outline
 from kplate.outlines import read_outline
 from kplate.plate import Plate
 from kplate.quantities import share, unit
+from kplate.roaming import Roaming
 from kplate.statements import (
     read_material,
     read_supports,
@@ -78,7 +79,9 @@ class Panel:
     plate : Plate
         Outline, thickness, material and supports.
     cases : tuple of Case
-        The load cases, at least one, each name once.
+        The load cases, each name once.
+    roaming : tuple of Roaming
+        Cases with a patch that roams, which `kplate.placing` turns into load cases.
     combinations : tuple of Combination
         Factors on the cases; empty where each case is judged for itself.
     limits : tuple of Limit
@@ -115,6 +118,7 @@ class Panel:
     author: str
     plate: Plate
     cases: tuple[Case, ...]
+    roaming: tuple[Roaming, ...]
     combinations: tuple[Combination, ...]
     limits: tuple[Limit, ...]
     asks: tuple[Ask, ...]
@@ -162,7 +166,13 @@ def read_panel(path: Path) -> Panel:
     head = Fields(where="[panel]", table=sections["panel"], examples=PANEL)
     stated = read_outline(sections, path.parent)
     plate = _plate(head, sections, stated.outline)
-    cases = read_cases(sections["case"], plate)
+    cases, roaming = read_cases(sections["case"], plate)
+    if roaming and "combination" in sections:
+        raise InputError(
+            f"case {roaming[0].name!r} roams, and there are combinations: where it "
+            "governs would depend on them. State what acts at the same time as the "
+            "loads of that case, and take [[combination]] out."
+        )
     combinations = read_combinations(sections.get("combination", []), cases)
     limits, stock, stress = read_limits(sections.get("limits", {}), plate)
     with within("[limits]"):
@@ -174,6 +184,7 @@ def read_panel(path: Path) -> Panel:
         author=head.word("author", default=""),
         plate=plate,
         cases=cases,
+        roaming=roaming,
         combinations=combinations,
         limits=limits,
         asks=read_asks(sections.get("ask", []), plate.outline, stated.length),

@@ -93,3 +93,10 @@ def check_mark(name: str, place: tuple[float, float], plate: Any) -> None:
             f"mark {name!r} at {at(place)} is not on the plate; it lies outside the "
             "outline or in a hole."
         )
+
+
+def covers(region: Any, line: Any, slack: float) -> bool:
+    """Whether a region (grown) covers the polygon of a line (k, 2)."""
+    import shapely
+
+    return bool(region.buffer(slack).covers(shapely.Polygon(line)))

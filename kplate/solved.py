@@ -8,6 +8,7 @@ from numpy.typing import ArrayLike
 
 from kplate.arrays import Floats, Ints
 from kplate.boundary import rigid_motions
+from kplate.elements import ELEMENTS
 from kplate.errors import InputError
 from kplate.mesh import Mesh
 from kplate.plate import Plate
@@ -25,7 +26,7 @@ from kplate.singular import (
     excluded_places,
 )
 from kplate.solve.dual import DualState
-from kplate.solve.static import StaticState
+from kplate.solve.static import StaticState, StaticSystem
 from kplate.values import Face
 from kplate.woodarmer import design_moments
 
@@ -65,6 +66,13 @@ class Solved:
     def cases(self) -> tuple[str, ...]:
         """Names of the load cases."""
         return tuple(case.name for case in self.state.cases)
+
+    @cached_property
+    def system(self) -> StaticSystem:
+        """The plate's stiffness on its mesh, factored, to solve for more loads."""
+        own = self.state.element
+        name = next(name for name, element in ELEMENTS.items() if element is own)
+        return StaticSystem.of(self.plate, self.mesh, name)
 
     @cached_property
     def excluded(self) -> tuple[Excluded, ...]:

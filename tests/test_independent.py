@@ -159,7 +159,7 @@ def test_a_convex_polygon_held_all_round_is_bounded_by_its_rectangle():
     both = [Pressure(-1e3), PointForce(force=10.0, at=(0.3, 0.3))]
     up_and_down = by_relation(checks(polygon(points, held), both))
     assert "upper" not in up_and_down
-    assert up_and_down["lower"].quantity == "work"
+    assert {own.quantity for own in up_and_down.values()} <= {"work", "deflection"}
 
 
 @pytest.mark.parametrize("change", ["free side", "hole", "notch"])
@@ -179,7 +179,6 @@ def test_nothing_is_bounded_from_above_that_is_not_proven(change):
         plate = replace(plate, outline=plate.outline.cut(hole))
     found = bounds(plate, [Pressure(-1e3)])
     assert "upper" not in found
-    assert found["lower"].ratio > 1.0
     assert found["compares"].relation == "compares"
 
 
@@ -241,8 +240,20 @@ def test_bounds_hold_on_random_panels(held, shift, loads, thicker, post):
         zones={"pad": Section(thickness=thicker)},
     )
     solution = solve(plate, loads, triangles=150)
-    for own in independent(solution, case="load"):
-        assert own.agrees, own
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr("kplate.independent.WEAK", math.inf)  # weak bounds, too
+        for own in independent(solution, case="load"):
+            assert own.agrees, own
+
+
+def test_a_weak_bound_is_left_out():
+    """A long strip on its ends: the clamped disc inside is nothing to it."""
+    plate = polygon(
+        [(0, 0), (3, 0), (3, 0.5), (0, 0.5)], [FREE, CLAMPED, FREE, CLAMPED]
+    )
+    hole = Circle(centre=(1.5, 0.25), radius=0.1, name="pipe")
+    plate = replace(plate, outline=plate.outline.cut(hole))
+    assert [own.relation for own in checks(plate, [Pressure(-1e3)])] == ["compares"]
 
 
 def test_moments_and_nothing_have_no_formula():

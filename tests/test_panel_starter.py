@@ -15,6 +15,7 @@ def read(tmp_path):
 # A line of the starter that is commented out begins so.
 STATEMENT = r"^\s*# +(\[\[|[a-z_]+ = |\{)"
 ALONE = [
+    "roaming = {",
     *("material = {", "triangles", "element", "chords", "snap", "fillets", "reliefs"),
     *('parts = [{ side = "ladder", name = "hinge", from = "10', "expect"),
     *('parts = [{ side = "ladder", name = "hinge", from = [1100', "{ liquid"),

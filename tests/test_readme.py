@@ -66,7 +66,7 @@ def test_the_output_shown_is_what_is_printed():
 def test_every_command_is_in_the_table():
     with pytest.raises(SystemExit):
         main(["--help"])
-    for command in ("check", "new", "view"):
+    for command in ("check", "compare", "new", "view"):
         assert f"`kplate {command} " in README
 
 
