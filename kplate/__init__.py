@@ -77,6 +77,7 @@ from kplate.outline import Outline
 from kplate.output.history import write_history
 from kplate.output.picture import write_picture
 from kplate.output.record import solution_record, write_json, write_reactions
+from kplate.output.surface import write_influence
 from kplate.output.view import view
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
@@ -185,6 +186,7 @@ __all__ = [
     "validity",
     "view",
     "write_history",
+    "write_influence",
     "write_json",
     "write_picture",
     "write_reactions",

@@ -103,6 +103,7 @@ def test_heavy_libraries_stay_with_their_owners():
             "picture.py",
             "plan.py",
             "shape.py",
+            "surface.py",
         },
         "rich": {"tables.py"},
         "shapely": {
