@@ -11,6 +11,7 @@ from kplate.errors import InputError
 from kplate.limits import StressLimit
 from kplate.output.tables import columns
 from kplate.panel import Panel, read_panel
+from kplate.placing import Placed, placed
 from kplate.sensitivity import Sensitivity, sensitivities
 from kplate.sizing import Size, Sizing, Stock, size
 from kplate.solve.static import Progress
@@ -31,10 +32,13 @@ class Sized:
         What was read.
     sizing : Sizing
         The thicknesses.
+    placed : Placed
+        Where roaming patches were set down, sought at the thickness that is stated.
     """
 
     panel: Panel
     sizing: Sizing
+    placed: Placed
 
     @property
     def status(self) -> int:
@@ -47,7 +51,13 @@ class Sized:
         parts = [
             heading(self.panel),
             [_table(self)],
-            [*_decision(self), *_changes(self), *_notes(self), CAUTION],
+            [
+                *_decision(self),
+                *_changes(self),
+                *_notes(self),
+                *(f"{line}, at the thickness stated" for line in self.placed.words),
+                CAUTION,
+            ],
         ]
         return "\n\n".join("\n".join(part) for part in parts)
 
@@ -73,12 +83,14 @@ def choose_thickness(path: Path, *, progress: Progress | None = None) -> Sized:
     MeshError, SolveError
         If the panel cannot be meshed or solved.
     """
-    panel = read_panel(path)
-    if not panel.stock:
+    stated = read_panel(path)
+    if not stated.stock:
         raise InputError(
             "[limits] stock is missing: there are no thicknesses to choose from; add "
             'stock = ["6 mm", "8 mm", "10 mm"].'
         )
+    where = placed(stated, progress=progress)
+    panel = where.panel
     sizing = size(
         panel.plate,
         panel.cases,
@@ -95,7 +107,7 @@ def choose_thickness(path: Path, *, progress: Progress | None = None) -> Sized:
         held_in_plane=panel.held_in_plane,
         progress=progress,
     )
-    return Sized(panel=panel, sizing=sizing)
+    return Sized(panel=panel, sizing=sizing, placed=where)
 
 
 def _table(sized: Sized) -> str:

@@ -6,6 +6,7 @@ import shapely
 from plates import rectangle
 
 from kplate.check import check
+from kplate.choosing import choose_thickness
 from kplate.errors import InputError
 from kplate.extremes import corner_extreme
 from kplate.loads import Case, DiscPatch, Pressure, RectanglePatch
@@ -241,6 +242,34 @@ def test_a_panel_is_checked_where_its_wheel_governs(tmp_path):
     )
     assert "The worst of the places tried, no bound over all of them" in checked.text
     assert '"quantity": "hold-down"' in (tmp_path / "out" / "floor.json").read_text()
+
+
+def test_a_thickness_is_chosen_where_the_wheel_governs(tmp_path):
+    """Deflections of 3.49 and 2.86 mm with the wheel central at 5 mm and less."""
+    path = panel_file(tmp_path)
+    text = path.read_text("utf-8").replace(
+        'hold_down = "300 N"',
+        'deflection = { at_most = "3 mm" }\nstock = ["4 mm", "5 mm", "6 mm"]',
+    )
+    path.write_text(text, "utf-8")
+    sized = choose_thickness(path)
+    assert sized.sizing.thinnest.nominal == pytest.approx(0.005)
+    assert "roaming barrow: 12 places" in sized.text
+    assert "at the thickness stated" in sized.text
+
+
+def test_a_roaming_case_and_combinations_do_not_mix(tmp_path):
+    more = """
+[[combination]]
+name = "all"
+purpose = "strength"
+factors = { barrow = 1.5 }
+"""
+    with pytest.raises(InputError, match="case 'barrow' roams, and there are combin"):
+        read_panel(panel_file(tmp_path, more=more))
+    both = ROAMING + ' }\nreverses = "yes"\nloads = [{ self_weight = "down" }]#'
+    with pytest.raises(InputError, match="a patch that roams acts one way"):
+        read_panel(panel_file(tmp_path, both))
 
 
 def test_a_wheel_may_roam_over_a_zone_with_loads_beside_it(tmp_path):
