@@ -87,7 +87,7 @@ class Independent:
         The deflection at the place where the plate's peaks, the mean one under the
         loads (both in m), or the work of the loads (J) where these act both ways.
     found, value : float
-        Magnitudes of what kplate found and of what the formula says.
+        Magnitudes of what kplate found and of what the formula says, in m or J.
     left_out : str
         What of the plate a comparison leaves out.
     """

@@ -66,6 +66,11 @@ class Roaming:
         Where the whole of it stays; the plate if left out.
     loads : tuple of Load, optional
         What acts at the same time.
+
+    Raises
+    ------
+    InputError
+        If the step is not a positive number.
     """
 
     name: str
