@@ -23,6 +23,7 @@ from benchmarks import (
     records,
     report,
     timing,
+    window,
 )
 from kplate.check import version
 from kplate.elements import ELEMENTS
@@ -35,6 +36,7 @@ COMMANDS = {
     "page": "all of it as one HTML file: every case, convergence, times",
     "elements": "unknowns and seconds to an error, element by element",
     "timing": "times of each stage, memory and growth, as ratios of one run",
+    "window": "time and memory of the 3-D window to 500,000 triangles",
 }
 # Numbers whose convergence the page shows: a clamped edge moment, a corner force, and
 # deflections of plates with obtuse and re-entrant corners.
@@ -169,6 +171,10 @@ def _command(name: str, words: Sequence[str]) -> int:
         return _page(parser, words)
     if name == "timing":
         return _timing(parser, words)
+    if name == "window":
+        parser.add_argument("file", nargs="?", type=Path, help="measure this one, JSON")
+        window.main(parser.parse_args(words).file)
+        return 0
     parser.parse_args(words)
     elements.main()
     return 0

@@ -74,11 +74,15 @@ from kplate.materials import (
 )
 from kplate.mesh import Mesh
 from kplate.outline import Outline
+from kplate.output.animate import write_animation
+from kplate.output.forcerows import write_reactions
 from kplate.output.history import write_history
+from kplate.output.notebook import attach as _attach
 from kplate.output.picture import write_picture
-from kplate.output.record import solution_record, write_json, write_reactions
+from kplate.output.plot import plot
+from kplate.output.record import solution_record, write_json
 from kplate.output.surface import write_influence
-from kplate.output.view import view
+from kplate.output.view import view, write_view
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
 from kplate.plate import Plate, Section
@@ -175,6 +179,7 @@ __all__ = [
     "independent",
     "influence",
     "judge",
+    "plot",
     "preset_combinations",
     "principal_moments",
     "read_panel",
@@ -185,10 +190,14 @@ __all__ = [
     "solve",
     "validity",
     "view",
+    "write_animation",
     "write_history",
     "write_influence",
     "write_json",
     "write_picture",
     "write_reactions",
+    "write_view",
     "write_vtk",
 ]
+
+_attach()  # displays of a notebook

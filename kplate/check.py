@@ -1,5 +1,6 @@
 """One public function for each command: solve, judge, write."""
 
+import html
 from dataclasses import asdict, dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -37,12 +38,12 @@ from kplate.limits import (
 )
 from kplate.limitwords import combination_lines, limit_words, stated_lines
 from kplate.output.asked import write_asked, write_line_plot
+from kplate.output.forcerows import write_reactions
 from kplate.output.picture import write_picture
 from kplate.output.record import (
     case_record,
     solution_record,
     write_json,
-    write_reactions,
 )
 from kplate.output.tables import (
     Line,
@@ -109,6 +110,10 @@ class Checked:
     def status(self) -> int:
         """Exit status: 0 for every form of pass, 1 for fails and not proven."""
         return 0 if self.verdict.outcome is Outcome.PASSES else 1
+
+    def _repr_html_(self) -> str:
+        """Show a notebook what the command prints."""
+        return f"<pre>{html.escape(self.text)}</pre>"
 
     @property
     def text(self) -> str:

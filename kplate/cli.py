@@ -85,6 +85,14 @@ def _parser() -> argparse.ArgumentParser:
     command.set_defaults(run=_compare)
     command = commands.add_parser("view", help="show a result in a 3-D window")
     command.add_argument("file", type=Path, help="fields (.vtu) written by check")
+    command.add_argument(
+        "--picture",
+        type=Path,
+        metavar="FILE",
+        help="write a picture (.png, .svg, .pdf) instead; needs no display",
+    )
+    command.add_argument("--quantity", help='of the picture, such as "von Mises"')
+    command.add_argument("--case", help="of the picture; the first if left out")
     command.set_defaults(run=_view)
     return parser
 
@@ -129,8 +137,18 @@ def _compare(args: argparse.Namespace) -> int:
 
 
 def _view(args: argparse.Namespace) -> int:
-    from kplate.output.view import view
+    from kplate.output.view import view, write_view
 
+    if args.picture is not None:
+        quantity = args.quantity or "deflection"
+        path = write_view(args.file, args.picture, quantity=quantity, case=args.case)
+        _say(f"written: {path}")
+        return 0
+    if args.quantity is not None or args.case is not None:
+        raise InputError(
+            "--quantity and --case are of a picture; add --picture FILE, or choose "
+            "them in the window."
+        )
     # The window's loop does not look at Python's own handler.
     signal.signal(signal.SIGINT, signal.SIG_DFL)
     view(args.file)

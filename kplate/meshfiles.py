@@ -55,7 +55,7 @@ class Fields:
     points: Floats
     triangles: Ints
     lines: Ints
-    point_data: Mapping[str, Floats]
+    point_data: Mapping[str, NDArray[Any]]
     cell_data: Mapping[str, CellValues]
 
 

@@ -1,15 +1,13 @@
-"""A solution as plain data: a JSON record, and the reactions as a CSV table.
+"""A solution as plain data: a JSON record.
 
 Everything is in SI units, which stand in brackets in the keys and headings, and in the
 signs of the package: deflections and forces positive up. What has no finite value is
-``null`` in the record, with a reason, and blank in the table.
+``null``, with a reason.
 """
 
-import csv
 import json
-import math
 import re
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping
 from dataclasses import fields
 from pathlib import Path
 from typing import Any
@@ -34,8 +32,9 @@ from kplate.loads import (
 )
 from kplate.materials import Isotropic
 from kplate.outline import Outline
+from kplate.output.forcerows import number, numbers, resultant
 from kplate.output.vtk import array_name
-from kplate.reactions import CornerForce, Reactions, Resultant, SideReaction
+from kplate.reactions import Reactions
 from kplate.shapes import Circle, ClosedLine
 from kplate.solution import Solution
 from kplate.values import Value
@@ -74,19 +73,6 @@ LOADS: dict[type, tuple[str, dict[str, str]]] = {
 }
 # A list of numbers as `json` breaks it into lines: no text holds a bare line break.
 _NUMBERS = re.compile(r"\[\n[^\[\]{}\"]*\]")
-COLUMNS = (
-    "case",
-    "kind",
-    "side",
-    "x [m]",
-    "y [m]",
-    "distance [m]",
-    "line reaction [N/m]",
-    "line moment [N]",
-    "force [N]",
-    "moment_x [N m]",
-    "moment_y [N m]",
-)
 
 
 def solution_record(
@@ -114,9 +100,11 @@ def solution_record(
         in it, and "field_names", by their array in it.
     """
     mesh, state = solution.mesh, solution.state
+    shown = shown_record(solution)
+    reactions = {found["case"]: found for found in shown["results"]}
     return {
         "kplate": version,
-        "statement": _statement(solution),
+        "statement": shown["statement"],
         "mesh": {
             "triangles": len(mesh.triangles),
             "points": len(mesh.points),
@@ -125,20 +113,12 @@ def solution_record(
             "unknowns": state.constraints.numbering.count,
             "element": state.element.name,
         },
-        "results": [_case_results(solution, case, design) for case in solution.cases],
-        "excluded": [
-            {
-                "place [m]": _numbers(excluded.place),
-                "radius [m]": _number(excluded.radius),
-                "reason": excluded.reason,
-                "case": excluded.case or None,
-            }
-            for excluded in solution.excluded
+        "results": [
+            _case_results(solution, case, design) | reactions[case]
+            for case in solution.cases
         ],
-        "asked": [
-            {"goal": type(goal).__name__, **_goal(goal), "case": case, **_value(value)}
-            for (goal, case), value in solution.known.items()
-        ],
+        "excluded": shown["excluded"],
+        "asked": shown["asked"],
         "tolerance": solution.tolerance,
         "history": [
             {
@@ -149,12 +129,37 @@ def solution_record(
             }
             for step in solution.history
         ],
-        "side_names": list(mesh.side_names),
+        "side_names": shown["side_names"],
         "field_names": {
             array_name(solution, case, field): {"case": case, "field": field}
             for case in solution.cases
             for field in solution.point_fields(case=case, design=design)
         },
+    }
+
+
+def shown_record(solution: Solution) -> dict[str, Any]:
+    """What a picture needs of a record: all but what takes long to find."""
+    return {
+        "statement": _statement(solution),
+        "results": [
+            {"case": case, "reactions": _reactions(solution.reactions(case=case))}
+            for case in solution.cases
+        ],
+        "excluded": [
+            {
+                "place [m]": numbers(excluded.place),
+                "radius [m]": number(excluded.radius),
+                "reason": excluded.reason,
+                "case": excluded.case or None,
+            }
+            for excluded in solution.excluded
+        ],
+        "asked": [
+            {"goal": type(goal).__name__, **_goal(goal), "case": case, **_value(value)}
+            for (goal, case), value in solution.known.items()
+        ],
+        "side_names": list(solution.mesh.side_names),
     }
 
 
@@ -196,44 +201,6 @@ def write_json(record: Mapping[str, Any], path: Path) -> Path:
     return path
 
 
-def write_reactions(solution: Solution, path: Path) -> Path:
-    """Write the support forces of all cases as a CSV table.
-
-    One row for each station of a supported side or seam ("station": line reaction and
-    clamping moment), each side or seam in all without its corners ("side"), each corner
-    ("corner"), each held mark ("point"), the loads ("loads"), and the sum of it all
-    ("sum": nothing but round-off). The moments of forces are about the axes through the
-    origin.
-
-    Parameters
-    ----------
-    solution : Solution
-        What to write.
-    path : Path
-        The file, in UTF-8; one that exists is replaced.
-
-    Returns
-    -------
-    Path
-        The file.
-
-    Raises
-    ------
-    InputError
-        If the file cannot be written.
-    """
-    path = Path(path)
-    with (
-        replacing(path) as temporary,
-        temporary.open("w", encoding="utf-8", newline="") as file,
-    ):
-        table = csv.DictWriter(file, COLUMNS, restval="", lineterminator="\n")
-        table.writeheader()
-        for case in solution.cases:
-            table.writerows(_rows(solution.reactions(case=case)))
-    return path
-
-
 def _statement(solution: Solution) -> dict[str, Any]:
     """The plate and its loads as stated."""
     plate = solution.plate
@@ -242,16 +209,16 @@ def _statement(solution: Solution) -> dict[str, Any]:
         "outline": {
             "rim": _line(outline.rim),
             "holes": [_line(hole) for hole in outline.holes],
-            "area [m2]": _number(outline.area),
+            "area [m2]": number(outline.area),
             **_inside(outline),
             "notes": list(outline.notes),
         },
-        "thickness [m]": _number(plate.thickness),
+        "thickness [m]": number(plate.thickness),
         "material": _material(plate.material),
         "zones": [
             {
                 "name": name,
-                "thickness [m]": _number(thickness),
+                "thickness [m]": number(thickness),
                 "material": _material(material),
             }
             for name, (thickness, material) in zip(
@@ -262,8 +229,8 @@ def _statement(solution: Solution) -> dict[str, Any]:
             name: {"name": plate.support(name).name, "words": plate.support(name).words}
             for name in outline.names
         },
-        "bend_turn [rad]": _number(plate.bend_turn),
-        "mass [kg]": None if plate.mass is None else _number(plate.mass),
+        "bend_turn [rad]": number(plate.bend_turn),
+        "mass [kg]": None if plate.mass is None else number(plate.mass),
         "cases": [case_record(case) for case in solution.state.cases],
     }
 
@@ -273,16 +240,16 @@ def _inside(outline: Outline) -> dict[str, Any]:
     return {
         "zones": [
             {"name": zone.name, **_line(zone.shape)}
-            | {"area [m2]": _number(outline.zone_area(zone.name))}
+            | {"area [m2]": number(outline.zone_area(zone.name))}
             for zone in outline.zones
         ],
         "seams": [
-            {"name": seam.name, "points [m]": [_numbers(p) for p in seam.points]}
+            {"name": seam.name, "points [m]": [numbers(p) for p in seam.points]}
             | _bulges(seam.bulges)
             for seam in outline.seams
         ],
         "marks": [
-            {"name": mark.name, "at [m]": _numbers(mark.at)} for mark in outline.marks
+            {"name": mark.name, "at [m]": numbers(mark.at)} for mark in outline.marks
         ],
     }
 
@@ -292,14 +259,14 @@ def _line(shape: ClosedLine) -> dict[str, Any]:
     if isinstance(shape, Circle):
         return {
             "shape": "circle",
-            "centre [m]": _numbers(shape.centre),
-            "radius [m]": _number(shape.radius),
+            "centre [m]": numbers(shape.centre),
+            "radius [m]": number(shape.radius),
             "sides": list(shape.sides),
         }
     line = shape.line
     return {
         "shape": type(shape).__name__.lower(),
-        "points [m]": [_numbers(point) for point in line.points],
+        "points [m]": [numbers(point) for point in line.points],
         "sides": list(line.sides),
         **_bulges(line.bulges),
     }
@@ -307,16 +274,16 @@ def _line(shape: ClosedLine) -> dict[str, Any]:
 
 def _bulges(bulges: Floats) -> dict[str, Any]:
     """Bulges of pieces, where not all are straight."""
-    return {"bulges": _numbers(bulges)} if (bulges != 0.0).any() else {}
+    return {"bulges": numbers(bulges)} if (bulges != 0.0).any() else {}
 
 
 def _material(material: Isotropic) -> dict[str, Any]:
     density = material.density
     return {
         "name": material.name,
-        "E [Pa]": _number(material.E),
-        "nu": _number(material.nu),
-        "density [kg/m3]": None if density is None else _number(density),
+        "E [Pa]": number(material.E),
+        "nu": number(material.nu),
+        "density [kg/m3]": None if density is None else number(density),
         "source": material.source,
     }
 
@@ -340,11 +307,11 @@ def _load(load: Load) -> dict[str, Any]:
         if callable(value):
             record[key] = _qualified_name(value)
         elif isinstance(value, tuple):
-            record[key] = _numbers(value)
+            record[key] = numbers(value)
         elif value is None or isinstance(value, str):
             record[key] = value
         else:
-            record[key] = _number(value)
+            record[key] = number(value)
     return record
 
 
@@ -363,20 +330,19 @@ def _case_results(solution: Solution, case: str, design: bool) -> dict[str, Any]
             f"{quantity} [{unit}]": _value(solution.peak(quantity, case=case))
             for quantity, unit in peaks.items()
         },
-        "strain energy [J]": _number(solution.strain_energy(case=case)),
-        "load work [J]": _number(solution.load_work(case=case)),
-        "reactions": _reactions(solution.reactions(case=case)),
+        "strain energy [J]": number(solution.strain_energy(case=case)),
+        "load work [J]": number(solution.load_work(case=case)),
     }
 
 
 def _value(value: Value) -> dict[str, Any]:
     """A number with its band, in the unit of the key it stands under."""
     record: dict[str, Any] = {
-        "value": _number(value.value),
+        "value": number(value.value),
         "kind": value.kind,
-        "lower": None if value.lower is None else _number(value.lower),
-        "upper": None if value.upper is None else _number(value.upper),
-        "place [m]": None if value.place is None else _numbers(value.place),
+        "lower": None if value.lower is None else number(value.lower),
+        "upper": None if value.upper is None else number(value.upper),
+        "place [m]": None if value.place is None else numbers(value.place),
         "face": value.face,
     }
     if value.reason:
@@ -387,7 +353,7 @@ def _value(value: Value) -> dict[str, Any]:
 def _goal(goal: Goal) -> dict[str, Any]:
     """What a goal is asked of: place, direction, name."""
     own = {field.name: getattr(goal, field.name) for field in fields(goal)}
-    return {k: _numbers(v) if isinstance(v, tuple) else v for k, v in own.items()}
+    return {k: numbers(v) if isinstance(v, tuple) else v for k, v in own.items()}
 
 
 def _reactions(reactions: Reactions) -> dict[str, Any]:
@@ -395,12 +361,12 @@ def _reactions(reactions: Reactions) -> dict[str, Any]:
     return {
         "sides": [
             {"side": side.side, "support": side.support.name}
-            | _resultant(side.resultant)
+            | resultant(side.resultant)
             | {
-                "stations [m]": [_numbers(place) for place in side.stations],
-                "distance [m]": _numbers(side.distance),
-                "line reaction [N/m]": _numbers(side.line_reaction),
-                "line moment [N]": _numbers(side.line_moment),
+                "stations [m]": [numbers(place) for place in side.stations],
+                "distance [m]": numbers(side.distance),
+                "line reaction [N/m]": numbers(side.line_reaction),
+                "line moment [N]": numbers(side.line_moment),
             }
             for side in reactions.sides
         ],
@@ -410,80 +376,11 @@ def _reactions(reactions: Reactions) -> dict[str, Any]:
         ],
         "points": [
             {"mark": point.mark, "support": point.support.name}
-            | {"place [m]": _numbers(point.force.place)}
-            | _resultant(point.resultant)
+            | {"place [m]": numbers(point.force.place)}
+            | resultant(point.resultant)
             for point in reactions.points
         ],
-        "loads": _resultant(reactions.load),
-        "supports": _resultant(reactions.total),
-        "imbalance": _number(reactions.imbalance),
+        "loads": resultant(reactions.load),
+        "supports": resultant(reactions.total),
+        "imbalance": number(reactions.imbalance),
     }
-
-
-def _resultant(resultant: Resultant) -> dict[str, float | None]:
-    return {
-        "force [N]": _number(resultant.force),
-        "moment_x [N m]": _number(resultant.moment_x),
-        "moment_y [N m]": _number(resultant.moment_y),
-    }
-
-
-def _rows(reactions: Reactions) -> Iterator[dict[str, Any]]:
-    """Rows of one case."""
-    total = reactions.load
-    row: dict[str, Any]
-    for side in reactions.sides:
-        yield from _stations(reactions.case, side)
-    for side in reactions.sides:
-        total += side.resultant
-        row = {"case": reactions.case, "kind": "side", "side": side.side}
-        yield row | _resultant(side.resultant)
-    for corner in reactions.corners:
-        x, y = _numbers(corner.corner.place)
-        row = {"case": reactions.case, "kind": "corner", "x [m]": x, "y [m]": y}
-        row["side"] = " / ".join(corner.corner.sides)
-        force = _corner_resultant(corner)
-        if force is not None:
-            total += force
-            row |= _resultant(force)
-        yield row
-    for point in reactions.points:
-        total += point.resultant
-        x, y = _numbers(point.force.place)
-        row = {"case": reactions.case, "kind": "point", "x [m]": x, "y [m]": y}
-        row["side"] = point.mark
-        yield row | _resultant(point.resultant)
-    yield {"case": reactions.case, "kind": "loads"} | _resultant(reactions.load)
-    yield {"case": reactions.case, "kind": "sum"} | _resultant(total)
-
-
-def _stations(case: str, side: SideReaction) -> Iterator[dict[str, Any]]:
-    """Rows of a side's stations."""
-    for (x, y), *numbers in zip(
-        side.stations,
-        side.distance,
-        side.line_reaction,
-        side.line_moment,
-        strict=True,
-    ):
-        values = (x, y, *numbers)
-        row = {"case": case, "kind": "station", "side": side.side}
-        yield row | dict(zip(COLUMNS[3:8], map(_number, values), strict=True))
-
-
-def _corner_resultant(corner: CornerForce) -> Resultant | None:
-    """A corner force with its moments; nothing where it has no finite value."""
-    force = corner.force.value
-    if not math.isfinite(force):
-        return None
-    x, y = corner.corner.place
-    return Resultant(force=force, moment_x=y * force, moment_y=-x * force)
-
-
-def _number(value: float) -> float | None:
-    """A plain number; nothing where it is not finite."""
-    return float(value) + 0.0 if math.isfinite(value) else None  # no -0.0
-
-
-def _numbers(values: Any) -> list[float | None]:
-    return [_number(value) for value in values]

@@ -1,12 +1,14 @@
-"""A result read back from its files: fields, load cases, and the record beside them.
+"""A result, of a solution or read back from its files, as pictures and windows see it.
 
-The fields come from a .vtu file as `write_vtk` writes them. The record (.json) beside
-it is used where it belongs to that file; without one there are no names and no title.
+The fields come from a .vtu file as `write_vtk` writes them, or from a solution. The
+record (.json) beside the file is used where it belongs to it; without one there are no
+names, supports, loads and reactions.
 """
 
 import json
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
+from functools import cached_property
 from pathlib import Path
 from typing import Any
 
@@ -15,48 +17,19 @@ import numpy as np
 from kplate.arrays import Bools, Floats
 from kplate.errors import InputError
 from kplate.meshfiles import Fields, read_vtu
-from kplate.units import DisplayUnits, Unit
+from kplate.output.record import shown_record
+from kplate.output.shades import Shade, shades
+from kplate.output.told import LeftOut, Told, told
+from kplate.output.vtk import solution_fields
+from kplate.solution import Solution
+from kplate.units import DisplayUnits
 
 DEFLECTION = "deflection [m]"
-# What the components of a field are called, by its first word or their number.
-COMPONENTS: dict[str | int, tuple[str, ...]] = {
-    "principal": ("larger", "smaller"),
-    "design": ("bottom x", "bottom y", "top x", "top y"),
-    2: ("x", "y"),
-    3: ("xx", "yy", "xy"),
-}
-
-
-@dataclass(frozen=True, kw_only=True)
-class Shade:
-    """One thing to colour a plate by.
-
-    Parameters
-    ----------
-    name : str
-        Its name, component included, without the unit.
-    array : str
-        The field it comes from, without its case.
-    component : int, optional
-        Which column of that.
-    unit : Unit
-        What it is shown in.
-    """
-
-    name: str
-    array: str
-    component: int | None
-    unit: Unit
-
-    @property
-    def title(self) -> str:
-        """Quantity and unit."""
-        return f"{self.name} [{self.unit.symbol}]"
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
 class Result:
-    """A result as its files tell it.
+    """What can be shown of a solved plate.
 
     Parameters
     ----------
@@ -64,42 +37,50 @@ class Result:
         Triangles, rim and fields, SI units.
     cases : mapping of str to str
         Load cases, and what the names of their arrays start with.
-    title : str
-        Name of the panel; may be empty.
-    side_names : tuple of str
-        Names of the sides by number; may be empty.
-    excluded : tuple of tuple
-        Places without a finite moment: x, y and radius in m, and the case or ``None``.
+    told : Told
+        What the record tells.
+    name : str
+        Name of its file without the ending, for files made from it.
+    folder : Path
+        Where that is.
+    units : DisplayUnits
+        What numbers are shown in.
     """
 
     fields: Fields
     cases: Mapping[str, str]
-    title: str = ""
-    side_names: tuple[str, ...] = ()
-    excluded: tuple[tuple[float, float, float, str | None], ...] = ()
+    told: Told = field(default_factory=Told)
+    name: str = "plate"
+    folder: Path = Path()
+    units: DisplayUnits = field(default_factory=DisplayUnits)
 
     def values(self, case: str, array: str) -> Floats:
         """A field of a case at the points."""
         return self.fields.point_data[self.cases[case] + array]
 
-    def shown(self, case: str, shade: Shade) -> Floats:
+    def has(self, case: str, array: str) -> bool:
+        """Whether there is such a field."""
+        return self.cases[case] + array in self.fields.point_data
+
+    def shown(self, case: str, shade: Shade, face: str = "") -> Floats:
         """What a shade colours the points by, in its unit."""
-        values = self.values(case, shade.array)
+        values = self.values(case, shade.array(face))
         own = values if shade.component is None else values[:, shade.component]
         return own / shade.unit.size
 
-    def left_out(self, case: str) -> list[tuple[float, float, float]]:
-        """Places without a finite moment in a case, and their radii, in m."""
-        return [(x, y, r) for x, y, r, own in self.excluded if own in (None, case)]
+    def left_out(self, case: str) -> list[LeftOut]:
+        """Places without a finite moment in a case."""
+        return [disc for disc in self.told.left_out if disc.case in (None, case)]
 
     def judged(self, case: str) -> Bools:
         """Points outside those places, (n_points,); all where that leaves none."""
         points = self.fields.points[:, :2]
         outside = np.ones(len(points), dtype=bool)
-        for x, y, radius in self.left_out(case):
-            outside &= np.hypot(*(points - (x, y)).T) >= radius
+        for disc in self.left_out(case):
+            outside &= np.hypot(*(points - disc.place).T) >= disc.radius
         return outside if outside.any() else ~outside
 
+    @cached_property
     def shades(self) -> list[Shade]:
         """All that the plate can be coloured by, deflection first."""
         prefix = next(iter(self.cases.values()))
@@ -108,26 +89,41 @@ class Result:
             for name, values in self.fields.point_data.items()
             if name.startswith(prefix)
         }
-        found = [s for array, values in arrays.items() for s in _shades(array, values)]
-        return sorted(found, key=lambda shade: shade.array != DEFLECTION)
+        found = shades(arrays, self.units)
+        return sorted(found, key=lambda shade: DEFLECTION not in shade.arrays.values())
 
-    def side_places(self) -> dict[str, Floats]:
-        """Middle of each side's rim, (3,) in m."""
-        sides = self.fields.cell_data.get("side", (None, np.empty(0)))[1]
-        if len(sides) != len(self.fields.lines):
-            return {}
-        ends = self.fields.points[self.fields.lines]
-        middles = ends.mean(axis=1)
-        lengths = np.linalg.norm(ends[:, 1] - ends[:, 0], axis=1)
-        places = {}
-        for number, name in enumerate(self.side_names):
-            own = middles[sides == number]
-            if len(own):
-                # Pieces are shorter towards corners.
-                centre = np.average(own, axis=0, weights=lengths[sides == number])
-                off = np.linalg.norm(own - centre, axis=1)
-                places[name] = own[off.argmin()]
-        return places
+    @property
+    def size(self) -> float:
+        """Mean size of the plate: the side of a square as large as its box, in m."""
+        extent = np.ptp(self.fields.points[:, :2], axis=0)
+        return float(np.sqrt(np.prod(extent)))
+
+
+def result_of(solution: Solution) -> Result:
+    """Take what can be shown out of a solution."""
+    return replace(fields_of(solution), told=told(shown_record(solution)))
+
+
+def fields_of(solution: Solution, units: DisplayUnits | None = None) -> Result:
+    """Take fields and places left out from a solution, but not its reactions."""
+    own = {
+        case: "" if len(solution.cases) == 1 else f"{case}: " for case in solution.cases
+    }
+    left_out = tuple(
+        LeftOut(
+            place=disc.place,
+            radius=disc.radius,
+            reason=disc.reason,
+            case=disc.case or None,
+        )
+        for disc in solution.excluded
+    )
+    return Result(
+        fields=solution_fields(solution),
+        cases=own,
+        told=Told(left_out=left_out),
+        units=DisplayUnits() if units is None else units,
+    )
 
 
 def read_result(path: Path) -> Result:
@@ -147,6 +143,7 @@ def read_result(path: Path) -> Result:
     InputError
         If the file cannot be read, is damaged, or holds no deflection.
     """
+    path = Path(path)
     fields = read_vtu(path)
     cases = {
         name.removesuffix(DEFLECTION).removesuffix(": "): name.removesuffix(DEFLECTION)
@@ -159,9 +156,9 @@ def read_result(path: Path) -> Result:
             f"{str(path)!r} holds no field {DEFLECTION!r} (its point fields: {held}); "
             "name a .vtu file that kplate check wrote."
         )
-    result = Result(fields=fields, cases=cases)
+    result = Result(fields=fields, cases=cases, name=path.stem, folder=path.parent)
     try:
-        record = json.loads(Path(path).with_suffix(".json").read_text("utf-8"))
+        record = json.loads(path.with_suffix(".json").read_text("utf-8"))
         return _with_record(result, record)
     except (
         OSError,
@@ -176,8 +173,7 @@ def read_result(path: Path) -> Result:
 
 def _with_record(result: Result, record: Any) -> Result:
     """Add what the record of a result tells; raises where it is of something else."""
-    fields = result.fields
-    mesh = record["mesh"]
+    fields, mesh = result.fields, record["mesh"]
     if (mesh["field triangles"], mesh["field points"]) != (
         len(fields.triangles),
         len(fields.points),
@@ -186,46 +182,11 @@ def _with_record(result: Result, record: Any) -> Result:
     names = record["field_names"]
     if set(names) != set(fields.point_data):
         raise ValueError("the record is of other fields")
-    excluded = []
-    for place in record["excluded"]:
-        x, y = place["place [m]"]
-        excluded.append((float(x), float(y), float(place["radius [m]"]), place["case"]))
-    return Result(
-        fields=fields,
-        cases={
-            str(names[f"{prefix}{DEFLECTION}"]["case"]): prefix
-            for prefix in result.cases.values()
-        },
-        title=str(record.get("panel", {}).get("name", "")),
-        side_names=tuple(str(name) for name in record["side_names"]),
-        excluded=tuple(excluded),
-    )
-
-
-def _shades(array: str, values: Floats) -> list[Shade]:
-    """Shades of one field, one for each component."""
-    base, bracket, symbol = array.removesuffix("]").rpartition(" [")
-    unit = _unit(symbol) if bracket else Unit("-", 1.0)
-    base = base if bracket else array
-    if values.ndim == 1:
-        return [Shade(name=base, array=array, component=None, unit=unit)]
-    count = values.shape[1]
-    words = COMPONENTS.get(base.split(" ")[0]) or COMPONENTS.get(count, ())
-    if len(words) != count:
-        words = tuple(str(k + 1) for k in range(count))
-    return [
-        Shade(name=f"{base} {word}", array=array, component=k, unit=unit)
-        for k, word in enumerate(words)
-    ]
-
-
-def _unit(symbol: str) -> Unit:
-    """Unit to show a field in whose unit in the file is this."""
-    units = DisplayUnits()
-    shown = {
-        "m": units.deflection,
-        "Pa": units.stress,
-        "N": units.moment,
-        "N per m": units.line_force,
+    own = {
+        str(names[f"{prefix}{DEFLECTION}"]["case"]): prefix
+        for prefix in result.cases.values()
     }
-    return shown.get(symbol, Unit(symbol, 1.0))
+    found = told(record)
+    if not set(own) <= set(found.fences):
+        raise ValueError("the record is of other cases")
+    return replace(result, cases=own, told=found)

@@ -25,14 +25,8 @@ from kplate.loads import (
 )
 from kplate.materials import STEEL
 from kplate.outline import Outline
-from kplate.output.record import (
-    COLUMNS,
-    LOADS,
-    PEAKS,
-    solution_record,
-    write_json,
-    write_reactions,
-)
+from kplate.output.forcerows import COLUMNS, write_reactions
+from kplate.output.record import LOADS, PEAKS, solution_record, write_json
 from kplate.output.vtk import write_vtk
 from kplate.peaks import QUANTITIES
 from kplate.plate import Plate

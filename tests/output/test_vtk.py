@@ -71,13 +71,21 @@ def test_cells_carry_zone_thickness_and_side(cover, tmp_path):
     mesh, samples = cover.mesh, cover.samples
     found = pyvista.read(write_vtk(cover, tmp_path / "cover.vtu"))
     n, m = len(samples.triangles), len(samples.rim)
-    assert sorted(found.cell_data.keys()) == ["side", "thickness [m]", "zone"]
+    assert sorted(found.cell_data.keys()) == [
+        "side",
+        "thickness [m]",
+        "triangle",
+        "zone",
+    ]
     np.testing.assert_array_equal(
         found.cell_data["zone"], np.r_[mesh.zones[samples.owners], np.full(m, -1)]
     )
     np.testing.assert_array_equal(
         found.cell_data["side"],
         np.r_[np.full(n, -1), mesh.boundary_sides[samples.rim_owners]],
+    )
+    np.testing.assert_array_equal(
+        found.cell_data["triangle"], np.r_[samples.owners, np.full(m, -1)]
     )
     thickness = found.cell_data["thickness [m]"]
     np.testing.assert_array_equal(thickness, np.repeat([0.012, 0.0], [n, m]))
