@@ -167,7 +167,7 @@ class Props:
             title="\n".join(textwrap.wrap(title, LINE)),
             mapper=mapper,
             vertical=True,
-            position_x=0.38,
+            position_x=0.45,
             position_y=0.16,
             height=0.6,
             width=0.5,

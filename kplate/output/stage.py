@@ -105,7 +105,7 @@ class Stage:
         self._light()
         self._signs()
         self.plotter.reset_camera(render=False)
-        self.plotter.camera.zoom(0.82)
+        self.plotter.camera.zoom(1.1)
 
     def set_scale(self, scale: float) -> None:
         """Draw the deflection this many times larger."""
