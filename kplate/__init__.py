@@ -200,4 +200,4 @@ __all__ = [
     "write_vtk",
 ]
 
-_attach()  # displays of a notebook
+_attach(Checked)  # displays of a notebook

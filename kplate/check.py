@@ -1,6 +1,5 @@
 """One public function for each command: solve, judge, write."""
 
-import html
 from dataclasses import asdict, dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -110,10 +109,6 @@ class Checked:
     def status(self) -> int:
         """Exit status: 0 for every form of pass, 1 for fails and not proven."""
         return 0 if self.verdict.outcome is Outcome.PASSES else 1
-
-    def _repr_html_(self) -> str:
-        """Show a notebook what the command prints."""
-        return f"<pre>{html.escape(self.text)}</pre>"
 
     @property
     def text(self) -> str:

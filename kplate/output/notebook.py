@@ -22,13 +22,14 @@ DPI = 90
 PEAKS = ("deflection", "von Mises", "largest principal", "smallest principal")
 
 
-def attach() -> None:
-    """Give plates, solutions and reactions their display."""
+def attach(checked: type) -> None:
+    """Give plates, solutions, reactions and checked panels their display."""
     for kind, name, show in (
         (Plate, "_repr_png_", plate_png),
         (Solution, "_repr_png_", solution_png),
         (Solution, "_repr_html_", solution_html),
         (Reactions, "_repr_html_", reactions_html),
+        (checked, "_repr_html_", checked_html),
     ):
         setattr(kind, name, show)
 
@@ -111,6 +112,11 @@ def reactions_html(reactions: Reactions) -> str:
     rows.append(("loads", units.force.show(reactions.load.force), ""))
     head = (f"case {reactions.case}", "pushes up", "largest line reaction")
     return _table(head, rows)
+
+
+def checked_html(checked: Any) -> str:
+    """What the command prints of a checked panel."""
+    return f"<pre>{html.escape(checked.text)}</pre>"
 
 
 def _table(head: Sequence[str], rows: Sequence[Sequence[str]]) -> str:

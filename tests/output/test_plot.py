@@ -1,7 +1,9 @@
 """Fields on matplotlib axes, moving pictures, what a notebook shows."""
 
 import base64
+import html
 import re
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -167,3 +169,9 @@ def test_a_notebook_shows_reactions_with_names_escaped(deck):
         assert f"<td>{side.side}</td>" in shown
     assert "<td>mark bolt</td>" in shown
     assert "<th>case winch</th>" in shown
+
+
+def test_a_notebook_shows_what_the_command_prints():
+    panel = Path(__file__).parents[2] / "meshes" / "pit-cover.toml"
+    checked = kp.check(panel)
+    assert checked._repr_html_() == f"<pre>{html.escape(checked.text)}</pre>"
