@@ -36,6 +36,7 @@ from kplate.goals import (
     Moment,
     Peak,
     Resultant,
+    RimMoment,
     Shear,
     Slope,
 )
@@ -150,6 +151,7 @@ __all__ = [
     "Rectangle",
     "RectanglePatch",
     "Resultant",
+    "RimMoment",
     "Roamed",
     "Roaming",
     "Section",

@@ -7,6 +7,7 @@ once where little is missing, until every goal is inside the tolerance or the bu
 spent. Bounds of all meshes hold, so that the best ends are kept.
 """
 
+import math
 import time
 from collections.abc import Sequence
 from dataclasses import replace
@@ -122,7 +123,7 @@ def refine_to(
             progress(steps[-1].words, min(0.99, unknowns / budget))
         if not unmet.any() or unknowns >= budget or len(steps) >= MOST_STEPS:
             return replace(solution, tolerance=tolerance, history=tuple(steps))
-        far = max(bands.values()) > FAR * tolerance
+        far = max(bands.values(), default=math.inf) > FAR * tolerance
         mesh = _bisected(mesh, _bulk(unmet), twice=far)
         if len(certified.state.constraints.numbering.arcs):
             mesh = fitted(mesh)
@@ -180,6 +181,8 @@ def _unmet(
         if not f.reason:
             columns[f.goal] = column
             column += 1
+        elif len(f.too_large):
+            shares[f.too_large] += 1.0 / len(f.too_large)
     for goal in goals:
         if not isinstance(goal, Peak) and goal not in columns:
             continue  # no bounded functional: it holds nothing up

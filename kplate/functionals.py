@@ -9,7 +9,7 @@ the plate and one of the dual.
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
@@ -17,6 +17,14 @@ from numpy.typing import ArrayLike
 
 from kplate import kernels
 from kplate.arrays import Bools, Floats, Ints
+from kplate.clearance import (
+    COARSE,
+    bearing,
+    distances,
+    ring_room,
+    round_rim,
+    zone_edges,
+)
 from kplate.errors import InputError
 from kplate.goals import (
     ClampingMoment,
@@ -27,6 +35,7 @@ from kplate.goals import (
     Moment,
     Place,
     Resultant,
+    RimMoment,
     Shear,
     Slope,
 )
@@ -35,7 +44,6 @@ from kplate.loads import (
     DiscPatch,
     EdgeMoment,
     Hydrostatic,
-    LineForce,
     Load,
     PointForce,
     PointMoment,
@@ -47,6 +55,7 @@ from kplate.loads import (
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
 from kplate.polygon import SNAP
+from kplate.rimkernels import rim_moment_kernel
 
 # A kernel's disc keeps this share of the way to what it must not touch.
 REACH = 0.95
@@ -73,6 +82,8 @@ class Functional:
         Name of the support that settles by 1 m, if any.
     reason : str
         Why it is no bounded functional; empty where it is one.
+    too_large : ndarray, shape (k,)
+        Triangles to be parted for it to become one, if that is why.
     """
 
     goal: Goal
@@ -80,6 +91,7 @@ class Functional:
     kernel: kernels.Kernel | None = None
     settled: str = ""
     reason: str = ""
+    too_large: Ints = field(default_factory=lambda: np.empty(0, dtype=np.int64))
 
 
 def functional(
@@ -119,6 +131,8 @@ def functional(
             return _settlement(plate, mesh, goal, name)
         case Slope() | Moment() | Shear() | ClampingMoment() | LineReaction():
             return _kernel(plate, mesh, goal, cases)
+        case RimMoment():
+            return _ring_kernel(plate, mesh, goal, cases)
     raise InputError(f"{goal} is not a number at a place; ask for it as a peak.")
 
 
@@ -182,11 +196,32 @@ def _kernel(plate: Plate, mesh: Mesh, goal: Any, cases: Sequence[Case]) -> Funct
     return Functional(goal=goal, kernel=kernel)
 
 
+def _ring_kernel(
+    plate: Plate, mesh: Mesh, goal: RimMoment, cases: Sequence[Case]
+) -> Functional:
+    """The moment along a free round rim by the kernel of a ring around it."""
+    rim = round_rim(plate, mesh, goal.at)
+    near, far, reason = ring_room(plate, mesh, rim, cases, REACH)
+    if reason == COARSE:
+        return Functional(goal=goal, reason=reason, too_large=rim.triangles)
+    if reason:
+        return Functional(goal=goal, reason=reason)
+    h, material = plate.sections[mesh.zones[mesh.locate([goal.at])[0][0]]]
+    kernel = rim_moment_kernel(
+        goal.at,
+        rim.circle,
+        (near, far),
+        D=material.bending_stiffness(h),
+        nu=material.nu,
+    )
+    return Functional(goal=goal, kernel=kernel)
+
+
 def _edge_under(plate: Plate, mesh: Mesh, goal: Any) -> int:
     """Boundary edge on which a goal lies; it must be held as the goal wants it."""
     at = np.asarray(goal.at, dtype=float)
     start, end = np.moveaxis(mesh.points[mesh.boundary_edges], 1, 0)
-    off = _distance(at, start, end)
+    off = distances(at, start, end)
     edge = int(off.argmin())
     name = mesh.side_names[mesh.boundary_sides[edge]]
     support = plate.support(name)
@@ -231,13 +266,13 @@ def _room(
     if not straight.all():
         found.append((_off_round_edges(mesh, place), "a round side"))
     if keep.any():
-        found.append((float(_distance(place, start[keep], end[keep]).min()), "a side"))
-    seams = mesh.seam_edges[_bearing(plate, mesh, cases)]
-    lines = [(seams, "a seam"), (_zone_edges(mesh), "the edge of a zone")]
+        found.append((float(distances(place, start[keep], end[keep]).min()), "a side"))
+    seams = mesh.seam_edges[bearing(plate, mesh, cases)]
+    lines = [(seams, "a seam"), (zone_edges(mesh), "the edge of a zone")]
     for edges, words in lines:
         if len(edges):
             a, b = np.moveaxis(mesh.points[edges], 1, 0)
-            found.append((float(_distance(place, a, b).min()), words))
+            found.append((float(distances(place, a, b).min()), words))
     for name, vertex in zip(mesh.mark_names, mesh.mark_vertices, strict=True):
         if plate.support(name).holds:
             off = float(np.hypot(*(mesh.points[vertex] - place)))
@@ -262,19 +297,6 @@ class _Line:
         return on
 
 
-def _bearing(plate: Plate, mesh: Mesh, cases: Sequence[Case]) -> Bools:
-    """Seam edges that are held or carry a force; nothing happens at the others."""
-    loaded = {
-        load.along
-        for case in cases
-        for load in case.loads
-        if isinstance(load, LineForce)
-    }
-    bears = [name in loaded or plate.support(name).holds for name in mesh.seam_names]
-    found: Bools = np.array(bears, dtype=bool)[mesh.seam_numbers]
-    return found
-
-
 def _line(plate: Plate, mesh: Mesh, edge: int) -> _Line:
     """The straight line on which a boundary edge lies."""
     return _Line(
@@ -292,7 +314,7 @@ def _off_round_edges(mesh: Mesh, place: Floats) -> float:
     x, y, radius = mesh.circles[mesh.boundary_circles[curved]].T
     off = np.abs(np.hypot(place[0] - x, place[1] - y) - radius)
     for k in range(3):
-        off = np.minimum(off, _distance(place, corners[:, k - 1], corners[:, k]))
+        off = np.minimum(off, distances(place, corners[:, k - 1], corners[:, k]))
     return float(off.min())
 
 
@@ -320,15 +342,6 @@ def _turned(mesh: Mesh, cases: Sequence[Case]) -> Bools:
     return turned
 
 
-def _zone_edges(mesh: Mesh) -> Ints:
-    """Edges between triangles of different zones, (k, 2)."""
-    low = np.full(len(mesh.edges), np.iinfo(np.int64).max)
-    high = np.full(len(mesh.edges), -1)
-    np.minimum.at(low, mesh.triangle_edges, mesh.zones[:, None])
-    np.maximum.at(high, mesh.triangle_edges, mesh.zones[:, None])
-    return mesh.edges[low != high]
-
-
 def _load_room(load: Load, place: Floats, line: _Line | None) -> tuple[float, str]:
     """Distance from a place, on a line if any, to where a load is not linear."""
     match load:
@@ -337,7 +350,7 @@ def _load_room(load: Load, place: Floats, line: _Line | None) -> tuple[float, st
         case RectanglePatch():
             start = np.asarray(load.corners)
             end = np.roll(start, -1, axis=0)
-            sides = _distance(place, start, end)
+            sides = distances(place, start, end)
             if line is not None:
                 along = line.holds(start, ROUND_OFF) & line.holds(end, ROUND_OFF)
                 sides[along] = math.inf
@@ -362,12 +375,15 @@ def local_pressure(
 ) -> tuple[float, tuple[float, float]]:
     """Pressure in Pa at a kernel's centre and its gradient in Pa/m; it is linear there.
 
-    Where the centre is on a side, at which loads may end, it is looked at inside.
+    Where the centre is on a side, at which loads may end, or the kernel is a ring, it
+    is looked at inside and continued.
     """
-    place, back = kernel.centre, np.zeros(2)
+    back = np.zeros(2)
     if kernel.inward is not None:
         back = -0.5 * kernel.radius * kernel.inward
-        place = kernel.centre - back
+    elif kernel.inner:
+        back = np.array([-0.5 * (kernel.inner + kernel.radius), 0.0])
+    place = kernel.centre - back
     zone = int(mesh.zones[mesh.locate([place])[0][0]])
     total, gradient = 0.0, np.zeros(2)
     for load in case.loads:
@@ -400,13 +416,3 @@ def _inside(place: Floats, corners: Floats) -> bool:
     arm = place - corners
     cross = step[:, 0] * arm[:, 1] - step[:, 1] * arm[:, 0]
     return bool((cross > 0.0).all() or (cross < 0.0).all())
-
-
-def _distance(place: Floats, start: Floats, end: Floats) -> Floats:
-    """Distance from a place to segments, (k,)."""
-    step = end - start
-    share = np.einsum("kc,kc->k", place - start, step)
-    share = np.clip(share / np.einsum("kc,kc->k", step, step), 0.0, 1.0)
-    foot = start + share[:, None] * step
-    away: Floats = np.hypot(*(foot - place).T)
-    return away

@@ -2,7 +2,7 @@
 
 Each is a linear functional of the deflection. Those at a point inside need the mesh to
 have a vertex there (deflections) or a disc around it that is free of supports, loads on
-lines and steps (moments, shears, slopes).
+lines and steps (moments, shears, slopes), those on a round rim a ring around the rim.
 """
 
 from dataclasses import dataclass
@@ -113,6 +113,16 @@ class LineReaction:
 
 
 @dataclass(frozen=True, kw_only=True)
+class RimMoment:
+    """The moment in N along the rim at a place of a free side that is a whole circle.
+
+    It is m_tt, t along the rim of the round hole or disc; m_nn is zero there.
+    """
+
+    at: Place
+
+
+@dataclass(frozen=True, kw_only=True)
 class Resultant:
     """The force in N, positive up, that a side, seam or mark brings.
 
@@ -149,6 +159,7 @@ Goal = (
     | Shear
     | ClampingMoment
     | LineReaction
+    | RimMoment
     | Resultant
     | Peak
 )

@@ -5,6 +5,7 @@ that is refined until the triangles' parts are small beside the disc; what the r
 wrong of quadratics, found against one in polar coordinates, widens the band.
 """
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -20,9 +21,14 @@ from kplate.samples import Lattice
 from kplate.solve.dual import DualSystem
 from kplate.solve.static import StaticState, StaticSystem
 
-# Edges in a kernel's disc are parted until they are this share of its radius.
+# Edges in a kernel are parted until they are this share of its radius, or of the width
+# of its ring.
 FINE, MOST_HALVINGS = 1.0 / 3.0, 4
 RULE = triangle_rule(15)
+# A narrow ring cuts many large triangles; what few samples get wrong is in the band.
+MOST_SAMPLES = 300_000
+# Angles of the rule in polar coordinates; a ring's weights have a pole close by.
+DISC, RING = 96, 512
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -60,9 +66,13 @@ def kernelled_on(mesh: Mesh, kernel: Kernel, order: int) -> Kernelled:
     reach = np.hypot(*np.moveaxis(corners.mean(axis=1) - kernel.centre, -1, 0))
     sides = corners - np.roll(corners, 1, axis=1)
     longest = np.hypot(sides[..., 0], sides[..., 1]).max(axis=1)
-    near = np.flatnonzero(reach < kernel.radius + longest)
-    size = float(longest[near].max()) / (FINE * kernel.radius)
-    halvings = int(np.clip(np.ceil(np.log2(max(size, 1.0))), 0, MOST_HALVINGS))
+    near = np.flatnonzero(
+        (reach < kernel.radius + longest) & (reach > kernel.inner - longest)
+    )
+    size = float(longest[near].max()) / (FINE * (kernel.radius - kernel.inner))
+    most = MOST_SAMPLES / (len(near) * len(RULE.weights))
+    most = min(MOST_HALVINGS, math.floor(0.5 * math.log2(max(most, 1.0))))
+    halvings = min(math.ceil(math.log2(max(size, 1.0))), most)
     lattice = Lattice.of(2**halvings)
     rule = composite(lattice.barycentrics[lattice.triangles], RULE)
     places = rule.points @ corners[near]
@@ -117,18 +127,19 @@ def _quadrature_error(
 
 
 def _polar(kernel: Kernel) -> tuple[Floats, Floats]:
-    """Points and weights of a fine rule on the kernel's disc or half disc."""
+    """Points and weights of a fine rule on the kernel's disc, half disc or ring."""
     r, radial = gauss(40)
+    width, count = kernel.radius - kernel.inner, RING if kernel.degree is None else DISC
     if kernel.inward is not None:
         share, around = gauss(60)
         first = np.arctan2(kernel.inward[1], kernel.inward[0]) - 0.5 * np.pi
         angle, around = first + np.pi * share, np.pi * around
     else:
-        angle = 2.0 * np.pi * np.arange(96) / 96
-        around = np.full(96, 2.0 * np.pi / 96)
-    R, A = np.meshgrid(kernel.radius * r, angle, indexing="ij")
+        angle = 2.0 * np.pi * np.arange(count) / count
+        around = np.full(count, 2.0 * np.pi / count)
+    R, A = np.meshgrid(kernel.inner + width * r, angle, indexing="ij")
     points = kernel.centre + np.stack([R * np.cos(A), R * np.sin(A)], axis=-1)
-    weights = np.outer(radial * kernel.radius, around) * R
+    weights = np.outer(radial * width, around) * R
     return points.reshape(-1, 2), weights.ravel()
 
 

@@ -83,11 +83,14 @@ class Kernel:
         The point in m.
     radius : float
         Radius R of the disc in m.
+    inner : float, optional
+        Where the kernel is a ring, not a disc: its inner radius in m. The centre need
+        not be on the plate then.
     inward : array_like, shape (2,), optional
         Unit normal into the plate of the straight edge through the centre: the disc is
         its half on that side. Whole if left out.
-    degree : int
-        The weights are polynomials of this degree in the disc.
+    degree : int, optional
+        The weights are polynomials of this degree in the disc; none in a ring.
     exponent : int
         They go to zero at the rim as the distance to this power, and are zero outside:
         derivatives are continuous across the rim up to the order before it.
@@ -97,13 +100,15 @@ class Kernel:
     pressure : function of points (..., 2), optional
         Weights (...) of w: the pressure that loads the adjoint plate.
     constant : function of a pressure and its gradient (2,)
-        What the load adds: pressure at the centre in Pa, positive up; gradient in Pa/m.
+        What the load adds: pressure at the centre in Pa, positive up (of a ring's load
+        continued to there); gradient in Pa/m.
     """
 
     centre: Floats
     radius: float
+    inner: float = 0.0
     inward: Floats | None = None
-    degree: int
+    degree: int | None = None
     exponent: int = EXPONENT
     moments: Weights | None = None
     pressure: Weights | None = None
@@ -116,9 +121,11 @@ class Kernel:
             object.__setattr__(self, "inward", read_only_floats(self.inward))
 
     def holds(self, points: ArrayLike) -> Bools:
-        """Whether points (..., 2) lie in the disc, or its half; the rim does not."""
+        """Whether points (..., 2) lie in the disc, half disc or ring, off its rims."""
         disc = _Disc(centre=self.centre, radius=self.radius, inward=self.inward)
-        return disc.local(points)[1] > 0.0
+        u = disc.local(points)[1]
+        held: Bools = (u > 0.0) & (u < 1.0 - (self.inner / self.radius) ** 2)
+        return held if self.inner else u > 0.0
 
 
 def moment_kernel(centre: ArrayLike, radius: float, component: ArrayLike) -> Kernel:

@@ -36,7 +36,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"stations", "rims"},
     {"traces"},
     {"answers", "raw", "peaks", "goals", "kernels", "tracelines"},
-    {"dualforces"},
+    {"dualforces", "rimkernels", "clearance"},
     {"reactions", "functionals"},
     {"kernelled", "brackets", "worth", "coarser"},
     {"bands"},
