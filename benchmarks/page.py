@@ -63,14 +63,16 @@ def sentence(run: Sequence[Measured]) -> str:
     own = report.tallies(run)[-1]
     banded = [n for n in report.numbers_of(run) if n.kind == "bound"]
     false = [n for n in banded if _false(n)]
+    wrong = report.misprints(run)
+    recalled = sum(one.figure.from_memory for one in wrong)
     return (
         f"Of {own.numbers:,} numbers computed without finite elements in "
         f"{len(run)} cases, kplate meets {own.near:,} within 0.1 % (median deviation "
         f"{100.0 * own.median:.5f} %); {len(banded)} carry a proven bound, "
         f"{'none' if not false else len(false)} of them false. Of {own.figures} "
         f"that stand in a handbook or paper, {own.inside} round to the last printed "
-        f"digit; {len(report.misprints(run))} figures in print do not agree with their "
-        "value, each listed with its evidence."
+        f"digit; {len(wrong)} figures, {recalled} of them recalled from memory, do not "
+        "agree with their value; each is listed with its evidence."
     )
 
 

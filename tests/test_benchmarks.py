@@ -1,5 +1,6 @@
 """``python -m benchmarks``: what it prints, counts, refuses and measures."""
 
+import html
 import json
 import re
 import textwrap
@@ -352,3 +353,13 @@ def test_a_small_drawing_shows_each_support_once():
     text = drawings.thumbnail(cases.plate(records.record("corner4_p_1")))
     assert text.count("class=kf") == 4
     assert text.count("<circle") == 4
+
+
+def test_readme_quotes_the_page():
+    root = Path(__file__).parents[1]
+    kept = (root / "benchmarks" / "page.html").read_text("utf-8")
+    (shown,) = re.findall(r"<p id=sentence>(.*)</p>", kept)
+    readme = " ".join((root / "README.md").read_text("utf-8").split())
+    assert html.unescape(shown) in readme
+    assert "benchmarks/page.html" in readme
+    assert len(kept) < 500_000
