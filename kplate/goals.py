@@ -117,6 +117,11 @@ class RimMoment:
     """The moment in N along the rim at a place of a free side that is a whole circle.
 
     It is m_tt, t along the rim of the round hole or disc; m_nn is zero there.
+
+    Parameters
+    ----------
+    at : tuple of float
+        The place in m, on the rim.
     """
 
     at: Place
