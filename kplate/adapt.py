@@ -208,7 +208,7 @@ def _single_mesh(
         graded=corner_grading(plate),
         around=AROUND.get(element),
     )
-    return fitted(mesh) if element in AROUND else mesh
+    return fitted(mesh, ELEMENTS[element].shape)
 
 
 def _coarser(solution: Solution, size: float) -> tuple[Solution, ...]:
@@ -292,7 +292,7 @@ def _to_tolerance(
                 *((d.place, share * d.radius, 2.0 * d.radius) for d in discs),
             ],
         )
-        return fitted(finer) if element in AROUND else finer
+        return fitted(finer, ELEMENTS[element].shape)
 
     mesh = mesh_for(goals)
     if Peak(quantity="deflection") in goals:

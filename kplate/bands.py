@@ -15,7 +15,7 @@ p with quartics, not by Pp itself; computed over triangles of many shapes, slim 
 too, what that needs is less than a tenth of it.
 
 The band is a bound where the deflection is conforming and the moments balance: with the
-C1 elements on straight sides, and with the quintic on arcs of circles too. There the
+C1 elements on straight sides, and on arcs of circles that they follow. There the
 moments balance but for what is left of m_nn and v_n along arcs, r; a bound rho of its
 work on a deflection of unit energy (`elements.dual_arcs`) makes half the width
 ``(||G0|| + rho0) (||Gj|| + rhoj) - ||G0|| ||Gj|| / 2``.
@@ -303,7 +303,7 @@ def _gaps(
         work += np.einsum("nqak,nqaj->kj", bent[..., :cases], own, optimize=True)
     arcs = system.numbering.arcs
     if len(arcs):
-        points, weights = arcs.rule
+        points, weights = system.element.round_rule(arcs)
         bent = _bent(system, unknowns, arcs.rows, points)
         gap = balance.dual.moments(moments[arcs.rows], points) - bent
         soft = np.linalg.inv(system.plate.rigidities)[mesh.zones[arcs.rows]]

@@ -126,7 +126,7 @@ def refine_to(
         far = max(bands.values(), default=math.inf) > FAR * tolerance
         mesh = _bisected(mesh, _bulk(unmet), twice=far)
         if len(certified.state.constraints.numbering.arcs):
-            mesh = fitted(mesh)
+            mesh = fitted(mesh, certified.state.element.shape)
 
 
 def _keep_best(known: dict[tuple[Goal, str], Value], certified: Certified) -> None:

@@ -62,6 +62,10 @@ class Shape(Protocol):
         """Rows of w and slopes."""
 
     @property
+    def round_rule(self) -> Callable[[Arcs], tuple[Floats, Floats]]:
+        """Quadrature of triangles with round edges."""
+
+    @property
     def arc_loads(self) -> Callable[[Arcs, Floats, Floats], Floats]:
         """Consistent loads of forces and moments along round edges."""
 
@@ -111,7 +115,7 @@ def _add_pressure(
         own = element.load(Geometry(vertices=vertices, rule=rule), pressure)
         arcs = numbering.arcs.among(block)
         if len(arcs):
-            points, weights = arcs.rule
+            points, weights = element.round_rule(arcs)
             alone = arcs.alone()
             rows = element.evaluate(arcs.vertices, points, alone)[:, :, 0]
             zones = mesh.zones[block[arcs.rows]]
@@ -281,8 +285,43 @@ def _add_patch(
     def pressure(points: Floats) -> Floats:
         return np.full(points.shape[:-1], load.force / area)
 
+    whole = _add_round(forces, element, numbering, pressure, (groups, pieces, owner))
     for parts in groups:
-        _add_parts(forces, element, numbering, parts, owner, pressure)
+        kept = ~np.isin(owner[parts.triangles], whole)
+        some = cutting.Parts(
+            triangles=parts.triangles[kept],
+            points=parts.points[kept],
+            weights=parts.weights[kept],
+        )
+        _add_parts(forces, element, numbering, some, owner, pressure)
+
+
+def _add_round(
+    forces: Floats,
+    element: Shape,
+    numbering: Numbering,
+    pressure: Callable[[Floats], Floats],
+    cut: tuple[Sequence[cutting.Parts], Floats, Ints],
+) -> Ints:
+    """Add a pressure on triangles with a round edge all of whose slices it covers.
+
+    Slices are a little less than the triangle; returns these triangles.
+    """
+    arcs, (groups, pieces, owner) = numbering.arcs, cut
+    if not len(arcs):
+        return np.empty(0, dtype=np.int64)
+    count = len(numbering.mesh.triangles)
+    covered = np.zeros(count)
+    for parts in groups:
+        np.add.at(covered, owner[parts.triangles], parts.weights.sum(axis=1))
+    size = np.bincount(owner, piece_areas(pieces), minlength=count)
+    full = covered[arcs.rows] > (1.0 - MISSING) * size[arcs.rows]
+    own = arcs.chosen(full)
+    points, weights = element.round_rule(own)
+    rows = element.evaluate(own.vertices, points, own.alone())[:, :, 0]
+    found = np.einsum("mq,mqd->md", pressure(points @ own.vertices) * weights, rows)
+    add_up(forces, numbering.table[own.rows], found[..., None])
+    return own.rows
 
 
 def _pieces(

@@ -77,10 +77,10 @@ class RawMoments:
         found = []
         for start in range(0, len(mesh.triangles), _BLOCK):
             part = np.arange(start, min(start + _BLOCK, len(mesh.triangles)))
-            at = self._bent(part, Lattice.of(_COARSE).barycentrics)
+            arcs = numbering.arcs.among(part)
+            at = arcs.bent(Lattice.of(_COARSE).barycentrics, len(part))
             vertices = mesh.points[mesh.triangles[part]]
             own = self.state.unknowns[numbering.table[part]]
-            arcs = numbering.arcs.among(part)
             w = self.state.element.shape.fields(vertices, at, own, 1, arcs)[:, :, 0]
             holders = np.repeat(part, w.shape[1])
             places = (at @ vertices).reshape(-1, 2)
@@ -252,13 +252,16 @@ class RawMoments:
     def _places(self, triangles: Ints, k: int, lattice: Lattice) -> Floats:
         """Points (n, q, 2) of a lattice on piece k of triangles."""
         mesh = self.state.mesh
-        at = self._bent(triangles, lattice.barycentrics @ self._pieces[k])
+        at = self._bent(triangles, k, lattice.barycentrics)
         return at @ mesh.points[mesh.triangles[triangles]]
 
-    def _bent(self, triangles: Ints, barycentrics: Floats) -> Floats:
-        """Where points (q, 3) of straight triangles lie in round ones, if any are."""
+    def _bent(self, triangles: Ints, k: int, local: Floats) -> Floats:
+        """Where points (q, 3) of piece k lie in triangles, some of them round."""
         arcs = self.state.constraints.numbering.arcs.among(triangles)
-        return arcs.bent(barycentrics, len(triangles))
+        if len(self._pieces) > 1:
+            arcs = arcs.chosen(np.flatnonzero(arcs.edges == k))
+        cones = self.state.element.shape.cones(arcs)
+        return cones.bent(local, len(triangles)) @ self._pieces[k]
 
     def _lattice_fields(
         self, triangles: Ints, k: int, steps: int
@@ -267,10 +270,9 @@ class RawMoments:
         local = Lattice.of(steps).barycentrics
         if len(self._pieces) > 1:
             local = local + INSIDE * (1.0 / 3.0 - local)
-        barycentrics = local @ self._pieces[k]
         for start in range(0, len(triangles), _BLOCK):
             part = triangles[start : start + _BLOCK]
-            yield part, self._fields(part, self._bent(part, barycentrics))
+            yield part, self._fields(part, self._bent(part, k, local))
 
     def _fields(self, triangles: Ints, barycentrics: Floats) -> Floats:
         """Deflection, slopes, moments and shears at points of triangles.

@@ -8,6 +8,7 @@ import numpy as np
 
 from kplate.arrays import Ints
 from kplate.elements.arcs import Arcs
+from kplate.elements.piecewise import Piecewise
 from kplate.errors import MeshError
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
@@ -43,17 +44,34 @@ def round_edges(plate: Plate, mesh: Mesh) -> Arcs:
         If a triangle has two round edges or is too flat for its own.
     """
     arcs = _arcs(mesh, plate)
-    if len(np.unique(arcs.rows)) < len(arcs) or (arcs.steepness <= 0.0).any():
+    if len(np.unique(arcs.rows)) < len(arcs):
+        raise MeshError(
+            "a triangle has two round edges; mesh the plate with more triangles."
+        )
+    check_room(arcs)
+    return arcs
+
+
+def check_room(arcs: Arcs) -> None:
+    """Refuse triangles that are too flat for their round edges.
+
+    Raises
+    ------
+    MeshError
+    """
+    if (arcs.steepness <= 0.0).any():
         raise MeshError(
             "a triangle is too large for the round edge of its own; mesh the plate "
             "with more triangles."
         )
-    return arcs
 
 
-def fitted(mesh: Mesh) -> Mesh:
-    """Part triangles until each has one round edge at most, and room for it."""
-    if (mesh.boundary_circles == STRAIGHT_EDGE).all():
+def fitted(mesh: Mesh, shape: Piecewise) -> Mesh:
+    """Part triangles until each has one round edge at most, and room for it.
+
+    `shape` is that of the element; nothing is done where it does not follow arcs.
+    """
+    if not shape.follows or (mesh.boundary_circles == STRAIGHT_EDGE).all():
         return mesh
     for _ in range(_ROUNDS):
         arcs = _arcs(mesh)
@@ -61,7 +79,8 @@ def fitted(mesh: Mesh) -> Mesh:
         if twice.any():
             mesh = parted_at_middles(mesh, twice)
             continue
-        flat = (arcs.steepness < _STEEP) | (np.abs(arcs.turn) > _MOST_TURN)
+        steep = shape.cones(arcs).steepness
+        flat = (steep < _STEEP) | (np.abs(arcs.turn) > _MOST_TURN)
         if not flat.any():
             return mesh
         wanted = np.zeros(len(mesh.triangles), dtype=bool)

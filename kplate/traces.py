@@ -498,7 +498,8 @@ def _held_directions(state: StaticState, held: HeldEdges) -> sp.csr_array:
         shape=(len(at), numbering.count),
     )
     # Along arcs w,tt does work, though it is free where the slope across is.
-    round_edges = np.flatnonzero((held.curvatures != 0.0) & ~held.clamps)
+    free = (held.curvatures != 0.0) & ~held.clamps & (numbering.per_vertex > 3)
+    round_edges = np.flatnonzero(free)
     ends = held.edges[round_edges]
     bent, first = np.unique(ends, return_index=True)
     tangents = held.tangents[round_edges].reshape(-1, 2)[first]

@@ -9,6 +9,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from kplate import cutting
+from kplate.arrays import Bools, Floats
 from kplate.boundary import seam_tangents, side_tangents
 from kplate.elements.arcs import Arcs, no_arcs
 from kplate.loading import depth_at
@@ -141,9 +142,14 @@ def misplaced(plate: Plate, mesh: Mesh, loads: Sequence[Load]) -> str:
 
 def _cut(mesh: Mesh, loads: Sequence[Load], arcs: Arcs) -> str:
     """A load whose edge passes through triangles with a round edge."""
+    if not len(arcs):
+        return ""
+    along, _, _ = arcs.at(np.linspace(0.0, 1.0, 9))
+    points = np.concatenate([along, arcs.vertices], axis=1)
     for load in loads:
-        if len(arcs) and (
-            unbalanced(mesh, load)[arcs.rows].any() or _at_bulges(load, arcs)
+        whole = _loaded(load, points).all(axis=1)
+        if unbalanced(mesh, load)[arcs.rows].any() or _at_bulges(
+            load, arcs.chosen(~whole)
         ):
             return "a load is not linear on triangles at a round side"
     return ""
@@ -166,3 +172,27 @@ def _at_bulges(load: Load, arcs: Arcs) -> bool:
         case _:
             return False
     return any(len(parts.triangles) > 0 for parts in groups)
+
+
+def _loaded(load: Load, points: Floats) -> Bools:
+    """Which points (n, q, 2) a load with an edge acts on; all of any other."""
+    slight = SNAP * float(np.ptp(points, axis=(0, 1)).max())
+    match load:
+        case RectanglePatch(corners=corners):
+            found = np.ones(points.shape[:-1], dtype=bool)
+            middle = np.mean(corners, axis=0)
+            for a, b in zip(corners, np.roll(corners, -1, axis=0), strict=True):
+                normal = np.array([b[1] - a[1], a[0] - b[0]]) / np.hypot(*(b - a))
+                side = np.sign((middle - a) @ normal)
+                found &= side * ((points - a) @ normal) > -slight
+            return found
+        case DiscPatch(centre=centre, radius=radius):
+            reach: Bools = np.hypot(*np.moveaxis(points - centre, -1, 0)) < (
+                radius + slight
+            )
+            return reach
+        case Hydrostatic(level=level, up=up):
+            unit = np.asarray(up, dtype=float) / np.hypot(*up)
+            wet: Bools = points @ unit < level + slight
+            return wet
+    return np.ones(points.shape[:-1], dtype=bool)

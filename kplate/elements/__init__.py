@@ -50,6 +50,9 @@ class Element:
     evaluate : callable
         (vertices, barycentrics (q, 3) or (n, q, 3), round edges if any) to the rows of
         w and slopes (n, q, 3, d).
+    round_rule : callable
+        Round edges to the quadrature of their triangles: barycentrics (m, q, 3),
+        weights (m, q) in m2.
     arc_loads : callable
         (round edges, line force (m,), edge moment (m,)) to (m, d).
     curvature : callable
@@ -75,6 +78,7 @@ class Element:
     mass: Callable[[Geometry, Floats], Floats]
     geometric: Callable[[Geometry, Floats], Floats]
     evaluate: Callable[..., Floats]
+    round_rule: Callable[[Arcs], tuple[Floats, Floats]]
     arc_loads: Callable[[Arcs, Floats, Floats], Floats]
     curvature: Callable[..., Floats]
     third_derivatives: Callable[[Floats, Floats], Floats]
@@ -95,6 +99,7 @@ def _conforming(shape: Piecewise, **named: Any) -> Element:
         mass=shape.mass,
         geometric=shape.geometric,
         evaluate=shape.evaluate,
+        round_rule=shape.round_rule,
         arc_loads=shape.arc_loads,
         curvature=shape.curvature,
         third_derivatives=shape.third_derivatives,
@@ -119,6 +124,7 @@ ELEMENTS = {
         mass=hct.REDUCED.mass,
         geometric=hct.REDUCED.geometric,
         evaluate=hct.REDUCED.evaluate,
+        round_rule=hct.REDUCED.round_rule,
         arc_loads=hct.REDUCED.arc_loads,
         curvature=dkt.curvature,
         third_derivatives=hct.REDUCED.third_derivatives,

@@ -245,6 +245,10 @@ class Dual:
                 rows[own, ..., first : first + self.edge_deflections] = 0.0
         return self._counted_by_edge(rows, vertices)
 
+    def round_rule(self, arcs: Arcs) -> tuple[Floats, Floats]:
+        """Quadrature of true triangles: barycentrics (m, q, 3), weights in m2."""
+        return arcs.rule
+
     def arc_loads(self, arcs: Arcs, force: Floats, moment: Floats) -> Floats:
         """Work of a line force in N/m and an edge moment in N along arcs, (m,) each.
 

@@ -147,7 +147,7 @@ def _shapes(rule: Rule) -> tuple[list[Bools], Floats]:
     return [holder == k for k in range(3)], chosen
 
 
-HCT = Piecewise(degree=DEGREE, pieces=PIECES, ordinates=ordinates)
+HCT = Piecewise(degree=DEGREE, pieces=PIECES, ordinates=ordinates, follows=True)
 REDUCED = Piecewise(degree=DEGREE, pieces=PIECES, ordinates=reduced_ordinates)
 
 

@@ -22,7 +22,7 @@ Axes: m triangles, q points, k ordinates, d unknowns.
 
 import numpy as np
 
-from kplate.arrays import Floats
+from kplate.arrays import Floats, Ints
 from kplate.elements import bernstein
 from kplate.elements.arcs import Arcs
 
@@ -31,14 +31,14 @@ _NEAR = 1e-6  # share of a ray below which the lift, t^4, is nothing
 
 
 def lift(
-    arcs: Arcs, degree: int, C: Floats, barycentrics: Floats, order: int
+    arcs: Arcs, degree: int, C: Floats, barycentrics: Floats, order: int, ends: Ints
 ) -> Floats:
     """Rows of the lift of each unknown at points (m, q, 3) of held triangles.
 
     Parameters
     ----------
     arcs : Arcs
-        All of them held; the first nine unknowns a vertex w, w,x, w,y among them.
+        All of them held.
     degree : int
         Of the polynomials.
     C : ndarray, shape (m, k, d)
@@ -47,6 +47,9 @@ def lift(
         The points.
     order : int
         1 for w and its slopes, 2 for curvatures ``w,xx, w,yy, 2 w,xy``.
+    ends : ndarray, shape (m, 2)
+        Which vertices of the element the arcs begin and end at; its unknowns begin
+        with w, w,x, w,y at each of the three, and end with one on each edge.
 
     Returns
     -------
@@ -55,8 +58,8 @@ def lift(
     t, s = arcs.cone(barycentrics)
     near = t < _NEAR
     t = np.where(near, 1.0, t)
-    ends = _on_arc(arcs, degree, C)
-    (a, a1, a2), (b, b1, b2) = (_interpolated(e, s) for e in ends)
+    on_arc = _on_arc(arcs, degree, C, ends)
+    (a, a1, a2), (b, b1, b2) = (_interpolated(e, s) for e in on_arc)
     h = t**4 * (5.0 - 4.0 * t)
     h1 = 20.0 * t**3 * (1.0 - t)
     h2 = 60.0 * t**2 - 80.0 * t**3
@@ -91,12 +94,12 @@ def _sum(a: Floats, h: Floats, b: Floats, k: Floats) -> Floats:
     return a * h[..., None] + b * k[..., None]
 
 
-def _on_arc(arcs: Arcs, degree: int, C: Floats) -> tuple[Floats, Floats]:
+def _on_arc(arcs: Arcs, degree: int, C: Floats, ends: Ints) -> tuple[Floats, Floats]:
     """e0 and e1 of each unknown at the Chebyshev points, (m, n, d)."""
     s = 0.5 * (1.0 - np.cos(np.pi * np.arange(_COUNT) / (_COUNT - 1)))
     arc, _, _ = arcs.at(s)
     at = arcs.barycentrics(arc)
-    constant, slope = _affine(arcs, C.shape[-1])
+    constant, slope = _affine(arcs, C.shape[-1], ends)
     middle = arcs.chords[0]
     away = arc - middle[:, None]
     value = bernstein.values(degree, at) @ C
@@ -111,7 +114,7 @@ def _on_arc(arcs: Arcs, degree: int, C: Floats) -> tuple[Floats, Floats]:
     )
 
 
-def _affine(arcs: Arcs, count: int) -> tuple[Floats, Floats]:
+def _affine(arcs: Arcs, count: int, ends: Ints) -> tuple[Floats, Floats]:
     """Value in the middle of the chord, and slopes, of the affine part.
 
     Rows (m, d) and (m, 2, d) of the unknowns.
@@ -124,14 +127,14 @@ def _affine(arcs: Arcs, count: int) -> tuple[Floats, Floats]:
     along, across = np.zeros((m, count)), np.zeros((m, count))
     per_vertex = (count - 3) // 3
     number = np.arange(m)
-    ends, _ = arcs.frames(np.array([0.0, 1.0]))
+    directions, _ = arcs.frames(np.array([0.0, 1.0]))
     half = 2.0 * np.sin(0.5 * arcs.turn)
     for end_of, sign in ((0, 1.0), (1, -1.0)):
-        first = per_vertex * arcs.order[:, 1 + end_of]
+        first = per_vertex * ends[:, end_of]
         value[number, first] = 0.5
         along[number, first] = -sign / length
         for c in (0, 1):
-            across[number, first + 1 + c] = sign * ends[:, end_of, c] / half
+            across[number, first + 1 + c] = sign * directions[:, end_of, c] / half
     slopes += (
         tangent[:, :, None] * along[:, None] + normal[:, :, None] * across[:, None]
     )

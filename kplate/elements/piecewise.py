@@ -8,16 +8,21 @@ Axes: n triangles, s pieces, k ordinates, d unknowns, q points.
 """
 
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
 
-from kplate.arrays import Bools, Floats
+from kplate.arrays import Bools, Floats, Ints
 from kplate.elements import bernstein
 from kplate.elements.arcs import Arcs
 from kplate.elements.lifts import lift
-from kplate.elements.triangle import Geometry, area, barycentric_gradients
+from kplate.elements.triangle import (
+    Geometry,
+    area,
+    barycentric_gradients,
+    edge_normals,
+)
 from kplate.quadrature import Rule, composite, gauss, triangle_rule
 
 
@@ -34,9 +39,10 @@ class Piecewise:
     ordinates : callable
         Vertices (n, 3, 2) to the matrices (n, s, k, d) that turn unknowns into the
         ordinates of each piece.
-    on_arcs : callable, optional
-        Round edges and the matrices (m, k, d) of the straight triangles to those of
-        the true ones, of an element of one piece that can follow arcs.
+    follows : bool
+        Whether it can follow arcs: its last three unknowns are the slopes in the middle
+        of the edges. Of several pieces, each has one edge of the triangle, between its
+        first two vertices.
 
     Where a function takes `arcs`, they are the round edges of the triangles at hand,
     whose barycentrics then reach beyond the straight triangles (`Arcs.bent`).
@@ -45,7 +51,7 @@ class Piecewise:
     degree: int
     pieces: Floats
     ordinates: Callable[[Floats], Floats]
-    on_arcs: Callable[[Arcs, Floats], Floats] | None = None
+    follows: bool = False
 
     @cached_property
     def rule(self) -> Rule:
@@ -67,7 +73,7 @@ class Piecewise:
         C = self._net(vertices, arcs)
         shape = np.broadcast_shapes(barycentrics.shape, (len(C), 1, 1))
         result = np.zeros((*shape[:-1], 3, C.shape[-1]))
-        for k, local, own in self._parts(barycentrics):
+        for k, local, own in self._parts(barycentrics, len(C), arcs):
             g = self._gradients(vertices, k)
             by = bernstein.gradients(self.degree, local)
             rows = np.empty((*shape[:-1], 3, C.shape[2]))
@@ -88,7 +94,7 @@ class Piecewise:
         C = self._net(vertices, arcs)
         shape = np.broadcast_shapes(barycentrics.shape, (len(C), 1, 1))
         result = np.zeros((*shape[:-1], 3, C.shape[-1]))
-        for k, local, own in self._parts(barycentrics):
+        for k, local, own in self._parts(barycentrics, len(C), arcs):
             bends = curvature_of_pairs(self._gradients(vertices, k))
             by = bernstein.hessians(self.degree, local) * own[..., None, None]
             result += (bends[:, None] @ by) @ C[:, None, k]
@@ -132,7 +138,7 @@ class Piecewise:
         n, c = len(C), unknowns.shape[-1]
         q = barycentrics.shape[-2]
         result = np.zeros((n, q, 6 if order == 3 else 3, c))
-        for k, local, own in self._parts(barycentrics):
+        for k, local, own in self._parts(barycentrics, len(C), arcs):
             net = C[:, k] @ unknowns  # ordinates, (n, k, c)
             g = self._gradients(vertices, k)
             if order == 1:
@@ -177,7 +183,7 @@ class Piecewise:
 
     def round_stiffness(self, arcs: Arcs, rigidity: Floats) -> Floats:
         """Stiffness (m, d, d) of true triangles, for a rigidity (m, 3, 3) in N m."""
-        points, weights = arcs.rule
+        points, weights = self.round_rule(arcs)
         alone = arcs.alone()
         B = self.curvature(arcs.vertices, points, alone)
         m, q, _, d = B.shape
@@ -285,9 +291,58 @@ class Piecewise:
         """Ordinates of the unknowns, (n, s, k, d)."""
         C = self.ordinates(vertices)
         if arcs is not None and len(arcs):
-            assert self.on_arcs is not None
-            C[arcs.rows, 0] = self.on_arcs(arcs, C[arcs.rows, 0])
+            assert self.follows
+            C[arcs.rows] = self._with_moved_slopes(C[arcs.rows], arcs)
         return C
+
+    def _with_moved_slopes(self, C: Floats, arcs: Arcs) -> Floats:
+        """The same (m, s, k, d), the slopes on round edges those of the arcs' middles.
+
+        There the normal is that of the chord.
+        """
+        cones, number = self.cones(arcs), np.arange(len(arcs))
+        middle, _, _ = cones.at(np.array([0.5]))
+        by = bernstein.gradients(self.degree, cones.barycentrics(middle)[:, 0])
+        normal = edge_normals(arcs.vertices)[number, arcs.edges]
+        across = np.einsum("mvk,mvc,mc->mk", by, cones.gradients, normal)
+        slope = np.einsum("mk,mkd->md", across, C[number, self._holders(arcs)])
+        own = C.shape[-1] - 3 + arcs.edges
+        share = 1.0 / slope[number, own]
+        slope[number, own] = 0.0
+        column = C[number, :, :, own] * share[:, None, None]  # (m, s, k)
+        moved: Floats = C - column[..., None] * slope[:, None, None]
+        moved[number, :, :, own] = column
+        return moved
+
+    def cones(self, arcs: Arcs) -> Arcs:
+        """The pieces with a round edge, as triangles of their own."""
+        if len(self.pieces) == 1:
+            return arcs
+        last = np.full(len(arcs), 2)
+        vertices = self.pieces[arcs.edges] @ arcs.vertices
+        return replace(arcs, vertices=vertices, edges=last)
+
+    def round_rule(self, arcs: Arcs) -> tuple[Floats, Floats]:
+        """Quadrature of true triangles: barycentrics (m, q, 3), weights in m2."""
+        points, weights = self.cones(arcs).rule
+        if len(self.pieces) == 1:
+            return points, weights
+        rule = triangle_rule(2 * self.degree)
+        found = [(points @ self.pieces[arcs.edges], weights)]
+        for step in (1, 2):
+            other = (arcs.edges + step) % 3
+            size = self._shares[other] * area(arcs.vertices)
+            found.append(
+                (rule.points @ self.pieces[other], np.outer(size, rule.weights))
+            )
+        return (
+            np.concatenate([own for own, _ in found], axis=1),
+            np.concatenate([own for _, own in found], axis=1),
+        )
+
+    def _holders(self, arcs: Arcs) -> Ints:
+        """Number of the piece with the round edge, (m,)."""
+        return arcs.edges if len(self.pieces) > 1 else np.zeros(len(arcs), dtype=int)
 
     def _lifted(
         self, C: Floats, barycentrics: Floats, arcs: Arcs, order: int
@@ -296,7 +351,14 @@ class Piecewise:
         held = arcs.chosen(arcs.held)
         at = barycentrics if barycentrics.ndim == 2 else barycentrics[held.rows]
         at = np.broadcast_to(at, (len(held), *at.shape[-2:]))
-        return lift(held, self.degree, C[held.rows, 0], at, order)
+        own = C[held.rows, self._holders(held)]
+        ends = held.order[:, 1:]
+        if len(self.pieces) == 1:
+            return lift(held, self.degree, own, at, order, ends)
+        at = at @ np.linalg.inv(self.pieces)[held.edges]
+        rows = lift(self.cones(held), self.degree, own, at, order, ends)
+        beside = at[..., :2].min(axis=-1) < 0.0  # in one of the other pieces
+        return np.where(beside[..., None, None], 0.0, rows)
 
     def _take_off(
         self,
@@ -321,13 +383,25 @@ class Piecewise:
             return barycentric_gradients(vertices)
         return barycentric_gradients(self.pieces[k] @ vertices)
 
-    def _parts(self, barycentrics: Floats) -> Iterator[tuple[int, Floats, Bools]]:
-        """Each piece, the points' barycentrics in it, and which of them it holds."""
+    def _parts(
+        self, barycentrics: Floats, count: int = 1, arcs: Arcs | None = None
+    ) -> Iterator[tuple[int, Floats, Bools]]:
+        """Each piece, the points' barycentrics in it, and which of them it holds.
+
+        Beside a round edge a piece reaches as far as its cone does.
+        """
         if len(self.pieces) == 1:
             yield 0, barycentrics, np.ones(barycentrics.shape[:-1], dtype=bool)
             return
+        if arcs is not None and len(arcs) and barycentrics.ndim == 2:
+            barycentrics = np.broadcast_to(barycentrics, (count, *barycentrics.shape))
         local = [barycentrics @ np.linalg.inv(piece) for piece in self.pieces]
-        holder = np.argmax([own.min(axis=-1) for own in local], axis=0)
+        depth = np.stack([own.min(axis=-1) for own in local])
+        if arcs is not None:
+            for k, own in enumerate(local):
+                rows = arcs.rows[arcs.edges == k]
+                depth[k, rows] = own[rows, ..., :2].min(axis=-1)
+        holder = np.argmax(depth, axis=0)
         for k, own in enumerate(local):
             held = holder == k
             if held.any():

@@ -17,7 +17,6 @@ import numpy as np
 
 from kplate.arrays import Floats
 from kplate.elements import bernstein
-from kplate.elements.arcs import Arcs
 from kplate.elements.piecewise import Piecewise
 from kplate.elements.triangle import EDGES, barycentric_gradients, edge_normals
 
@@ -36,31 +35,8 @@ def ordinates(vertices: Floats) -> Floats:
     return C[:, None]
 
 
-def on_arcs(arcs: Arcs, straight: Floats) -> Floats:
-    """The same (m, 21, 21) where an edge is an arc, from those of straight triangles.
-
-    The slope on that edge is the one in the middle of the arc, along its own normal,
-    which is that of the chord.
-    """
-    C = straight.copy()
-    middle, _, _ = arcs.at(np.array([0.5]))
-    by = bernstein.gradients(DEGREE, arcs.barycentrics(middle)[:, 0])  # (m, 3, 21)
-    number = np.arange(len(arcs))
-    normal = edge_normals(arcs.vertices)[number, arcs.edges]
-    slope = np.einsum("mvk,mvc,mc->mk", by, arcs.gradients, normal)
-    for k in range(3):
-        own = np.flatnonzero(arcs.edges == k)
-        i, j = EDGES[k]
-        facing = _ordinate({i: 2, j: 2, k: 1})
-        C[own, facing] = 0.0
-        rest = -np.einsum("mk,mkd->md", slope[own], C[own])
-        rest[:, 18 + k] += 1.0
-        C[own, facing] = rest / slope[own, facing, None]
-    return C
-
-
 QUINTIC = Piecewise(
-    degree=DEGREE, pieces=np.eye(3)[None], ordinates=ordinates, on_arcs=on_arcs
+    degree=DEGREE, pieces=np.eye(3)[None], ordinates=ordinates, follows=True
 )
 
 

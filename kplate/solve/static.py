@@ -17,7 +17,7 @@ from kplate.linalg import Factor
 from kplate.loads import Case, Load
 from kplate.mesh import Mesh
 from kplate.plate import Plate
-from kplate.roundedges import round_edges
+from kplate.roundedges import check_room, round_edges
 
 Progress = Callable[[str, float], None]
 
@@ -214,7 +214,7 @@ class StaticSystem:
         """Work of the moments on what is taken off in triangles at held arcs."""
         numbering = self.numbering
         arcs = numbering.arcs.chosen(numbering.arcs.held)
-        points, weights = arcs.rule
+        points, weights = self.element.round_rule(arcs)
         table = numbering.table[arcs.rows]
         bent = assembly.without_rigid_motion(unknowns[table], arcs.vertices, numbering)
         held, free = (
@@ -273,10 +273,18 @@ def solve_static(
 
 
 def arcs_followed(plate: Plate, mesh: Mesh, element: Element) -> Arcs:
-    """Round edges of a mesh that an element follows; chords stand for the others."""
-    if element.shape.on_arcs is None or not element.conforming:
+    """Round edges of a mesh that an element follows; chords stand for the others.
+
+    An element of several pieces has no second derivatives to hold at the ends of an
+    arc, and its slope across a clamped one would not vanish: it follows all or none.
+    """
+    if not (element.shape.follows and element.conforming):
         return no_arcs()
-    return round_edges(plate, mesh)
+    arcs = round_edges(plate, mesh)
+    if len(element.shape.pieces) > 1 and arcs.clamps.any():
+        return no_arcs()
+    check_room(element.shape.cones(arcs))
+    return arcs
 
 
 def check_cases(cases: Sequence[Case]) -> None:
