@@ -5,8 +5,9 @@ the places that have no finite moment; bands are not estimated.
 """
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import replace
+from functools import partial
 
 from kplate.certifying import BUDGET, refine_to
 from kplate.choice import AUTO, TRIANGLES, choose
@@ -21,6 +22,7 @@ from kplate.guard import mesh_guarded
 from kplate.loads import Case, DiscPatch, Load, PointMoment, RectanglePatch
 from kplate.mesh import Mesh
 from kplate.meshing import mesh_outline, refined_triangles, size_for
+from kplate.outline import Outline
 from kplate.plate import Plate
 from kplate.refine import refined_towards
 from kplate.roundedges import fitted
@@ -53,6 +55,7 @@ APART = 0.02
 # Least number of edges on a full circle that an element follows: on a mesh of one size,
 # and on the first one on the way to a tolerance.
 AROUND, COARSE_AROUND = {"quintic": 32}, {"quintic": 12}
+MOST_AROUND = 400  # a rim that needs more is nearer to another than is sensible
 
 
 def solve(
@@ -198,17 +201,36 @@ def _single_mesh(
     element: str,
 ) -> Mesh:
     """A mesh of one size, finer where moments are not finite."""
-    fine = _fine(plate, cases, size, excluded_radius)
-    outline = plate.outline
-    inside = outline.zones or outline.seams or outline.marks
-    mesh = (mesh_guarded if inside else mesh_outline)(
-        outline,
+    mesher = partial(
+        _mesher(plate.outline),
+        plate.outline,
         size=size,
-        fine=fine,
+        fine=_fine(plate, cases, size, excluded_radius),
         graded=corner_grading(plate),
-        around=AROUND.get(element),
     )
-    return fitted(mesh, ELEMENTS[element].shape)
+    return _fitting(mesher, AROUND.get(element), element)
+
+
+def _mesher(outline: Outline) -> Callable[..., Mesh]:
+    inside = outline.zones or outline.seams or outline.marks
+    return mesh_guarded if inside else mesh_outline
+
+
+def _fitting(mesher: Callable[..., Mesh], around: int | None, element: str) -> Mesh:
+    """A mesh whose triangles have room for their round edges.
+
+    Between a round rim and another that is near it they have it only where they are
+    small: the rims then get twice as many edges, and so on.
+    """
+    shape = ELEMENTS[element].shape
+    while True:
+        mesh = mesher(around=around)
+        try:
+            return fitted(mesh, shape)
+        except MeshError:
+            if around is None or around > MOST_AROUND:
+                raise
+            around *= 2
 
 
 def _coarser(solution: Solution, size: float) -> tuple[Solution, ...]:
@@ -280,10 +302,8 @@ def _to_tolerance(
 
     def mesh_for(wanted: Sequence[Goal]) -> Mesh:
         outline = followed(plate.outline, cases, wanted)
-        inside = outline.zones or outline.seams or outline.marks
-        mesh = (mesh_guarded if inside else mesh_outline)(
-            outline, size=size, around=COARSE_AROUND.get(element)
-        )
+        mesher = partial(_mesher(outline), outline, size=size)
+        mesh = _fitting(mesher, COARSE_AROUND.get(element), element)
         # Discs from twice the radius on: their rims then lie among small triangles.
         finer = refined_towards(
             mesh,

@@ -9,6 +9,7 @@ import numpy as np
 from kplate.arrays import Ints
 from kplate.elements.arcs import Arcs
 from kplate.elements.piecewise import Piecewise
+from kplate.elements.quintic import QUINTIC
 from kplate.errors import MeshError
 from kplate.mesh import STRAIGHT_EDGE, Mesh
 from kplate.plate import Plate
@@ -66,7 +67,7 @@ def check_room(arcs: Arcs) -> None:
         )
 
 
-def fitted(mesh: Mesh, shape: Piecewise) -> Mesh:
+def fitted(mesh: Mesh, shape: Piecewise = QUINTIC) -> Mesh:
     """Part triangles until each has one round edge at most, and room for it.
 
     `shape` is that of the element; nothing is done where it does not follow arcs.

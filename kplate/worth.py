@@ -147,9 +147,9 @@ def _cut(mesh: Mesh, loads: Sequence[Load], arcs: Arcs) -> str:
     along, _, _ = arcs.at(np.linspace(0.0, 1.0, 9))
     points = np.concatenate([along, arcs.vertices], axis=1)
     for load in loads:
-        whole = _loaded(load, points).all(axis=1)
+        part = np.flatnonzero(~_loaded(load, points).all(axis=1))
         if unbalanced(mesh, load)[arcs.rows].any() or _at_bulges(
-            load, arcs.chosen(~whole)
+            load, arcs.chosen(part)
         ):
             return "a load is not linear on triangles at a round side"
     return ""
