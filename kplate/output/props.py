@@ -79,6 +79,7 @@ class Props:
         self.layers: dict[str, Layer] = {}
         self.dragging = False
         self._few: tuple[Ints, Ints] | None = None
+        self._smooth = 0
 
     @property
     def is_heavy(self) -> bool:
@@ -331,8 +332,12 @@ class Props:
                 layer.lift(scale)
 
     def drag(self, *, on: bool) -> None:
-        """Begin or end a drag: few for many, and back."""
+        """Begin or end a drag: few for many, rough for smooth edges, and back."""
         self.dragging = on
+        window = self.plotter.render_window
+        if on:
+            self._smooth = window.GetMultiSamples() or self._smooth
+        window.SetMultiSamples(0 if on else self._smooth)
         if not on:
             self.lift(self.scale)
         self._show_parts()

@@ -26,6 +26,8 @@ RISE = 0.14  # largest deflection at first, as a share of the plate's mean size
 MOST_REASONS = 6  # lines of reasons under a picture
 UP, DOWN, LOAD, RED = "#00695c", "#8e24aa", "#b35900", "#c1272d"
 STRETCHED, PRESSED = "#7a0017", "#0b2f66"  # as the colours of their signs
+ROUND = 3e-7  # share of a field's largest value that single precision may blur
+NEAR = 0.03  # of the mean size, within which a click finds a place asked for
 NOTE, INDENT = 72, "     "  # letters of a line under a picture; where it goes on
 DASH = 0.02  # of lines below zero, share of the mean size
 SWITCHES = {  # what can be shown or not, and whether it is at first
@@ -215,8 +217,12 @@ class Stage:
         elif reading.difference is None:
             lines.append("    no difference of primal and dual is kept for it")
         else:
+            # Fields in single precision do not tell less.
+            least = ROUND * float(np.abs(self.values).max())
+            words = f"{max(reading.difference, least):.2g} {unit}"
+            less = "less than " if reading.difference < least else ""
             lines.append(
-                f"    primal and dual differ by {reading.difference:.2g} {unit} here "
+                f"    primal and dual differ by {less}{words} here "
                 "(estimate, not a bound)"
             )
         for asked in self.result.told.asked:
@@ -225,7 +231,7 @@ class Stage:
 
     def _asked_words(self, asked: dict[str, Any], reading: Reading) -> list[str]:
         """A number that was asked for at the place of a reading, with its band."""
-        near = 0.01 * self.result.size
+        near = NEAR * self.result.size
         if asked["case"] != self.case or asked.get("at") is None:
             return []
         if np.hypot(*np.subtract(asked["at"], reading.place)) > near:

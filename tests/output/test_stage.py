@@ -5,6 +5,7 @@ import re
 import numpy as np
 import pytest
 
+import kplate as kp
 from kplate.errors import InputError
 from kplate.output import screen
 from kplate.output.result import result_of
@@ -403,7 +404,9 @@ def test_while_it_is_dragged_a_large_plate_is_drawn_by_few_triangles(
     stage.refresh()
     props, actors = stage.props, stage.plotter.actors
     assert not actors["few"].GetVisibility()
+    smooth = stage.plotter.render_window.GetMultiSamples()
     props.drag(on=True)
+    assert stage.plotter.render_window.GetMultiSamples() == 0
     shown = {name for name, actor in actors.items() if actor.GetVisibility()}
     assert {"few", "rim"} <= shown
     assert not {"plate", "labels-labels", "contours below zero"} & shown
@@ -413,6 +416,7 @@ def test_while_it_is_dragged_a_large_plate_is_drawn_by_few_triangles(
     assert 200 < len(triangles) < 1500
     np.testing.assert_allclose(few.data.points[:, 2], 55.0 * props.w[kept], rtol=1e-6)
     props.drag(on=False)
+    assert stage.plotter.render_window.GetMultiSamples() == smooth
     assert actors["plate"].GetVisibility()
     assert not actors["few"].GetVisibility()
     plate = props.layers["plate"].data.points[:, 2]
@@ -447,8 +451,18 @@ def test_a_picture_of_a_solution_is_written(lid, tmp_path, ending):
     assert content.startswith(start)
     if ending == "svg":
         text = content.decode()
-        for words in ("moments xx [N]; deflection drawn x", "south: simply supported"):
-            assert words in text
+        texts = re.findall(r"<text[^>]*>([^<]*)</text>", text)
+        assert not any("\n" in own for own in texts)  # it would be drawn as a space
+        for words in (
+            "case wind: 5.00 kPa down",
+            "south: simply supported",
+            "moments xx",
+            "[N]",
+        ):
+            assert words in texts
+        assert any(
+            own.startswith("moments xx [N]; deflection drawn x") for own in texts
+        )
     assert [p.name for p in tmp_path.iterdir()] == [path.name]
 
 
@@ -475,3 +489,38 @@ def test_a_picture_by_another_name_is_refused(lid, tmp_path):
     assert str(caught.value) == (
         f"'{tmp_path / 'a.jpg'}' must end in .png, .svg or .pdf; name it so."
     )
+
+
+@pytest.mark.usefixtures("_no_display")
+def test_a_number_asked_for_is_shown_with_its_band_where_it_was_asked():
+    sides = ["a", "b", "c", "d"]
+    plate = kp.Plate(
+        outline=kp.Outline.polygon([(0, 0), (1, 0), (1, 1), (0, 1)], sides=sides),
+        thickness=0.01,
+        material=kp.STEEL,
+        supports=dict.fromkeys(sides, kp.SIMPLY_SUPPORTED),
+    )
+    goal = kp.Moment(at=(0.5, 0.5), component="m_xx")
+    solution = kp.solve(plate, [kp.Pressure(-1e4)], tolerance=0.05, goals=[goal])
+    found = staged(result_of(solution))
+    try:
+        middles = found.result.fields.points[found.result.fields.triangles, :2].mean(
+            axis=1
+        )
+        value = solution.value(goal)
+        for place, near in (((0.5, 0.5), True), ((0.2, 0.7), False)):
+            triangle = int(np.hypot(*(middles - place).T).argmin())
+            found.read(triangle, np.full(3, 1.0 / 3.0))
+            said = " ".join(found.notes().split())
+            assert re.search(
+                r"primal and dual differ by (less than )?[1-9.e-]\S* mm here "
+                r"\(estimate, not a bound\)",
+                said,
+            )
+            words = (
+                f"asked for at (0.5, 0.5) m: m_xx {value.value:.4g}, {value.kind} "
+                f"{value.lower:.4g} to {value.upper:.4g} (SI)"
+            )
+            assert (words in said) == near
+    finally:
+        found.plotter.close()
