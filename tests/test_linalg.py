@@ -8,6 +8,7 @@ import pytest
 import scipy.sparse as sp
 from plates import grid
 
+from kplate import linalg
 from kplate.elements import ELEMENTS
 from kplate.elements.triangle import Geometry
 from kplate.errors import SolveError
@@ -161,3 +162,12 @@ def test_a_diagonal_that_is_not_positive_is_refused(solver, value):
     text = "the stiffness has a vanishing diagonal; a part of the plate is loose."
     with pytest.raises(SolveError, match=f"^{re.escape(text)}$"):
         Factor(lower(A))
+
+
+def test_a_large_matrix_is_factored_after_memory_is_given_back(monkeypatch):
+    """The same answer, whether there is anything to give back or not."""
+    lower = sp.csc_array(sp.diags_array(np.full(400, 2.0)).tocsc())
+    right = np.linspace(0.0, 1.0, 400)
+    small = linalg.Factor(lower).solve(right)
+    monkeypatch.setattr(linalg, "LARGE", 100)
+    np.testing.assert_array_equal(linalg.Factor(lower).solve(right), small)
