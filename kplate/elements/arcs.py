@@ -177,7 +177,7 @@ class Arcs:
         weights = (cross * around)[:, :, None] * (t * along)
         m = len(self)
         flat = points.reshape(m, len(s) * len(t), 2)
-        return self.barycentrics(flat), weights.reshape(m, -1)
+        return self.barycentrics(flat), weights.reshape(m, flat.shape[1])
 
     @cached_property
     def steepness(self) -> Floats:
