@@ -32,7 +32,7 @@ from kplate.files import replacing
 
 COMMANDS = {
     "convergence": "error of one number against unknowns, element by element",
-    "bands": "bands of numbers with straight sides beside their values",
+    "bands": "bands of numbers beside values computed otherwise",
     "page": "all of it as one HTML file: every case, convergence, times",
     "elements": "unknowns and seconds to an error, element by element",
     "timing": "times of each stage, memory and growth, as ratios of one run",

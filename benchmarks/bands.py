@@ -1,6 +1,6 @@
 """Bands against the reference: ``python -m benchmarks bands --tolerance 0.01``.
 
-Every number of a bending problem with straight sides is stated as a goal where its kind
+Every number of a bending problem, round ones too, is stated as a goal where its kind
 allows a bound, the plate is solved to the tolerance for all of them together, and the
 band is set beside the value computed without finite elements. Numbers without a bound
 are listed with the reason.
@@ -80,7 +80,7 @@ def main(tolerance: float, names: Sequence[str] | None = None) -> int:
     start, tally = time.perf_counter(), Tally()
     head = ("case", "quantity", "value", "lower", "upper", "reference", "in", "eff.")
     print(LINE.format(*head))
-    for problem in straight(names):
+    for problem in records.chosen(names or (), None):
         for band in bands(problem, tolerance, tally):
             numbers = (band.value, band.lower, band.upper, band.reference)
             mark = "yes" if band.inside else "NO"
@@ -91,13 +91,6 @@ def main(tolerance: float, names: Sequence[str] | None = None) -> int:
     _print_counts(tally, tolerance, time.perf_counter() - start)
     outside = [e for e in tally.energies if not e.inside]
     return len(_false(tally)) + len(outside)
-
-
-def straight(names: Sequence[str] | None = None) -> Iterator[dict[str, Any]]:
-    """Problems whose sides are all straight, those of these names only if given."""
-    for problem in records.records():
-        if (names is None or problem["id"] in names) and not is_round(problem):
-            yield problem
 
 
 def is_round(problem: dict[str, Any]) -> bool:
