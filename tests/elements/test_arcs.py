@@ -417,3 +417,11 @@ def test_the_numbers_of_the_vertices_do_not_matter(data, turn, state, p, rolled)
     for order in (1, 2):
         found = jet(other, points, unknowns(other, p), order)
         assert_equal(found, jet(arcs, points, unknowns(arcs, p), order), 1e-7)
+
+
+def test_no_arcs_have_no_points():
+    """Of no triangles everything is empty, not wrong in shape."""
+    points, weights = QUINTIC.round_rule(no_arcs())
+    assert points.shape[0] == weights.shape[0] == 0
+    assert points.shape[1:] == (weights.shape[1], 3)
+    assert QUINTIC.round_stiffness(no_arcs(), np.empty((0, 3, 3))).shape == (0, 21, 21)
