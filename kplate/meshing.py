@@ -111,8 +111,9 @@ def mesh_outline(
     graded : sequence of (place, size)
         Places from which the length grows at once.
     around : int, optional
-        Least number of edges on a full circle; 96 if left out, 48 where there are more
-        than twelve holes, as chords need that stand for arcs.
+        Least number of edges on a full round rim; 96 if left out, 48 where there are
+        more than twelve holes, as chords need that stand for arcs. Circles inside the
+        plate, of zones and seams, have as many in any case.
 
     Returns
     -------
@@ -138,12 +139,11 @@ def mesh_outline(
     with gmsh_model(size) as gmsh:
         try:
             model = _build(gmsh, outline)
-            if around is None:
-                few = len(outline.holes) <= FEW_HOLES
-                around = EDGES_ON_CIRCLE if few else EDGES_ON_MANY
+            few = len(outline.holes) <= FEW_HOLES
+            chords = EDGES_ON_CIRCLE if few else EDGES_ON_MANY
             discs = [(*place, WITHIN) for place in fine]
             discs += [(*place, 1.0) for place in graded]
-            _grade(gmsh, size, discs, around)
+            _grade(gmsh, size, discs, (around or chords, chords))
             gmsh.model.mesh.generate(2)
         except Exception as error:
             raise MeshError(
@@ -297,7 +297,10 @@ def _add_pieces(occ: Any, points: Floats, bulges: Floats, *, closed: bool) -> li
 
 
 def _grade(
-    gmsh: Any, size: float, discs: Sequence[tuple[Place, float, float]], around: int
+    gmsh: Any,
+    size: float,
+    discs: Sequence[tuple[Place, float, float]],
+    around: tuple[int, int],
 ) -> None:
     """Let edges grow from arcs, short curves and refined places by one field."""
     field = gmsh.model.mesh.field
@@ -305,7 +308,7 @@ def _grade(
     for least, group in _curve_groups(gmsh, size, around):
         distance = field.add("Distance")
         field.setNumbers(distance, "CurvesList", group)
-        field.setNumber(distance, "Sampling", max(around, EDGES_ON_MANY))
+        field.setNumber(distance, "Sampling", max(around))
         tags.append(_growing(field, distance, least, size))
     for (x, y), least, within in discs:
         if least < size:
@@ -326,13 +329,17 @@ def _grade(
         field.setAsBackgroundMesh(smallest)
 
 
-def _curve_groups(gmsh: Any, size: float, around: int) -> list[tuple[float, list[int]]]:
+def _curve_groups(
+    gmsh: Any, size: float, around: tuple[int, int]
+) -> list[tuple[float, list[int]]]:
     """Curves that need edges of less than the size, grouped with the least of each.
+
+    A full circle gets `around` edges: where it is a rim, and where it lies inside.
 
     Grouped, since each group costs a search.
     """
     curves_by_edge = sorted(
-        (_curve_edge(gmsh, curve, around), curve)
+        (_curve_edge(gmsh, curve, around[_lies_inside(gmsh, curve)]), curve)
         for _, curve in gmsh.model.getEntities(1)
     )
     groups: list[tuple[float, list[int]]] = []
@@ -343,6 +350,12 @@ def _curve_groups(gmsh: Any, size: float, around: int) -> list[tuple[float, list
             groups.append((edge, []))
         groups[-1][1].append(curve)
     return groups
+
+
+def _lies_inside(gmsh: Any, curve: int) -> bool:
+    """Whether a curve has surfaces on both sides."""
+    surfaces, _ = gmsh.model.getAdjacencies(1, curve)
+    return len(surfaces) != 1
 
 
 def _curve_edge(gmsh: Any, curve: int, around: int) -> float:
