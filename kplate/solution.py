@@ -283,6 +283,11 @@ class Solution(Solved):
             assert isinstance(self._recovered, RawMoments)
             return deflection_band(self.state, self.dual, self._recovered, index)
         at = self._sharpened(quantity, self._candidates(index), index)
+        return self._band_among(quantity, at, index)
+
+    def _band_among(self, quantity: str, at: Candidates, index: int) -> PeakBand:
+        """Band of a peak among sharpened candidates, from the dual's values there."""
+        assert self.dual is not None
         own = self.mesh.barycentrics(at.triangles, at.places)[:, None]
         moments = self.dual.moments_at(at.triangles, own)[:, 0, :, index]
         shears = self.dual.shears_at(at.triangles, own)[:, 0, :, index]
@@ -310,7 +315,8 @@ class Solution(Solved):
                     case=case,
                     reason="is not known: the places left out cover the plate",
                 )
-            found = extreme(quantity, self._sharpened(quantity, at, index))
+            at = self._sharpened(quantity, at, index)
+            found = extreme(quantity, at)
         value, place, face = found
         result = Value(value=value, place=place, face=face, case=case)
         kind: Kind = "estimate"
@@ -328,8 +334,10 @@ class Solution(Solved):
             kind = "indicator"
         elif self.dual is None:
             return result
-        else:
+        elif quantity == "deflection":
             band = self.peak_band(quantity, case=case)
+        else:
+            band = self._band_among(quantity, at, index)
         size = abs(value)
         low, high = min(band.lower, size), max(band.upper, size)
         low, high = (low, high) if value >= 0.0 else (-high, -low)
@@ -431,6 +439,17 @@ class Solution(Solved):
         )
 
     def _candidates(self, index: int) -> Candidates:
+        """Where moments may peak in a case; those of the last case are kept."""
+        if index not in self._last_candidates:
+            self._last_candidates.clear()
+            self._last_candidates[index] = self._found_candidates(index)
+        return self._last_candidates[index]
+
+    @cached_property
+    def _last_candidates(self) -> dict[int, Candidates]:
+        return {}
+
+    def _found_candidates(self, index: int) -> Candidates:
         """Places at which moments may peak, with moments, shears and thickness there.
 
         They are taken as linear between the samples and what is asked of them is
@@ -469,15 +488,25 @@ class Solution(Solved):
         triangles = np.unique(at.triangles[close][:MOST])
         corners = self.mesh.points[self.mesh.triangles[triangles]]
         arcs = self.state.constraints.numbering.arcs.among(triangles)
-        inner = arcs.bent(Lattice.of(FINE).barycentrics, len(triangles)) @ corners
-        points = inner.reshape(-1, 2)
+        own = arcs.bent(Lattice.of(FINE).barycentrics, len(triangles))
+        points = own @ corners
+        owners = np.repeat(triangles, points.shape[1])
+        points = points.reshape(-1, 2)
         case = self.cases[index]
         discs = [e for e in self.excluded if e.case in ("", case)]
-        points = points[outside(points, discs, 1.0)]
-        if not len(points):
+        kept = outside(points, discs, 1.0)
+        if not kept.any():
             return at
-        both = zip(at, self._at(points, index), strict=True)
-        return Candidates(*(np.concatenate([a, b]) for a, b in both))
+        moments, shears = self.fields_on(triangles, own)
+        finer = Candidates(
+            points,
+            moments[..., index].reshape(-1, 3),
+            shears[..., index].reshape(-1, 2),
+            self.plate.thicknesses[self.mesh.zones[owners]],
+            owners,
+        )
+        both = zip(at, finer, strict=True)
+        return Candidates(*(np.concatenate([a, b[kept]]) for a, b in both))
 
     def fields_on(self, triangles: Ints, barycentrics: Floats) -> tuple[Floats, Floats]:
         """Moments (n, q, 3, c) in N and shears (n, q, 2, c) in N/m of all cases.
