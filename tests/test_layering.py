@@ -33,7 +33,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"solve", "unbalanced"},
     {"samples"},
     {"recovery"},
-    {"stations", "rims"},
+    {"stations", "rims", "heldedges"},
     {"traces"},
     {"answers", "raw", "peaks", "goals", "kernels", "tracelines"},
     {"dualforces", "rimkernels", "clearance"},
