@@ -19,7 +19,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"shapes", "placement", "joining", "chaining", "rounding"},
     {"interior"},
     {"outline", "cutting", "entities"},
-    {"mesh", "sampling"},
+    {"mesh", "sampling", "sizefields"},
     {"supports", "loads"},
     {"combinations"},
     {"elements", "corners", "meshing", "drawings", "tracing", "meshgroups", "describe"},

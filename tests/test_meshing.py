@@ -16,9 +16,7 @@ from kplate.errors import InputError, MeshError
 from kplate.mesh import STRAIGHT_EDGE
 from kplate.meshing import (
     EDGES_ON_CIRCLE,
-    GROWTH,
     LARGEST,
-    WITHIN,
     mesh_outline,
     refined_triangles,
     size_for,
@@ -26,6 +24,7 @@ from kplate.meshing import (
 from kplate.outline import Outline
 from kplate.polygon import Polygon
 from kplate.shapes import Circle, Ellipse, Rectangle, Slot
+from kplate.sizefields import GROWTH, WITHIN
 
 SQUARE = np.array([(0.0, 0.0), (1.0, 0.0), (1.0, 1.0), (0.0, 1.0)])
 SIDES = ("south", "east", "north", "west")
