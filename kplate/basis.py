@@ -17,20 +17,13 @@ import numpy as np
 from kplate import assembly
 from kplate.arrays import Bools, Floats, Ints
 from kplate.elements.arcs import Arcs
-from kplate.peaks import (
-    FACTOR,
-    Candidates,
-    climb,
-    doubts,
-    extreme,
-    measures,
-    peak_band,
-)
+from kplate.peaks import FACTOR, Candidates, climb, doubts, extreme, measures, peak_band
 from kplate.recovery import principal_moments, von_mises
 from kplate.rims import outside, rim
 from kplate.samples import Lattice
+from kplate.searched import CLOSE, FINE, MOST
 from kplate.singular import Excluded
-from kplate.solution import CLOSE, FINE, MOST, Solution
+from kplate.solution import Solution
 from kplate.values import Value, scaled
 from kplate.woodarmer import DESIGN
 

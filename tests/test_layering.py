@@ -41,6 +41,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"kernelled", "brackets", "worth", "coarser"},
     {"bands"},
     {"solved", "summits"},
+    {"searched"},
     {"solution", "following", "influence"},
     {"combining", "limits"},
     {"extremes", "asking"},
