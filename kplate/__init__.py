@@ -92,8 +92,9 @@ from kplate.recovery import principal_moments
 from kplate.roaming import Roamed, Roaming, roam
 from kplate.sensitivity import Parameter, Sensitivity, sensitivities
 from kplate.shapes import Circle, Ellipse, Rectangle, Slot
-from kplate.sizing import Size, Sizing, Stock, size
+from kplate.sizing import Size, Sizing, size
 from kplate.solution import Solution
+from kplate.stock import Stock
 from kplate.supports import CLAMPED, FREE, GUIDED, SIMPLY_SUPPORTED, Support
 from kplate.validity import Validity, validity
 from kplate.values import Value

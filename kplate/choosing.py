@@ -13,8 +13,9 @@ from kplate.output.tables import columns
 from kplate.panel import Panel, read_panel
 from kplate.placing import Placed, placed
 from kplate.sensitivity import Sensitivity, sensitivities
-from kplate.sizing import Size, Sizing, Stock, size
+from kplate.sizing import Size, Sizing, size
 from kplate.solve.static import Progress
+from kplate.stock import Stock
 from kplate.superposed import follows
 from kplate.validity import FLAG
 

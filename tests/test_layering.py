@@ -20,7 +20,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"interior"},
     {"outline", "cutting", "entities"},
     {"mesh", "sampling", "sizefields"},
-    {"supports", "loads"},
+    {"supports", "loads", "stock"},
     {"combinations"},
     {"elements", "corners", "meshing", "drawings", "tracing", "meshgroups", "describe"},
     {"meshfiles", "vertices", "dxf", "step", "refine"},

@@ -28,9 +28,10 @@ from kplate.outline import Outline
 from kplate.panel import read_panel
 from kplate.plate import Plate, Section
 from kplate.shapes import Rectangle
-from kplate.sizing import Stock, allowed_at, size, steel_strength
+from kplate.sizing import allowed_at, size, steel_strength
 from kplate.solution import Solution
 from kplate.solve.static import solve_static
+from kplate.stock import Stock
 from kplate.supports import SIMPLY_SUPPORTED
 from kplate.validity import State
 
