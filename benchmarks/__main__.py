@@ -25,10 +25,10 @@ from benchmarks import (
     timing,
     window,
 )
-from kplate.check import version
 from kplate.elements import ELEMENTS
 from kplate.errors import KplateError
 from kplate.files import replacing
+from kplate.heading import version
 
 COMMANDS = {
     "convergence": "error of one number against unknowns, element by element",

@@ -19,10 +19,10 @@ from kplate.checklines import (
     table_lines,
 )
 from kplate.choice import TRIANGLES, choose
-from kplate.describe import describe
 from kplate.errors import InputError
 from kplate.files import replacing
 from kplate.goals import Peak
+from kplate.heading import heading, thickness_words, version
 from kplate.independent import Independent, independent
 from kplate.judging import Judged, judgements, to_judge
 from kplate.limits import (
@@ -31,11 +31,10 @@ from kplate.limits import (
     Outcome,
     ReactionLimit,
     StepLimit,
-    StressLimit,
     Verdict,
     governing,
 )
-from kplate.limitwords import combination_lines, limit_words, stated_lines
+from kplate.limitwords import combination_lines, limit_words
 from kplate.output.asked import write_asked, write_line_plot
 from kplate.output.forcerows import write_reactions
 from kplate.output.picture import write_picture
@@ -57,7 +56,6 @@ from kplate.panel import Panel, read_panel
 from kplate.placing import Placed, placed
 from kplate.solution import Solution
 from kplate.solve.static import Progress
-from kplate.supports import Support
 from kplate.validity import FLAG, Validity, validity
 from kplate.woodarmer import DESIGN
 
@@ -65,8 +63,6 @@ CAUTION = (
     "Not checked: welds, bolts, the frame, fatigue, impact, buckling. Results are for "
     "a qualified\nengineer's judgement; local codes and licensed practice decide."
 )
-ROUND_OFF = 1e-9  # share of the sum of magnitudes below which a total is none
-SLIGHT = 0.01  # share of the largest line reaction below which uplift is not listed
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -216,74 +212,6 @@ def new_panel(path: Path) -> Path:
     return path
 
 
-def version() -> str:
-    """Version of the installed package."""
-    from importlib import metadata  # which takes long to import
-
-    return metadata.version("kplate")
-
-
-def heading(panel: Panel) -> list[str]:
-    """Identity, and the panel as it was understood."""
-    plate, length = panel.plate, panel.units.length
-    title = f"{panel.name}, {_thickness(panel)} {plate.material.name}"
-    if panel.revision:
-        title += f", revision {panel.revision}"
-    lines = [
-        f"{title}   input {panel.digest}, kplate {version()}",
-        describe(plate.outline, mass=plate.mass, unit=length),
-    ]
-    by_support: dict[Support, list[str]] = {}
-    for name in plate.outline.names:
-        by_support.setdefault(plate.support(name), []).append(name)
-    lines += [
-        f"{support.name} ({support.words}): {', '.join(names)}"
-        for support, names in by_support.items()
-    ]
-    lines += [
-        f"zone {name}: {short(h, panel.units.deflection.size)} "
-        f"{panel.units.deflection.symbol} {material.name}"
-        for name, (h, material) in zip(
-            plate.outline.zone_names, plate.sections[1:], strict=True
-        )
-    ]
-    others = {m.name for _, m in plate.sections} - {plate.material.name}
-    if others and any(isinstance(own, StressLimit) for own in panel.limits):
-        lines.append(
-            f"the stress limit is that of {plate.material.name}; it is held against "
-            f"zones of {', '.join(sorted(others))} alike"
-        )
-    lines += panel.notes
-    bends = _bends(panel)
-    if bends:
-        degrees = np.degrees(plate.bend_turn)
-        lines.append(
-            f"bends, turning less than {degrees:.3g} degrees, taken with one tangent: "
-            f"{', '.join(bends)} {length.symbol}"
-        )
-    return lines + stated_lines(panel)
-
-
-def _bends(panel: Panel) -> list[str]:
-    """Vertices between sides held alike that count as bends."""
-    plate, size = panel.plate, panel.units.length.size
-    places = []
-    for line in plate.outline.boundaries:
-        for i, (x, y) in enumerate(line.points):
-            before, after = (
-                plate.support(line.sides[i - 1]),
-                plate.support(line.sides[i]),
-            )
-            if (
-                before == after
-                and before.holds_deflection
-                and not line.straight[i]
-                and abs(line.turns[i]) < plate.bend_turn
-            ):
-                places.append(place_words((float(x), float(y)), size))
-    return places
-
-
 def _closing(checked: Checked) -> list[str]:
     """Verdict, remarks, what was left out, balance and caution."""
     panel, solution = checked.panel, checked.solution
@@ -398,7 +326,7 @@ def _write(checked: Checked, out: Path) -> tuple[Path, ...]:
         out / f"{name}.png",
         case=worst,
         units=panel.units,
-        title=f"{panel.name}, {_thickness(panel)} {panel.plate.material.name}",
+        title=f"{panel.name}, {thickness_words(panel)} {panel.plate.material.name}",
     )
     files = [
         write_vtk(solution, out / f"{name}.vtu", design=panel.design),
@@ -494,8 +422,3 @@ def _si_unit(judgement: Judgement) -> str:
         case ReactionLimit(at=where):
             return "N/m" if where == "sides" else "N"
     return "Pa"
-
-
-def _thickness(panel: Panel) -> str:
-    unit = panel.units.deflection
-    return f"{short(panel.plate.thickness, unit.size)} {unit.symbol}"

@@ -5,9 +5,10 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
-from kplate.check import CAUTION, heading
+from kplate.check import CAUTION
 from kplate.checklines import short
 from kplate.errors import InputError
+from kplate.heading import heading
 from kplate.limits import StressLimit
 from kplate.output.tables import columns
 from kplate.panel import Panel, read_panel

@@ -13,7 +13,8 @@ import oracles
 import pytest
 
 from kplate import cli
-from kplate.check import check, new_panel, version
+from kplate.check import check, new_panel
+from kplate.heading import version
 from kplate.limits import Outcome
 from kplate.panel import read_panel
 

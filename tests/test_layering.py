@@ -54,7 +54,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"limitfields", "combinationfields"},
     {"panel"},
     {"checklines", "limitwords"},
-    {"asklines", "placing", "comparing"},
+    {"asklines", "placing", "comparing", "heading"},
     {"check"},
     {"choosing"},
     {"cli"},

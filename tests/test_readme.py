@@ -5,8 +5,9 @@ from pathlib import Path
 
 import pytest
 
-from kplate.check import check, version
+from kplate.check import check
 from kplate.cli import main
+from kplate.heading import version
 
 ROOT = Path(__file__).parents[1]
 README = (ROOT / "README.md").read_text("utf-8")
