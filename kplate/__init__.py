@@ -86,10 +86,11 @@ from kplate.output.surface import write_influence
 from kplate.output.view import view, write_view
 from kplate.output.vtk import write_vtk
 from kplate.panel import Panel, read_panel
+from kplate.patches import Roaming
 from kplate.plate import Plate, Section
 from kplate.polygon import Polygon
 from kplate.recovery import principal_moments
-from kplate.roaming import Roamed, Roaming, roam
+from kplate.roaming import Roamed, roam
 from kplate.sensitivity import Parameter, Sensitivity, sensitivities
 from kplate.shapes import Circle, Ellipse, Rectangle, Slot
 from kplate.sizing import Size, Sizing, size

@@ -24,9 +24,9 @@ from kplate.loads import (
     SelfWeight,
 )
 from kplate.outline import Outline
+from kplate.patches import Roaming
 from kplate.plate import Plate
 from kplate.quantities import positive, quantity, two_lengths
-from kplate.roaming import Roaming
 
 # What each table may hold, each field with a value as it is written.
 CASE = {

@@ -26,9 +26,9 @@ from kplate.limits import Limit
 from kplate.loads import Case
 from kplate.outline import Outline
 from kplate.outlines import read_outline
+from kplate.patches import Roaming
 from kplate.plate import Plate
 from kplate.quantities import share, unit
-from kplate.roaming import Roaming
 from kplate.statements import (
     read_material,
     read_supports,

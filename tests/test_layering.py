@@ -44,7 +44,7 @@ LAYERS = [  # ground floor first; those on one line do not import each other
     {"searched"},
     {"solution", "following", "influence"},
     {"combining", "limits"},
-    {"extremes", "asking"},
+    {"extremes", "asking", "patches"},
     {"certifying", "basis"},
     {"adapt", "superposed", "sensitivity"},
     {"validity", "judging", "independent", "roaming", "presets"},

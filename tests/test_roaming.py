@@ -13,9 +13,10 @@ from kplate.loads import Case, DiscPatch, Pressure, RectanglePatch
 from kplate.materials import STEEL
 from kplate.outline import Outline
 from kplate.panel import read_panel
+from kplate.patches import Roaming, fits, placements
 from kplate.placing import placed
 from kplate.plate import Plate
-from kplate.roaming import HOLD_DOWN, Roaming, fits, placements, roam
+from kplate.roaming import HOLD_DOWN, roam
 from kplate.shapes import Circle, Rectangle
 from kplate.solution import Solution
 from kplate.solve.static import solve_static
