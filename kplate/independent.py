@@ -22,7 +22,6 @@ within a rectangle that is larger by `MARGIN`.
 """
 
 import math
-from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import Literal
 
@@ -31,38 +30,22 @@ import numpy as np
 from kplate.arrays import Floats
 from kplate.functionals import settled_vertices
 from kplate.handbook import Shaped, clamped_disc_work, disc_centre, rectangle
-from kplate.loads import (
-    DiscPatch,
-    EdgeMoment,
-    Hydrostatic,
-    LineForce,
-    Load,
-    PointForce,
-    PointMoment,
-    Pressure,
-    PressureField,
-    RectanglePatch,
-    SelfWeight,
-)
-from kplate.mesh import Mesh
+from kplate.loads import Pressure, SelfWeight
 from kplate.plate import Plate
+from kplate.pointforces import forces_at_places
 from kplate.polygon import SNAP
-from kplate.quadrature import composite, gauss, triangle_rule
-from kplate.samples import Lattice
 from kplate.shapes import Circle
 from kplate.solution import Solution
+from kplate.surrounding import Ends, Frame, frame_around, held_ends
 from kplate.units import Unit
 
 Relation = Literal["same", "upper", "lower", "compares"]
 # What a plate of the same kind may differ by, and a bound be missed by, as a share.
 AGREES, SLIP = 0.02, 0.005
-ENOUGH = 2000  # pieces of triangles, for pressures
 DISCS = 200  # places tried for the disc inside
 WEAK = 10.0  # a lower bound exceeded by this factor says nothing and is left out
 MARGIN = 1e-3  # for what chords of arcs miss
 ROUND_OFF = 1e-9
-
-Ends = tuple[str, str, str, str]
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -165,7 +148,7 @@ def independent(solution: Solution, *, case: str) -> tuple[Independent, ...]:
         Empty where no formula is near, such as for loads that are moments.
     """
     loads = solution.state.cases[solution.cases.index(case)].loads
-    acting = _forces(solution.plate, solution.mesh, loads)
+    acting = forces_at_places(solution.plate, solution.mesh, loads)
     if acting is None or not np.abs(acting[1]).any():
         return ()
     places, forces = acting
@@ -179,26 +162,6 @@ def independent(solution: Solution, *, case: str) -> tuple[Independent, ...]:
         lower = None
     found = [judge.upper(), lower, judge.compares()]
     return tuple(own for own in found if own is not None)
-
-
-@dataclass(frozen=True, eq=False)
-class _Frame:
-    """A rectangle around a plate: its origin, axes (2, 2) and size."""
-
-    origin: Floats
-    axes: Floats
-    size: tuple[float, float]
-
-    def wider(self, share: float) -> "_Frame":
-        """The same, larger by a share of its size all round."""
-        a, b = self.size
-        origin = self.origin - share * np.array(self.size) @ self.axes
-        return _Frame(origin, self.axes, ((1 + 2 * share) * a, (1 + 2 * share) * b))
-
-    def own(self, places: Floats) -> Floats:
-        """Places in the rectangle's own axes."""
-        local: Floats = (places - self.origin) @ self.axes.T
-        return np.clip(local, 0.0, self.size)
 
 
 @dataclass(frozen=True, eq=False)
@@ -219,18 +182,18 @@ class _Judge:
             return None
         if isinstance(plate.outline.rim, Circle):
             return self._disc()
-        frame = _frame(plate)
+        frame = frame_around(plate)
         a, b = frame.size
         if abs(plate.outline.area - a * b) > ROUND_OFF * a * b:
             return None
-        ends = _ends(plate, self.solution.mesh, frame, alike=True)
+        ends = held_ends(plate, self.solution.mesh, frame, alike=True)
         return None if ends is None else self._at_peak("same", frame, ends)
 
     def compares(self) -> Independent | None:
         """The rectangle around the plate."""
         plate = self.solution.plate
-        frame = _frame(plate)
-        ends = _ends(plate, self.solution.mesh, frame, alike=False)
+        frame = frame_around(plate)
+        ends = held_ends(plate, self.solution.mesh, frame, alike=False)
         found = None if ends is None else self._at_peak("compares", frame, ends)
         if found is None:
             return None
@@ -254,7 +217,7 @@ class _Judge:
             word = "simply supported"
         else:
             return None
-        frame, ends = _frame(plate), (word,) * 4
+        frame, ends = frame_around(plate), (word,) * 4
         if (outline.boundaries[0].bulges != 0.0).any():
             frame = frame.wider(MARGIN)
         shaped = self._bent(frame, ends, _stiffness_shares(plate)[0])
@@ -315,7 +278,7 @@ class _Judge:
             value=abs(value),
         )
 
-    def _bent(self, frame: _Frame, ends: Ends, share: float = 1.0) -> Shaped | None:
+    def _bent(self, frame: Frame, ends: Ends, share: float = 1.0) -> Shaped | None:
         h, material = self.solution.plate.sections[0]
         return rectangle(
             frame.size,
@@ -327,7 +290,7 @@ class _Judge:
         )
 
     def _at_peak(
-        self, relation: Relation, frame: _Frame, ends: Ends
+        self, relation: Relation, frame: Frame, ends: Ends
     ) -> Independent | None:
         """The deflection of a rectangle where that of the plate peaks."""
         shaped = self._bent(frame, ends)
@@ -348,7 +311,7 @@ class _Judge:
         )
 
     def _work(
-        self, relation: Relation, frame: _Frame, ends: Ends, shaped: Shaped
+        self, relation: Relation, frame: Frame, ends: Ends, shaped: Shaped
     ) -> Independent:
         """The work of the loads on a rectangle."""
         work = float(self.forces @ shaped.deflection(frame.own(self.places)))
@@ -404,59 +367,6 @@ def _stiffness_shares(plate: Plate) -> tuple[float, float]:
     return float(shares.min()), float(shares.max())
 
 
-def _frame(plate: Plate) -> _Frame:
-    """The rectangle around a plate along its longest straight side."""
-    line = plate.outline.boundaries[0]
-    points = np.asarray(line.points, dtype=float)
-    steps = np.roll(points, -1, axis=0) - points
-    lengths = np.where(line.bulges == 0.0, np.hypot(*steps.T), 0.0)
-    along = np.array([1.0, 0.0])
-    if lengths.any():
-        along = steps[lengths.argmax()] / lengths.max()
-    # Of the four ways to turn it, that nearest the plate's own axes.
-    turn = round(2.0 * math.atan2(along[1], along[0]) / math.pi)
-    c, s = (1, 0, -1, 0)[turn % 4], (0, 1, 0, -1)[turn % 4]
-    along = np.array([c * along[0] + s * along[1], c * along[1] - s * along[0]])
-    axes = np.array([along, [-along[1], along[0]]])
-    reach = np.array(plate.outline.region.exterior.coords) @ axes.T
-    low, high = reach.min(axis=0), reach.max(axis=0)
-    a, b = (high - low).tolist()
-    return _Frame(low @ axes, axes, (a, b))
-
-
-def _ends(plate: Plate, mesh: Mesh, frame: _Frame, *, alike: bool) -> Ends | None:
-    """Supports of the rectangle's sides, from the plate's that face the same way.
-
-    `alike`: only where all that face one way are; else what most of the length is.
-    """
-    rim = np.isin(
-        mesh.boundary_sides,
-        [
-            mesh.side_names.index(n)
-            for n in plate.outline.rim.sides
-            if n in mesh.side_names
-        ],
-    )
-    edges, sides = mesh.boundary_edges[rim], mesh.boundary_sides[rim]
-    step = mesh.points[edges[:, 1]] - mesh.points[edges[:, 0]]
-    outward = np.column_stack([step[:, 1], -step[:, 0]]) @ frame.axes.T
-    facing = np.stack(
-        [-outward[:, 0], outward[:, 0], -outward[:, 1], outward[:, 1]]
-    ).argmax(axis=0)
-    lengths = np.hypot(*step.T)
-    words = np.array([plate.support(name).name for name in mesh.side_names])[sides]
-    ends = []
-    for way in range(4):
-        own = facing == way
-        by_word = {w: lengths[own & (words == w)].sum() for w in np.unique(words[own])}
-        if not by_word or (alike and len(by_word) > 1):
-            return None
-        ends.append(str(max(by_word, key=lambda w: by_word[w])))
-    if "guided" in ends:
-        return None
-    return ends[0], ends[1], ends[2], ends[3]
-
-
 def _convex(plate: Plate) -> bool:
     """Whether the rim is a convex polygon."""
     line = plate.outline.boundaries[0]
@@ -501,71 +411,3 @@ def _clearance(place: Floats, start: Floats, end: Floats) -> float:
     length = np.maximum(np.einsum("kc,kc->k", step, step), np.finfo(float).tiny)
     share = np.clip(np.einsum("kc,kc->k", place - start, step) / length, 0.0, 1.0)
     return float(np.hypot(*(start + share[:, None] * step - place).T).min())
-
-
-def _forces(
-    plate: Plate, mesh: Mesh, loads: Sequence[Load]
-) -> tuple[Floats, Floats] | None:
-    """All loads as forces at places; ``None`` where one is a moment."""
-    parts = []
-    for load in loads:
-        if isinstance(load, EdgeMoment | PointMoment):
-            return None
-        parts.append(_as_forces(plate, mesh, load))
-    return np.concatenate([p for p, _ in parts]), np.concatenate([f for _, f in parts])
-
-
-def _as_forces(plate: Plate, mesh: Mesh, load: Load) -> tuple[Floats, Floats]:
-    """A load as forces at places."""
-    match load:
-        case PointForce(force=force, at=at):
-            return np.array([at]), np.array([force])
-        case RectanglePatch(force=force, size=size, centre=centre, angle=angle):
-            s, weights = gauss(20)
-            x, y = np.meshgrid(s - 0.5, s - 0.5, indexing="ij")
-            local = np.column_stack([size[0] * x.ravel(), size[1] * y.ravel()])
-            c, d = math.cos(angle), math.sin(angle)
-            places = local @ np.array([[c, d], [-d, c]]) + centre
-            return places, force * np.outer(weights, weights).ravel()
-        case DiscPatch(force=force, centre=centre, radius=radius):
-            s, weights = gauss(16)
-            angles = 2.0 * np.pi * np.arange(40) / 40
-            r = radius * np.repeat(s, 40)
-            turned = np.tile(angles, 16)
-            places = np.column_stack([r * np.cos(turned), r * np.sin(turned)]) + centre
-            return places, force * np.repeat(2.0 * s * weights / 40, 40)
-        case LineForce(force=force, along=along):
-            _, edges = settled_vertices(mesh, along)
-            start, end = np.moveaxis(mesh.points[edges], 1, 0)
-            s, weights = gauss(4)
-            places = start[:, None] + s[:, None] * (end - start)[:, None]
-            lengths = np.hypot(*(end - start).T)
-            return places.reshape(-1, 2), (force * np.outer(lengths, weights)).ravel()
-    return _pressed(plate, mesh, load)
-
-
-def _pressed(plate: Plate, mesh: Mesh, load: Load) -> tuple[Floats, Floats]:
-    """A pressure as forces at places on all triangles."""
-    count = len(mesh.triangles)
-    lattice = Lattice.of(max(1, math.ceil(math.sqrt(ENOUGH / count))))
-    degree = 4 if count < 5 * ENOUGH else 1
-    rule = composite(lattice.barycentrics[lattice.triangles], triangle_rule(degree))
-    places = rule.points @ mesh.points[mesh.triangles]
-    x, y = places[..., 0], places[..., 1]
-    pressure = np.zeros(x.shape)
-    match load:
-        case Pressure(value=value, zone=zone):
-            here = np.ones(count, dtype=bool)
-            if zone is not None:
-                here = mesh.zones == mesh.zone_names.index(zone)
-            pressure[here] = value
-        case SelfWeight(acceleration=acceleration):
-            own = np.array([(m.density or 0.0) * h for h, m in plate.sections])
-            pressure[:] = (own * acceleration)[mesh.zones][:, None]
-        case Hydrostatic(level=level, specific_weight=weight, up=up):
-            depth = level - places @ (np.asarray(up, dtype=float) / np.hypot(*up))
-            pressure = weight * np.maximum(depth, 0.0)
-        case PressureField(function=function):
-            pressure = np.broadcast_to(np.asarray(function(x, y), dtype=float), x.shape)
-    forces = pressure * rule.weights * mesh.areas[:, None]
-    return places.reshape(-1, 2), forces.ravel()
