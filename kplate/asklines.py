@@ -5,7 +5,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from kplate.asking import ASKED, Ask, asked_values, left_out, values_at
-from kplate.checklines import at
+from kplate.checklines import ROUND_OFF, at
 from kplate.judging import Judged
 from kplate.output.tables import AskedRow
 from kplate.panel import Panel
@@ -77,6 +77,9 @@ def _values(judged: Judged, ask: Ask, quantity: str) -> Iterator[Value]:
             reason = left_out(solution, quantity, ask.places[0], case)
             found.append(Value(value=np.nan, case=case, reason=reason))
             continue
+        along = np.where(
+            np.abs(along) < ROUND_OFF * np.nanmax(np.abs(along)), 0.0, along
+        )
         ends = [int(np.nanargmax(along)), int(np.nanargmin(along))]
         for best in dict.fromkeys(ends[_ENDS.get(quantity, slice(2))]):
             x, y = ask.points[best].tolist()

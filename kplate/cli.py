@@ -6,8 +6,10 @@ load is heard. Results go to stdout, everything else to stderr. Exit status 0: p
 """
 
 import argparse
+import re
 import signal
 import sys
+import textwrap
 import warnings
 from collections.abc import Sequence
 from importlib import metadata
@@ -17,6 +19,9 @@ from pathlib import Path
 from kplate.errors import InputError, KplateError, KplateWarning
 
 INTERRUPTED = 130  # 128 + SIGINT, as shells have it
+WIDTH = 100  # columns that a screen and an e-mail hold
+PLACE = re.compile(r"\([^ ()]+, [^ ()]+\)(?: mm| m| in| ft)?(?:, [a-z]+)?")
+KEPT = "\N{NO-BREAK SPACE}"  # stands in no name
 
 
 def main(argv: Sequence[str] | None = None) -> int:
@@ -53,6 +58,24 @@ def _say(text: str) -> None:
         raise InputError(
             f"the results cannot be printed ({error.strerror})."
         ) from error
+
+
+def _folded(text: str) -> str:
+    """Fold lines that are too long at spaces, but not inside a place."""
+    fold = textwrap.TextWrapper(
+        width=WIDTH,
+        subsequent_indent="    ",
+        break_long_words=False,
+        break_on_hyphens=False,
+    )
+    lines = []
+    for line in text.splitlines():
+        if len(line) > WIDTH:
+            kept = PLACE.sub(lambda place: place[0].replace(" ", KEPT), line)
+            lines += fold.fill(kept).replace(KEPT, " ").splitlines()
+        else:
+            lines.append(line)
+    return "\n".join(lines)
 
 
 def _parser() -> argparse.ArgumentParser:
@@ -103,7 +126,7 @@ def _check(args: argparse.Namespace) -> int:
     out = args.out if args.out is not None else Path("results") / args.file.stem
     checked = check(args.file, out=out, progress=_show_step)
     written = ", ".join(str(path) for path in checked.files)
-    _say(f"{checked.text}\nwritten: {written}")
+    _say(_folded(f"{checked.text}\nwritten: {written}"))
     return checked.status
 
 

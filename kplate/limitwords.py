@@ -11,7 +11,7 @@ from kplate.limits import (
 )
 from kplate.panel import Panel
 
-MOST = 150  # characters of a line that a screen holds
+MOST = 100  # characters of a line that a screen and an e-mail hold
 
 
 def stated_lines(panel: Panel) -> list[str]:
