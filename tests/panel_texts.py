@@ -196,3 +196,28 @@ def write_dxf(path: Path, *, hole: float = 40.0, layer: str = "0") -> Path:
     space.add_text("cover", dxfattribs=on)
     document.saveas(path)
     return path
+
+
+def with_limit(limit: str) -> str:
+    """Add a limit."""
+    return changed("[limits]", f"[limits]\n{limit}")
+
+
+def with_combination(text: str) -> str:
+    """Add a combination."""
+    return changed("[limits]", f"[[combination]]\n{text}\n\n[limits]")
+
+
+def with_ask(text: str) -> str:
+    """Ask for values."""
+    return f"{BASE}\n[[ask]]\n{text}\n"
+
+
+def with_roaming(*fields: str) -> str:
+    """Let the wheel roam in the place of its load."""
+    return changed(f"loads = [{LOAD}]", f"roaming = {{ {', '.join(fields)} }}")
+
+
+def with_section(text: str) -> str:
+    """Add a section before the supports."""
+    return changed("[supports]", f"{text}\n\n[supports]")
