@@ -33,6 +33,7 @@ from kplate import assembly
 from kplate.arrays import Floats, Ints
 from kplate.brackets import SUMMED, Brackets
 from kplate.elements import bernstein
+from kplate.elements.arcs import Arcs
 from kplate.elements.dual_arcs import RoundDual
 from kplate.errors import SolveError
 from kplate.functionals import Functional, local_pressure, settled_vertices
@@ -56,7 +57,7 @@ from kplate.solve.dual import DualState, DualSystem
 from kplate.solve.static import StaticState, StaticSystem, check_cases
 from kplate.unbalanced import field_doubts, unbalanced
 from kplate.values import Value
-from kplate.worth import misplaced, worth
+from kplate.worth import CHORDS, drawn_share, misplaced, worth
 
 BLOCK = 512  # triangles
 ORDER = 3  # of the dual: it carries linear pressures exactly
@@ -197,6 +198,7 @@ def certify(
         centres=centres,
         spare=spare,
         doubts=doubts[:, :c],
+        drawn=_share_drawn(plate, mesh, cases, system.numbering.arcs),
     )
     names, alone = [case.name for case in cases], np.eye(c)
     values = brackets.values(alone, names)
@@ -212,6 +214,14 @@ def certify(
         case_gaps=local[:, :c],
         goal_gaps=local[:, c:],
     )
+
+
+def _share_drawn(plate: Plate, mesh: Mesh, cases: Sequence[Case], arcs: Arcs) -> float:
+    """Share by which estimates are wider for what is round and drawn otherwise."""
+    loads = [load for case in cases for load in case.loads]
+    if "chords" in misplaced(plate, mesh, loads):
+        return CHORDS
+    return drawn_share(plate, mesh, arcs)
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

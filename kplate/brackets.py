@@ -46,6 +46,9 @@ class Brackets:
         half their widths.
     doubts : ndarray, shape (c, c)
         What is not known of the work of the cases' loads on each other's deflections.
+    drawn : float
+        Share of each value by which estimates are wider where the mesh draws something
+        round otherwise than it is stated.
     """
 
     kind: Kind
@@ -59,6 +62,7 @@ class Brackets:
     centres: Floats
     spare: Floats
     doubts: Floats
+    drawn: float = 0.0
 
     def values(
         self, factors: Floats, names: Sequence[str]
@@ -78,7 +82,7 @@ class Brackets:
         centres = self.centres @ factors
         halves = goal_widths[:, None] * widths
         halves = halves - 0.5 * self.goal_norms[:, None] * norms
-        halves = halves + self.spare @ sizes
+        halves = halves + self.spare @ sizes + self.drawn * np.abs(centres)
         found: list[tuple[Value, ...]] = []
         row = 0
         for f in self.functionals:

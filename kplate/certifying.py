@@ -116,7 +116,9 @@ def refine_to(
                 triangles=len(mesh.triangles),
                 seconds=time.perf_counter() - start,
                 bands=bands,
-                reached=bool(bands) and not unmet.any(),
+                reached=bool(bands)
+                and not unmet.any()
+                and max(bands.values()) <= tolerance,
             )
         )
         if progress is not None:
@@ -201,7 +203,9 @@ def _unmet(
                 value = solution.known[goal, case]
                 size = _size(solution, goal, value)
                 width = _half(value) / size if size > 0.0 else 0.0
-                if width > tolerance:
+                # What is drawn otherwise than stated no finer mesh makes less.
+                fixed = certified.brackets.drawn * abs(value.value)
+                if size > 0.0 and _half(value) - fixed > tolerance * size:
                     shares += _share(case_gaps[:, k])
                     shares += _share(certified.goal_gaps[:, columns[goal]])
             widths.append(width)
