@@ -24,6 +24,7 @@ from kplate.samples import Lattice
 from kplate.searched import CLOSE, FINE, MOST
 from kplate.singular import Excluded
 from kplate.solution import Solution
+from kplate.summits import deflected, deflection_gaps
 from kplate.values import Value, scaled
 from kplate.woodarmer import DESIGN
 
@@ -259,13 +260,11 @@ class Basis:
         return float((values - doubt)[may].max()), float((values + doubt)[may].max())
 
     def _deflection_band(self, weights: Floats) -> tuple[float, float]:
-        samples = self.solution.samples
         if self.solution.dual is None:
             return 0.0, 0.0
-        sizes, off = samples.bent[:, 0] @ weights, self._lifted @ weights
-        band = peak_band(
-            self.solution.mesh, samples.holders, np.abs(sizes), np.abs(off)
-        )
+        _, holders, w = self._deflected
+        sizes, off = np.abs(w @ weights), np.abs(self._lifted @ weights)
+        band = peak_band(self.solution.mesh, holders, sizes, off)
         return band.lower, band.upper
 
     @cached_property
@@ -290,21 +289,22 @@ class Basis:
 
     @cached_property
     def _lifted(self) -> Floats:
-        """By how much the dual's deflection differs at the samples, (n, units)."""
-        samples, dual = self.solution.samples, self.solution.dual
+        """By how much the dual's deflection differs there, (n, units)."""
+        state, dual = self.solution.state, self.solution.dual
         assert dual is not None
-        at = self.solution.mesh.barycentrics(samples.holders, samples.points)
-        other = dual.deflections_at(samples.holders, at[:, None])[:, 0]
-        own: Floats = samples.bent[:, 0] - other
-        return own
+        return deflection_gaps(state, dual, self.solution.recovered)
+
+    @property
+    def _deflected(self) -> tuple[Floats, Ints, Floats]:
+        """Places, triangles that hold them, and w of each unit there."""
+        return deflected(self.solution.recovered)
 
     def _summit(self, weights: Floats) -> tuple[float, tuple[float, float]]:
         """Go from the sample that deflects most to the summit beside it."""
-        solution, samples = self.solution, self.solution.samples
-        w = samples.bent[:, 0] @ weights
+        solution, (places, holders, every) = self.solution, self._deflected
+        w = every @ weights
         best = int(np.argmax(np.abs(w)))
-        start = (float(w[best]), samples.points[best])
-        holder = int(samples.holders[best])
+        start, holder = (float(w[best]), places[best]), int(holders[best])
         found = self._stationary(weights, start, holder)
         if found is not None:
             return found

@@ -106,16 +106,16 @@ class Searched(Solved):
 
         At points (q, 3) or (n, q, 3) of triangles (n,), of a C1 element.
         """
-        assert isinstance(self._recovered, RawMoments)
-        return self._recovered.moments_and_shears(triangles, barycentrics)
+        assert isinstance(self.recovered, RawMoments)
+        return self.recovered.moments_and_shears(triangles, barycentrics)
 
     def _at(self, points: Floats, index: int) -> Candidates:
         """Candidates at points (k, 2)."""
         triangles, barycentrics = self.mesh.locate(points)
         return Candidates(
             points,
-            self._recovered.moments_at(triangles, barycentrics)[:, :, index],
-            self._recovered.shears_at(triangles, barycentrics)[:, :, index],
+            self.recovered.moments_at(triangles, barycentrics)[:, :, index],
+            self.recovered.shears_at(triangles, barycentrics)[:, :, index],
             self.plate.thicknesses[self.mesh.zones[triangles]],
             triangles,
         )

@@ -271,8 +271,8 @@ class Solution(Searched):
             )
         index = self._index(case)
         if quantity == "deflection":
-            assert isinstance(self._recovered, RawMoments)
-            return deflection_band(self.state, self.dual, self._recovered, index)
+            assert isinstance(self.recovered, RawMoments)
+            return deflection_band(self.state, self.dual, self.recovered, index)
         at = self._sharpened(quantity, self._candidates(index), index)
         return self._band_among(quantity, at, index)
 
@@ -317,8 +317,8 @@ class Solution(Searched):
                 return indicated(result, *tops)
             if self.tolerance is None or quantity in ("deflection", "shear stress"):
                 return result
-            assert isinstance(self._recovered, SmoothedMoments)
-            most = smoothing(quantity, self.state, self._recovered, index)
+            assert isinstance(self.recovered, SmoothedMoments)
+            most = smoothing(quantity, self.state, self.recovered, index)
             at = self._candidates(index)
             values, _ = measures(quantity, at, at.moments, at.shears)
             band = peak_band(self.mesh, at.triangles, values, most[at.triangles])
@@ -336,7 +336,8 @@ class Solution(Searched):
 
     def _summit(self, index: int) -> tuple[float, tuple[float, float], None]:
         """Climb from the sample that deflects most to the summit beside it."""
-        places, holders, w = deflected(self._recovered, index)
+        places, holders, every = deflected(self.recovered)
+        w = every[:, index]
         case, best = self.cases[index], int(np.argmax(np.abs(w)))
         value, place = climb(
             lambda points: self.deflection(points, case=case),
@@ -357,7 +358,7 @@ class Solution(Searched):
             discs = (*self.excluded, *shear_places(self.plate, radius))
             dual = self.dual if self.state.element.conforming else None
             found = support_reactions.reactions(
-                self.state, self._recovered, index, discs, dual
+                self.state, self.recovered, index, discs, dual
             )
             case = self.cases[index]
             points = tuple(

@@ -92,7 +92,7 @@ class Solved:
 
         Of a C1 element those of the triangle itself, of DKT smoothed ones.
         """
-        found = self._recovered.moments_at(*self.mesh.locate(points))
+        found = self.recovered.moments_at(*self.mesh.locate(points))
         return found[:, :, self._index(case)]
 
     def balanced_moments(self, points: ArrayLike, *, case: str | None = None) -> Floats:
@@ -130,7 +130,7 @@ class Solved:
 
     def shears(self, points: ArrayLike, *, case: str | None = None) -> Floats:
         """Transverse shears q_x, q_y in N/m at points (k, 2) in m, (k, 2)."""
-        found = self._recovered.shears_at(*self.mesh.locate(points))
+        found = self.recovered.shears_at(*self.mesh.locate(points))
         return found[:, :, self._index(case)]
 
     def shear_stress(self, points: ArrayLike, *, case: str | None = None) -> Floats:
@@ -223,7 +223,7 @@ class Solved:
         Of a C1 element a lattice on each triangle of the mesh; of DKT the vertices,
         once for each part of the plate that meets there.
         """
-        return self._recovered.samples
+        return self.recovered.samples
 
     @property
     def field_points(self) -> Floats:
@@ -245,7 +245,8 @@ class Solved:
         return self.plate.thicknesses[self.mesh.zones[triangles]]
 
     @cached_property
-    def _recovered(self) -> SmoothedMoments | RawMoments:
+    def recovered(self) -> SmoothedMoments | RawMoments:
+        """Fields of the elements themselves, or of DKT smoothed ones."""
         if self.state.element.conforming:
             return RawMoments(state=self.state, excluded=self.excluded)
         return smoothed_moments(self.state)

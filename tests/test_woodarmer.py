@@ -125,7 +125,7 @@ def test_peaks_are_those_of_the_field(slab):
 
 def test_fields_and_peaks_are_written_when_asked(slab, tmp_path):
     path = write_vtk(slab, tmp_path / "slab.vtu", design=True)
-    names = [shade.name for shade in read_result(path).shades()]
+    names = [shade.name for shade in read_result(path).shades]
     assert "design moments bottom x" in names
     record = solution_record(slab, "0", design=True)
     peaks = record["results"][0]["peaks"]
