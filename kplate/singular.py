@@ -31,6 +31,11 @@ from kplate.supports import Support
 
 Place = tuple[float, float]
 
+# Curvatures that differ by less than this share of the larger are those of arcs that
+# stand for a smooth curve.
+JUMPS = 0.5
+JUMP = "a simply supported side changes its curvature: its line reaction goes with 1/r"
+
 
 @dataclass(frozen=True, kw_only=True)
 class Corner:
@@ -119,12 +124,40 @@ class Excluded:
 
 
 def shear_places(plate: Plate, radius: float) -> tuple[Excluded, ...]:
-    """Corners at which moments are finite and the effective shear is not."""
-    return tuple(
+    """Places at which moments are finite and the effective shear is not.
+
+    Corners, and where a simply supported side changes its curvature without a corner:
+    w,tt along it is the curvature times the slope across, so that it jumps there, and
+    v_n goes with 1/r.
+    """
+    found = [
         Excluded(place=corner.place, radius=radius, reason=corner.words)
         for corner in plate_corners(plate)
         if corner.shear_unbounded
-    )
+    ]
+    found += [
+        Excluded(place=place, radius=radius, reason=JUMP)
+        for line in plate.outline.boundaries
+        for place in _curvature_jumps(plate, line)
+    ]
+    return tuple(found)
+
+
+def _curvature_jumps(plate: Plate, line: Polygon) -> list[tuple[float, float]]:
+    """Where simply supported pieces of different curvature meet without a corner."""
+    curvatures = np.zeros(len(line.points))
+    bent = line.bulges != 0.0
+    curvatures[bent] = np.sign(line.bulges[bent]) / line.circles[bent, 2]
+    found = []
+    for i, side in enumerate(line.sides):
+        both = (plate.support(line.sides[i - 1]), plate.support(side))
+        hinged = all(own.holds_deflection and not own.holds_slope for own in both)
+        a, b = curvatures[i - 1], curvatures[i]
+        jumps = abs(a - b) > JUMPS * max(abs(a), abs(b))
+        if hinged and jumps and abs(line.turns[i]) < plate.bend_turn:
+            x, y = line.points[i].tolist()
+            found.append((x, y))
+    return found
 
 
 def plate_corners(plate: Plate) -> tuple[Corner, ...]:

@@ -14,8 +14,8 @@ from kplate.materials import STEEL, Isotropic
 from kplate.outline import Outline
 from kplate.plate import Plate
 from kplate.polygon import Polygon
-from kplate.shapes import Circle
-from kplate.singular import Excluded, excluded_places, plate_corners
+from kplate.shapes import Circle, Ellipse, Rectangle
+from kplate.singular import Excluded, excluded_places, plate_corners, shear_places
 from kplate.supports import CLAMPED, FREE, SIMPLY_SUPPORTED
 
 C, S, F = CLAMPED, SIMPLY_SUPPORTED, FREE
@@ -327,3 +327,27 @@ def test_the_radius_of_what_is_left_out_can_be_set():
 def test_a_rectangle_under_pressure_leaves_nothing_out(support):
     cases = [Case(name="wind", loads=[Pressure(1e3)])]
     assert excluded_places(square(support), cases) == ()
+
+
+def test_where_a_hinged_side_runs_into_an_arc_its_reaction_has_no_value():
+    """Not where it is clamped, at free sides, or along a circle or an ellipse."""
+    pad = Rectangle(centre=(0.5, 0.4), size=(1.0, 0.8), corner_radius=0.1, name="rim")
+    smooth = (
+        Outline.circle((0.0, 0.0), radius=1.0),
+        Outline.of(Ellipse(centre=(0.0, 0.0), size=(2.0, 1.0), name="rim")),
+    )
+    cases = [(Outline.of(pad), s, n) for s, n in ((SIMPLY_SUPPORTED, 8), (CLAMPED, 0))]
+    cases += [(outline, SIMPLY_SUPPORTED, 0) for outline in smooth]
+    for outline, support, count in cases:
+        plate = Plate(
+            outline=outline,
+            thickness=0.01,
+            material=STEEL,
+            supports=dict.fromkeys(outline.side_names, support),
+        )
+        found = shear_places(plate, 0.01)
+        assert len(found) == count
+        for place in found:
+            assert "curvature" in place.reason
+            x, y = place.place
+            assert min(abs(x - 0.1), abs(x - 0.9), abs(y - 0.1), abs(y - 0.7)) < 1e-9
