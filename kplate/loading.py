@@ -273,7 +273,13 @@ def _add_patch(
     else:
         groups = cutting.inside_disc(pieces, load.centre, load.radius)
         area = np.pi * load.radius**2
-    covered = sum(float(parts.weights.sum()) for parts in groups)
+
+    def pressure(points: Floats) -> Floats:
+        return np.full(points.shape[:-1], load.force / area)
+
+    cut = (groups, pieces, owner)
+    whole, missed = _add_round(forces, element, numbering, pressure, cut)
+    covered = sum(float(parts.weights.sum()) for parts in groups) + missed
     if covered < (1.0 - MISSING) * area:
         x, y = load.centre
         raise InputError(
@@ -281,11 +287,6 @@ def _add_patch(
             "lies on the plate; move or shrink it until it does not reach over an edge "
             "or a hole."
         )
-
-    def pressure(points: Floats) -> Floats:
-        return np.full(points.shape[:-1], load.force / area)
-
-    whole = _add_round(forces, element, numbering, pressure, (groups, pieces, owner))
     for parts in groups:
         kept = ~np.isin(owner[parts.triangles], whole)
         some = cutting.Parts(
@@ -302,14 +303,14 @@ def _add_round(
     numbering: Numbering,
     pressure: Callable[[Floats], Floats],
     cut: tuple[Sequence[cutting.Parts], Floats, Ints],
-) -> Ints:
+) -> tuple[Ints, float]:
     """Add a pressure on triangles with a round edge all of whose slices it covers.
 
-    Slices are a little less than the triangle; returns these triangles.
+    Returns these triangles, and by how much in m2 they are more than their slices.
     """
     arcs, (groups, pieces, owner) = numbering.arcs, cut
     if not len(arcs):
-        return np.empty(0, dtype=np.int64)
+        return np.empty(0, dtype=np.int64), 0.0
     count = len(numbering.mesh.triangles)
     covered = np.zeros(count)
     for parts in groups:
@@ -321,7 +322,7 @@ def _add_round(
     rows = element.evaluate(own.vertices, points, own.alone())[:, :, 0]
     found = np.einsum("mq,mqd->md", pressure(points @ own.vertices) * weights, rows)
     add_up(forces, numbering.table[own.rows], found[..., None])
-    return own.rows
+    return own.rows, float(weights.sum() - size[own.rows].sum())
 
 
 def _pieces(
